@@ -1,0 +1,179 @@
+package penfit
+
+import (
+	"context"
+	"math"
+)
+
+// Result is a fit. The engine is left with H factored at it.
+type Result struct {
+	Beta   []float64
+	Eta    []float64 // linear predictor at the rows, offset included
+	Lambda []float64
+
+	Deviance, Penalty float64
+	Constant          float64 // deviance with one mean a unit of exposure
+	Phi               float64 // dispersion: 1 if known, else estimated; NaN where nothing is left to estimate it from
+	Pearson           float64 // sum of squared Pearson residuals over n - edf
+	Edf               float64 // tr(H^-1 X'WX)
+	Value             float64 // of the criterion, in the engine's own coefficients; NaN if lambda was given as 0
+	Gradient          float64 // projected gradient at the end of the search
+	AtUpper           []bool  // log lambda ended at the top of its box: the term is its null space
+	Iterations        int     // of the search
+	Passes            int     // visits to the rows
+	Converged         bool
+	LogLikelihood     float64
+}
+
+// Fit fits p. For Given, lambda holds the smoothing parameters; else it is ignored. Trouble is ErrSeparated,
+// ErrSingular or ErrNoMode; a search that stops early is a Result that is not Converged.
+func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result, error) {
+	f := newFitter(ctx, p)
+	rho, err := f.search(c, lambda)
+	if err != nil {
+		return nil, err
+	}
+	r := rho.result
+	if r.Value, _, err = f.final(c, exp(rho.x)); err != nil {
+		return nil, err
+	}
+	r.Beta, r.Eta, r.Lambda = f.beta, f.eta, exp(rho.x)
+	r.Deviance, r.Penalty, r.Constant = f.deviance, f.penalty, f.scale
+	r.Edf, r.Passes = f.edf(r.Lambda), f.passes
+	f.scales(c, &r)
+	return &r, nil
+}
+
+// found is where the search ended.
+type found struct {
+	x      []float64
+	result Result
+}
+
+// search finds log lambda.
+func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
+	if c == Given {
+		rho := make([]float64, len(lambda))
+		for j, l := range lambda {
+			rho[j] = math.Log(l)
+		}
+		_, err := f.start(rho)
+		return found{x: rho, result: Result{Converged: true, AtUpper: make([]bool, len(rho))}}, err
+	}
+	rho, err := f.start(nil)
+	if err != nil {
+		return found{}, err
+	}
+	lo, hi := f.Engine.Range()
+	objective := f.objective(c)
+	if c == GCV {
+		rho = f.scan(objective, rho, lo, hi)
+	}
+	// The first point may be out of reach of the iterations although smoother ones are not: go up until there is one.
+	m, err := minimise(f.ctx, objective, rho, lo, hi)
+	for try := 0; try < 3 && err == nil && math.IsInf(m.value, 1); try++ {
+		for j := range rho {
+			rho[j] = math.Min(hi[j], rho[j]+4)
+		}
+		m, err = minimise(f.ctx, objective, rho, lo, hi)
+	}
+	if err == nil && math.IsInf(m.value, 1) {
+		_, _, err = f.score(c, rho)
+	}
+	if err != nil {
+		return found{}, err
+	}
+	r := Result{Gradient: m.projected, Iterations: m.iterations, Converged: m.converged, AtUpper: make([]bool, len(rho))}
+	for j := range rho {
+		r.AtUpper[j] = m.x[j] >= hi[j]-1e-9
+	}
+	return found{x: m.x, result: r}, nil
+}
+
+// objective wraps score for the search: numerical trouble at one point is an infinite value, so that the search halves
+// its step, and cross-validation is put on the scale of a log-likelihood, so that step lengths suit both criteria.
+func (f *fitter) objective(c Criterion) objective {
+	return func(rho []float64) (float64, []float64, error) {
+		kept := append([]float64(nil), f.beta...)
+		v, g, err := f.score(c, rho)
+		if err != nil && numerical(err) {
+			copy(f.beta, kept)
+			return math.Inf(1), make([]float64, len(rho)), nil
+		}
+		if err == nil && c == GCV {
+			v, g = f.likelihoodScale(v, g)
+		}
+		return v, g, err
+	}
+}
+
+// likelihoodScale turns a cross-validation score into n/2 times its logarithm, or n/2 times the unbiased-risk form,
+// with its gradient.
+func (f *fitter) likelihoodScale(v float64, g []float64) (float64, []float64) {
+	half := float64(len(f.Obs)) / 2
+	scale := half
+	if f.Dist.KnownDispersion() {
+		v *= half
+	} else {
+		scale /= v
+		v = half * math.Log(v)
+	}
+	for j := range g {
+		g[j] *= scale
+	}
+	return v, g
+}
+
+// scan guards cross-validation, which can have several minima, against a poor one where there is one log lambda: it
+// returns the best of a coarse sweep through the box.
+func (f *fitter) scan(objective objective, rho, lo, hi []float64) []float64 {
+	if len(rho) != 1 {
+		return rho
+	}
+	best, at := math.Inf(1), rho
+	for r := hi[0] - 4; r > lo[0]+12; r -= 1.5 {
+		v, _, err := objective([]float64{r})
+		if err == nil && v < best {
+			best, at = v, []float64{r}
+		}
+	}
+	return at
+}
+
+// final evaluates everything at the chosen lambda.
+func (f *fitter) final(c Criterion, lambda []float64) (value float64, gradient []float64, err error) {
+	rho := make([]float64, len(lambda))
+	zero := false
+	for j, l := range lambda {
+		rho[j] = math.Log(l)
+		zero = zero || l == 0
+	}
+	if c == Given {
+		c = REML
+	}
+	value, gradient, err = f.score(c, rho)
+	if zero {
+		value = math.NaN()
+	}
+	return value, gradient, err
+}
+
+// scales sets dispersion, Pearson statistic and log-likelihood.
+func (f *fitter) scales(c Criterion, r *Result) {
+	free := float64(len(f.Obs)) - r.Edf
+	var pearson float64
+	for i, o := range f.Obs {
+		pearson += f.Dist.Pearson(o, f.eta[i])
+	}
+	r.Pearson = pearson / free
+	if free < 1e-8*float64(len(f.Obs)) {
+		r.Pearson = math.NaN()
+	}
+	r.Phi = r.Pearson
+	if f.Dist.KnownDispersion() || c == REML {
+		r.Phi = f.remlScale()
+	}
+	for i, o := range f.Obs {
+		r.LogLikelihood += f.Dist.LogLikelihood(o, f.eta[i], r.Phi)
+	}
+}

@@ -1,0 +1,325 @@
+package penfit
+
+import (
+	"context"
+	"errors"
+	"math"
+
+	"drumlin/spatial/response"
+)
+
+// Problem is what is to be fitted.
+type Problem struct {
+	Engine Engine
+	Dist   response.Distribution
+	Obs    []response.Obs
+	Offset []float64 // of the linear predictor, one a row; nil means none
+}
+
+// ErrSeparated says that the likelihood has no maximum: some linear predictors run off to infinity.
+var ErrSeparated = errors.New("the likelihood grows without bound: the fit is separated")
+
+// ErrSingular says that the penalised normal equations have no solution.
+var ErrSingular = errors.New("the penalised normal equations are singular")
+
+// ErrNoMode says that the iterations for the coefficients did not settle.
+var ErrNoMode = errors.New("the coefficients did not settle")
+
+const (
+	modeSteps = 100   // Newton steps for one mode
+	modeTol   = 1e-24 // squared length of the next step in the metric of H, against the deviances' size
+	modeFloor = 1e-14 // below this a step that no longer shrinks counts as rounding
+)
+
+// fitter carries the state of a fit: the current coefficients with everything evaluated at them.
+type fitter struct {
+	Problem
+	ctx context.Context
+
+	beta     []float64
+	eta      []float64 // offset included
+	point    []response.Point
+	deviance float64
+	penalty  float64
+	moved    float64 // largest change of a linear predictor in the last accepted step
+	scale    float64 // deviance of a constant fit: what "small" is measured against
+
+	haveGram bool // a Gram matrix is at hand that stays true: constant weights
+	passes   int
+}
+
+func newFitter(ctx context.Context, p Problem) *fitter {
+	n, k := len(p.Obs), p.Engine.Coefs()
+	f := &fitter{Problem: p, ctx: ctx, beta: make([]float64, k), eta: make([]float64, n), point: make([]response.Point, n)}
+	return f
+}
+
+func (f *fitter) offset(i int) float64 {
+	if f.Offset == nil {
+		return 0
+	}
+	return f.Offset[i]
+}
+
+// evaluate visits the rows at beta; with gram set it leaves the Gram matrix of the given weights. Where weights are
+// constant the matrix is made once.
+func (f *fitter) evaluate(beta []float64, c response.Curvature, gram bool) (deviance float64, err error) {
+	gram = gram && !f.haveGram
+	err = f.Engine.Pass(f.ctx, beta, func(i int, linear float64) (weight, value float64) {
+		eta := linear + f.offset(i)
+		f.eta[i] = eta
+		pt := f.Dist.At(f.Obs[i], eta)
+		if math.IsNaN(pt.Deviance) || math.IsInf(pt.Weight, 0) || math.IsNaN(pt.Weight) {
+			pt = response.Point{Deviance: math.Inf(1)}
+		}
+		f.point[i] = pt
+		if c == response.Expected {
+			return pt.Expected, pt.Score
+		}
+		return pt.Weight, pt.Score
+	}, gram)
+	if err != nil {
+		return 0, err
+	}
+	f.passes++
+	if gram {
+		f.haveGram = f.Dist.ConstantWeight()
+	}
+	for i := range f.point {
+		deviance += f.point[i].Deviance
+	}
+	if math.IsNaN(deviance) {
+		deviance = math.Inf(1)
+	}
+	return deviance, nil
+}
+
+// penaltyAt returns b'S_lambda b and writes S_lambda b to dst.
+func (f *fitter) penaltyAt(dst, lambda, beta []float64) (value float64) {
+	clear(dst)
+	sb := make([]float64, len(beta))
+	for j, l := range lambda {
+		f.Engine.PenaltyTo(sb, j, beta)
+		for k, v := range sb {
+			dst[k] += l * v
+			value += l * v * beta[k]
+		}
+	}
+	return value
+}
+
+// mode moves beta to the minimum of the penalised deviance by Newton's method with step halving, and leaves H factored
+// there with observed weights. Where observed weights make H indefinite the expected ones give the step.
+func (f *fitter) mode(lambda []float64) error {
+	k := len(f.beta)
+	sb, step, trial := make([]float64, k), make([]float64, k), make([]float64, k)
+	var err error
+	if f.deviance, err = f.evaluate(f.beta, response.Observed, true); err != nil {
+		return err
+	}
+	f.penalty = f.penaltyAt(sb, lambda, f.beta)
+	before, moved := math.Inf(1), 0.0
+	for n := 0; n < modeSteps; n++ {
+		if err := f.factor(lambda); err != nil {
+			return err
+		}
+		for i, s := range f.Engine.Score() {
+			step[i] = s - sb[i]
+		}
+		gradient := append([]float64(nil), step...)
+		f.Engine.Solve(step)
+		length := dot(step, gradient)
+		ref := f.scale + f.deviance + f.penalty
+		if length <= modeTol*ref || length < modeFloor*ref && length > before/4 {
+			if moved > 0.1 && !f.Dist.ConstantWeight() {
+				return ErrSeparated
+			}
+			return nil
+		}
+		before = length
+		if math.IsNaN(length) {
+			return ErrSingular
+		}
+		if err := f.advance(lambda, step, trial, sb, length < 1e-12*ref); err != nil {
+			return err
+		}
+		moved = f.moved
+	}
+	if moved > 0.1 {
+		return ErrSeparated
+	}
+	return ErrNoMode
+}
+
+// factor factors H at the current point, with expected weights if the observed ones will not do.
+func (f *fitter) factor(lambda []float64) error {
+	if f.Engine.Factor(lambda) {
+		return nil
+	}
+	if f.Dist.ConstantWeight() {
+		return ErrSingular
+	}
+	if _, err := f.evaluate(f.beta, response.Expected, true); err != nil {
+		return err
+	}
+	if !f.Engine.Factor(lambda) {
+		return ErrSingular
+	}
+	return nil
+}
+
+// advance takes the step, halved until the penalised deviance does not grow; sure steps, too small to be judged by a
+// difference of deviances, are taken as they are. It leaves sb = S_lambda beta.
+func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
+	now := f.deviance + f.penalty
+	from := append([]float64(nil), f.eta...)
+	for t := 1.0; t > 1e-10; t /= 2 {
+		for i := range trial {
+			trial[i] = f.beta[i] + t*step[i]
+		}
+		d, err := f.evaluate(trial, response.Observed, true)
+		if err != nil {
+			return err
+		}
+		p := f.penaltyAt(sb, lambda, trial)
+		if d+p <= now+1e-13*math.Abs(now) || sure && !math.IsInf(d, 0) {
+			copy(f.beta, trial)
+			f.deviance, f.penalty = d, p
+			f.moved = 0
+			for i, e := range f.eta {
+				f.moved = math.Max(f.moved, math.Abs(e-from[i]))
+			}
+			return nil
+		}
+	}
+	return ErrNoMode
+}
+
+// start sets beta from the distribution's starting means, and returns log lambda found on the working models: a few
+// multiplicative steps (Wood & Fasiolo 2017, Biometrics 73:1071-1081) bring it near the optimum cheaply.
+func (f *fitter) start(fixed []float64) (rho []float64, err error) {
+	var y, m float64
+	for i, o := range f.Obs {
+		y += o.Weight * o.Y
+		m += o.Weight * o.Trials * f.exposure(i)
+	}
+	f.scale, err = f.constantDeviance(y / m)
+	if err != nil {
+		return nil, err
+	}
+	zwz := make([]float64, len(f.Obs))
+	working := func(i int, eta float64) (float64, float64) {
+		pt := f.Dist.At(f.Obs[i], eta)
+		z := eta - f.offset(i)
+		if pt.Expected > 0 {
+			z += pt.Score / pt.Expected
+		}
+		zwz[i] = pt.Expected * z * z
+		return pt.Expected, pt.Expected * z
+	}
+	rho = fixed
+	for round := 0; round < 2; round++ {
+		at := func(i int, linear float64) (float64, float64) { return working(i, linear+f.offset(i)) }
+		if round == 0 {
+			at = func(i int, _ float64) (float64, float64) {
+				o := f.Obs[i]
+				return working(i, f.Dist.Linear(f.Dist.Start(o, y/m*f.exposure(i))))
+			}
+		}
+		if err := f.Engine.Pass(f.ctx, f.beta, at, true); err != nil {
+			return nil, err
+		}
+		f.haveGram = f.Dist.ConstantWeight()
+		var total float64
+		for _, v := range zwz {
+			total += v
+		}
+		if rho, err = f.working(rho, fixed != nil, total); err != nil {
+			return nil, err
+		}
+		if f.Dist.ConstantWeight() {
+			break
+		}
+	}
+	return rho, nil
+}
+
+// exposure is what the overall mean is multiplied by in row i.
+func (f *fitter) exposure(i int) float64 {
+	if f.Offset == nil {
+		return 1
+	}
+	return math.Exp(f.Offset[i])
+}
+
+// working solves the working model at hand, moving log lambda towards its optimum unless it is fixed.
+func (f *fitter) working(rho []float64, fixed bool, zwz float64) ([]float64, error) {
+	e := f.Engine
+	lo, hi := e.Range()
+	if rho == nil {
+		rho = make([]float64, e.Penalties())
+		for j := range rho {
+			rho[j] = hi[j] - 19 // a twentieth of the Gram matrix's trace
+		}
+	}
+	score := append([]float64(nil), e.Score()...)
+	sb := make([]float64, len(f.beta))
+	for step := 0; ; step++ {
+		lambda := exp(rho)
+		if !e.Factor(lambda) {
+			return nil, ErrSingular
+		}
+		copy(f.beta, score)
+		e.Solve(f.beta)
+		if fixed || step == 15 || len(rho) == 0 {
+			return rho, nil
+		}
+		phi := 1.0
+		if !f.Dist.KnownDispersion() {
+			phi = math.Max(zwz-dot(f.beta, score), 1e-12*zwz) / math.Max(1, float64(len(f.Obs)-e.NullDim()))
+		}
+		_, slope := e.LogDetPenalty(lambda)
+		trace := e.Traces()
+		next, largest := make([]float64, len(rho)), 0.0
+		for j := range rho {
+			e.PenaltyTo(sb, j, f.beta)
+			ratio := phi * math.Max(slope[j]/lambda[j]-trace[j], 0) / math.Max(dot(sb, f.beta), 1e-300)
+			next[j] = math.Min(hi[j], math.Max(lo[j], rho[j]+clamp(math.Log(ratio), 6)))
+			largest = math.Max(largest, math.Abs(next[j]-rho[j]))
+		}
+		if largest < 0.1 {
+			return rho, nil
+		}
+		rho = next
+	}
+}
+
+// constantDeviance returns the deviance of the fit with one mean a unit of exposure.
+func (f *fitter) constantDeviance(mean float64) (float64, error) {
+	eta := f.Dist.Linear(mean)
+	if math.IsNaN(eta) || math.IsInf(eta, 0) {
+		return 0, ErrSeparated
+	}
+	var d float64
+	for i, o := range f.Obs {
+		d += f.Dist.At(o, eta+f.offset(i)).Deviance
+	}
+	return d, nil
+}
+
+func clamp(v, most float64) float64 { return math.Min(most, math.Max(-most, v)) }
+
+func dot(a, b []float64) (s float64) {
+	for i, v := range a {
+		s += v * b[i]
+	}
+	return s
+}
+
+func exp(rho []float64) []float64 {
+	l := make([]float64, len(rho))
+	for j, r := range rho {
+		l[j] = math.Exp(r)
+	}
+	return l
+}

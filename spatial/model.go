@@ -1,0 +1,150 @@
+package spatial
+
+import (
+	"fmt"
+	"math"
+)
+
+// Places are where rows lie, in metres. With Start nil row i is the point (X[i], Y[i]). Else row i is the set of points
+// Start[i] to Start[i+1], point q counting with Share[q].
+type Places struct {
+	X, Y  []float64
+	Start []int32
+	Share []float64
+}
+
+// Len returns the number of rows.
+func (p Places) Len() int {
+	if p.Start != nil {
+		return len(p.Start) - 1
+	}
+	return len(p.X)
+}
+
+// Covariate holds the values of one covariate, one a row: numbers, or codes into Level for a category.
+type Covariate struct {
+	Name   string
+	Number []float64
+	Code   []int32
+	Level  []string
+}
+
+// Role is what a covariate does in the model.
+type Role int
+
+const (
+	Linear   Role = iota // a slope
+	Category             // a step for every level but the first
+)
+
+// Effect is a covariate with its role.
+type Effect struct {
+	Name string
+	Role Role
+}
+
+// Kind is the kind of the surface.
+type Kind int
+
+const (
+	ThinPlate Kind = iota
+	None           // no surface: a regression on the covariates
+)
+
+// Method says how the smoothness is chosen.
+type Method int
+
+const (
+	REML  Method = iota // restricted maximum likelihood
+	GCV                 // generalised cross-validation, or the unbiased-risk form where the dispersion is known
+	Given               // Lambda is given
+)
+
+// Smoothness is the choice of the penalty. Lambda, used with Given, is that of
+// sum w (y - f)^2 + lambda J(f) with places in metres; for other distributions the deviance takes the sum's part.
+type Smoothness struct {
+	Method Method
+	Lambda float64
+}
+
+// DefaultKnots is the most knots a surface gets unless the model says otherwise.
+const DefaultKnots = 200
+
+// Model says what is fitted. The zero value is not valid: Distribution must be named.
+type Model struct {
+	Distribution string // "gaussian", "poisson", "binomial"
+	Link         string // "" means the distribution's own
+	Surface      Kind
+	MaxKnots     int // 0 means DefaultKnots
+	Smoothness   Smoothness
+	Effects      []Effect
+}
+
+// Data are the observations: slices have one value a row, or are nil where they do not apply.
+type Data struct {
+	Response   []float64 // measured value, count, or number positive
+	Exposure   []float64 // people, area, effort or expected count behind each count; positive; nil means 1
+	Trials     []float64 // number examined, binomial only
+	Weight     []float64 // prior weight: the variance is phi/weight; nil means 1
+	Places     Places
+	Covariates []Covariate // at least those the model's effects name
+}
+
+// Options are how to fit, rather than what. The zero value is usable.
+type Options struct {
+	Workers int // goroutines; 0 means one a processor. The answer does not depend on it
+	// Knots, if not empty, are used instead of a choice of our own.
+	Knots Places
+	// Area is a set of points that covers the study area: gaps between places get knots, so that errors grow there.
+	Area Places
+	Seed uint64 // of the randomised quantile residuals of counts
+}
+
+// Error is a fit that could not be had, with what to do about it.
+type Error struct {
+	Message string
+	Advice  string
+	Cause   error
+}
+
+func (e *Error) Error() string { return e.Message }
+
+// Unwrap returns the numerical cause, if there is one.
+func (e *Error) Unwrap() error { return e.Cause }
+
+// Hint returns what to do about it.
+func (e *Error) Hint() string { return e.Advice }
+
+// FitFailed marks the error as a fit that could not be had, rather than a request that is wrong.
+func (e *Error) FitFailed() bool { return true }
+
+func unfit(advice, format string, args ...any) error {
+	return &Error{Message: fmt.Sprintf(format, args...), Advice: advice}
+}
+
+// check panics if slices do not have one value a row, and returns an error for values that no model can take.
+func (d Data) check(m Model) error {
+	n := d.Places.Len()
+	for _, v := range [][]float64{d.Response, d.Exposure, d.Trials, d.Weight} {
+		if v != nil && len(v) != n {
+			panic("spatial: data slices differ in length")
+		}
+	}
+	if d.Places.Start != nil {
+		return unfit("give each row one point", "rows that are sets of points cannot be fitted by this version")
+	}
+	for i := 0; i < n; i++ {
+		if bad(d.Response[i]) || bad(d.Places.X[i]) || bad(d.Places.Y[i]) {
+			return unfit("leave the row out", "row %d: a response or place that is not a finite number", i+1)
+		}
+		if d.Exposure != nil && !(d.Exposure[i] > 0) || d.Weight != nil && !(d.Weight[i] > 0) {
+			return unfit("leave the row out", "row %d: a denominator or weight that is not positive", i+1)
+		}
+	}
+	if d.Exposure != nil && m.Distribution != "poisson" {
+		return unfit("name trials for positives, or leave the denominator out", "a denominator goes with counts, not with the %s distribution", m.Distribution)
+	}
+	return nil
+}
+
+func bad(v float64) bool { return math.IsNaN(v) || math.IsInf(v, 0) }

@@ -1,0 +1,74 @@
+package spatial
+
+import (
+	"context"
+	"math"
+
+	"drumlin/basis2d"
+	"drumlin/basis2d/blocks"
+
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/blas64"
+)
+
+// PredictTo writes the linear predictor and its standard error, both on the link scale, without offset, at each of the
+// places to eta and se. z holds the covariates the model's effects name, one value a place; a level the data did not
+// have gives NaN in both. It returns an error for a covariate that is missing, or when ctx is cancelled, and panics if
+// eta, se and at differ in length. It is safe for concurrent use.
+func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z []Covariate) error {
+	n := at.Len()
+	if len(eta) != n || len(se) != n {
+		panic("spatial: PredictTo: lengths differ")
+	}
+	rows, err := s.rowMaker(z)
+	if err != nil {
+		return err
+	}
+	p, root := len(s.beta), math.Sqrt(s.phi)
+	workers := blocks.Workers(s.workers)
+	scratch := make([]*rowScratch, workers)
+	return blocks.Do(ctx, workers, blocks.Count(n), func(worker, b int) error {
+		if scratch[worker] == nil {
+			scratch[worker] = &rowScratch{rows: make([]float64, blocks.Size*p)}
+		}
+		from, to := blocks.Range(b, n)
+		x := rows(scratch[worker], at, from, to)
+		blas64.Gemv(blas.NoTrans, 1, x, blas64.Vector{N: p, Inc: 1, Data: s.beta}, 0, blas64.Vector{N: to - from, Inc: 1, Data: eta[from:to]})
+		blas64.Trsm(blas.Right, blas.NoTrans, 1, s.triangle(), x)
+		for i := range x.Rows {
+			v := x.Data[i*p : (i+1)*p]
+			se[from+i] = root * math.Sqrt(dot(v, v))
+		}
+		return nil
+	})
+}
+
+// rowScratch is one goroutine's space for rows of the model matrix.
+type rowScratch struct {
+	rows   []float64
+	raw    []float64
+	spread basis2d.Spread
+}
+
+// rowMaker returns a function that makes rows [from, to) of the model matrix at new places.
+func (s *Surface) rowMaker(z []Covariate) (func(w *rowScratch, at Places, from, to int) blas64.General, error) {
+	values, err := s.border.values(z)
+	if err != nil {
+		return nil, err
+	}
+	p, k := len(s.beta), surfaceColumns(s.basis)
+	q := p - k
+	return func(w *rowScratch, at Places, from, to int) blas64.General {
+		if len(w.raw) < q {
+			w.raw = make([]float64, q)
+		}
+		x := blas64.General{Rows: to - from, Cols: p, Stride: p, Data: w.rows[:(to-from)*p]}
+		surfaceRowsTo(x.Data, p, s.basis, at.X[from:to], at.Y[from:to], &w.spread)
+		for i := from; i < to && q > 0; i++ {
+			row := x.Data[(i-from)*p : (i-from+1)*p]
+			values(w.raw[:q], i)
+			s.border.rowTo(row[k:], row, w.raw[:q])
+		}
+		return x
+	}, nil
+}

@@ -1,0 +1,110 @@
+package spatial
+
+import (
+	"context"
+	"math"
+	"math/rand/v2"
+
+	"drumlin/basis2d/blocks"
+
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/blas64"
+)
+
+// Share is a weighted set of places: place Index[k] counts Weight[k] times, for example with its area.
+type Share struct {
+	Index  []int32
+	Weight []float64
+}
+
+// Sum is the weighted sum of the means over a Share.
+type Sum struct {
+	Value float64 // plug-in: the sum of the places' own means, so that parts add up exactly
+	Delta float64 // standard error by the delta method
+	// Draws holds the sum in each of the joint posterior draws, from which intervals and chances are read.
+	Draws []float64
+}
+
+// DrawSD returns the standard deviation of the draws.
+func (s Sum) DrawSD() float64 {
+	var mean, ss float64
+	for _, v := range s.Draws {
+		mean += v / float64(len(s.Draws))
+	}
+	for _, v := range s.Draws {
+		ss += (v - mean) * (v - mean)
+	}
+	return math.Sqrt(ss / float64(len(s.Draws)-1))
+}
+
+// Sums returns sum_j Weight_j mu_j over each of the sets, mu the mean for one unit of exposure at place j, with its
+// uncertainty from joint draws of all coefficients: neighbouring places err together, so their errors do not average
+// out. The draws are the same for every set, so sums over different sets may be compared draw by draw.
+func (s *Surface) Sums(ctx context.Context, at Places, z []Covariate, sets []Share, draws int, seed uint64) ([]Sum, error) {
+	rows, err := s.rowMaker(z)
+	if err != nil {
+		return nil, err
+	}
+	p := len(s.beta)
+	betas := s.draw(draws, seed)
+	out := make([]Sum, len(sets))
+	for k, set := range sets {
+		if out[k], err = s.sum(ctx, rows, at, set, betas, draws, p); err != nil {
+			return nil, err
+		}
+	}
+	return out, nil
+}
+
+// sum works through one set in blocks, added in order.
+func (s *Surface) sum(ctx context.Context, rows func(*rowScratch, Places, int, int) blas64.General, at Places, set Share, betas blas64.General, draws, p int) (Sum, error) {
+	workers := blocks.Workers(s.workers)
+	scratch := make([]*rowScratch, workers)
+	etas := make([][]float64, workers)
+	acc := make([]float64, 1+p+draws) // value, gradient, draws
+	err := blocks.Sum(ctx, workers, len(set.Index), acc, func(worker, from, to int, acc []float64) error {
+		if scratch[worker] == nil {
+			scratch[worker], etas[worker] = &rowScratch{rows: make([]float64, blocks.Size*p)}, make([]float64, draws)
+		}
+		for j := from; j < to; j++ {
+			i, a := int(set.Index[j]), set.Weight[j]
+			x := rows(scratch[worker], at, i, i+1)
+			eta := dot(x.Data, s.beta)
+			acc[0] += a * s.dist.Mean(eta)
+			slope := a * s.dist.MeanSlope(eta)
+			for k, v := range x.Data {
+				acc[1+k] += slope * v
+			}
+			d := etas[worker]
+			blas64.Gemv(blas.Trans, 1, betas, blas64.Vector{N: p, Inc: 1, Data: x.Data}, 0, blas64.Vector{N: draws, Inc: 1, Data: d})
+			for k, e := range d {
+				acc[1+p+k] += a * s.dist.Mean(e)
+			}
+		}
+		return nil
+	})
+	if err != nil {
+		return Sum{}, err
+	}
+	return Sum{Value: acc[0], Delta: math.Sqrt(s.phi) * s.length(acc[1:1+p]), Draws: acc[1+p:]}, nil
+}
+
+// draw returns coefficients drawn from their posterior, p x draws.
+func (s *Surface) draw(draws int, seed uint64) blas64.General {
+	p := len(s.beta)
+	random := rand.New(rand.NewPCG(seed, 0x73757266616365))
+	b := blas64.General{Rows: p, Cols: draws, Stride: draws, Data: make([]float64, p*draws)}
+	root := math.Sqrt(s.phi)
+	for d := 0; d < draws; d++ {
+		for k := 0; k < p; k++ {
+			b.Data[k*draws+d] = root * random.NormFloat64()
+		}
+	}
+	blas64.Trsm(blas.Left, blas.NoTrans, 1, s.triangle(), b)
+	for k := 0; k < p; k++ {
+		for d := 0; d < draws; d++ {
+			b.Data[k*draws+d] += s.beta[k]
+		}
+	}
+	return b
+}

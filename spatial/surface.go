@@ -1,0 +1,246 @@
+package spatial
+
+import (
+	"context"
+	"math"
+	"math/rand/v2"
+
+	"drumlin/basis2d"
+	"drumlin/spatial/internal/penfit"
+	"drumlin/spatial/response"
+
+	"gonum.org/v1/gonum/blas"
+	"gonum.org/v1/gonum/blas/blas64"
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+// Surface is a fitted model. It is immutable and safe for concurrent use.
+type Surface struct {
+	model   Model
+	dist    response.Distribution
+	basis   *basis2d.ThinPlate // nil without a surface
+	knots   basis2d.Knots
+	border  *border
+	beta    []float64 // surface's columns, then the border's
+	factor  []float64 // R with R'R = X'WX + S, p x p row-major, upper triangular
+	phi     float64
+	report  Report
+	rows    *Rows
+	workers int
+}
+
+// Coefficient is a coefficient on the link scale.
+type Coefficient struct {
+	Name                    string
+	Estimate, StandardError float64
+}
+
+// Report says how the fit went and what it came to.
+type Report struct {
+	Distribution, Link string
+	Rows               int
+	Converged          bool
+	Iterations         int
+	Passes             int
+	ProjectedGradient  float64
+	Method             Method
+	// CriterionValue is the restricted likelihood on the coefficient scale with unpenalised columns 1, x, y in metres
+	// and the covariates as they are, whatever chose the smoothness; or the cross-validation score for GCV.
+	CriterionValue  float64
+	Lambda          float64 // of the surface, in metres: see Smoothness; NaN without a penalty
+	AtUpper         bool    // the data chose the plane
+	SurfaceDF       float64 // degrees of freedom of the surface, its constant not counted
+	DF              float64 // total
+	Knots           int
+	KnotsInGaps     int
+	DistinctPlaces  int
+	Dispersion      float64
+	KnownDispersion bool
+	Pearson         float64 // sum of squared Pearson residuals over n - df
+	Deviance        float64
+	ConstantDev     float64 // of intercept and offset alone
+	DevianceShare   float64
+	LogLikelihood   float64
+	AIC             float64
+	Coefficients    []Coefficient // the intercept is the surface's mean over rows
+}
+
+// Report returns the record of the fit.
+func (s *Surface) Report() Report { return s.report }
+
+// Model returns the model that was fitted.
+func (s *Surface) Model() Model { return s.model }
+
+func (s *Surface) describe(r *penfit.Result, d Data) Report {
+	rep := Report{
+		Distribution: s.dist.Name(), Link: s.dist.Link(), Rows: len(d.Response),
+		Converged: r.Converged, Iterations: r.Iterations, Passes: r.Passes, ProjectedGradient: r.Gradient,
+		Method: s.model.Smoothness.Method, Lambda: math.NaN(),
+		DF: r.Edf, SurfaceDF: r.Edf - 1 - float64(s.border.size()),
+		Dispersion: r.Phi, KnownDispersion: s.dist.KnownDispersion(), Pearson: r.Pearson,
+		Deviance: r.Deviance, ConstantDev: r.Constant, LogLikelihood: r.LogLikelihood,
+	}
+	if r.Constant > 0 {
+		rep.DevianceShare = 1 - r.Deviance/r.Constant
+	}
+	estimated := 0.0
+	if !rep.KnownDispersion {
+		estimated = 1
+	}
+	rep.AIC = -2*r.LogLikelihood + 2*(r.Edf+estimated)
+	rep.CriterionValue = r.Value
+	if s.basis != nil {
+		rep.Knots, rep.KnotsInGaps, rep.DistinctPlaces = s.basis.Dim(), s.knots.InGaps, s.knots.Distinct
+	}
+	if len(r.Lambda) == 1 {
+		rep.Lambda = r.Lambda[0] * s.basis.Scale * s.basis.Scale
+		rep.AtUpper = r.AtUpper[0]
+	}
+	if rep.Method != GCV || len(r.Lambda) == 0 {
+		rep.CriterionValue += s.border.logDet(s.border.size())
+		if s.basis != nil {
+			rep.CriterionValue += 2 * math.Log(s.basis.Scale)
+		}
+	}
+	rep.Coefficients = s.coefficients(d.Places)
+	return rep
+}
+
+// coefficients reads the raw coefficients off the orthogonal ones the fit works with.
+func (s *Surface) coefficients(at Places) []Coefficient {
+	k, q := surfaceColumns(s.basis), s.border.size()
+	mean := s.meanRow(at)
+	g := make([]float64, k+q)
+	copy(g, mean)
+	for j := 0; j < q; j++ { // T a_T = T (a~ - Mix R^-1 c)
+		for l, v := range s.border.functional(j, q) {
+			for t := 0; t < s.border.null; t++ {
+				g[k+l] -= mean[t] * s.border.Mix[t*q+j] * v
+			}
+		}
+	}
+	list := []Coefficient{s.linearForm("intercept", g)}
+	for j, name := range s.border.names() {
+		clear(g)
+		copy(g[k:], s.border.functional(j, q))
+		list = append(list, s.linearForm(name, g))
+	}
+	return list
+}
+
+// meanRow returns the mean of the surface's columns over places.
+func (s *Surface) meanRow(at Places) []float64 {
+	k, n := surfaceColumns(s.basis), at.Len()
+	mean := make([]float64, k)
+	row := make([]float64, k)
+	var scratch basis2d.Spread
+	for i := 0; i < n; i++ {
+		surfaceRowsTo(row, k, s.basis, at.X[i:i+1], at.Y[i:i+1], &scratch)
+		for j, v := range row {
+			mean[j] += v / float64(n)
+		}
+	}
+	return mean
+}
+
+// linearForm returns g'beta with its standard error; it overwrites nothing.
+func (s *Surface) linearForm(name string, g []float64) Coefficient {
+	return Coefficient{Name: name, Estimate: dot(g, s.beta), StandardError: math.Sqrt(s.phi) * s.length(g)}
+}
+
+// length returns |R'^-1 g|, the square root of g'H^-1 g.
+func (s *Surface) length(g []float64) float64 {
+	v := append([]float64(nil), g...)
+	blas64.Trsv(blas.Trans, s.triangle(), blas64.Vector{N: len(v), Inc: 1, Data: v})
+	return math.Sqrt(dot(v, v))
+}
+
+func (s *Surface) triangle() blas64.Triangular {
+	p := len(s.beta)
+	return blas64.Triangular{Uplo: blas.Upper, Diag: blas.NonUnit, N: p, Stride: p, Data: s.factor}
+}
+
+// Quantile returns the quantile for intervals of the given confidence: normal where the dispersion is known, else
+// Student's t with n - df degrees of freedom.
+func (s *Surface) Quantile(confidence float64) float64 {
+	return s.reference().Quantile(0.5 + confidence/2)
+}
+
+// Chance returns the posterior probability that the linear predictor exceeds limit.
+func (s *Surface) Chance(eta, se, limit float64) float64 {
+	if se == 0 {
+		return map[bool]float64{true: 1, false: 0}[eta > limit]
+	}
+	return s.reference().CDF((eta - limit) / se)
+}
+
+type distribution interface {
+	Quantile(p float64) float64
+	CDF(x float64) float64
+}
+
+func (s *Surface) reference() distribution {
+	if s.dist.KnownDispersion() {
+		return distuv.UnitNormal
+	}
+	return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: math.Max(float64(s.report.Rows)-s.report.DF, 1)}
+}
+
+// Mean returns g^-1(eta): the level for one unit of exposure, or the probability.
+func (s *Surface) Mean(eta float64) float64 { return s.dist.Mean(eta) }
+
+// MeanSlope returns dMean/deta.
+func (s *Surface) MeanSlope(eta float64) float64 { return s.dist.MeanSlope(eta) }
+
+// Linear returns g(mean).
+func (s *Surface) Linear(mean float64) float64 { return s.dist.Linear(mean) }
+
+// Rows are what the fit says of each observation, in the order of the data.
+type Rows struct {
+	Fitted   []float64 // mean of the response, exposure or trials included
+	Deviance []float64 // signed root of the deviance contribution
+	Quantile []float64 // quantile residual, randomised for counts (Dunn & Smyth 1996, J. Comput. Graph. Stat. 5:236)
+	Leverage []float64 // diagonal of the influence matrix; nil above a million rows
+}
+
+// leverageRows is the number of rows up to which leverages are kept.
+const leverageRows = 1_000_000
+
+// Rows returns the rows' residuals, or nil for a surface that was restored.
+func (s *Surface) Rows() *Rows { return s.rows }
+
+func (s *Surface) settleRows(ctx context.Context, e penfit.Engine, p penfit.Problem, r *penfit.Result, d Data, seed uint64) error {
+	n := len(p.Obs)
+	rows := &Rows{Fitted: make([]float64, n), Deviance: make([]float64, n), Quantile: make([]float64, n)}
+	random := rand.New(rand.NewPCG(seed, 0x6472756d6c696e))
+	if n <= leverageRows {
+		rows.Leverage = make([]float64, n)
+		if err := e.LeveragesTo(ctx, rows.Leverage); err != nil {
+			return err
+		}
+	}
+	for i, o := range p.Obs {
+		eta := r.Eta[i]
+		pt := s.dist.At(o, eta)
+		rows.Fitted[i] = s.dist.Mean(eta) * o.Trials
+		rows.Deviance[i] = math.Copysign(math.Sqrt(math.Max(pt.Deviance, 0)), o.Y-rows.Fitted[i])
+		rows.Quantile[i] = quantileResidual(s.dist, o, eta, s.phi, random.Float64())
+		if rows.Leverage != nil {
+			w := pt.Weight
+			if s.dist.Curvature() == response.Expected {
+				w = pt.Expected
+			}
+			rows.Leverage[i] *= w
+		}
+	}
+	s.rows = rows
+	return nil
+}
+
+// quantileResidual returns the normal quantile of a point drawn between P(Y < y) and P(Y <= y) by u in [0, 1).
+func quantileResidual(dist response.Distribution, o response.Obs, eta, phi, u float64) float64 {
+	below, upTo := dist.CDF(o, eta, phi)
+	p := below + (upTo-below)*u
+	const tail = 1e-300
+	return distuv.UnitNormal.Quantile(math.Min(math.Max(p, tail), 1-1e-16))
+}
