@@ -1,0 +1,118 @@
+package observe
+
+import (
+	"math"
+	"strings"
+)
+
+// part is what a column is asked for.
+type part int
+
+const (
+	response part = iota
+	trials
+	denominator
+	weight
+	coordinateX
+	coordinateY
+	linear
+	category
+	keep
+)
+
+// String names the part in messages about the header.
+func (p part) String() string {
+	return [...]string{"the response", "the trials", "the denominator", "the weight", "the x coordinate", "the y coordinate",
+		"a linear covariate", "a category", "text to keep"}[p]
+}
+
+// word names the part in codes.
+func (p part) word() string {
+	return [...]string{"response", "trials", "denominator", "weight", "coordinate", "coordinate", "covariate", "covariate", "text"}[p]
+}
+
+// subject names the part in reasons.
+func (p part) subject() string {
+	if p == trials {
+		return "number of trials"
+	}
+	return p.word()
+}
+
+func (p part) isText() bool { return p == category || p == keep }
+
+const (
+	longestLongitude = 360 // degrees: longitudes counted eastward to 360 and continued past 180 are both met
+	// farthestPlane in metres is more than any plane on the globe reaches; beyond it lie marks for no value and
+	// numbers whose squares lose the metres.
+	farthestPlane = 1e9
+)
+
+// firstFault fills the row at hand from a record and returns the first fault it has, if any.
+func (r *rows) firstFault(record []string) (Aside, bool) {
+	for i, f := range r.fields {
+		s := strings.TrimSpace(record[f.at])
+		if f.part.isText() {
+			if f.part == category && missing(s) {
+				return fault(f, s, faultMissing), true
+			}
+			r.text[i] = s
+			continue
+		}
+		v, bad := parseNumber(s)
+		if bad != "" {
+			return fault(f, s, bad), true
+		}
+		r.value[i] = v
+		if code, reason := r.outOfRange(f.part, v); code != "" {
+			if code == "positives-above-trials" {
+				f = r.fields[0]
+				s = strings.TrimSpace(record[f.at])
+			}
+			return Aside{Column: f.name, Value: shorten(s), Code: code, Reason: reason}, true
+		}
+	}
+	return Aside{}, false
+}
+
+// fault describes a value that is missing or no number.
+func fault(f field, value, code string) Aside {
+	a := Aside{Column: f.name, Value: shorten(value), Code: code, Reason: f.part.subject()}
+	switch code {
+	case faultMissing:
+		a.Code += "-" + f.part.word()
+		a.Reason += " is missing"
+	case faultInfinite:
+		a.Reason += " is not finite"
+	default:
+		a.Reason += " is not a number"
+	}
+	return a
+}
+
+// outOfRange returns the code and reason of a finite number that its part cannot use. The response has been read
+// when the trials are looked at.
+func (r *rows) outOfRange(p part, v float64) (code, reason string) {
+	whole := v == math.Trunc(v)
+	switch {
+	case p == response && r.want.Kind != Measure && v < 0:
+		return "negative-count", "response is negative"
+	case p == response && r.want.Kind != Measure && !whole:
+		return "fractional-count", "response is not a whole number"
+	case p == trials && v <= 0:
+		return "trials-not-positive", "number of trials is not above 0"
+	case p == trials && !whole:
+		return "fractional-trials", "number of trials is not a whole number"
+	case p == trials && r.value[0] > v:
+		return "positives-above-trials", "response is above the number of trials"
+	case p == denominator && v <= 0:
+		return "denominator-not-positive", "denominator is not above 0"
+	case p == weight && v <= 0:
+		return "weight-not-positive", "weight is not above 0"
+	case p == coordinateX && r.table.Degrees && math.Abs(v) > longestLongitude:
+		return "coordinates-out-of-range", "longitude is beyond -360 to 360"
+	case (p == coordinateX || p == coordinateY) && math.Abs(v) > farthestPlane:
+		return "coordinates-out-of-range", "coordinate is beyond -1e9 to 1e9 metres"
+	}
+	return "", ""
+}

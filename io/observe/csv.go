@@ -1,0 +1,283 @@
+package observe
+
+import (
+	"encoding/csv"
+	"fmt"
+	"io"
+	"math"
+	"slices"
+	"strings"
+
+	"github.com/paulmach/orb"
+)
+
+// ReadCSV reads a table with one line of names and commas between the columns, in UTF-8 (a byte order mark is
+// dropped), with quotes as in RFC 4180. The source is the name of the file in messages. Numbers are decimal with a
+// point; empty fields and NA, NaN and null in any capitals are missing.
+//
+// Rows that cannot be used are set aside, see Request for the order of the checks. An *Error is returned for a table
+// that cannot be used as a whole: one that is not such a file, has no such column or two of a name, rows of the wrong
+// length, a latitude beyond 90 degrees anywhere (coordinates were probably swapped, or are not degrees), more than
+// half of its rows to set aside, or any such row if the request is strict.
+func ReadCSV(r io.Reader, source string, want Request) (*Table, error) {
+	if err := want.Validate(); err != nil {
+		return nil, inFile(err, source)
+	}
+	in, err := openText(r, source)
+	if err != nil {
+		return nil, err
+	}
+	h, err := readHeader(in, source)
+	if err != nil {
+		return nil, err
+	}
+	rows, err := newRows(h, want)
+	if err != nil {
+		return nil, err
+	}
+	if err := rows.readAll(in); err != nil {
+		return nil, err
+	}
+	rows.table.sortLevels()
+	return rows.table, nil
+}
+
+func inFile(err error, source string) error {
+	if e, ok := err.(*Error); ok {
+		e.File = source
+	}
+	return err
+}
+
+// rows turns records into rows of the table. The slices value and text are the row at hand, by field.
+type rows struct {
+	header header
+	want   Request
+	fields []field // in the order of the checks
+	x, y   int     // the fields of the coordinates
+	table  *Table
+	known  []map[string]int32 // for each column of the table, the code of each level so far
+
+	value []float64
+	text  []string
+}
+
+// field is one part that one column of the file plays.
+type field struct {
+	part   part
+	name   string
+	at     int  // position in the file
+	column int  // position in Table.Columns; -1 for coordinates
+	again  bool // another field already fills the column
+}
+
+// newRows finds the columns asked for and lays out the table.
+func newRows(h header, want Request) (*rows, error) {
+	c, err := h.coordinates(want)
+	if err != nil {
+		return nil, err
+	}
+	r := &rows{header: h, want: want, table: &Table{
+		Source: h.source, XName: c.x, YName: c.y, Degrees: c.degrees, Recognised: c.recognised, PassedOver: c.passedOver,
+	}}
+	var lists = []struct {
+		part  part
+		names []string
+	}{
+		{response, named(want.Response)}, {trials, named(want.Trials)}, {denominator, named(want.Denominator)},
+		{weight, named(want.Weight)}, {coordinateX, named(c.x)}, {coordinateY, named(c.y)},
+		{linear, want.Linear}, {category, want.Category}, {keep, want.Keep},
+	}
+	for _, list := range lists {
+		for _, name := range list.names {
+			if err := r.add(list.part, name); err != nil {
+				return nil, err
+			}
+		}
+	}
+	r.value, r.text = make([]float64, len(r.fields)), make([]string, len(r.fields))
+	return r, nil
+}
+
+func named(name string) []string {
+	if name == "" {
+		return nil
+	}
+	return []string{name}
+}
+
+// add appends a field, and a column for it unless there is one of the name.
+func (r *rows) add(p part, name string) error {
+	at, err := r.header.find(name, p.String())
+	if err != nil {
+		return err
+	}
+	f := field{part: p, name: name, at: at, column: -1}
+	switch p {
+	case coordinateX:
+		r.x = len(r.fields)
+	case coordinateY:
+		r.y = len(r.fields)
+	default:
+		f.column = slices.IndexFunc(r.table.Columns, func(c Column) bool { return c.Name == name })
+		if f.column < 0 {
+			f.column = len(r.table.Columns)
+			r.table.Columns = append(r.table.Columns, Column{Name: name})
+			r.known = append(r.known, map[string]int32{})
+		}
+		f.again = slices.ContainsFunc(r.fields, func(g field) bool {
+			return g.column == f.column && g.part.isText() == p.isText()
+		})
+	}
+	r.fields = append(r.fields, f)
+	return nil
+}
+
+// readAll reads the records to the end and refuses a table that is mostly unusable.
+func (r *rows) readAll(in *csv.Reader) error {
+	for {
+		record, err := in.Read()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			return readError(r.header.source, err)
+		}
+		line, _ := in.FieldPos(0)
+		r.table.Rows++
+		if err := r.readRow(record, line); err != nil {
+			return err
+		}
+	}
+	switch {
+	case r.table.Rows == 0:
+		return &Error{File: r.header.source, Line: r.header.line, What: "no rows stand below the header", Advice: adviceWhole}
+	case len(r.table.Aside) > r.table.Rows/2:
+		return r.mostlyAside()
+	}
+	return nil
+}
+
+// readRow keeps one record or sets it aside. An error refuses the whole table.
+func (r *rows) readRow(record []string, line int) error {
+	here := Error{File: r.header.source, Line: line, Row: r.table.Rows}
+	if err := r.checkRecord(record, here); err != nil {
+		return err
+	}
+	if err := r.checkLatitude(record, here); err != nil {
+		return err
+	}
+	if a, bad := r.firstFault(record); bad {
+		a.Line, a.Row = int32(line), int32(r.table.Rows)
+		if r.want.Strict {
+			return r.refuse(a)
+		}
+		r.table.Aside = append(r.table.Aside, a)
+		return nil
+	}
+	r.keepRow(line)
+	return nil
+}
+
+// checkRecord refuses records of the wrong length and fields that are not text, whether or not they are asked for.
+func (r *rows) checkRecord(record []string, here Error) error {
+	if len(record) != len(r.header.names) {
+		here.What = fmt.Sprintf("%d fields where the header has %d", len(record), len(r.header.names))
+		here.Advice = "check the line for a missing comma, or for one that belongs inside quotes"
+		return &here
+	}
+	if here.Line > math.MaxInt32 {
+		here.What = "the file has more lines than can be counted"
+		return &here
+	}
+	for i, s := range record {
+		if !clean(s) {
+			here.Column, here.Value = r.header.names[i], shorten(s)
+			here.What, here.Advice = fmt.Sprintf("%q is not UTF-8 text", here.Value), adviceText
+			return &here
+		}
+	}
+	return nil
+}
+
+// checkLatitude refuses a table with an impossible latitude, in usable rows or not: one is enough to doubt them all.
+func (r *rows) checkLatitude(record []string, here Error) error {
+	if !r.table.Degrees {
+		return nil
+	}
+	s := strings.TrimSpace(record[r.fields[r.y].at])
+	if v, fault := parseNumber(s); fault != "" || math.Abs(v) <= 90 {
+		return nil
+	}
+	here.Column, here.Value = r.table.YName, shorten(s)
+	here.What, here.Advice = here.Value+" is not a latitude (-90 to 90)", adviceDegrees
+	return &here
+}
+
+// keepRow appends the row at hand to the table.
+func (r *rows) keepRow(line int) {
+	t := r.table
+	t.Line = append(t.Line, int32(line))
+	t.Row = append(t.Row, int32(t.Rows))
+	t.Geometry = append(t.Geometry, orb.Point{r.value[r.x], r.value[r.y]})
+	for i, f := range r.fields {
+		switch {
+		case f.column < 0 || f.again:
+		case f.part.isText():
+			c := &t.Columns[f.column]
+			c.Code = append(c.Code, r.code(f.column, r.text[i]))
+		default:
+			c := &t.Columns[f.column]
+			c.Number = append(c.Number, r.value[i])
+		}
+	}
+}
+
+// code returns the code of a level, a new one if need be; -1 for a missing one.
+func (r *rows) code(column int, level string) int32 {
+	if missing(level) {
+		return -1
+	}
+	code, seen := r.known[column][level]
+	if !seen {
+		c := &r.table.Columns[column]
+		code = int32(len(c.Level))
+		level = strings.Clone(level) // the field is part of a whole record
+		c.Level = append(c.Level, level)
+		r.known[column][level] = code
+	}
+	return code
+}
+
+// refuse turns a row to be set aside into an error.
+func (r *rows) refuse(a Aside) error {
+	return &Error{File: r.header.source, Line: int(a.Line), Row: int(a.Row), Column: a.Column, Value: a.Value,
+		What: a.sentence(), Advice: "correct the row, or leave out --strict to set such rows aside"}
+}
+
+// sentence is the reason and the value.
+func (a Aside) sentence() string {
+	if a.Value == "" {
+		return a.Reason
+	}
+	return fmt.Sprintf("%s: %q", a.Reason, a.Value)
+}
+
+// mostlyAside says why so many rows are unusable: up to three reasons, and the first row as an example.
+func (r *rows) mostlyAside() error {
+	counts := r.table.CountAside()
+	var reasons []string
+	for i, c := range counts {
+		if i == 3 {
+			reasons = append(reasons, fmt.Sprintf("%d more reasons", len(counts)-i))
+			break
+		}
+		reasons = append(reasons, fmt.Sprintf("column %q, %s (%d)", c.Column, c.Reason, c.Rows))
+	}
+	i := slices.IndexFunc(r.table.Aside, func(a Aside) bool { return a.Code == counts[0].Code && a.Column == counts[0].Column })
+	a := r.table.Aside[i]
+	return &Error{File: r.header.source, Value: a.Value,
+		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; the first of the former kind is row %d (line %d), where %s",
+			len(r.table.Aside), r.table.Rows, strings.Join(reasons, "; "), a.Row, a.Line, a.sentence()),
+		Advice: "check that the right columns are named, and that missing values are written as empty fields or NA"}
+}

@@ -1,0 +1,9 @@
+// Package observe reads a table of observations and hands on what can be used of it.
+//
+// A row is one observation at one place. A file that is not what it should be (an absent column, a row with a field
+// too many, a latitude of 97) is refused with an Error that says where and what to do. A row that cannot be used (no
+// response, a denominator of 0) is set aside with its reason, and the rest goes on, unless the request is strict or
+// more than half of the rows would be lost.
+//
+// The package opens no files: it is given a reader and the name to call the source by in messages.
+package observe

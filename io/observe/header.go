@@ -1,0 +1,172 @@
+package observe
+
+import (
+	"encoding/csv"
+	"fmt"
+	"io"
+	"strings"
+)
+
+// header is the line of names and where the request found its columns in it.
+type header struct {
+	source string
+	line   int
+	names  []string
+}
+
+// readHeader reads the names. Blank names are let pass: spreadsheets leave them, and nobody can ask for one.
+func readHeader(in *csv.Reader, source string) (header, error) {
+	record, err := in.Read()
+	if err == io.EOF {
+		return header{}, &Error{File: source, What: "the file is empty", Advice: adviceWhole}
+	}
+	if err != nil {
+		return header{}, readError(source, err)
+	}
+	line, _ := in.FieldPos(0)
+	h := header{source: source, line: line, names: make([]string, len(record))}
+	first := map[string]int{}
+	numbers := 0
+	for i, field := range record {
+		name := strings.TrimSpace(field)
+		if !clean(name) {
+			return header{}, &Error{File: source, Line: line, What: fmt.Sprintf("the name of column %d is not UTF-8 text", i+1), Advice: adviceText}
+		}
+		if at, seen := first[name]; seen && name != "" {
+			return header{}, &Error{File: source, Line: line, Column: name, Advice: "give each column a name of its own",
+				What: fmt.Sprintf("the name appears twice, as columns %d and %d", at+1, i+1)}
+		}
+		first[name] = i
+		if _, fault := parseNumber(name); fault == "" {
+			numbers++
+		}
+		h.names[i] = strings.Clone(name)
+	}
+	if numbers == len(h.names) {
+		return header{}, &Error{File: source, Line: line, What: "numbers stand where the names of the columns should be",
+			Advice: "put the names of the columns on the first line"}
+	}
+	return h, nil
+}
+
+// find returns the position of a column, which must exist.
+func (h header) find(name, part string) (int, error) {
+	for i, n := range h.names {
+		if n == name {
+			return i, nil
+		}
+	}
+	return 0, absent(h.source, h.line, name, part, h.names)
+}
+
+// pair is two names by which coordinate columns are known.
+type pair struct {
+	x, y    string
+	degrees bool
+}
+
+// pairs are looked for in this order, in any mixture of capitals, and both names must be there.
+var pairs = []pair{
+	{"longitude", "latitude", true}, {"lon", "lat", true},
+	{"easting", "northing", false}, {"x", "y", false},
+}
+
+func (p pair) String() string { return p.x + "/" + p.y }
+
+// coordinates says which columns hold the coordinates and what they are.
+type coordinates struct {
+	x, y       string
+	degrees    bool
+	recognised bool
+	passedOver []string
+}
+
+// coordinates takes the columns the user named, or recognises them. A file with longitude and latitude beside an
+// easting and northing is read by its longitude and latitude, since these say where on the globe they are and the
+// others do not; two pairs of the same sort are ambiguous and refused.
+func (h header) coordinates(want Request) (coordinates, error) {
+	if want.X != "" {
+		return coordinates{x: want.X, y: want.Y, degrees: degreesByName(want)}, nil
+	}
+	found, err := h.recognise(want)
+	if err != nil {
+		return coordinates{}, err
+	}
+	var usable, others []pair
+	for _, p := range found {
+		switch {
+		case want.Axes == AxesPlane && p.degrees, want.Axes == AxesDegrees && !p.degrees && strings.ToLower(p.x) != "x":
+			others = append(others, p)
+		case len(usable) > 0 && usable[0].degrees && !p.degrees:
+			others = append(others, p)
+		default:
+			usable = append(usable, p)
+		}
+	}
+	if len(usable) != 1 {
+		return coordinates{}, h.noSinglePair(want, usable, others)
+	}
+	c := coordinates{x: usable[0].x, y: usable[0].y, recognised: true}
+	c.degrees = want.Axes == AxesDegrees || want.Axes == AxesByName && usable[0].degrees
+	for _, p := range others {
+		c.passedOver = append(c.passedOver, p.String())
+	}
+	return c, nil
+}
+
+// degreesByName decides what columns named by the user are.
+func degreesByName(want Request) bool {
+	if want.Axes != AxesByName {
+		return want.Axes == AxesDegrees
+	}
+	x, y := strings.ToLower(want.X), strings.ToLower(want.Y)
+	return (x == "lon" || x == "longitude") && (y == "lat" || y == "latitude")
+}
+
+// recognise returns the pairs the header has, spelled as there. Columns that play another main part do not count: in
+// a table of x, y and a response y there is no pair.
+func (h header) recognise(want Request) ([]pair, error) {
+	taken := map[string]bool{want.Response: true, want.Trials: true, want.Denominator: true, want.Weight: true}
+	spelled := map[string][]string{}
+	for _, name := range h.names {
+		if !taken[name] {
+			low := strings.ToLower(name)
+			spelled[low] = append(spelled[low], name)
+		}
+	}
+	var found []pair
+	for _, p := range pairs {
+		xs, ys := spelled[p.x], spelled[p.y]
+		if len(xs) == 0 || len(ys) == 0 {
+			continue
+		}
+		for _, same := range [][]string{xs, ys} {
+			if len(same) > 1 {
+				return nil, &Error{File: h.source, Line: h.line, Advice: adviceXY,
+					What: fmt.Sprintf("columns %q and %q could both be a coordinate", same[0], same[1])}
+			}
+		}
+		found = append(found, pair{xs[0], ys[0], p.degrees})
+	}
+	return found, nil
+}
+
+// noSinglePair says why recognition came to nothing.
+func (h header) noSinglePair(want Request, usable, others []pair) error {
+	e := &Error{File: h.source, Line: h.line, Advice: adviceXY}
+	switch {
+	case len(usable) > 1:
+		e.What = fmt.Sprintf("columns %s and %s could both be the coordinates", usable[0], usable[1])
+	case len(others) > 0 && want.Axes == AxesPlane:
+		e.What = fmt.Sprintf("columns %s are longitude and latitude by their names, but the coordinates are said to be in a plane", others[0])
+		e.Advice = adviceDegrees
+	case len(others) > 0:
+		e.What = fmt.Sprintf("columns %s are in a plane by their names, but the coordinates are said to be longitude and latitude", others[0])
+		e.Advice = adviceDegrees
+	default:
+		e.What = "no coordinate columns are recognised"
+		e.Advice = fmt.Sprintf("%s; known by their names are %s, %s, %s and %s; %s",
+			adviceXY, pairs[0], pairs[1], pairs[2], pairs[3], columnList(h.names))
+	}
+	return e
+}

@@ -1,0 +1,109 @@
+package observe
+
+import (
+	"fmt"
+	"slices"
+)
+
+// Kind says what a response is, and so which of its values can be used.
+type Kind int
+
+const (
+	None      Kind = iota // no response: a file of places
+	Measure               // any finite number
+	Count                 // a whole number, 0 or more
+	Positives             // a whole number from 0 to the number of trials
+)
+
+// Axes says what the coordinates are.
+type Axes int
+
+const (
+	AxesByName  Axes = iota // longitude and latitude where the columns are called so, otherwise a plane
+	AxesDegrees             // longitude and latitude in degrees, whatever the columns are called
+	AxesPlane               // easting and northing in metres; columns called longitude and latitude are not taken for them
+)
+
+// Request says which columns of a table play which part. Names are matched exactly, after blanks around the header's
+// names are dropped. Empty names are parts nobody plays.
+//
+// A row is checked part by part in the order of the fields: response, trials, denominator, weight, coordinates (x,
+// then y), linear covariates, categories. The first check it fails is the reason it is set aside for.
+type Request struct {
+	Response    string   // column of the response; empty with Kind None
+	Kind        Kind     // what the response is
+	Trials      string   // number examined, whole and above 0: with Positives, and only then
+	Denominator string   // people, area, effort or expected: finite and above 0
+	Weight      string   // finite and above 0
+	X, Y        string   // coordinate columns; both empty to recognise them by their names
+	Axes        Axes     // what the coordinates are
+	Linear      []string // covariates that are finite numbers
+	Category    []string // covariates that are text, not missing
+	Keep        []string // text to carry along; may be missing, is never a reason to set a row aside
+	Strict      bool     // refuse the first row that cannot be used instead of setting it aside
+}
+
+// Validate reports the first thing about a request that no table could satisfy. ReadCSV calls it.
+func (q Request) Validate() error {
+	switch {
+	case q.Kind != None && q.Response == "":
+		return &Error{What: "no column is named for the response", Advice: "name it with --response"}
+	case q.Kind == None && q.Response != "":
+		return &Error{Column: q.Response, What: "a response is named, but places have none"}
+	case q.Kind == Positives && q.Trials == "":
+		return &Error{Column: q.Response, What: "a number positive needs a number of trials", Advice: "name the column of the number examined with --trials"}
+	case q.Kind != Positives && q.Trials != "":
+		return &Error{Column: q.Trials, What: "trials are named, but the response is not a number positive"}
+	case q.Trials != "" && q.Denominator != "":
+		return &Error{Column: q.Denominator, What: "a number positive has trials and takes no other denominator"}
+	case (q.X == "") != (q.Y == ""):
+		return &Error{Column: q.X + q.Y, What: "one coordinate column is named without the other", Advice: adviceXY}
+	}
+	return q.overlap()
+}
+
+// overlap refuses a column asked to play two parts that exclude each other. The response is nothing else, a
+// coordinate is no denominator, trials or weight, and a covariate is named once and as one kind. A coordinate or a
+// denominator may also be a linear covariate.
+func (q Request) overlap() error {
+	main := []struct{ name, part string }{
+		{q.Response, "the response"}, {q.Trials, "the number of trials"}, {q.Denominator, "the denominator"},
+		{q.Weight, "the weight"}, {q.X, "the x coordinate"}, {q.Y, "the y coordinate"},
+	}
+	for i, a := range main {
+		for _, b := range main[i+1:] {
+			// What is counted may also be the precision it is known to.
+			weighs := b.name == q.Weight && (a.name == q.Trials || a.name == q.Denominator)
+			if a.name != "" && a.name == b.name && !weighs {
+				return twice(a.name, a.part, b.part)
+			}
+		}
+	}
+	covariate := map[string]string{}
+	for _, list := range []struct {
+		names []string
+		part  string
+	}{{q.Linear, "a linear covariate"}, {q.Category, "a category"}} {
+		for _, name := range list.names {
+			switch before, seen := covariate[name]; {
+			case name == "":
+				return &Error{What: fmt.Sprintf("an empty name is given for %s", list.part)}
+			case name == q.Response:
+				return twice(name, "the response", list.part)
+			case seen && before == list.part:
+				return &Error{Column: name, What: "named twice as " + before}
+			case seen:
+				return twice(name, before, list.part)
+			}
+			covariate[name] = list.part
+		}
+	}
+	if slices.Contains(q.Keep, "") {
+		return &Error{What: "an empty name is given for text to keep"}
+	}
+	return nil
+}
+
+func twice(column, a, b string) error {
+	return &Error{Column: column, What: fmt.Sprintf("cannot be both %s and %s", a, b)}
+}

@@ -1,0 +1,115 @@
+package observe
+
+import (
+	"cmp"
+	"slices"
+
+	"github.com/paulmach/orb"
+)
+
+// Table holds the rows that can be used, in the order of the source, and the rows that were set aside. All slices but
+// Aside have one entry a kept row.
+type Table struct {
+	Source   string         // the name the source was given, as in messages
+	Line     []int32        // line of the source on which the row starts; the header stands on line 1
+	Row      []int32        // number of the row below the header, from 1
+	Columns  []Column       // what the request asked for, each column once, in the order of Request
+	Geometry []orb.Geometry // where the row was observed: an orb.Point of easting and northing, or longitude and latitude
+
+	XName, YName string   // the columns the coordinates came from
+	Degrees      bool     // the coordinates are longitude and latitude in degrees
+	Recognised   bool     // the coordinate columns were found by their names, not named by the user
+	PassedOver   []string // recognised pairs that were present but not used, such as "x/y"
+
+	Rows  int     // rows in the source, kept or not
+	Aside []Aside // rows left out, in the order of the source
+}
+
+// Column is one column of a Table. A column asked for as a number has Number, one asked for as text has Code and
+// Level; a column asked for as both has all three.
+type Column struct {
+	Name   string
+	Number []float64 // finite values
+	Code   []int32   // index into Level; -1 where a column that is only kept (Request.Keep) has no value
+	Level  []string  // distinct values of the kept rows, sorted by their bytes
+}
+
+// Aside is a row that was left out.
+type Aside struct {
+	Line, Row int32  // as in Table
+	Column    string // the column that decided
+	Value     string // what stood there, cut short after 60 characters
+	Code      string // one word for programs, such as "missing-response"
+	Reason    string // the same in words, such as "response is missing"
+}
+
+// AsideCount says how many rows were set aside for one reason in one column.
+type AsideCount struct {
+	Code, Column, Reason string // as in Aside
+	Rows                 int
+}
+
+// Len returns the number of kept rows.
+func (t *Table) Len() int { return len(t.Row) }
+
+// Column returns the column of that name, or nil where the request did not ask for one.
+func (t *Table) Column(name string) *Column {
+	for i := range t.Columns {
+		if t.Columns[i].Name == name {
+			return &t.Columns[i]
+		}
+	}
+	return nil
+}
+
+// XY returns the coordinates of the kept rows, newly allocated: easting and northing, or longitude and latitude.
+func (t *Table) XY() (x, y []float64) {
+	x, y = make([]float64, t.Len()), make([]float64, t.Len())
+	for i, g := range t.Geometry {
+		p := g.(orb.Point)
+		x[i], y[i] = p[0], p[1]
+	}
+	return x, y
+}
+
+// CountAside returns how many rows were set aside for each reason and column: the most frequent first, ties by
+// reason and then by column.
+func (t *Table) CountAside() []AsideCount {
+	type key struct{ code, column string }
+	at := map[key]int{}
+	var counts []AsideCount
+	for _, a := range t.Aside {
+		k := key{a.Code, a.Column}
+		i, seen := at[k]
+		if !seen {
+			i = len(counts)
+			at[k] = i
+			counts = append(counts, AsideCount{Code: a.Code, Column: a.Column, Reason: a.Reason})
+		}
+		counts[i].Rows++
+	}
+	slices.SortFunc(counts, func(a, b AsideCount) int {
+		return cmp.Or(-cmp.Compare(a.Rows, b.Rows), cmp.Compare(a.Reason, b.Reason), cmp.Compare(a.Column, b.Column))
+	})
+	return counts
+}
+
+// sortLevels puts the levels of every text column in order and renumbers the codes to match.
+func (t *Table) sortLevels() {
+	for i := range t.Columns {
+		c := &t.Columns[i]
+		sorted := slices.Clone(c.Level)
+		slices.Sort(sorted)
+		to := make([]int32, len(sorted))
+		for old, level := range c.Level {
+			at, _ := slices.BinarySearch(sorted, level)
+			to[old] = int32(at)
+		}
+		for r, code := range c.Code {
+			if code >= 0 {
+				c.Code[r] = to[code]
+			}
+		}
+		c.Level = sorted
+	}
+}
