@@ -1,0 +1,166 @@
+package pipeline
+
+import (
+	"fmt"
+	"math"
+
+	"drumlin/grids"
+	"drumlin/io/plan"
+	"drumlin/io/summary"
+	"drumlin/spatial"
+)
+
+// checks are the findings on the fit, each with its figure and what it means for the reader. The limits are common
+// practice, no source, unless a comment says otherwise.
+func (r *run) checks() []summary.Check {
+	rep := r.surface.Report()
+	list := []summary.Check{converged(rep)}
+	if rep.Knots > 0 {
+		list = append(list, knots(rep))
+	}
+	if rep.KnownDispersion {
+		list = append(list, dispersion(rep))
+	}
+	if !r.target.own() {
+		list = append(list, r.far())
+	}
+	list = append(list, r.aside())
+	if r.zones != nil {
+		list = append(list, r.zones.covering())
+	}
+	return list
+}
+
+func level(figure, look, stop float64) summary.Level {
+	switch {
+	case figure > stop:
+		return summary.Stop
+	case figure > look:
+		return summary.Look
+	}
+	return summary.Clear
+}
+
+func converged(rep spatial.Report) summary.Check {
+	c := summary.Check{Name: "convergence", Level: summary.Clear, Figure: summary.Number(rep.ProjectedGradient),
+		Sentence: "the search for the smoothness ended where its criterion is level"}
+	if !rep.Converged {
+		c.Level = summary.Stop
+		c.Sentence = fmt.Sprintf("the search for the smoothness did not settle (gradient %.2g after %d steps): do not use the map", rep.ProjectedGradient, rep.Iterations)
+	}
+	return c
+}
+
+// knots warns when the surface uses most of what it was allowed, so that the limit rather than the data may be what
+// makes it smooth; or when it follows nearly every place.
+func knots(rep spatial.Report) summary.Check {
+	share := rep.SurfaceDF / float64(rep.Knots-1)
+	c := summary.Check{Name: "knots", Figure: summary.Number(share), Level: summary.Clear,
+		Sentence: "the data use " + summary.Short(summary.Number(100*share)) + " % of the degrees of freedom that the knots allow"}
+	places := rep.Knots - rep.KnotsInGaps
+	switch {
+	case places < rep.DistinctPlaces && share > 0.7:
+		c.Level = summary.Look
+		c.Sentence += ": the surface may be smoother than the data ask for; allow more with --max-knots"
+	case places >= rep.DistinctPlaces && rep.SurfaceDF > 0.6*float64(rep.DistinctPlaces):
+		c.Level = summary.Look
+		c.Sentence = fmt.Sprintf("the surface uses %s degrees of freedom for %d places: it follows single observations closely, and noise may be the cause",
+			summary.Short(summary.Number(rep.SurfaceDF)), rep.DistinctPlaces)
+	}
+	return c
+}
+
+// dispersion holds the Pearson statistic against 1 for distributions that fix it: beyond three of its own standard
+// errors, sqrt(2/(n - df)), it is more than chance.
+func dispersion(rep spatial.Report) summary.Check {
+	free := float64(rep.Rows) - rep.DF
+	phi := rep.Pearson
+	chance := 1 + 3*math.Sqrt(2/math.Max(free, 1))
+	c := summary.Check{Name: "over-dispersion", Figure: summary.Number(phi), Level: summary.Clear,
+		Sentence: fmt.Sprintf("the scatter about the map is %s times what a %s allows (Pearson)", summary.Short(summary.Number(phi)), rep.Distribution)}
+	switch {
+	case math.IsNaN(phi):
+		c.Level = summary.Look
+		c.Sentence = "nothing is left to judge the scatter about the map from"
+	case phi > chance && phi > 1.2:
+		c.Level = level(phi, 1.2, 3)
+		c.Sentence += fmt.Sprintf(": the intervals are too narrow by its square root, %s, and part of the surface may be noise",
+			summary.Short(summary.Number(math.Sqrt(phi))))
+	}
+	return c
+}
+
+// farFactor says what far from data is: more than this many times the median spacing.
+const farFactor = 3
+
+func (r *run) far() summary.Check {
+	spacing := grids.MedianSpacing(r.obs.data.Places.X, r.obs.data.Places.Y)
+	n := 0
+	for _, d := range r.estimates.nearest {
+		if d > farFactor*spacing {
+			n++
+		}
+	}
+	share := float64(n) / float64(len(r.estimates.nearest))
+	return summary.Check{Name: "distance", Figure: summary.Number(share), Level: level(share, 0.1, 0.5),
+		Sentence: fmt.Sprintf("%s %% of the map lies farther than %d times the median spacing from any observation: there it rests on the model alone",
+			summary.Short(summary.Number(100*share)), farFactor)}
+}
+
+func (r *run) aside() summary.Check {
+	t := r.obs.table
+	share := float64(len(t.Aside)) / float64(t.Rows)
+	c := summary.Check{Name: "rows set aside", Figure: summary.Number(share), Level: level(share, 0.05, 0.25), Sentence: "every row could be used"}
+	if len(t.Aside) > 0 {
+		c.Sentence = fmt.Sprintf("%d of %d rows were set aside, see set-aside.csv: if they differ from the others, so does the map from the truth", len(t.Aside), t.Rows)
+	}
+	return c
+}
+
+// leastCovered is the share of a zone that the map must cover for its figures to stand for it.
+const leastCovered = 0.95
+
+func (z *zoneResults) covering() summary.Check {
+	worst := 0
+	for k, c := range z.covered {
+		if c < z.covered[worst] {
+			worst = k
+		}
+	}
+	c := summary.Check{Name: "zones", Figure: summary.Number(z.covered[worst]), Level: summary.Clear, Sentence: "the map covers every zone"}
+	if z.covered[worst] < leastCovered {
+		c.Level = summary.Stop
+		c.Sentence = fmt.Sprintf("the map covers only %s %% of zone %s: its figures are for that part; widen the map with --within",
+			summary.Short(summary.Number(100*z.covered[worst])), z.zones[worst].Name)
+	}
+	return c
+}
+
+// cautions tell what the reader of the map must know.
+func (r *run) cautions() []string {
+	s := r.settings
+	list := []string{"Limits hold for the mean, on average across the map; peaks and single places are covered less often."}
+	kind, _ := s.Denominator()
+	switch {
+	case kind == "people" || kind == "expected" || s.Trials != nil:
+		list = append(list,
+			"Smoothed rates describe places, not persons, and prove no cause; small numbers can identify people: follow your data protection rules before you publish.",
+			"Decisions on health belong to the responsible authority and to licensed practice.")
+	case kind == "area" || kind == "effort":
+		list = append(list,
+			"Counts are taken as complete: animals or plants that were missed are missing from the map and its totals.",
+			"Where people or protected species depend on it, follow local rules and have the survey design checked by a qualified person.")
+	default:
+		list = append(list, "Not for decisions on safety or health without the checks that local rules and licensed practice ask for.")
+	}
+	if s.Reference != nil {
+		list = append(list, "The reference level is taken as known: its own error is not in the limits.")
+	}
+	if len(r.target.held) > 0 {
+		list = append(list, "The map is adjusted to held covariates: it shows what would be found there at those values.")
+	}
+	if *s.Distribution != plan.Gaussian {
+		list = append(list, "Intervals are for the smoothness that the data chose, as if it were known.")
+	}
+	return list
+}

@@ -1,0 +1,172 @@
+package pipeline
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"strconv"
+	"strings"
+
+	"drumlin/grids/crs"
+	"drumlin/io/archive"
+	"drumlin/io/plan"
+	"drumlin/io/tables"
+	"drumlin/spatial"
+)
+
+// reporting says how estimates are stated, and what the words around them are.
+type reporting struct {
+	archive.Reporting
+	ratio bool   // a relative risk
+	title string // of the pictures
+}
+
+// report settles the reporting unit.
+func (r *run) report() (reporting, error) {
+	s := r.settings
+	p := reporting{Reporting: archive.Reporting{CRS: r.obs.system.Code(), Degrees: r.obs.table.Degrees, Response: *s.Response,
+		Factor: 1, Threshold: s.Threshold, Confidence: *s.Confidence}}
+	if *s.Distribution != plan.Gaussian {
+		p.Factor = *s.Per
+	}
+	p.Unit = r.unit()
+	kind, _ := s.Denominator()
+	p.ratio = kind == "expected"
+	if ref := s.Reference; ref != nil {
+		level := ref.Level
+		if ref.Overall {
+			level = r.overall() * p.Factor
+		}
+		p.Factor /= level
+		p.ratio = true
+		p.Unit = fmt.Sprintf("relative to %s %s", strconv.FormatFloat(level, 'g', 4, 64), p.Unit)
+	}
+	if s.UnitLabel != nil {
+		p.Unit = *s.UnitLabel
+	}
+	p.title = *s.Response
+	if s.Title != nil {
+		p.title = *s.Title
+	}
+	if t := s.Threshold; t != nil {
+		eta := r.surface.Linear(*t / p.Factor)
+		if math.IsNaN(eta) || math.IsInf(eta, 0) {
+			return p, refuse("give it in the reporting unit: "+p.Unit, "--threshold %g is out of reach of the mean", *t)
+		}
+	}
+	return p, nil
+}
+
+// overall is the level of all observations together.
+func (r *run) overall() float64 {
+	var y, e float64
+	for i, v := range r.obs.data.Response {
+		y += v
+		switch {
+		case r.obs.data.Exposure != nil:
+			e += r.obs.data.Exposure[i]
+		case r.obs.data.Trials != nil:
+			e += r.obs.data.Trials[i]
+		default:
+			e++
+		}
+	}
+	return y / e
+}
+
+// unit words the reporting unit.
+func (r *run) unit() string {
+	s := r.settings
+	per := ""
+	if *s.Per != 1 {
+		per = strconv.FormatFloat(*s.Per, 'f', -1, 64) + " "
+	}
+	kind, column := s.Denominator()
+	switch {
+	case *s.Distribution == plan.Gaussian:
+		return *s.Response
+	case *s.Distribution == plan.Binomial && *s.Per == 1:
+		return *s.Response + ", share of " + *s.Trials
+	case *s.Distribution == plan.Binomial && *s.Per == 100:
+		return *s.Response + ", % of " + *s.Trials
+	case *s.Distribution == plan.Binomial:
+		return *s.Response + " per " + per + *s.Trials
+	case kind == "people" && per == "":
+		return *s.Response + " per person"
+	case kind == "people":
+		return *s.Response + " per " + per + "people"
+	case kind == "area":
+		return *s.Response + " per " + per + *s.AreaUnit
+	case kind == "expected":
+		return *s.Response + ", observed over expected"
+	case kind == "effort":
+		return *s.Response + " per " + per + "unit of " + column
+	case per != "":
+		return *s.Response + " per " + strings.TrimSpace(per) + " observations"
+	}
+	return *s.Response + " per observation"
+}
+
+// estimates are the columns of surface.csv, one value a place.
+type estimates struct {
+	estimate, standardError, lower, upper, cv []float64
+	chance                                    []float64 // nil without a threshold
+	eta, etaError                             []float64
+	nearest                                   []float64
+}
+
+// estimate predicts at places and states the result in the reporting unit: limits are the link's image of
+// eta -+ quantile times its error, so they stay inside the response's range.
+func estimate(ctx context.Context, s *spatial.Surface, rep archive.Reporting, at spatial.Places, z []spatial.Covariate) (*estimates, error) {
+	n := at.Len()
+	columns := make([][]float64, 7)
+	for k := range columns {
+		columns[k] = make([]float64, n)
+	}
+	e := &estimates{estimate: columns[0], standardError: columns[1], lower: columns[2], upper: columns[3], cv: columns[4], eta: columns[5], etaError: columns[6]}
+	if err := s.PredictTo(ctx, e.eta, e.etaError, at, z); err != nil {
+		return nil, err
+	}
+	q := s.Quantile(rep.Confidence)
+	for i, eta := range e.eta {
+		se := e.etaError[i]
+		e.estimate[i] = s.Mean(eta) * rep.Factor
+		e.standardError[i] = math.Abs(s.MeanSlope(eta)) * rep.Factor * se
+		e.lower[i] = s.Mean(eta-q*se) * rep.Factor
+		e.upper[i] = s.Mean(eta+q*se) * rep.Factor
+		e.cv[i] = e.standardError[i] / math.Abs(e.estimate[i])
+	}
+	if rep.Threshold != nil {
+		e.chance = make([]float64, n)
+		limit := s.Linear(*rep.Threshold / rep.Factor)
+		for i, eta := range e.eta {
+			e.chance[i] = s.Chance(eta, e.etaError[i], limit)
+		}
+	}
+	return e, nil
+}
+
+// columns returns the figures of surface.csv after the coordinates, in its order.
+func (e *estimates) columns() []tables.Column {
+	return []tables.Column{
+		{Name: "estimate", Number: e.estimate}, {Name: "standard_error", Number: e.standardError},
+		{Name: "lower", Number: e.lower}, {Name: "upper", Number: e.upper}, {Name: "cv", Number: e.cv},
+		{Name: "chance", Number: e.chance},
+		{Name: "linear_predictor", Number: e.eta}, {Name: "linear_standard_error", Number: e.etaError},
+		{Name: "nearest_m", Number: e.nearest},
+	}
+}
+
+// surfaceTable returns all columns of surface.csv.
+func surfaceTable(system crs.System, at spatial.Places, e *estimates) []tables.Column {
+	lonLat := []tables.Column{{Name: "lon"}, {Name: "lat"}}
+	if system.Geographic() {
+		lon, lat := make([]float64, at.Len()), make([]float64, at.Len())
+		for i := range lon {
+			lon[i], lat[i] = system.Inverse(at.X[i], at.Y[i])
+		}
+		lonLat[0].Number, lonLat[1].Number = lon, lat
+	}
+	all := []tables.Column{{Name: "x", Number: at.X}, {Name: "y", Number: at.Y}}
+	return append(append(all, lonLat...), e.columns()...)
+}

@@ -1,0 +1,149 @@
+package pipeline
+
+import (
+	"context"
+	"errors"
+	"io/fs"
+	"os"
+	"path/filepath"
+)
+
+// Folder makes dir whole or not at all: fill writes into a sibling dir.partial, which is renamed at the end with
+// everything on the disk. An error, a cancelled ctx and a full disk leave no dir.partial behind; what a killed process
+// left behind is cleared by the next one. An existing dir is refused without force, and with force only a folder that
+// drumlin wrote is replaced.
+func Folder(ctx context.Context, dir string, force bool, fill func(partial string) error) (err error) {
+	dir = filepath.Clean(dir)
+	if err := checkFolder(dir, force); err != nil {
+		return err
+	}
+	partial := dir + ".partial"
+	release, err := claim(partial)
+	if err != nil {
+		return err
+	}
+	defer func() {
+		if err != nil {
+			err = errors.Join(err, os.RemoveAll(partial))
+		}
+		release()
+	}()
+	if err := os.MkdirAll(filepath.Dir(dir), 0o755); err != nil {
+		return plainly(err, filepath.Dir(dir))
+	}
+	if err := fill(partial); err != nil {
+		return err
+	}
+	if err := ctx.Err(); err != nil {
+		return err
+	}
+	if err := syncFolders(partial); err != nil {
+		return err
+	}
+	return replace(partial, dir)
+}
+
+// checkFolder refuses an existing folder early, before any work.
+func checkFolder(dir string, force bool) error {
+	info, err := os.Lstat(dir)
+	switch {
+	case errors.Is(err, fs.ErrNotExist):
+		return nil
+	case err != nil:
+		return plainly(err, dir)
+	case !force:
+		return refuse("name another folder, or add --force to replace it", "%s exists already", dir)
+	case !info.IsDir():
+		return refuse("name another folder", "%s is not a folder, so it is not replaced", dir)
+	}
+	entries, err := os.ReadDir(dir)
+	if err != nil {
+		return plainly(err, dir)
+	}
+	if len(entries) > 0 && !isOurs(dir) {
+		return refuse("name another folder, or empty it yourself", "%s holds files that drumlin did not write, so it is not replaced", dir)
+	}
+	return nil
+}
+
+// isOurs reports whether a folder is the result of an earlier run.
+func isOurs(dir string) bool {
+	for _, mark := range []string{"summary.json", "commands.txt"} {
+		if info, err := os.Stat(filepath.Join(dir, mark)); err == nil && info.Mode().IsRegular() {
+			return true
+		}
+	}
+	return false
+}
+
+// claim makes an empty folder partial that no other process works in. The lock dies with its process, so a folder
+// without one is left over from a killed run.
+func claim(partial string) (release func(), err error) {
+	if err := os.MkdirAll(filepath.Dir(partial), 0o755); err != nil {
+		return nil, plainly(err, filepath.Dir(partial))
+	}
+	release, err = lock(partial + ".lock")
+	if err != nil {
+		return nil, err
+	}
+	if err = os.RemoveAll(partial); err == nil {
+		err = os.Mkdir(partial, 0o755)
+	}
+	if err != nil {
+		release()
+		return nil, plainly(err, filepath.Dir(partial))
+	}
+	return release, nil
+}
+
+// replace puts partial in the place of dir, and an old dir out of the way first.
+func replace(partial, dir string) error {
+	old := dir + ".replaced"
+	if err := os.RemoveAll(old); err != nil {
+		return err
+	}
+	err := os.Rename(dir, old)
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return err
+	}
+	if err := os.Rename(partial, dir); err != nil {
+		return err
+	}
+	if err := syncFolder(filepath.Dir(dir)); err != nil {
+		return err
+	}
+	return os.RemoveAll(old)
+}
+
+// syncFolders brings the entries of a folder and of those in it to the disk.
+func syncFolders(dir string) error {
+	return filepath.WalkDir(dir, func(path string, d fs.DirEntry, err error) error {
+		if err != nil || !d.IsDir() {
+			return err
+		}
+		return syncFolder(path)
+	})
+}
+
+func syncFolder(dir string) error {
+	f, err := os.Open(dir)
+	if err != nil {
+		return err
+	}
+	defer f.Close()
+	if err := f.Sync(); err != nil && !errors.Is(err, errors.ErrUnsupported) {
+		return err
+	}
+	return nil
+}
+
+// plainly says in plain words why a folder cannot be written.
+func plainly(err error, dir string) error {
+	switch {
+	case errors.Is(err, fs.ErrPermission):
+		return refuse("name a folder that you may write to", "%s: no right to write there", dir)
+	case errors.Is(err, fs.ErrNotExist):
+		return refuse("check the path", "%s: there is no such folder", dir)
+	}
+	return err
+}

@@ -1,0 +1,150 @@
+// Package pipeline runs one region, from settings to a finished folder: it opens the files, has the observations read,
+// placed in a plane, fitted and mapped, and writes what was asked for. It is the only place where those steps meet.
+package pipeline
+
+import (
+	"context"
+	"errors"
+	"fmt"
+
+	"drumlin/grids"
+	"drumlin/io/archive"
+	"drumlin/io/plan"
+	"drumlin/io/summary"
+	"drumlin/spatial"
+)
+
+// Events is told how far the work is. Total 0 means not known.
+type Events interface {
+	Stage(name string, done, total int)
+}
+
+// run is one region on its way.
+type run struct {
+	settings plan.Settings
+	events   Events
+	version  string
+
+	obs       *observations
+	area      *studyArea
+	target    *target
+	surface   *spatial.Surface
+	reporting reporting
+	estimates *estimates
+	zones     *zoneResults
+	document  summary.Document
+}
+
+// Run fits and maps one region. s must be resolved. The folder dir appears whole or not at all; what it holds is told
+// by the document. Errors carry a hint where there is one to give; *spatial.Error is a fit that could not be had.
+func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.Document, error) {
+	r := &run{settings: s, events: ev, version: version()}
+	if err := checkFolder(dir, *s.Force); err != nil {
+		return summary.Document{}, err
+	}
+	for _, step := range []struct {
+		name string
+		do   func(context.Context) error
+	}{
+		{"reading", r.read},
+		{"laying the lattice", r.place},
+		{"fitting", r.fit},
+		{"predicting", r.predict},
+		{"adding up zones", r.addUp},
+	} {
+		ev.Stage(step.name, 0, 0)
+		if err := step.do(ctx); err != nil {
+			return summary.Document{}, err
+		}
+	}
+	r.describe()
+	err := Folder(ctx, dir, *s.Force, func(partial string) error { return r.write(ctx, partial) })
+	r.document.Folder = dir
+	return r.document, err
+}
+
+// fit fits the surface. Places that cannot carry a surface are the fit's to refuse, before the lattice complains of
+// them in its own terms.
+func (r *run) fit(ctx context.Context) error {
+	o := r.obs
+	model := r.model()
+	options := spatial.Options{Workers: *r.settings.Workers, Seed: *r.settings.Seed}
+	if r.area != nil {
+		options.Area = r.area.knotPlaces
+	}
+	var err error
+	if r.surface, err = spatial.Fit(ctx, model, o.data, options); err != nil {
+		return err
+	}
+	if r.area.problem != nil {
+		return r.area.problem
+	}
+	rep := r.surface.Report()
+	if !rep.KnownDispersion && !(rep.Dispersion > 0) {
+		return &spatial.Error{Message: "the fit passes through every observation, so nothing is left to estimate its error from",
+			Advice: "let the data choose the smoothness, or give a larger number with --smoothness"}
+	}
+	return nil
+}
+
+// model turns the settings into the model.
+func (r *run) model() spatial.Model {
+	s := r.settings
+	m := spatial.Model{Distribution: *s.Distribution, Link: *s.Link, MaxKnots: *s.MaxKnots}
+	if *s.Surface == plan.NoSurface {
+		m.Surface = spatial.None
+	}
+	switch s.Smoothness.By {
+	case plan.ByGCV:
+		m.Smoothness.Method = spatial.GCV
+	case plan.ByNumber:
+		m.Smoothness = spatial.Smoothness{Method: spatial.Given, Lambda: s.Smoothness.Lambda}
+	}
+	for _, name := range s.Linear {
+		m.Effects = append(m.Effects, spatial.Effect{Name: name, Role: spatial.Linear})
+	}
+	for _, name := range s.Category {
+		m.Effects = append(m.Effects, spatial.Effect{Name: name, Role: spatial.Category})
+	}
+	return m
+}
+
+// predict evaluates the surface on the target and states it in the reporting unit.
+func (r *run) predict(ctx context.Context) error {
+	var err error
+	if r.reporting, err = r.report(); err != nil {
+		return err
+	}
+	r.estimates, err = estimate(ctx, r.surface, r.reporting.Reporting, r.target.places, r.target.covariates)
+	if err != nil {
+		return err
+	}
+	x, y := r.obs.data.Places.X, r.obs.data.Places.Y
+	r.estimates.nearest = grids.Nearest(x, y, r.target.places.X, r.target.places.Y)
+	return nil
+}
+
+// saved is the fitted surface as the archive keeps it.
+func (r *run) saved() archive.Saved {
+	x, y := distinctPlaces(r.obs.data.Places)
+	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: x, PlaceY: y}
+}
+
+// refusal is a request or an input that is wrong, with what to do about it.
+type refusal struct {
+	error
+	advice string
+}
+
+func (e *refusal) Hint() string  { return e.advice }
+func (e *refusal) Unwrap() error { return e.error }
+
+// refuse words a refusal as fmt.Errorf does; without advice of its own it passes on that of a wrapped error.
+func refuse(advice, format string, args ...any) error {
+	err := fmt.Errorf(format, args...)
+	var hinted interface{ Hint() string }
+	if advice == "" && errors.As(err, &hinted) {
+		advice = hinted.Hint()
+	}
+	return &refusal{err, advice}
+}

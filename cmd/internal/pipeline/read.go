@@ -1,0 +1,204 @@
+package pipeline
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"io"
+	"math"
+	"os"
+	"path/filepath"
+	"sort"
+
+	"drumlin/grids/crs"
+	"drumlin/io/observe"
+	"drumlin/io/plan"
+	"drumlin/spatial"
+)
+
+// observations are the rows that can be used, in the plane.
+type observations struct {
+	table  *observe.Table
+	sha256 string
+	system crs.System
+	said   string // how the coordinates were taken, in words
+	data   spatial.Data
+}
+
+// read reads the table of observations and puts it into the plane.
+func (r *run) read(context.Context) error {
+	want, err := r.request()
+	if err != nil {
+		return err
+	}
+	o := &observations{}
+	if o.table, o.sha256, err = readTable(*r.settings.Observations, want); err != nil {
+		return err
+	}
+	if err := o.project(r.settings); err != nil {
+		return err
+	}
+	o.data.Response = o.table.Column(*r.settings.Response).Number
+	if _, column := r.settings.Denominator(); column != "" {
+		o.data.Exposure = o.table.Column(column).Number
+	}
+	if c := r.settings.Trials; c != nil {
+		o.data.Trials = o.table.Column(*c).Number
+	}
+	if c := r.settings.Weight; c != nil {
+		o.data.Weight = o.table.Column(*c).Number
+	}
+	o.data.Covariates = covariates(o.table, r.settings)
+	r.obs = o
+	return nil
+}
+
+// request says which columns the settings need and what they must hold.
+func (r *run) request() (observe.Request, error) {
+	s := r.settings
+	want := observe.Request{Response: *s.Response, Kind: observe.Measure, Linear: s.Linear, Category: s.Category, Strict: *s.Strict}
+	switch *s.Distribution {
+	case plan.Poisson:
+		want.Kind = observe.Count
+	case plan.Binomial:
+		want.Kind = observe.Positives
+		want.Trials = *s.Trials
+	}
+	_, want.Denominator = s.Denominator()
+	if s.Weight != nil {
+		want.Weight = *s.Weight
+	}
+	if s.X != nil {
+		want.X, want.Y = *s.X, *s.Y
+	}
+	var err error
+	want.Axes, err = axes(s)
+	return want, err
+}
+
+// axes says what the coordinates are, as far as --crs does.
+func axes(s plan.Settings) (observe.Axes, error) {
+	switch {
+	case s.CRS == nil:
+		return observe.AxesByName, nil
+	case crs.IsGeographic(*s.CRS):
+		return observe.AxesDegrees, nil
+	}
+	if _, err := crs.Parse(*s.CRS); err != nil {
+		return 0, refuse("", "--crs: %w", err)
+	}
+	return observe.AxesPlane, nil
+}
+
+// covariates takes the covariates' columns out of a table.
+func covariates(t *observe.Table, s plan.Settings) []spatial.Covariate {
+	var list []spatial.Covariate
+	for _, name := range s.Linear {
+		list = append(list, spatial.Covariate{Name: name, Number: t.Column(name).Number})
+	}
+	for _, name := range s.Category {
+		c := t.Column(name)
+		list = append(list, spatial.Covariate{Name: name, Code: c.Code, Level: c.Level})
+	}
+	return list
+}
+
+// readTable reads a file and its checksum in one go.
+func readTable(path string, want observe.Request) (*observe.Table, string, error) {
+	f, err := openFile(path)
+	if err != nil {
+		return nil, "", err
+	}
+	defer f.Close()
+	sum := sha256.New()
+	t, err := observe.ReadCSV(io.TeeReader(f, sum), filepath.Base(path), want)
+	if err != nil {
+		return nil, "", err
+	}
+	if _, err := io.Copy(sum, f); err != nil { // what the reader left unread
+		return nil, "", err
+	}
+	return t, hex.EncodeToString(sum.Sum(nil)), nil
+}
+
+// openFile opens a file for reading, and says in plain words why it cannot.
+func openFile(path string) (*os.File, error) {
+	f, err := os.Open(path)
+	switch {
+	case os.IsNotExist(err):
+		return nil, refuse("check the name and the folder you are in", "%s: there is no such file", path)
+	case os.IsPermission(err):
+		return nil, refuse("ask for the right to read it", "%s: the file may not be read", path)
+	case err != nil:
+		return nil, err
+	}
+	if info, err := f.Stat(); err == nil && info.IsDir() {
+		f.Close()
+		return nil, refuse("name a file in it", "%s: that is a folder", path)
+	}
+	return f, nil
+}
+
+// project puts the rows into the plane: degrees into an equal-area plane around them, a plane as it is.
+func (o *observations) project(s plan.Settings) error {
+	x, y := o.table.XY()
+	columns := fmt.Sprintf("columns %s, %s", o.table.XName, o.table.YName)
+	if o.table.Degrees {
+		system, err := crs.AzimuthalAround(x, y)
+		if err != nil {
+			return refuse("", "%s: %w", o.table.Source, err)
+		}
+		o.system = system
+		for i := range x {
+			x[i], y[i] = system.Forward(x[i], y[i])
+		}
+		o.said = columns + " taken as longitude and latitude, in an equal-area plane around them"
+	} else {
+		o.system = crs.Local{}
+		o.said = columns + " taken as local metres"
+		if s.CRS != nil {
+			var err error
+			if o.system, err = crs.Parse(*s.CRS); err != nil {
+				return refuse("", "--crs: %w", err)
+			}
+			o.said = columns + " taken as " + o.system.Code() + " in metres"
+		}
+	}
+	o.data.Places = spatial.Places{X: x, Y: y}
+	return o.onThePlane(x, y)
+}
+
+// onThePlane refuses coordinates where the projection is not defined: they are in another system than was said.
+func (o *observations) onThePlane(x, y []float64) error {
+	for i := range x {
+		if scale := o.system.AreaScale(x[i], y[i]); math.IsNaN(x[i]) || math.IsNaN(scale) {
+			p := o.table.Geometry[i].Bound().Min
+			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]),
+				What:   fmt.Sprintf("the place (%g, %g) lies outside of %s", p[0], p[1], o.system.Code()),
+				Advice: "say what the coordinates are with --crs, or name their columns with --x and --y"}
+		}
+	}
+	return nil
+}
+
+// distinctPlaces returns the distinct places sorted by x, then y.
+func distinctPlaces(at spatial.Places) (x, y []float64) {
+	order := make([]int, at.Len())
+	for i := range order {
+		order[i] = i
+	}
+	sort.Slice(order, func(a, b int) bool {
+		i, j := order[a], order[b]
+		if at.X[i] != at.X[j] {
+			return at.X[i] < at.X[j]
+		}
+		return at.Y[i] < at.Y[j]
+	})
+	for _, i := range order {
+		if n := len(x); n == 0 || x[n-1] != at.X[i] || y[n-1] != at.Y[i] {
+			x, y = append(x, at.X[i]), append(y, at.Y[i])
+		}
+	}
+	return x, y
+}

@@ -1,0 +1,180 @@
+package pipeline
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"fmt"
+	"hash"
+	"io"
+	"os"
+	"path/filepath"
+
+	"drumlin/io/archive"
+	"drumlin/io/plan"
+	"drumlin/io/summary"
+	"drumlin/io/tables"
+	"drumlin/io/vector"
+)
+
+// geojsonCells is the number of cells up to which surface.geojson is written unless it was asked for by name.
+const geojsonCells = 1_000_000
+
+// artefact is one file of the folder.
+type artefact struct {
+	file    string
+	data    bool // its checksum goes into the summary
+	content func(w io.Writer) error
+}
+
+// write fills the folder; summary.json, which lists the others, comes last.
+func (r *run) write(ctx context.Context, folder string) error {
+	list := r.artefacts()
+	for k, a := range list {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		r.events.Stage("writing "+a.file, k, len(list))
+		sum, err := writeFile(folder, a.file, a.content)
+		if err != nil {
+			return err
+		}
+		o := summary.Output{File: a.file}
+		if a.data {
+			o.SHA256 = sum
+		}
+		r.document.Outputs = append(r.document.Outputs, o)
+	}
+	_, err := writeFile(folder, "summary.json", r.document.WriteJSON)
+	return err
+}
+
+// artefacts lists what was asked for.
+func (r *run) artefacts() []artefact {
+	var list []artefact
+	if r.wants(plan.CSV) {
+		list = append(list,
+			artefact{"surface.csv", true, r.writeSurface},
+			artefact{"residuals.csv", true, r.writeResiduals})
+		if len(r.obs.table.Aside) > 0 {
+			list = append(list, artefact{"set-aside.csv", true, r.writeAside})
+		}
+		if r.zones != nil {
+			list = append(list, artefact{"zones.csv", true, r.writeZones})
+		}
+	}
+	if r.wants(plan.GeoJSON) && (len(r.target.cells) <= geojsonCells || r.settings.Said("write")) {
+		list = append(list, artefact{"surface.geojson", true, r.writeGeoJSON})
+		if r.zones != nil {
+			list = append(list, artefact{"zones.geojson", true, r.writeZoneShapes})
+		}
+	}
+	if r.wants(plan.Saved) {
+		list = append(list, artefact{"saved.surface", true, func(w io.Writer) error { return archive.Write(w, r.saved()) }})
+	}
+	if r.wants(plan.Pictures) {
+		for _, p := range r.pictures() {
+			list = append(list, artefact{p.file, false, p.WritePNG})
+		}
+	}
+	return list
+}
+
+func (r *run) writeSurface(w io.Writer) error {
+	return tables.Write(w, r.target.places.Len(), surfaceTable(r.obs.system, r.target.places, r.estimates))
+}
+
+// shapeColumns turns the filled columns of a table into properties.
+func shapeColumns(columns []tables.Column) []vector.Column {
+	var list []vector.Column
+	for _, c := range columns {
+		switch {
+		case c.Number != nil:
+			list = append(list, vector.Column{Name: c.Name, Value: c.Number})
+		case c.Whole != nil:
+			v := make([]float64, len(c.Whole))
+			for i, n := range c.Whole {
+				v[i] = float64(n)
+			}
+			list = append(list, vector.Column{Name: c.Name, Value: v})
+		}
+	}
+	return list
+}
+
+func (r *run) writeGeoJSON(w io.Writer) error {
+	columns := shapeColumns(surfaceTable(r.obs.system, r.target.places, r.estimates))
+	if r.target.own() {
+		return vector.WritePoints(w, r.obs.system, r.target.places.X, r.target.places.Y, columns)
+	}
+	return vector.WriteCells(w, r.target.lattice, r.target.cells, columns)
+}
+
+func (r *run) writeZones(w io.Writer) error {
+	columns := append([]tables.Column{{Name: "zone", Text: r.zones.names()}}, r.zones.columns()...)
+	return tables.Write(w, len(r.zones.zones), columns)
+}
+
+func (r *run) writeZoneShapes(w io.Writer) error {
+	var zones []vector.Zone
+	for _, z := range r.zones.zones {
+		zones = append(zones, vector.Zone{Name: z.Name, Shape: z.Shape})
+	}
+	return vector.WriteZones(w, r.obs.system, zones, shapeColumns(r.zones.columns()))
+}
+
+func (r *run) writeResiduals(w io.Writer) error {
+	rows, t := r.surface.Rows(), r.obs.table
+	n := t.Len()
+	row, x, y := make([]int64, n), make([]float64, n), make([]float64, n)
+	for i := range row {
+		row[i] = int64(t.Row[i])
+		p := t.Geometry[i].Bound().Min
+		x[i], y[i] = p[0], p[1]
+	}
+	return tables.Write(w, n, []tables.Column{
+		{Name: "row", Whole: row}, {Name: "x", Number: x}, {Name: "y", Number: y},
+		{Name: "response", Number: r.obs.data.Response}, {Name: "fitted", Number: rows.Fitted},
+		{Name: "deviance_residual", Number: rows.Deviance}, {Name: "quantile_residual", Number: rows.Quantile},
+		{Name: "leverage", Number: rows.Leverage},
+	})
+}
+
+func (r *run) writeAside(w io.Writer) error {
+	t := r.obs.table
+	n := len(t.Aside)
+	file, column, value, reason := make([]string, n), make([]string, n), make([]string, n), make([]string, n)
+	row, line := make([]int64, n), make([]int64, n)
+	for i, a := range t.Aside {
+		file[i], row[i], line[i], column[i], value[i], reason[i] = t.Source, int64(a.Row), int64(a.Line), a.Column, a.Value, a.Reason
+	}
+	return tables.Write(w, n, []tables.Column{
+		{Name: "file", Text: file}, {Name: "row", Whole: row}, {Name: "line", Whole: line},
+		{Name: "column", Text: column}, {Name: "value", Text: value}, {Name: "reason", Text: reason},
+	})
+}
+
+// writeFile writes one file, brings it to the disk, and returns its checksum.
+func writeFile(folder, name string, content func(w io.Writer) error) (string, error) {
+	path := filepath.Join(folder, name)
+	f, err := os.OpenFile(path, os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
+	if err != nil {
+		return "", err
+	}
+	sum := sha256.New()
+	if err := fill(f, sum, content); err != nil {
+		f.Close()
+		return "", fmt.Errorf("%s: %w", name, err)
+	}
+	return hex.EncodeToString(sum.Sum(nil)), nil
+}
+
+func fill(f *os.File, sum hash.Hash, content func(w io.Writer) error) error {
+	if err := content(io.MultiWriter(f, sum)); err != nil {
+		return err
+	}
+	if err := f.Sync(); err != nil {
+		return err
+	}
+	return f.Close()
+}

@@ -1,0 +1,217 @@
+package pipeline
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"slices"
+
+	"drumlin/grids"
+	"drumlin/io/plan"
+	"drumlin/io/summary"
+	"drumlin/io/tables"
+	"drumlin/spatial"
+
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+// zoneDraws is the number of joint posterior draws behind a zone's errors: a standard error good to 2 %.
+const zoneDraws = 2000
+
+// zoneResults are the rows of zones.csv.
+type zoneResults struct {
+	zones   []grids.Zone
+	totals  bool
+	note    string
+	area    []float64 // of the zone's cells, in the unit of areas
+	unit    string    // of areas
+	covered []float64 // share of the zone that its cells cover
+
+	cells                                        []int64
+	total, totalError, totalCV, totalLo, totalHi []float64
+	mean, meanError, meanLo, meanHi, chance      []float64
+}
+
+// squareMetres says how many square metres an area unit has.
+var squareMetres = map[string]float64{plan.SquareMetres: 1, plan.Hectares: 1e4, plan.SquareKilometres: 1e6}
+
+// addUp totals or averages the estimates over the zones.
+func (r *run) addUp(ctx context.Context) error {
+	s := r.settings
+	if s.Zones == nil {
+		return nil
+	}
+	shapes, err := r.readShapes(*s.Zones)
+	if err != nil {
+		return err
+	}
+	property := ""
+	if s.ZoneName != nil {
+		property = *s.ZoneName
+	}
+	names, _, err := shapes.Names(property)
+	if err != nil {
+		return err
+	}
+	z := &zoneResults{unit: plan.SquareMetres}
+	for i, f := range shapes.Features {
+		zone := grids.Zone{Name: names[i], Shape: f.Shape}
+		if err := zone.Validate(); err != nil {
+			return refuse("", "%s: zone %q: %w", shapes.Source, zone.Name, err)
+		}
+		z.zones = append(z.zones, zone)
+	}
+	r.decideTotals(z)
+	r.zones = z
+	return r.sumZones(ctx, z)
+}
+
+// decideTotals says whether a total has a meaning: only counts divided by an area add up over an area, and only where
+// covariates have their own values.
+func (r *run) decideTotals(z *zoneResults) {
+	kind, _ := r.settings.Denominator()
+	switch {
+	case kind != "area" && kind != "":
+		z.note = "no totals: a rate over " + kind + " does not add up over an area; the mean is over cells of the map, each counting with its area, not with its " + kind
+	case kind == "":
+		z.note = "no totals: only counts with an area behind them add up; the mean is over cells of the map, each counting with its area"
+	case len(r.target.held) > 0:
+		z.unit = *r.settings.AreaUnit
+		z.note = "no totals: the map is adjusted to held covariates, so its cells are not what stands there; the mean is adjusted as well"
+	default:
+		z.unit, z.totals = *r.settings.AreaUnit, true
+	}
+}
+
+// sumZones fills the columns. A zone's total is the sum of its cells' estimates times their areas, so that zones without
+// common cells add up exactly.
+func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
+	l := r.target.lattice
+	at := make([]int32, l.Cells()) // cell to place
+	for k, c := range r.target.cells {
+		at[c] = int32(k)
+	}
+	var sets []spatial.Share
+	for _, zone := range z.zones {
+		cells := grids.CellsIn(l, zone)
+		var set spatial.Share
+		ground := 0.0
+		for _, c := range cells {
+			a := l.CellAreaAt(c)
+			ground += a
+			set.Index, set.Weight = append(set.Index, at[c]), append(set.Weight, a/squareMetres[z.unit])
+		}
+		sets = append(sets, set)
+		z.cells = append(z.cells, int64(len(cells)))
+		z.area = append(z.area, ground/squareMetres[z.unit])
+		z.covered = append(z.covered, math.Min(1, ground/grids.AreaOf(zone, l.CRS)))
+	}
+	sums, err := r.surface.Sums(ctx, r.target.places, r.target.covariates, sets, zoneDraws, *r.settings.Seed)
+	if err != nil {
+		return err
+	}
+	for k, sum := range sums {
+		z.add(r, k, sum)
+	}
+	return nil
+}
+
+// add states one zone's sum.
+func (z *zoneResults) add(r *run, k int, sum spatial.Sum) {
+	rep := r.reporting
+	none := math.NaN()
+	if z.cells[k] == 0 {
+		sum = spatial.Sum{Value: none, Delta: none}
+	}
+	sd, spread := sum.DrawSD(), r.limits(sum)
+	if z.cells[k] == 0 {
+		sd = none
+	}
+	if z.totals {
+		z.total, z.totalError, z.totalCV = append(z.total, sum.Value), append(z.totalError, sd), append(z.totalCV, sd/sum.Value)
+		z.totalLo, z.totalHi = append(z.totalLo, spread[0]), append(z.totalHi, spread[1])
+	}
+	scale := rep.Factor / z.area[k]
+	z.mean, z.meanError = append(z.mean, sum.Value*scale), append(z.meanError, sd*scale)
+	z.meanLo, z.meanHi = append(z.meanLo, spread[0]*scale), append(z.meanHi, spread[1]*scale)
+	if rep.Threshold == nil {
+		return
+	}
+	above := 0.0
+	for _, d := range sum.Draws {
+		if d*scale > *rep.Threshold {
+			above++
+		}
+	}
+	if len(sum.Draws) == 0 {
+		above = none
+	}
+	z.chance = append(z.chance, above/float64(len(sum.Draws)))
+}
+
+// limits returns the interval of a sum: log-normal for a log link (Burnham et al. 1987, Wildlife Monographs 99), the
+// draws' own quantiles for shares, and symmetrical for the identity link.
+func (r *run) limits(sum spatial.Sum) [2]float64 {
+	confidence := *r.settings.Confidence
+	if len(sum.Draws) == 0 {
+		return [2]float64{math.NaN(), math.NaN()}
+	}
+	switch *r.settings.Link {
+	case plan.Log:
+		cv := sum.DrawSD() / sum.Value
+		f := math.Exp(distuv.UnitNormal.Quantile(0.5+confidence/2) * math.Sqrt(math.Log1p(cv*cv)))
+		return [2]float64{sum.Value / f, sum.Value * f}
+	case plan.Identity:
+		d := r.surface.Quantile(confidence) * sum.Delta
+		return [2]float64{sum.Value - d, sum.Value + d}
+	}
+	sorted := slices.Sorted(slices.Values(sum.Draws))
+	at := func(p float64) float64 { // linear between order statistics
+		h := p * float64(len(sorted)-1)
+		i := min(int(h), len(sorted)-2)
+		return sorted[i] + (h-float64(i))*(sorted[i+1]-sorted[i])
+	}
+	return [2]float64{at(0.5 - confidence/2), at(0.5 + confidence/2)}
+}
+
+// columns returns zones.csv after the zone's name.
+func (z *zoneResults) columns() []tables.Column {
+	return []tables.Column{
+		{Name: "cells", Whole: z.cells}, {Name: "area", Number: z.area},
+		{Name: "total", Number: z.total}, {Name: "total_standard_error", Number: z.totalError}, {Name: "total_cv", Number: z.totalCV},
+		{Name: "total_lower", Number: z.totalLo}, {Name: "total_upper", Number: z.totalHi},
+		{Name: "mean", Number: z.mean}, {Name: "mean_standard_error", Number: z.meanError},
+		{Name: "mean_lower", Number: z.meanLo}, {Name: "mean_upper", Number: z.meanHi},
+		{Name: "share_covered", Number: z.covered}, {Name: "chance", Number: z.chance},
+	}
+}
+
+func (z *zoneResults) names() []string {
+	names := make([]string, len(z.zones))
+	for i, zone := range z.zones {
+		names[i] = zone.Name
+	}
+	return names
+}
+
+// describe words the zones for the summary.
+func (z *zoneResults) describe(unit string) *summary.Zones {
+	d := &summary.Zones{Count: len(z.zones), Totals: z.totals, Note: z.note}
+	const most = 5
+	for k, zone := range z.zones {
+		if k == most {
+			d.Lines = append(d.Lines, fmt.Sprintf("and %d more in zones.csv", len(z.zones)-most))
+			break
+		}
+		short := func(v float64) string { return summary.Short(summary.Number(v)) }
+		if z.cells[k] == 0 {
+			d.Lines = append(d.Lines, zone.Name+": no cell of the map lies in it")
+		} else if z.totals {
+			d.Lines = append(d.Lines, fmt.Sprintf("%s: %s in all (%s to %s; coefficient of variation %s %%) on %s %s",
+				zone.Name, short(z.total[k]), short(z.totalLo[k]), short(z.totalHi[k]), short(100*z.totalCV[k]), short(z.area[k]), z.unit))
+		} else {
+			d.Lines = append(d.Lines, fmt.Sprintf("%s: mean %s (%s to %s), %s", zone.Name, short(z.mean[k]), short(z.meanLo[k]), short(z.meanHi[k]), unit))
+		}
+	}
+	return d
+}

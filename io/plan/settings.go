@@ -1,0 +1,225 @@
+package plan
+
+import (
+	"maps"
+	"path/filepath"
+	"runtime"
+)
+
+// Settings are the settings of one run. Every exported field is a pointer or a slice, nil where the word was not
+// said. The zero value says nothing. Settings are values: no method changes the receiver except Choose.
+type Settings struct {
+	Observations *string // path of the table of observations
+	Response     *string // column
+	X, Y         *string // columns with the coordinates
+	CRS          *string // what the coordinates are in
+
+	People   *string // column
+	Area     *string // column
+	AreaUnit *string // SquareMetres, Hectares or SquareKilometres
+	Effort   *string // column
+	Expected *string // column
+	Trials   *string // column
+	Weight   *string // column
+
+	Distribution *string // Gaussian, Poisson or Binomial
+	Link         *string // Identity, Log or Logit
+	Surface      *string // ThinPlate or NoSurface
+	MaxKnots     *int
+	Smoothness   *Smoothness
+	Linear       []string // columns
+	Category     []string // columns
+
+	CellSize    *float64 // metres
+	CellsAcross *int
+	At          *string // path
+	Within      *string // path
+	Zones       *string // path
+	ZoneName    *string // property of the zones
+	Hold        []Hold
+
+	Threshold  *float64 // reporting unit
+	Per        *float64
+	UnitLabel  *string
+	Confidence *float64 // between 0 and 1
+	Reference  *Reference
+	Title      *string
+
+	Write   []string // CSV, GeoJSON, Pictures, Saved
+	Strict  *bool
+	Seed    *uint64
+	Workers *int
+	Force   *bool
+	Quiet   *bool
+
+	// why holds the reason of each value that nobody said, by word. It is never changed in place, so that copies of
+	// the settings do not share it.
+	why map[string]string
+}
+
+// byDefault is the reason recorded for a value that comes from Defaults.
+const byDefault = "default"
+
+// Defaults returns the settings that hold where nothing was said. This is the only place where they are written.
+func Defaults() Settings {
+	s := Settings{
+		Surface:     new(ThinPlate),
+		MaxKnots:    new(200),
+		Smoothness:  &Smoothness{By: ByREML},
+		CellsAcross: new(100),
+		Per:         new(1.0),
+		Confidence:  new(0.95),
+		Write:       []string{CSV, GeoJSON, Pictures, Saved},
+		Strict:      new(false),
+		Seed:        new(uint64(1)),
+		Workers:     new(runtime.GOMAXPROCS(0)),
+		Force:       new(false),
+		Quiet:       new(false),
+	}
+	s.why = map[string]string{}
+	for _, w := range words {
+		if w.filled(s) {
+			s.why[w.Name] = byDefault
+		}
+	}
+	return s
+}
+
+// Over returns s laid over base: what s has counts, and base fills in the rest. A list that s has replaces the list
+// of base whole. Reasons recorded by Choose travel with their values.
+func (s Settings) Over(base Settings) Settings {
+	out := base
+	out.why = maps.Clone(base.why)
+	for _, w := range words {
+		if !w.filled(s) {
+			continue
+		}
+		w.copy(&out, s)
+		delete(out.why, w.Name)
+		if why := s.why[w.Name]; why != "" {
+			if out.why == nil {
+				out.why = map[string]string{}
+			}
+			out.why[w.Name] = why
+		}
+	}
+	return out
+}
+
+// Choose sets a word to what the program chose itself and records why. A list is replaced by the one value. Choose
+// panics on a word or value that does not exist, or without a reason: that is a fault of the caller, not of the data.
+func (s *Settings) Choose(name, value, why string) {
+	w, ok := Lookup(name)
+	if !ok || why == "" {
+		panic("plan: choice of an unknown word, or without a reason: " + name)
+	}
+	var fresh Settings
+	if err := w.Set(&fresh, value); err != nil {
+		panic("plan: " + err.Error())
+	}
+	w.copy(s, fresh)
+	s.why = maps.Clone(s.why)
+	if s.why == nil {
+		s.why = map[string]string{}
+	}
+	s.why[name] = why
+}
+
+// Said reports whether somebody said the word; a default or a choice of the program was not said.
+func (s Settings) Said(name string) bool {
+	w, ok := Lookup(name)
+	return ok && w.filled(s) && s.why[name] == ""
+}
+
+// Entry is one setting as it took effect.
+type Entry struct {
+	Key    string // the word with underscores
+	Value  any    // string, float64, int, uint64, bool or []string
+	Chosen bool   // the program chose the value itself, for a reason of its own
+	Why    string // the reason of a choice; "default" for a default; empty for what was said
+}
+
+// Effective lists the settings that are in force, in the order of Words. It leaves out RunOnly words and defaults
+// that have no bearing, and gives files by their base name, so that neither the machine nor the place of the files
+// shows.
+func (s Settings) Effective() []Entry {
+	var list []Entry
+	for _, w := range words {
+		if w.RunOnly || !w.filled(s) || (s.why[w.Name] == byDefault && s.moot(w.Name)) {
+			continue
+		}
+		v := w.value(s)
+		if w.File {
+			v = filepath.Base(v.(string))
+		}
+		why := s.why[w.Name]
+		list = append(list, Entry{Key: w.Key(), Value: v, Chosen: why != "" && why != byDefault, Why: why})
+	}
+	return list
+}
+
+// moot reports whether a default has no bearing on the run as it is.
+func (s Settings) moot(name string) bool {
+	switch name {
+	case "cells-across":
+		return s.CellSize != nil || s.At != nil
+	case "max-knots", "smoothness":
+		return s.Surface != nil && *s.Surface == NoSurface
+	case "per":
+		d, _ := s.distribution()
+		return d == Gaussian
+	}
+	return false
+}
+
+// Denominator returns the kind of denominator that was named ("people", "area", "effort" or "expected") and its
+// column, or two empty strings.
+func (s Settings) Denominator() (kind, column string) {
+	for _, d := range s.denominators() {
+		return d.kind, d.column
+	}
+	return "", ""
+}
+
+type denominator struct{ kind, column string }
+
+func (s Settings) denominators() []denominator {
+	var list []denominator
+	for _, d := range []struct {
+		kind   string
+		column *string
+	}{{"people", s.People}, {"area", s.Area}, {"effort", s.Effort}, {"expected", s.Expected}} {
+		if d.column != nil {
+			list = append(list, denominator{d.kind, *d.column})
+		}
+	}
+	return list
+}
+
+// Files returns the paths of the input files, in the order of Words.
+func (s Settings) Files() []string {
+	var list []string
+	for _, w := range words {
+		if w.File && w.filled(s) {
+			list = append(list, w.value(s).(string))
+		}
+	}
+	return list
+}
+
+// RelativeTo returns s with every relative path of an input file taken from dir.
+func (s Settings) RelativeTo(dir string) Settings {
+	for _, w := range words {
+		if !w.File || !w.filled(s) {
+			continue
+		}
+		if path := w.value(s).(string); !filepath.IsAbs(path) {
+			var moved Settings
+			// A path that was accepted once is accepted with a folder before it.
+			if err := w.Set(&moved, filepath.Join(dir, path)); err == nil {
+				w.copy(&s, moved)
+			}
+		}
+	}
+	return s
+}

@@ -1,0 +1,269 @@
+package plan
+
+import (
+	"reflect"
+	"slices"
+	"strings"
+	"testing"
+)
+
+// say makes settings from pairs of "word value", as they would be said.
+func say(t *testing.T, said ...string) Settings {
+	t.Helper()
+	var s Settings
+	for _, pair := range said {
+		name, value, _ := strings.Cut(pair, " ")
+		w, ok := Lookup(name)
+		if !ok {
+			t.Fatalf("no word %q", name)
+		}
+		if err := w.Set(&s, value); err != nil {
+			t.Fatal(err)
+		}
+	}
+	return s
+}
+
+func with(said ...string) []string {
+	return append([]string{"observations plots.csv", "response stems"}, said...)
+}
+
+func entry(list []Entry, key string) (Entry, bool) {
+	i := slices.IndexFunc(list, func(e Entry) bool { return e.Key == key })
+	if i < 0 {
+		return Entry{}, false
+	}
+	return list[i], true
+}
+
+func TestOver(t *testing.T) {
+	base := say(t, "response a", "title base", "linear depth", "linear height")
+	base.Choose("crs", "local", "the columns are x and y")
+	top := say(t, "response b", "linear slope")
+	out := top.Over(base)
+	if *out.Response != "b" || *out.Title != "base" || !slices.Equal(out.Linear, []string{"slope"}) || *out.CRS != "local" {
+		t.Errorf("got %v", out.Effective())
+	}
+	if e, _ := entry(out.Effective(), "crs"); !e.Chosen || e.Why != "the columns are x and y" {
+		t.Errorf("the reason is lost: %+v", e)
+	}
+	// What is said later is no longer a choice of the program's.
+	out = say(t, "crs EPSG:4326").Over(base)
+	if e, _ := entry(out.Effective(), "crs"); e.Chosen || e.Why != "" || e.Value != "EPSG:4326" {
+		t.Errorf("got %+v", e)
+	}
+	if e, _ := entry(base.Effective(), "crs"); !e.Chosen {
+		t.Errorf("layering changed the base: %+v", e)
+	}
+}
+
+func TestOverOfNothing(t *testing.T) {
+	s := say(t, with("hold depth=mean", "write csv")...)
+	if got := (Settings{}).Over(s); !reflect.DeepEqual(got.Effective(), s.Effective()) {
+		t.Errorf("got %v", got.Effective())
+	}
+	if got := s.Over(Settings{}); !reflect.DeepEqual(got.Effective(), s.Effective()) {
+		t.Errorf("got %v", got.Effective())
+	}
+}
+
+func TestChoose(t *testing.T) {
+	s := say(t, "response stems")
+	copied := s
+	s.Choose("x", "lon", "the name is recognised")
+	s.Choose("max-knots", "17", "that is all the places there are")
+	if copied.X != nil || len(copied.why) != 0 {
+		t.Error("a copy made before shares the choice")
+	}
+	later := s
+	later.Choose("x", "easting", "another")
+	if e, _ := entry(s.Effective(), "x"); e.Value != "lon" || e.Why != "the name is recognised" {
+		t.Errorf("a copy made after changed the original: %+v", e)
+	}
+	want := []Entry{
+		{Key: "response", Value: "stems"},
+		{Key: "x", Value: "lon", Chosen: true, Why: "the name is recognised"},
+		{Key: "max_knots", Value: 17, Chosen: true, Why: "that is all the places there are"},
+	}
+	if got := s.Effective(); !reflect.DeepEqual(got, want) {
+		t.Errorf("got %+v", got)
+	}
+	if s.Said("x") || !s.Said("response") || s.Said("y") || s.Said("nonsense") {
+		t.Error("Said confuses what was said with what was chosen")
+	}
+}
+
+func TestChoosePanics(t *testing.T) {
+	for _, bad := range [][3]string{{"nonsense", "1", "why"}, {"per", "-1", "why"}, {"per", "1", ""}} {
+		func() {
+			defer func() {
+				if recover() == nil {
+					t.Errorf("%q did not panic", bad)
+				}
+			}()
+			new(Settings).Choose(bad[0], bad[1], bad[2])
+		}()
+	}
+}
+
+// TestDefaults spells out the defaults that the design fixes.
+func TestDefaults(t *testing.T) {
+	want := map[string]string{
+		"surface": "thin-plate", "max-knots": "200", "smoothness": "reml", "cells-across": "100", "per": "1",
+		"confidence": "0.95", "write": "csv,geojson,pictures,saved", "seed": "1",
+	}
+	for _, w := range Words() {
+		if got := w.Default(); got != want[w.Name] {
+			t.Errorf("%s: default %q, want %q", w.Name, got, want[w.Name])
+		}
+	}
+	d := Defaults()
+	if *d.Strict || *d.Force || *d.Quiet || *d.Workers < 1 {
+		t.Errorf("got %v %v %v %v", *d.Strict, *d.Force, *d.Quiet, *d.Workers)
+	}
+	for _, e := range d.Effective() {
+		if e.Chosen || e.Why != "default" {
+			t.Errorf("%+v", e)
+		}
+	}
+}
+
+func TestResolveChooses(t *testing.T) {
+	tests := []struct {
+		name         string
+		said         []string
+		distribution string
+		link         string
+		chosen       []string
+	}{
+		{"a measurement", with(), "gaussian", "identity", []string{"distribution", "link"}},
+		{"a measurement that multiplies", with("link log"), "gaussian", "log", []string{"distribution"}},
+		{"people", with("people pop"), "poisson", "log", []string{"distribution", "link"}},
+		{"effort", with("effort hours"), "poisson", "log", []string{"distribution", "link"}},
+		{"expected", with("expected e"), "poisson", "log", []string{"distribution", "link"}},
+		{"area with its unit", with("area ground", "area-unit ha"), "poisson", "log", []string{"distribution", "link"}},
+		{"area with the unit in the name", with("area area_ha"), "poisson", "log", []string{"area_unit", "distribution", "link"}},
+		{"trials", with("trials n"), "binomial", "logit", []string{"distribution", "link"}},
+		{"counts without a denominator", with("distribution poisson"), "poisson", "log", []string{"link"}},
+		{"all said", with("distribution binomial", "trials n", "link logit"), "binomial", "logit", nil},
+	}
+	for _, test := range tests {
+		t.Run(test.name, func(t *testing.T) {
+			s, err := say(t, test.said...).Resolve()
+			if err != nil {
+				t.Fatal(err)
+			}
+			if *s.Distribution != test.distribution || *s.Link != test.link {
+				t.Errorf("got %s, %s", *s.Distribution, *s.Link)
+			}
+			var chosen []string
+			for _, e := range s.Effective() {
+				if e.Chosen {
+					chosen = append(chosen, e.Key)
+					if e.Why == "" || e.Why == byDefault {
+						t.Errorf("%s is chosen without a reason", e.Key)
+					}
+				}
+			}
+			if !slices.Equal(chosen, test.chosen) {
+				t.Errorf("chosen: %v, want %v", chosen, test.chosen)
+			}
+			again, err := s.Resolve()
+			if err != nil || !reflect.DeepEqual(again, s) {
+				t.Errorf("resolving twice changes something: %v, %v", err, again.Effective())
+			}
+		})
+	}
+}
+
+func TestUnitInName(t *testing.T) {
+	for column, want := range map[string]string{
+		"area_ha": "ha", "Area (km2)": "km2", "m2": "m2", "area.HA": "ha", "alpha": "", "area": "", "ha_left": "", "": "", "%": "",
+		"area km²": "", "areaha": "",
+	} {
+		if got := unitInName(column); got != want {
+			t.Errorf("%q: got %q, want %q", column, got, want)
+		}
+	}
+}
+
+// TestMootDefaults: a default that has no bearing is not recorded, what was said always is.
+func TestMootDefaults(t *testing.T) {
+	tests := []struct {
+		name    string
+		said    []string
+		absent  []string
+		present []string
+	}{
+		{"lattice", with(), []string{"per", "cell_size"}, []string{"cells_across", "max_knots", "smoothness"}},
+		{"cell size", with("cell-size 5"), []string{"cells_across"}, []string{"cell_size"}},
+		{"places", with("at p.csv"), []string{"cells_across"}, []string{"at"}},
+		{"no surface", with("surface none"), []string{"max_knots", "smoothness"}, []string{"surface", "cells_across"}},
+		{"rates", with("people pop"), nil, []string{"per"}},
+	}
+	for _, test := range tests {
+		t.Run(test.name, func(t *testing.T) {
+			s, err := say(t, test.said...).Resolve()
+			if err != nil {
+				t.Fatal(err)
+			}
+			list := s.Effective()
+			for _, key := range test.absent {
+				if e, ok := entry(list, key); ok {
+					t.Errorf("recorded: %+v", e)
+				}
+			}
+			for _, key := range test.present {
+				if _, ok := entry(list, key); !ok {
+					t.Errorf("%s is not recorded", key)
+				}
+			}
+			if s.CellsAcross == nil || s.MaxKnots == nil || s.Smoothness == nil || s.Per == nil {
+				t.Error("a resolved setting with a default is nil")
+			}
+		})
+	}
+}
+
+func TestEffectiveHidesTheMachine(t *testing.T) {
+	s, err := say(t, "observations /home/someone/data/plots.csv", "response stems", "zones ../shapes/zones.geojson",
+		"workers 7", "force", "quiet").Resolve()
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, e := range s.Effective() {
+		switch e.Key {
+		case "workers", "force", "quiet":
+			t.Errorf("recorded: %+v", e)
+		case "observations":
+			if e.Value != "plots.csv" {
+				t.Errorf("the path shows: %v", e.Value)
+			}
+		case "zones":
+			if e.Value != "zones.geojson" {
+				t.Errorf("the path shows: %v", e.Value)
+			}
+		}
+	}
+}
+
+func TestFilesAndRelativeTo(t *testing.T) {
+	s := say(t, "observations data/plots.csv", "response stems", "at /abs/places.csv", "within edge.geojson")
+	moved := s.RelativeTo("plans")
+	if got := moved.Files(); !slices.Equal(got, []string{"plans/data/plots.csv", "plans/edge.geojson", "/abs/places.csv"}) {
+		t.Errorf("got %q", got)
+	}
+	if got := s.Files(); !slices.Equal(got, []string{"data/plots.csv", "edge.geojson", "/abs/places.csv"}) {
+		t.Errorf("the original changed: %q", got)
+	}
+}
+
+func TestDenominator(t *testing.T) {
+	s := say(t, "area ground")
+	if kind, column := s.Denominator(); kind != "area" || column != "ground" {
+		t.Errorf("got %q, %q", kind, column)
+	}
+	if kind, column := (Settings{}).Denominator(); kind != "" || column != "" {
+		t.Errorf("got %q, %q", kind, column)
+	}
+}

@@ -1,0 +1,222 @@
+package plan
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+)
+
+// The choices of the words that have a fixed set of them.
+const (
+	SquareMetres     = "m2"
+	Hectares         = "ha"
+	SquareKilometres = "km2"
+
+	Gaussian = "gaussian"
+	Poisson  = "poisson"
+	Binomial = "binomial"
+
+	Identity = "identity"
+	Log      = "log"
+	Logit    = "logit"
+
+	ThinPlate = "thin-plate"
+	NoSurface = "none"
+
+	CSV      = "csv"
+	GeoJSON  = "geojson"
+	Pictures = "pictures"
+	Saved    = "saved"
+
+	ByREML   = "reml"
+	ByGCV    = "gcv"
+	ByNumber = "number" // of Smoothness.By only; what is said is the number itself
+
+	Overall = "overall"
+
+	AtMean      = "mean"
+	AtCommonest = "commonest"
+)
+
+// Smoothness says how the penalty of the surface is chosen.
+type Smoothness struct {
+	By     string  // ByREML, ByGCV or ByNumber
+	Lambda float64 // with ByNumber, at least 0
+}
+
+func (s Smoothness) plain() any {
+	if s.By == ByNumber {
+		return s.Lambda
+	}
+	return s.By
+}
+
+// Reference is the level that relative risks are taken against.
+type Reference struct {
+	Overall bool    // the level of all observations together
+	Level   float64 // otherwise: above 0, in the reporting unit
+}
+
+func (r Reference) plain() any {
+	if r.Overall {
+		return Overall
+	}
+	return r.Level
+}
+
+// Hold fixes a covariate at one value all over the map.
+type Hold struct {
+	Name  string // of the covariate
+	Value string // a number or a level, AtMean or AtCommonest
+}
+
+func (h Hold) plain() any { return h.Name + "=" + h.Value }
+
+// spoken is a value in the form in which it would be said.
+func spoken(v any) string {
+	switch v := v.(type) {
+	case float64:
+		return strconv.FormatFloat(v, 'g', -1, 64)
+	case []string:
+		return strings.Join(v, ",")
+	}
+	return fmt.Sprint(v)
+}
+
+func parseText(value string) (string, error) {
+	if strings.TrimSpace(value) == "" {
+		return "", advise("nothing is given", "")
+	}
+	return value, nil
+}
+
+func parseNumber(value string) (float64, error) {
+	v, err := strconv.ParseFloat(strings.TrimSpace(value), 64)
+	switch {
+	case err != nil && strings.Count(value, ",") == 1:
+		return 0, advise("is not a number", "write a decimal point, not a comma")
+	case err != nil:
+		return 0, advise("is not a number", "")
+	case math.IsNaN(v) || math.IsInf(v, 0):
+		return 0, advise("is not a finite number", "")
+	}
+	return v, nil
+}
+
+func parsePositive(value string) (float64, error) {
+	v, err := parseNumber(value)
+	if err == nil && v <= 0 {
+		err = advise("is not above 0", "")
+	}
+	return v, err
+}
+
+func parseConfidence(value string) (float64, error) {
+	v, err := parseNumber(value)
+	if err != nil || (v > 0 && v < 1) {
+		return v, err
+	}
+	if v > 1 && v < 100 {
+		return 0, advise("is not between 0 and 1", "for "+spoken(v)+" per cent write "+spoken(v/100))
+	}
+	return 0, advise("is not between 0 and 1", "")
+}
+
+func parseWhole(least int) func(string) (int, error) {
+	return func(value string) (int, error) {
+		v, err := strconv.Atoi(strings.TrimSpace(value))
+		switch {
+		case err != nil:
+			return 0, advise("is not a whole number", "")
+		case v < least:
+			return 0, advise(fmt.Sprintf("is less than %d", least), "")
+		}
+		return v, nil
+	}
+}
+
+func parseSeed(value string) (uint64, error) {
+	v, err := strconv.ParseUint(strings.TrimSpace(value), 10, 64)
+	if err != nil {
+		return 0, advise("is not a whole number of 0 or more", "")
+	}
+	return v, nil
+}
+
+func parseTruth(value string) (bool, error) {
+	switch strings.ToLower(value) {
+	case "", "true", "yes":
+		return true, nil
+	case "false", "no":
+		return false, nil
+	}
+	return false, advise("is neither true nor false", "")
+}
+
+func parseChoice(among ...string) func(string) (string, error) {
+	return func(value string) (string, error) {
+		if slices.Contains(among, value) {
+			return value, nil
+		}
+		return "", notAmong(value, among)
+	}
+}
+
+// parseChoices reads a comma-separated list and returns it without repetitions in the order of among.
+func parseChoices(value string, among []string) ([]string, error) {
+	said := map[string]bool{}
+	for part := range strings.SplitSeq(value, ",") {
+		part = strings.TrimSpace(part)
+		if !slices.Contains(among, part) {
+			return nil, notAmong(part, among)
+		}
+		said[part] = true
+	}
+	var list []string
+	for _, a := range among {
+		if said[a] {
+			list = append(list, a)
+		}
+	}
+	return list, nil
+}
+
+func notAmong(value string, among []string) error {
+	hint := ""
+	if near, ok := Nearest(value, among); ok {
+		hint = "did you mean " + near + "?"
+	}
+	return advise("is not one of "+strings.Join(among, ", "), hint)
+}
+
+func parseSmoothness(value string) (Smoothness, error) {
+	if value == ByREML || value == ByGCV {
+		return Smoothness{By: value}, nil
+	}
+	v, err := parseNumber(value)
+	if err != nil || v < 0 {
+		return Smoothness{}, advise("is neither reml nor gcv nor a number of 0 or more", "")
+	}
+	return Smoothness{By: ByNumber, Lambda: v}, nil
+}
+
+func parseReference(value string) (Reference, error) {
+	if value == Overall {
+		return Reference{Overall: true}, nil
+	}
+	v, err := parseNumber(value)
+	if err != nil || v <= 0 {
+		return Reference{}, advise("is neither overall nor a number above 0", "")
+	}
+	return Reference{Level: v}, nil
+}
+
+func parseHold(value string) (Hold, error) {
+	name, at, found := strings.Cut(value, "=")
+	if !found || strings.TrimSpace(name) == "" || strings.TrimSpace(at) == "" {
+		return Hold{}, advise("is not of the form NAME=VALUE", "for example depth=3.5, depth=mean or soil=commonest")
+	}
+	return Hold{Name: strings.TrimSpace(name), Value: strings.TrimSpace(at)}, nil
+}

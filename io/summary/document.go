@@ -1,0 +1,214 @@
+// Package summary is the record of one region's run: summary.json, and its telling in words.
+//
+// Nothing in it depends on the clock, the machine's name, the number of workers or the folder: the same input gives the
+// same bytes.
+package summary
+
+import (
+	"bytes"
+	"encoding/json"
+	"io"
+	"math"
+)
+
+// Number is a number that becomes null in JSON where it is not finite.
+type Number float64
+
+// MarshalJSON writes the shortest decimal that reads back as the same number.
+func (n Number) MarshalJSON() ([]byte, error) {
+	if math.IsNaN(float64(n)) || math.IsInf(float64(n), 0) {
+		return []byte("null"), nil
+	}
+	return json.Marshal(float64(n))
+}
+
+// Document is what summary.json holds.
+type Document struct {
+	Version      string        `json:"version"`
+	Input        Input         `json:"input"`
+	Settings     Settings      `json:"settings"`
+	Lattice      Lattice       `json:"lattice"`
+	Fit          Fit           `json:"fit"`
+	Coefficients []Coefficient `json:"coefficients"`
+	Effects      []Effect      `json:"effects"`
+	Estimates    Estimates     `json:"estimates"`
+	Zones        *Zones        `json:"zones"`
+	Checks       []Check       `json:"checks"`
+	Cautions     []string      `json:"cautions"`
+	Rehearsal    *struct{}     `json:"rehearsal"`  // null until a rehearsal is asked for
+	Validation   *struct{}     `json:"validation"` // null until a validation is asked for
+	Outputs      []Output      `json:"outputs"`
+
+	Folder string `json:"-"` // where the outputs went, for the words only
+}
+
+// Input is the table of observations.
+type Input struct {
+	Name           string         `json:"name"`
+	SHA256         string         `json:"sha256"`
+	Rows           int            `json:"rows"`
+	Used           int            `json:"used"`
+	SetAside       map[string]int `json:"set_aside"` // rows by reason
+	DistinctPlaces int            `json:"distinct_places"`
+	MedianSpacing  Number         `json:"median_spacing_m"`
+	Coordinates    string         `json:"coordinates"` // which columns, and how they were taken
+}
+
+// Setting is a setting in force. Chosen says why, where the program chose it.
+type Setting struct {
+	Key    string
+	Value  any
+	Chosen string
+}
+
+// Settings are the settings in force, in their order.
+type Settings []Setting
+
+// MarshalJSON writes an object with the settings in order: {"value": ...} with "chosen" beside it where the program
+// chose.
+func (s Settings) MarshalJSON() ([]byte, error) {
+	var b bytes.Buffer
+	b.WriteByte('{')
+	for i, e := range s {
+		if i > 0 {
+			b.WriteByte(',')
+		}
+		entry := struct {
+			Value  any    `json:"value"`
+			Chosen string `json:"chosen,omitempty"`
+		}{e.Value, e.Chosen}
+		key, err := json.Marshal(e.Key)
+		if err != nil {
+			return nil, err
+		}
+		value, err := json.Marshal(entry)
+		if err != nil {
+			return nil, err
+		}
+		b.Write(key)
+		b.WriteByte(':')
+		b.Write(value)
+	}
+	b.WriteByte('}')
+	return b.Bytes(), nil
+}
+
+// Lattice is what was predicted onto.
+type Lattice struct {
+	Kind   string `json:"kind"` // "cells" or "places" (of --at)
+	CRS    string `json:"crs"`
+	Cell   Number `json:"cell_m"`
+	Across int    `json:"columns"`
+	Up     int    `json:"rows"`
+	Count  int    `json:"count"` // cells of the study area, or places
+	Area   Number `json:"area_m2"`
+}
+
+// Term is a number with the rule that gives it meaning.
+type Term struct {
+	Value      Number `json:"value"`
+	Convention string `json:"convention"`
+}
+
+// Fit is how the fit went.
+type Fit struct {
+	Distribution     string            `json:"distribution"`
+	Link             string            `json:"link"`
+	Converged        bool              `json:"converged"`
+	Iterations       int               `json:"iterations"`
+	Gradient         Number            `json:"projected_gradient"`
+	Criterion        string            `json:"criterion"`
+	CriterionValue   Number            `json:"criterion_value"`
+	Lambda           map[string]Term   `json:"lambda"`
+	DegreesOfFreedom map[string]Number `json:"degrees_of_freedom"`
+	Knots            int               `json:"knots"`
+	KnotsInGaps      int               `json:"knots_in_gaps"`
+	Plane            bool              `json:"surface_is_a_plane"`
+	Dispersion       Number            `json:"dispersion"`
+	DispersionKnown  bool              `json:"dispersion_known"`
+	Pearson          Number            `json:"pearson_dispersion"`
+	Shape            *Number           `json:"shape"`
+	Deviance         Number            `json:"deviance"`
+	DevianceShare    Number            `json:"deviance_share"`
+	LogLikelihood    Number            `json:"log_likelihood"`
+	AIC              Number            `json:"aic"`
+}
+
+// Coefficient is on the link scale.
+type Coefficient struct {
+	Name          string `json:"name"`
+	Estimate      Number `json:"estimate"`
+	StandardError Number `json:"standard_error"`
+	Lower         Number `json:"lower"`
+	Upper         Number `json:"upper"`
+}
+
+// Effect is a covariate with its role and the value it is held at on the map.
+type Effect struct {
+	Name  string `json:"name"`
+	Role  string `json:"role"`
+	Held  string `json:"held"` // empty where the map has the covariate's own values
+	Range string `json:"range"`
+}
+
+// Estimates are the map's figures in the reporting unit.
+type Estimates struct {
+	Unit                string `json:"unit"`
+	Least               Number `json:"least"`
+	Median              Number `json:"median"`
+	Most                Number `json:"most"`
+	MedianStandardError Number `json:"median_standard_error"`
+	Threshold           Number `json:"threshold"`
+	Above               Number `json:"share_with_chance_above_0.95"`
+	Confidence          Number `json:"confidence"`
+}
+
+// Zones says what the zones' figures are.
+type Zones struct {
+	Count  int      `json:"count"`
+	Totals bool     `json:"totals"`
+	Note   string   `json:"note"`
+	Lines  []string `json:"-"` // the first few, in words
+}
+
+// Level is the outcome of a check.
+type Level string
+
+const (
+	Clear Level = "clear" // nothing to remark
+	Look  Level = "look"  // somebody should look before relying on it
+	Stop  Level = "stop"  // not to be used as it is
+)
+
+// Check is a finding on the fit.
+type Check struct {
+	Name     string `json:"name"`
+	Level    Level  `json:"level"`
+	Figure   Number `json:"figure"`
+	Sentence string `json:"sentence"`
+}
+
+// Output is a file beside the summary.
+type Output struct {
+	File   string `json:"file"`
+	SHA256 string `json:"sha256,omitempty"` // of data files
+}
+
+// Worst returns the gravest level among the checks.
+func (d Document) Worst() Level {
+	worst := Clear
+	for _, c := range d.Checks {
+		if c.Level == Stop || c.Level == Look && worst == Clear {
+			worst = c.Level
+		}
+	}
+	return worst
+}
+
+// WriteJSON writes summary.json.
+func (d Document) WriteJSON(w io.Writer) error {
+	e := json.NewEncoder(w)
+	e.SetEscapeHTML(false)
+	e.SetIndent("", "  ")
+	return e.Encode(d)
+}
