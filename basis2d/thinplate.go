@@ -167,6 +167,10 @@ func (t *ThinPlate) constraint() (*mat.Dense, error) {
 // ErrCollinear says that the knots lie on one line, so that a plane is not determined by them.
 var ErrCollinear = fmt.Errorf("the places lie on one line")
 
+// leastPivot is the smallest share of its diagonal that a pivot of Q2'E Q2 may come to. Knots minSpacing apart leave
+// 1e-11, coinciding ones rounding.
+const leastPivot = 1e-13
+
 // whiten sets Whiten = Q2 U^-1 with U'U = Q2'E Q2.
 func (t *ThinPlate) whiten(q2 *mat.Dense) error {
 	k := t.Dim()
@@ -187,11 +191,17 @@ func (t *ThinPlate) whiten(q2 *mat.Dense) error {
 		}
 	}
 	var chol mat.Cholesky
-	if !chol.Factorize(sym) {
+	var u mat.TriDense
+	ok := chol.Factorize(sym)
+	if ok {
+		chol.UTo(&u)
+	}
+	for j := 0; j < wiggly && ok; j++ {
+		ok = u.At(j, j)*u.At(j, j) > leastPivot*sym.At(j, j)
+	}
+	if !ok {
 		return fmt.Errorf("thin-plate basis: two of the %d knots lie too close together", k)
 	}
-	var u mat.TriDense
-	chol.UTo(&u)
 	w := mat.DenseCopyOf(q2)
 	blas64.Trsm(blas.Right, blas.NoTrans, 1, u.RawTriangular(), w.RawMatrix())
 	t.Whiten = w.RawMatrix().Data

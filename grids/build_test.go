@@ -61,6 +61,22 @@ func TestLatticeLeavesOutWhatIsFar(t *testing.T) {
 	}
 }
 
+// Three tight crowds: five spacings are 2.5 m, a cell is 100 m, and still the cell that holds a crowd is mapped.
+func TestCellsOfCrowdsAreMapped(t *testing.T) {
+	var x, y []float64
+	for i := range 9 {
+		dx, dy := float64(i%3)/2, float64(i/3)/2
+		x, y = append(x, dx, 9999+dx, dx), append(y, dy, dy, 9999+dy)
+	}
+	l, err := NewLattice(crs.Local{}, Spec{X: x, Y: y})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if l.NX != 100 || !l.In(0) || l.Inside() > 3 {
+		t.Errorf("%d columns, cell 0 in is %v, %d in all", l.NX, l.In(0), l.Inside())
+	}
+}
+
 // Whatever the observations: an error or a lattice with a cell in it, of about the size that was asked for.
 func TestLatticeIsNeverEmpty(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {

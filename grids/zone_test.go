@@ -239,3 +239,18 @@ func BenchmarkCellsIn(b *testing.B) {
 		})
 	}
 }
+
+// A centre is the first from itself, and no longer the first from just beyond it, whatever the quotient rounds to.
+func TestFirstFromIsExact(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		l := Lattice{X0: rapid.Float64Range(-1e7, 1e7).Draw(t, "x0"), Cell: rapid.Float64Range(1e-3, 1e3).Draw(t, "cell"), NX: 500}
+		for i := range l.NX {
+			c := l.centreX(i)
+			at := firstFrom(l.centreX, c, l.X0, l.Cell, l.NX)
+			beyond := firstFrom(l.centreX, math.Nextafter(c, math.Inf(1)), l.X0, l.Cell, l.NX)
+			if at != i || beyond != i+1 {
+				t.Fatalf("centre %d: %d and %d", i, at, beyond)
+			}
+		}
+	})
+}

@@ -50,7 +50,11 @@ func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
 		return nil, explain(err, dist)
 	}
 	s.beta, s.factor, s.phi = r.Beta, engine.Factored(), r.Phi
-	s.report = s.describe(r, d)
+	mean, err := meanRow(ctx, engine, surfaceColumns(s.basis))
+	if err != nil {
+		return nil, err
+	}
+	s.report = s.describe(r, d, mean)
 	return s, s.settleRows(ctx, engine, problem, r, d, o.Seed)
 }
 

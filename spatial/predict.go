@@ -32,7 +32,7 @@ func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z
 			scratch[worker] = &rowScratch{rows: make([]float64, blocks.Size*p)}
 		}
 		from, to := blocks.Range(b, n)
-		x := rows(scratch[worker], at, from, to)
+		x := rows(scratch[worker], at.X[from:to], at.Y[from:to], func(k int) int { return from + k })
 		blas64.Gemv(blas.NoTrans, 1, x, blas64.Vector{N: p, Inc: 1, Data: s.beta}, 0, blas64.Vector{N: to - from, Inc: 1, Data: eta[from:to]})
 		blas64.Trsm(blas.Right, blas.NoTrans, 1, s.triangle(), x)
 		for i := range x.Rows {
@@ -50,25 +50,28 @@ type rowScratch struct {
 	spread basis2d.Spread
 }
 
-// rowMaker returns a function that makes rows [from, to) of the model matrix at new places.
-func (s *Surface) rowMaker(z []Covariate) (func(w *rowScratch, at Places, from, to int) blas64.General, error) {
+// rows makes the model matrix's rows at places (x, y); of tells which row of the covariates belongs to the k-th of them.
+type rows func(w *rowScratch, x, y []float64, of func(k int) int) blas64.General
+
+// rowMaker returns the rows at new places with covariates z.
+func (s *Surface) rowMaker(z []Covariate) (rows, error) {
 	values, err := s.border.values(z)
 	if err != nil {
 		return nil, err
 	}
 	p, k := len(s.beta), surfaceColumns(s.basis)
 	q := p - k
-	return func(w *rowScratch, at Places, from, to int) blas64.General {
+	return func(w *rowScratch, x, y []float64, of func(k int) int) blas64.General {
 		if len(w.raw) < q {
 			w.raw = make([]float64, q)
 		}
-		x := blas64.General{Rows: to - from, Cols: p, Stride: p, Data: w.rows[:(to-from)*p]}
-		surfaceRowsTo(x.Data, p, s.basis, at.X[from:to], at.Y[from:to], &w.spread)
-		for i := from; i < to && q > 0; i++ {
-			row := x.Data[(i-from)*p : (i-from+1)*p]
-			values(w.raw[:q], i)
+		m := blas64.General{Rows: len(x), Cols: p, Stride: p, Data: w.rows[:len(x)*p]}
+		surfaceRowsTo(m.Data, p, s.basis, x, y, &w.spread)
+		for i := 0; i < len(x) && q > 0; i++ {
+			row := m.Data[i*p : (i+1)*p]
+			values(w.raw[:q], of(i))
 			s.border.rowTo(row[k:], row, w.raw[:q])
 		}
-		return x
+		return m
 	}, nil
 }

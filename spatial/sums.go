@@ -45,11 +45,10 @@ func (s *Surface) Sums(ctx context.Context, at Places, z []Covariate, sets []Sha
 	if err != nil {
 		return nil, err
 	}
-	p := len(s.beta)
 	betas := s.draw(draws, seed)
 	out := make([]Sum, len(sets))
 	for k, set := range sets {
-		if out[k], err = s.sum(ctx, rows, at, set, betas, draws, p); err != nil {
+		if out[k], err = s.sum(ctx, rows, at, set, betas); err != nil {
 			return nil, err
 		}
 	}
@@ -57,28 +56,32 @@ func (s *Surface) Sums(ctx context.Context, at Places, z []Covariate, sets []Sha
 }
 
 // sum works through one set in blocks, added in order.
-func (s *Surface) sum(ctx context.Context, rows func(*rowScratch, Places, int, int) blas64.General, at Places, set Share, betas blas64.General, draws, p int) (Sum, error) {
-	workers := blocks.Workers(s.workers)
-	scratch := make([]*rowScratch, workers)
-	etas := make([][]float64, workers)
+func (s *Surface) sum(ctx context.Context, rows rows, at Places, set Share, betas blas64.General) (Sum, error) {
+	p, draws := betas.Rows, betas.Cols
+	scratch := make([]*sumScratch, blocks.Workers(s.workers))
 	acc := make([]float64, 1+p+draws) // value, gradient, draws
-	err := blocks.Sum(ctx, workers, len(set.Index), acc, func(worker, from, to int, acc []float64) error {
+	err := blocks.Sum(ctx, s.workers, len(set.Index), acc, func(worker, from, to int, acc []float64) error {
 		if scratch[worker] == nil {
-			scratch[worker], etas[worker] = &rowScratch{rows: make([]float64, blocks.Size*p)}, make([]float64, draws)
+			scratch[worker] = &sumScratch{rowScratch: rowScratch{rows: make([]float64, blocks.Size*p)}, drawn: make([]float64, blocks.Size*draws)}
 		}
-		for j := from; j < to; j++ {
-			i, a := int(set.Index[j]), set.Weight[j]
-			x := rows(scratch[worker], at, i, i+1)
-			eta := dot(x.Data, s.beta)
+		w := scratch[worker]
+		index, weight := set.Index[from:to], set.Weight[from:to]
+		for k, i := range index {
+			w.x[k], w.y[k] = at.X[i], at.Y[i]
+		}
+		x := rows(&w.rowScratch, w.x[:len(index)], w.y[:len(index)], func(k int) int { return int(index[k]) })
+		drawn := blas64.General{Rows: x.Rows, Cols: draws, Stride: draws, Data: w.drawn[:x.Rows*draws]}
+		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, x, betas, 0, drawn)
+		for k, a := range weight {
+			row := x.Data[k*p : (k+1)*p]
+			eta := dot(row, s.beta)
 			acc[0] += a * s.dist.Mean(eta)
 			slope := a * s.dist.MeanSlope(eta)
-			for k, v := range x.Data {
-				acc[1+k] += slope * v
+			for j, v := range row {
+				acc[1+j] += slope * v
 			}
-			d := etas[worker]
-			blas64.Gemv(blas.Trans, 1, betas, blas64.Vector{N: p, Inc: 1, Data: x.Data}, 0, blas64.Vector{N: draws, Inc: 1, Data: d})
-			for k, e := range d {
-				acc[1+p+k] += a * s.dist.Mean(e)
+			for d, e := range drawn.Data[k*draws : (k+1)*draws] {
+				acc[1+p+d] += a * s.dist.Mean(e)
 			}
 		}
 		return nil
@@ -87,6 +90,13 @@ func (s *Surface) sum(ctx context.Context, rows func(*rowScratch, Places, int, i
 		return Sum{}, err
 	}
 	return Sum{Value: acc[0], Delta: math.Sqrt(s.phi) * s.length(acc[1:1+p]), Draws: acc[1+p:]}, nil
+}
+
+// sumScratch is one goroutine's space for a block of places and their draws.
+type sumScratch struct {
+	rowScratch
+	x, y  [blocks.Size]float64
+	drawn []float64
 }
 
 // draw returns coefficients drawn from their posterior, p x draws.

@@ -71,7 +71,7 @@ func (s *Surface) Report() Report { return s.report }
 // Model returns the model that was fitted.
 func (s *Surface) Model() Model { return s.model }
 
-func (s *Surface) describe(r *penfit.Result, d Data) Report {
+func (s *Surface) describe(r *penfit.Result, d Data, mean []float64) Report {
 	rep := Report{
 		Distribution: s.dist.Name(), Link: s.dist.Link(), Rows: len(d.Response),
 		Converged: r.Converged, Iterations: r.Iterations, Passes: r.Passes, ProjectedGradient: r.Gradient,
@@ -102,14 +102,14 @@ func (s *Surface) describe(r *penfit.Result, d Data) Report {
 			rep.CriterionValue += 2 * math.Log(s.basis.Scale)
 		}
 	}
-	rep.Coefficients = s.coefficients(d.Places)
+	rep.Coefficients = s.coefficients(mean)
 	return rep
 }
 
-// coefficients reads the raw coefficients off the orthogonal ones the fit works with.
-func (s *Surface) coefficients(at Places) []Coefficient {
+// coefficients reads the raw coefficients off the orthogonal ones the fit works with; mean is the mean of the surface's
+// columns over rows.
+func (s *Surface) coefficients(mean []float64) []Coefficient {
 	k, q := surfaceColumns(s.basis), s.border.size()
-	mean := s.meanRow(at)
 	g := make([]float64, k+q)
 	copy(g, mean)
 	for j := 0; j < q; j++ { // T a_T = T (a~ - Mix R^-1 c)
@@ -128,19 +128,17 @@ func (s *Surface) coefficients(at Places) []Coefficient {
 	return list
 }
 
-// meanRow returns the mean of the surface's columns over places.
-func (s *Surface) meanRow(at Places) []float64 {
-	k, n := surfaceColumns(s.basis), at.Len()
-	mean := make([]float64, k)
-	row := make([]float64, k)
-	var scratch basis2d.Spread
-	for i := 0; i < n; i++ {
-		surfaceRowsTo(row, k, s.basis, at.X[i:i+1], at.Y[i:i+1], &scratch)
-		for j, v := range row {
-			mean[j] += v / float64(n)
-		}
+// meanRow returns the mean of the model matrix's first k columns over its rows.
+func meanRow(ctx context.Context, e penfit.Engine, k int) ([]float64, error) {
+	one := func(int, float64) (weight, value float64) { return 0, 1 }
+	if err := e.Pass(ctx, make([]float64, e.Coefs()), one, false); err != nil {
+		return nil, err
 	}
-	return mean
+	mean := append([]float64(nil), e.Score()[:k]...)
+	for j := range mean {
+		mean[j] /= float64(e.Rows())
+	}
+	return mean, nil
 }
 
 // linearForm returns g'beta with its standard error; it overwrites nothing.

@@ -102,7 +102,7 @@ func (p program) mapWithin(ctx context.Context, dir string, args []string, how p
 			return err
 		}
 		s.Workers, s.Quiet = how.Workers, how.Quiet
-		return p.draw(ctx, s.RelativeTo(dir), filepath.Join(dir, r.out), line)
+		return p.draw(ctx, s.RelativeTo(dir), filepath.Join(dir, r.out), r.out, line)
 	}
 	return p.carryOut(ctx, c, args[1:])
 }

@@ -23,7 +23,7 @@ func (p program) mapCommand() command {
 		if err := keepApart(r.out, s.Files()...); err != nil {
 			return err
 		}
-		return p.draw(ctx, s, r.out, newProgress(p.stderr, *s.Quiet))
+		return p.draw(ctx, s, r.out, r.out, newProgress(p.stderr, *s.Quiet))
 	}
 	return c
 }
@@ -65,9 +65,11 @@ func (r *mapRequest) resolve(c command, rest []string) (plan.Settings, error) {
 	return r.settings.Resolve()
 }
 
-// draw has one region fitted and drawn, and tells what came of it.
-func (p program) draw(ctx context.Context, s plan.Settings, out string, line *progress) error {
+// draw has one region fitted and drawn into the folder out, and tells what came of it; shown is what the reader knows
+// that folder as.
+func (p program) draw(ctx context.Context, s plan.Settings, out, shown string, line *progress) error {
 	document, err := p.work.run(ctx, s, out, line)
+	document.Folder = shown
 	line.clear()
 	if err != nil || *s.Quiet {
 		return err

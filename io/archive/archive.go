@@ -45,6 +45,7 @@ type Reporting struct {
 	Factor     float64  // estimate = mean x Factor
 	Unit       string   // of the estimate
 	Threshold  *float64 // in the reporting unit
+	Reference  float64  // level, in the reporting unit, that relative risks are taken against; 0 means none
 	Confidence float64
 }
 

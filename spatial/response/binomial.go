@@ -39,10 +39,13 @@ func (Binomial) At(o Obs, eta float64) Point {
 	}
 }
 
-// Pearson returns w (y - m p)^2 / (m p q).
+// Pearson returns w (y - m p)^2 / (m p q), and 0 where p rounds to the share of positives at 0 or 1.
 func (Binomial) Pearson(o Obs, eta float64) float64 {
 	p, q := logistic(eta)
 	r := o.Y*q - (o.Trials-o.Y)*p
+	if r == 0 {
+		return 0
+	}
 	return o.Weight * r * r / (o.Trials * p * q)
 }
 

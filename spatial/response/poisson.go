@@ -26,15 +26,25 @@ func (Poisson) Start(o Obs, overall float64) float64 { return (o.Y + overall) / 
 func (Poisson) At(o Obs, eta float64) Point {
 	mu := math.Exp(eta)
 	w := o.Weight * mu
+	deviance := math.Inf(1)
+	if !math.IsInf(mu, 1) {
+		deviance = 2 * o.Weight * (xlogy(o.Y, mu) - (o.Y - mu))
+	}
 	return Point{
-		Deviance: 2 * o.Weight * (xlogy(o.Y, mu) - (o.Y - mu)), Score: o.Weight * (o.Y - mu),
+		Deviance: deviance, Score: o.Weight * (o.Y - mu),
 		Weight: w, Slope: w, Expected: w, ExpectedSlope: w,
 	}
 }
 
-// Pearson returns w (y - mean)^2 / mean.
+// Pearson returns w (y - mean)^2 / mean, and 0 for a zero count where the mean underflows.
 func (Poisson) Pearson(o Obs, eta float64) float64 {
 	mu := math.Exp(eta)
+	switch {
+	case mu == o.Y:
+		return 0
+	case math.IsInf(mu, 1):
+		return mu
+	}
 	return o.Weight * (o.Y - mu) * (o.Y - mu) / mu
 }
 

@@ -2,7 +2,6 @@ package pipeline
 
 import (
 	"context"
-	"fmt"
 	"math"
 	"strconv"
 	"strings"
@@ -17,7 +16,7 @@ import (
 // reporting says how estimates are stated, and what the words around them are.
 type reporting struct {
 	archive.Reporting
-	ratio bool   // a relative risk
+	ratio bool   // the estimate itself is a relative risk
 	title string // of the pictures
 }
 
@@ -33,13 +32,10 @@ func (r *run) report() (reporting, error) {
 	kind, _ := s.Denominator()
 	p.ratio = kind == "expected"
 	if ref := s.Reference; ref != nil {
-		level := ref.Level
+		p.Reference = ref.Level
 		if ref.Overall {
-			level = r.overall() * p.Factor
+			p.Reference = r.overall() * p.Factor
 		}
-		p.Factor /= level
-		p.ratio = true
-		p.Unit = fmt.Sprintf("relative to %s %s", strconv.FormatFloat(level, 'g', 4, 64), p.Unit)
 	}
 	if s.UnitLabel != nil {
 		p.Unit = *s.UnitLabel
@@ -111,6 +107,7 @@ func (r *run) unit() string {
 type estimates struct {
 	estimate, standardError, lower, upper, cv []float64
 	chance                                    []float64 // nil without a threshold
+	relative, relativeLower, relativeUpper    []float64 // to the reference; nil without one
 	eta, etaError                             []float64
 	nearest                                   []float64
 }
@@ -136,6 +133,9 @@ func estimate(ctx context.Context, s *spatial.Surface, rep archive.Reporting, at
 		e.upper[i] = s.Mean(eta+q*se) * rep.Factor
 		e.cv[i] = e.standardError[i] / math.Abs(e.estimate[i])
 	}
+	if rep.Reference > 0 {
+		e.relate(rep.Reference)
+	}
 	if rep.Threshold != nil {
 		e.chance = make([]float64, n)
 		limit := s.Linear(*rep.Threshold / rep.Factor)
@@ -146,15 +146,33 @@ func estimate(ctx context.Context, s *spatial.Surface, rep archive.Reporting, at
 	return e, nil
 }
 
-// columns returns the figures of surface.csv after the coordinates, in its order.
+// relate sets the relative risk: the estimate and its limits over the reference level, which is taken as known.
+func (e *estimates) relate(reference float64) {
+	over := func(v []float64) []float64 {
+		q := make([]float64, len(v))
+		for i := range v {
+			q[i] = v[i] / reference
+		}
+		return q
+	}
+	e.relative, e.relativeLower, e.relativeUpper = over(e.estimate), over(e.lower), over(e.upper)
+}
+
+// columns returns the figures of surface.csv after the coordinates, in its order; the relative risk comes last and only
+// where there is a reference.
 func (e *estimates) columns() []tables.Column {
-	return []tables.Column{
+	list := []tables.Column{
 		{Name: "estimate", Number: e.estimate}, {Name: "standard_error", Number: e.standardError},
 		{Name: "lower", Number: e.lower}, {Name: "upper", Number: e.upper}, {Name: "cv", Number: e.cv},
 		{Name: "chance", Number: e.chance},
 		{Name: "linear_predictor", Number: e.eta}, {Name: "linear_standard_error", Number: e.etaError},
 		{Name: "nearest_m", Number: e.nearest},
 	}
+	if e.relative != nil {
+		list = append(list, tables.Column{Name: "relative_risk", Number: e.relative},
+			tables.Column{Name: "relative_risk_lower", Number: e.relativeLower}, tables.Column{Name: "relative_risk_upper", Number: e.relativeUpper})
+	}
+	return list
 }
 
 // surfaceTable returns all columns of surface.csv.

@@ -18,7 +18,8 @@ type picture struct {
 	chart.Map
 }
 
-// pictures returns the maps of the region: the estimate, its uncertainty, and the chance where there is a threshold.
+// pictures returns the maps of the region: the estimate, its uncertainty, the chance where there is a threshold, and the
+// relative risk where there is a reference.
 func (r *run) pictures() []picture {
 	e, unit := r.estimates, r.reporting.Unit
 	level := r.picture("map.png", unit, chart.Level, e.estimate)
@@ -34,6 +35,9 @@ func (r *run) pictures() []picture {
 			percent[i] = 100 * v
 		}
 		list = append(list, r.picture("uncertainty.png", "coefficient of variation, %", chart.Uncertainty, percent))
+	}
+	if e.relative != nil {
+		list = append(list, r.picture("relative-risk.png", fmt.Sprintf("relative risk (1 = %s %s)", summary.Short(summary.Number(r.reporting.Reference)), unit), chart.Ratio, e.relative))
 	}
 	if e.chance != nil {
 		list = append(list, r.picture("chance.png", fmt.Sprintf("chance of more than %s, %s", summary.Short(summary.Number(*r.reporting.Threshold)), unit), chart.Chance, e.chance))

@@ -59,7 +59,6 @@ func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.D
 	}
 	r.describe()
 	err := Folder(ctx, dir, *s.Force, func(partial string) error { return r.write(ctx, partial) })
-	r.document.Folder = dir
 	return r.document, err
 }
 

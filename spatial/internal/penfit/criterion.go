@@ -2,6 +2,7 @@ package penfit
 
 import (
 	"math"
+	"slices"
 
 	"drumlin/spatial/response"
 )
@@ -15,10 +16,32 @@ const (
 	Given                  // lambda is given
 )
 
+// evaluation is the criterion at one point, with the slopes of the mode there.
+type evaluation struct {
+	criterion Criterion
+	rho       []float64
+	value     float64
+	gradient  []float64
+	db        [][]float64 // d beta/d rho_j
+}
+
 // score returns the criterion at log lambda rho and its gradient. It moves the mode there and leaves H factored with
 // the weights the distribution's Curvature asks for.
 func (f *fitter) score(c Criterion, rho []float64) (value float64, gradient []float64, err error) {
+	if f.last.rho != nil && f.last.criterion == c && slices.Equal(f.last.rho, rho) {
+		return f.last.value, slices.Clone(f.last.gradient), nil
+	}
 	lambda := exp(rho)
+	if f.last.rho != nil {
+		step := make([]float64, len(rho))
+		for j := range step {
+			step[j] = rho[j] - f.last.rho[j]
+		}
+		if err := f.foresee(step, lambda); err != nil {
+			return 0, nil, err
+		}
+	}
+	f.last = evaluation{}
 	if err := f.mode(lambda); err != nil {
 		return 0, nil, err
 	}
@@ -28,9 +51,14 @@ func (f *fitter) score(c Criterion, rho []float64) (value float64, gradient []fl
 		return 0, nil, err
 	}
 	if c == GCV {
-		return f.gcv(lambda, sb, db, slopes)
+		value, gradient, err = f.gcv(lambda, sb, db, slopes)
+	} else {
+		value, gradient, err = f.reml(lambda, sb, slopes)
 	}
-	return f.reml(lambda, sb, slopes)
+	if err == nil {
+		f.last = evaluation{c, slices.Clone(rho), value, slices.Clone(gradient), db}
+	}
+	return value, gradient, err
 }
 
 // modeSlopes returns S_j b and db/d rho_j = -lambda_j H^-1 S_j b with H of the observed weights, by the implicit

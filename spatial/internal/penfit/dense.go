@@ -253,9 +253,22 @@ func (e *Dense) LinearTo(ctx context.Context, dst, beta []float64) error {
 	})
 }
 
-// LeveragesTo writes x_i'H^-1 x_i to dst.
+// LeveragesTo writes x_i'H^-1 x_i to dst: the squared length of R'^-1 x_i, with R'R = H.
 func (e *Dense) LeveragesTo(ctx context.Context, dst []float64) error {
-	return e.quadraticTo(ctx, dst, e.inverse())
+	p := e.p
+	r := blas64.Triangular{Uplo: blas.Upper, Diag: blas.NonUnit, N: p, Stride: p, Data: e.Factored()}
+	return blocks.Do(ctx, e.workers, blocks.Count(e.n), func(worker, b int) error {
+		from, to := blocks.Range(b, e.n)
+		x := e.block(worker, from, to)
+		v := blas64.General{Rows: x.Rows, Cols: p, Stride: p, Data: e.scratch[worker][blocks.Size*p:][:x.Rows*p]}
+		copy(v.Data, x.Data)
+		blas64.Trsm(blas.Right, blas.NoTrans, 1, r, v)
+		for i := 0; i < x.Rows; i++ {
+			row := vec(v.Data[i*p : (i+1)*p])
+			dst[from+i] = blas64.Dot(row, row)
+		}
+		return nil
+	})
 }
 
 // quadraticTo writes x_i'M x_i to dst for a symmetric M in full.

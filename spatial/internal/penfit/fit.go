@@ -34,8 +34,13 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 		return nil, err
 	}
 	r := rho.result
-	if r.Value, _, err = f.final(c, exp(rho.x)); err != nil {
+	if r.Value, _, err = f.final(c, rho.x); err != nil {
 		return nil, err
+	}
+	if f.flatten(rho, r.AtUpper) {
+		if r.Value, _, err = f.final(c, rho.x); err != nil {
+			return nil, err
+		}
 	}
 	r.Beta, r.Eta, r.Lambda = f.beta, f.eta, exp(rho.x)
 	r.Deviance, r.Penalty, r.Constant = f.deviance, f.penalty, f.scale
@@ -47,7 +52,27 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 // found is where the search ended.
 type found struct {
 	x      []float64
+	hi     []float64 // top of the box; nil where nothing was searched
 	result Result
+}
+
+// flatEdf is how many degrees of freedom beyond its null space a term may keep and still count as its null space.
+const flatEdf = 1e-3
+
+// flatten moves the terms that the search left on the plateau below the top of the box, where the criterion no longer
+// changes, to the top, so that neither AtUpper nor lambda depends on where the search happened to stop. It reports
+// whether any moved.
+func (f *fitter) flatten(at found, upper []bool) (moved bool) {
+	if at.hi == nil {
+		return false
+	}
+	_, rank := f.Engine.LogDetPenalty(exp(at.x))
+	for j, t := range f.Engine.Traces() {
+		if !upper[j] && rank[j]-math.Exp(at.x[j])*t < flatEdf {
+			at.x[j], upper[j], moved = at.hi[j], true, true
+		}
+	}
+	return moved
 }
 
 // search finds log lambda.
@@ -87,7 +112,7 @@ func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
 	for j := range rho {
 		r.AtUpper[j] = m.x[j] >= hi[j]-1e-9
 	}
-	return found{x: m.x, result: r}, nil
+	return found{x: m.x, hi: hi, result: r}, nil
 }
 
 // objective wraps score for the search: numerical trouble at one point is an infinite value, so that the search halves
@@ -98,6 +123,7 @@ func (f *fitter) objective(c Criterion) objective {
 		v, g, err := f.score(c, rho)
 		if err != nil && numerical(err) {
 			copy(f.beta, kept)
+			f.current = false
 			return math.Inf(1), make([]float64, len(rho)), nil
 		}
 		if err == nil && c == GCV {
@@ -140,20 +166,16 @@ func (f *fitter) scan(objective objective, rho, lo, hi []float64) []float64 {
 	return at
 }
 
-// final evaluates everything at the chosen lambda.
-func (f *fitter) final(c Criterion, lambda []float64) (value float64, gradient []float64, err error) {
-	rho := make([]float64, len(lambda))
-	zero := false
-	for j, l := range lambda {
-		rho[j] = math.Log(l)
-		zero = zero || l == 0
-	}
+// final evaluates everything at the chosen log lambda; the criterion of an interpolation, lambda 0, has no value.
+func (f *fitter) final(c Criterion, rho []float64) (value float64, gradient []float64, err error) {
 	if c == Given {
 		c = REML
 	}
 	value, gradient, err = f.score(c, rho)
-	if zero {
-		value = math.NaN()
+	for _, r := range rho {
+		if math.IsInf(r, -1) {
+			value = math.NaN()
+		}
 	}
 	return value, gradient, err
 }

@@ -45,7 +45,9 @@ type fitter struct {
 	scale    float64 // deviance of a constant fit: what "small" is measured against
 
 	haveGram bool // a Gram matrix is at hand that stays true: constant weights
+	current  bool // the last pass was at beta, with a Gram matrix of observed weights
 	passes   int
+	last     evaluation
 }
 
 func newFitter(ctx context.Context, p Problem) *fitter {
@@ -64,6 +66,7 @@ func (f *fitter) offset(i int) float64 {
 // evaluate visits the rows at beta; with gram set it leaves the Gram matrix of the given weights. Where weights are
 // constant the matrix is made once.
 func (f *fitter) evaluate(beta []float64, c response.Curvature, gram bool) (deviance float64, err error) {
+	f.current = false
 	gram = gram && !f.haveGram
 	err = f.Engine.Pass(f.ctx, beta, func(i int, linear float64) (weight, value float64) {
 		eta := linear + f.offset(i)
@@ -113,9 +116,12 @@ func (f *fitter) penaltyAt(dst, lambda, beta []float64) (value float64) {
 func (f *fitter) mode(lambda []float64) error {
 	k := len(f.beta)
 	sb, step, trial := make([]float64, k), make([]float64, k), make([]float64, k)
-	var err error
-	if f.deviance, err = f.evaluate(f.beta, response.Observed, true); err != nil {
-		return err
+	if !f.current {
+		var err error
+		if f.deviance, err = f.evaluate(f.beta, response.Observed, true); err != nil {
+			return err
+		}
+		f.current = true
 	}
 	f.penalty = f.penaltyAt(sb, lambda, f.beta)
 	before, moved := math.Inf(1), 0.0
@@ -168,6 +174,31 @@ func (f *fitter) factor(lambda []float64) error {
 	return nil
 }
 
+// foresee moves beta to where the mode will be, to first order, when log lambda moves by step; the move is dropped if it
+// makes matters worse.
+func (f *fitter) foresee(step []float64, lambda []float64) error {
+	if f.Dist.ConstantWeight() || len(f.last.db) == 0 {
+		return nil // one Newton step leads there from anywhere
+	}
+	trial := append([]float64(nil), f.beta...)
+	for j, s := range step {
+		for k, d := range f.last.db[j] {
+			trial[k] += s * d
+		}
+	}
+	sb := make([]float64, len(trial))
+	before := f.deviance + f.penaltyAt(sb, lambda, f.beta)
+	d, err := f.evaluate(trial, response.Observed, true)
+	if err != nil {
+		return err
+	}
+	if d+f.penaltyAt(sb, lambda, trial) < before {
+		copy(f.beta, trial)
+		f.deviance, f.current = d, true
+	}
+	return nil
+}
+
 // advance takes the step, halved until the penalised deviance does not grow; sure steps, too small to be judged by a
 // difference of deviances, are taken as they are. It leaves sb = S_lambda beta.
 func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
@@ -184,7 +215,7 @@ func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
 		p := f.penaltyAt(sb, lambda, trial)
 		if d+p <= now+1e-13*math.Abs(now) || sure && !math.IsInf(d, 0) {
 			copy(f.beta, trial)
-			f.deviance, f.penalty = d, p
+			f.deviance, f.penalty, f.current = d, p, true
 			f.moved = 0
 			for i, e := range f.eta {
 				f.moved = math.Max(f.moved, math.Abs(e-from[i]))
