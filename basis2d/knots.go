@@ -22,7 +22,7 @@ const gapShare = 0.2
 
 // gapFactor says what a gap is: a point of the study area farther from every knot than this many times the knots'
 // median spacing.
-const gapFactor = 2
+const gapFactor = 1.5
 
 // PlaceKnots chooses at most most knots for places (x, y), given points (fillX, fillY) that cover the study area.
 //

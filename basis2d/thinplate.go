@@ -57,7 +57,7 @@ func NewThinPlate(knotX, knotY []float64) (*ThinPlate, error) {
 // surface predicts the same numbers on any machine. It returns an error if shapes do not agree.
 func RestoreThinPlate(t ThinPlate) (*ThinPlate, error) {
 	k := len(t.KnotX)
-	if k < Null || len(t.KnotY) != k || len(t.Whiten) != k*(k-Null) || !(t.Scale > 0) {
+	if k < Null || len(t.KnotY) != k || len(t.Whiten) != k*(k-Null) || !(t.Scale > 0) || math.IsInf(t.Scale, 1) {
 		return nil, fmt.Errorf("thin-plate basis: %d by %d knots with %d transform values do not belong together",
 			len(t.KnotX), len(t.KnotY), len(t.Whiten))
 	}

@@ -288,6 +288,7 @@ func TestRestoreThinPlateGivesTheSameRows(t *testing.T) {
 		"a knot less":        func(t *ThinPlate) { t.KnotX, t.KnotY = t.KnotX[1:], t.KnotY[1:] },
 		"transform cut":      func(t *ThinPlate) { t.Whiten = t.Whiten[1:] },
 		"no scale":           func(t *ThinPlate) { t.Scale = 0 },
+		"scale infinite":     func(t *ThinPlate) { t.Scale = math.Inf(1) },
 		"scale not a number": func(t *ThinPlate) { t.Scale = math.NaN() },
 	} {
 		s := stored

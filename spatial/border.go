@@ -161,7 +161,7 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
 		}
 		norm := math.Sqrt(dot(v, v))
 		if j > 0 && !(norm > least*own) || norm == 0 || own == 0 && j > 0 {
-			return b.dependent(j, t, names, r[j], own)
+			return b.dependent(j, t, names, r, own)
 		}
 		r[j][j] = norm
 		for i := range v {
@@ -200,21 +200,41 @@ func (b *border) keep(r [][]float64, t, q int, n float64) {
 }
 
 // dependent says which column hangs on which.
-func (b *border) dependent(j, t int, names []string, coefficients []float64, own float64) error {
+func (b *border) dependent(j, t int, names []string, r [][]float64, own float64) error {
 	if j < t {
 		return unfit("a surface needs places spread in two directions: use --surface none, or more places",
 			"the places lie on one line, so a surface over the plane cannot be had")
 	}
-	if own <= 1e-12*math.Abs(coefficients[0]) {
+	if own <= 1e-12*math.Abs(r[j][0]) {
 		return unfit("leave it out", "covariate %q has the same value in every row", names[j])
 	}
 	var on []string
-	for k := 1; k < j; k++ {
-		if math.Abs(coefficients[k]) > 1e-6*own {
+	for k, size := range contributions(r, j) {
+		if k > 0 && size > 1e-4*own {
 			on = append(on, names[k])
 		}
 	}
 	return unfit("leave one of them out", "covariate %q cannot be told apart from %s", names[j], strings.Join(on, ", "))
+}
+
+// contributions returns how much each of the columns before j, as they were, spreads the combination of them that makes
+// column j, given the columns of the triangular factor.
+func contributions(r [][]float64, j int) []float64 {
+	c := append([]float64(nil), r[j][:j]...) // R^-1 r_j: coefficients of the columns themselves
+	for k := j - 1; k >= 0; k-- {
+		c[k] /= r[k][k]
+		for l := 0; l < k; l++ {
+			c[l] -= r[k][l] * c[k]
+		}
+	}
+	for k := range c {
+		spread := 0.0 // about the mean, which is the first column
+		for l := 1; l <= k; l++ {
+			spread += r[k][l] * r[k][l]
+		}
+		c[k] = math.Abs(c[k]) * math.Sqrt(spread)
+	}
+	return c
 }
 
 // rowTo writes the fit's columns for raw covariate values at a place with null-space values t; dst holds q values.

@@ -64,19 +64,22 @@ func fittable(dist response.Distribution, d Data) error {
 	if n == 0 {
 		return unfit("", "there are no observations")
 	}
-	var total, trials, lo, hi float64 = 0, 0, math.Inf(1), math.Inf(-1)
-	for i, y := range d.Response {
-		total += y
-		if d.Trials != nil {
-			trials += d.Trials[i]
+	var total, trials, weight, lo, hi float64 = 0, 0, 0, math.Inf(1), math.Inf(-1)
+	for i, o := range observations(d) {
+		y := o.Y
+		if y < 0 && dist.Name() != "gaussian" {
+			return unfit("leave the row out", "row %d: a count of %g is negative", i+1, y)
 		}
+		if dist.Name() == "binomial" && d.Trials != nil && !(positive(o.Trials) && y <= o.Trials) {
+			return unfit("leave the row out", "row %d: %g positive of %g examined", i+1, y, o.Trials)
+		}
+		total += o.Weight * y
+		trials += o.Weight * o.Trials
+		weight += o.Weight
 		lo, hi = math.Min(lo, y), math.Max(hi, y)
 	}
 	switch dist.Name() {
 	case "poisson":
-		if lo < 0 {
-			return unfit("leave such rows out", "a count is negative")
-		}
 		if total == 0 {
 			return unfit("nothing can be said but that the level is low: see the rule of three in any text on proportions",
 				"every count is zero, so no level can be estimated")
@@ -94,7 +97,7 @@ func fittable(dist response.Distribution, d Data) error {
 			return unfit("", "the response is %g in every row: there is no variation to map", lo)
 		}
 		if dist.Link() == "log" && total <= 0 {
-			return unfit("use --link identity", "the mean response is %g, and a log link needs a positive mean", total/float64(n))
+			return unfit("use --link identity", "the mean response is %g, and a log link needs a positive mean", total/weight)
 		}
 	}
 	return nil
@@ -115,7 +118,7 @@ func (s *Surface) lay(at Places, o Options) error {
 	}
 	if s.knots.Distinct < basis2d.Null {
 		return unfit("a surface needs places spread in two directions: use --surface none, or more places",
-			"there are only %d distinct places, and a surface needs at least %d", s.knots.Distinct, basis2d.Null)
+			"a surface needs at least %d distinct places, and the rows have %d", basis2d.Null, s.knots.Distinct)
 	}
 	basis, err := basis2d.NewThinPlate(s.knots.X, s.knots.Y)
 	if errors.Is(err, basis2d.ErrCollinear) {
@@ -158,6 +161,9 @@ func (s *Surface) columns(d Data, o Options) (*design, error) {
 	if len(dg.border) > maxBorder {
 		return nil, unfit("use fewer covariates or levels", "%d columns of covariates are more than the %d allowed", len(dg.border), maxBorder)
 	}
+	if n < s.nullDim() {
+		return nil, unfit("use more observations or fewer covariates", "%d observations cannot settle %d unpenalised coefficients", n, s.nullDim())
+	}
 	least := leastPlain
 	if s.basis != nil {
 		least = leastBesideSurface
@@ -180,7 +186,7 @@ func (s *Surface) ridges() []penfit.Ridge {
 	if s.basis == nil || s.basis.Dim() == basis2d.Null {
 		return nil
 	}
-	return []penfit.Ridge{{First: basis2d.Null, Size: s.basis.Dim() - basis2d.Null}}
+	return []penfit.Ridge{{{First: basis2d.Null, Size: s.basis.Dim() - basis2d.Null}}}
 }
 
 // nullDim returns the number of unpenalised coefficients.
@@ -232,6 +238,9 @@ func explain(err error, dist response.Distribution) error {
 	case errors.Is(err, penfit.ErrSeparated) && dist.Name() == "binomial":
 		return &Error{Cause: err, Message: "positives are separated: a straight line or a covariate parts the rows that are all positive from those that are not, so the chance runs off to 0 or 1",
 			Advice: "leave covariates out, use --surface none, or gather more rows where both outcomes occur"}
+	case dist.Name() == "gaussian" && dist.Link() == "log" && (errors.Is(err, penfit.ErrSeparated) || errors.Is(err, penfit.ErrSingular)):
+		return &Error{Cause: err, Message: "the mean runs off to zero, or spans too many powers of ten for normal errors: the log link cannot follow",
+			Advice: "use --link identity, look for a response that is far out of range, or allow fewer knots with --max-knots"}
 	case errors.Is(err, penfit.ErrSeparated):
 		return &Error{Cause: err, Message: "the level runs off to zero: a straight line or a covariate parts the rows with zero counts from the others",
 			Advice: "leave covariates out, use --surface none, or gather more rows"}

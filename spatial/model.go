@@ -125,11 +125,16 @@ func unfit(advice, format string, args ...any) error {
 // check panics if slices do not have one value a row, and returns an error for values that no model can take.
 func (d Data) check(m Model) error {
 	n := d.Places.Len()
-	for _, v := range [][]float64{d.Response, d.Exposure, d.Trials, d.Weight} {
+	if len(d.Response) != n {
+		panic(lengths)
+	}
+	for _, v := range [][]float64{d.Exposure, d.Trials, d.Weight} {
 		if v != nil && len(v) != n {
-			panic("spatial: data slices differ in length")
+			panic(lengths)
 		}
 	}
+	d.Places.check()
+	checkLengths(d.Covariates, n)
 	if d.Places.Start != nil {
 		return unfit("give each row one point", "rows that are sets of points cannot be fitted by this version")
 	}
@@ -137,14 +142,41 @@ func (d Data) check(m Model) error {
 		if bad(d.Response[i]) || bad(d.Places.X[i]) || bad(d.Places.Y[i]) {
 			return unfit("leave the row out", "row %d: a response or place that is not a finite number", i+1)
 		}
-		if d.Exposure != nil && !(d.Exposure[i] > 0) || d.Weight != nil && !(d.Weight[i] > 0) {
-			return unfit("leave the row out", "row %d: a denominator or weight that is not positive", i+1)
+		if d.Exposure != nil && !positive(d.Exposure[i]) || d.Weight != nil && !positive(d.Weight[i]) {
+			return unfit("leave the row out", "row %d: a denominator or weight that is not a positive number", i+1)
 		}
 	}
 	if d.Exposure != nil && m.Distribution != "poisson" {
 		return unfit("name trials for positives, or leave the denominator out", "a denominator goes with counts, not with the %s distribution", m.Distribution)
 	}
+	if d.Trials != nil && m.Distribution != "binomial" {
+		return unfit("leave the trials out", "trials go with positives, not with the %s distribution", m.Distribution)
+	}
+	if l := m.Smoothness.Lambda; m.Smoothness.Method == Given && !(l >= 0 && !bad(l)) {
+		return unfit("give a smaller penalty as a smaller number: 0 interpolates", "a smoothness of %g is not a number from 0 up", l)
+	}
 	return nil
 }
+
+// lengths is the panic of calls whose slices do not belong together.
+const lengths = "spatial: slices differ in length"
+
+// check panics if coordinates do not come in pairs.
+func (p Places) check() {
+	if len(p.X) != len(p.Y) {
+		panic(lengths)
+	}
+}
+
+// checkLengths panics if a covariate does not have n values.
+func checkLengths(z []Covariate, n int) {
+	for _, c := range z {
+		if c.Number != nil && len(c.Number) != n || c.Code != nil && len(c.Code) != n {
+			panic(lengths)
+		}
+	}
+}
+
+func positive(v float64) bool { return v > 0 && !math.IsInf(v, 1) }
 
 func bad(v float64) bool { return math.IsNaN(v) || math.IsInf(v, 0) }

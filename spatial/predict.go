@@ -14,13 +14,13 @@ import (
 // PredictTo writes the linear predictor and its standard error, both on the link scale, without offset, at each of the
 // places to eta and se. z holds the covariates the model's effects name, one value a place; a level the data did not
 // have gives NaN in both. It returns an error for a covariate that is missing, or when ctx is cancelled, and panics if
-// eta, se and at differ in length. It is safe for concurrent use.
+// eta, se, at and z differ in length. It is safe for concurrent use.
 func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z []Covariate) error {
 	n := at.Len()
 	if len(eta) != n || len(se) != n {
-		panic("spatial: PredictTo: lengths differ")
+		panic(lengths)
 	}
-	rows, err := s.rowMaker(z)
+	rows, err := s.rowMaker(at, z)
 	if err != nil {
 		return err
 	}
@@ -53,8 +53,10 @@ type rowScratch struct {
 // rows makes the model matrix's rows at places (x, y); of tells which row of the covariates belongs to the k-th of them.
 type rows func(w *rowScratch, x, y []float64, of func(k int) int) blas64.General
 
-// rowMaker returns the rows at new places with covariates z.
-func (s *Surface) rowMaker(z []Covariate) (rows, error) {
+// rowMaker returns the rows at new places with covariates z. It panics if slices differ in length.
+func (s *Surface) rowMaker(at Places, z []Covariate) (rows, error) {
+	at.check()
+	checkLengths(z, at.Len())
 	values, err := s.border.values(z)
 	if err != nil {
 		return nil, err

@@ -2,7 +2,6 @@ package spatial
 
 import (
 	"fmt"
-	"math"
 
 	"drumlin/basis2d"
 	"drumlin/spatial/response"
@@ -69,15 +68,26 @@ func Restore(st State, workers int) (*Surface, error) {
 	if len(st.Beta) != p || len(st.Factor) != p*p || len(st.Mix) != null*q || len(st.R) != q*q || !(st.Phi >= 0) {
 		return nil, fmt.Errorf("%d coefficients with a factor of %d values do not belong together", len(st.Beta), len(st.Factor))
 	}
-	for k := 0; k < p; k++ {
-		if d := st.Factor[k*p+k]; d == 0 || math.IsNaN(d) {
-			return nil, fmt.Errorf("the factor is singular")
-		}
+	if !regular(st.Factor, p) {
+		return nil, fmt.Errorf("the factor is singular")
 	}
-	for j := 0; j < q; j++ {
-		if st.R[j*q+j] == 0 {
-			return nil, fmt.Errorf("the covariates' transform is singular")
+	if !regular(st.R, q) {
+		return nil, fmt.Errorf("the covariates' transform is singular")
+	}
+	for _, v := range append([]float64{st.Phi, st.Report.DF}, st.Beta...) {
+		if bad(v) {
+			return nil, fmt.Errorf("a coefficient, the dispersion or the degrees of freedom are no finite number")
 		}
 	}
 	return s, nil
+}
+
+// regular reports whether an upper triangular matrix of order n can be divided by.
+func regular(r []float64, n int) bool {
+	for k := 0; k < n; k++ {
+		if d := r[k*n+k]; d == 0 || bad(d) {
+			return false
+		}
+	}
+	return true
 }

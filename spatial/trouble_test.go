@@ -80,8 +80,8 @@ func TestUnfittable(t *testing.T) {
 		noAdvice               bool
 	}{
 		{name: "no rows", dist: "gaussian", want: "there are no observations", d: Data{}, noAdvice: true},
-		{name: "one place", dist: "gaussian", want: "there is only 1 distinct place, and a surface needs at least 3", d: at(gaussian, steps(5), steps(7))},
-		{name: "two places", dist: "poisson", want: "there are only 2 distinct places, and a surface needs at least 3", d: at(poisson, steps(0, 1), steps(0, 1))},
+		{name: "one place", dist: "gaussian", want: "a surface needs at least 3 distinct places, and the rows have 1", d: at(gaussian, steps(5), steps(7))},
+		{name: "two places", dist: "poisson", want: "a surface needs at least 3 distinct places, and the rows have 2", d: at(poisson, steps(0, 1), steps(0, 1))},
 		{name: "collinear places", dist: "gaussian", want: "the places lie on one line, so a surface over the plane cannot be had",
 			d: at(gaussian, func(i int) float64 { return 3 * float64(i) }, func(i int) float64 { return 400 - 0.7*float64(i) })},
 		{name: "collinear places, far away", dist: "binomial", want: "the places lie on one line, so a surface over the plane cannot be had",
@@ -151,6 +151,12 @@ func TestUnfittable(t *testing.T) {
 			d: Data{Response: gaussian.Response, Places: gaussian.Places, Exposure: poisson.Exposure}},
 		{name: "a constant response", dist: "gaussian", want: "the response is 2.5 in every row: there is no variation to map", d: replaced(gaussian, func(int, float64, float64) float64 { return 2.5 }), noAdvice: true},
 		{name: "a negative mean under a log link", dist: "gaussian", link: "log", want: "the mean response is -", d: replaced(gaussian, func(i int, _, _ float64) float64 { return gaussian.Response[i] - 5 })},
+		{name: "a log link over six powers of ten", dist: "gaussian", link: "log", want: "the mean runs off to zero, or spans too many powers of ten for normal errors: the log link cannot follow",
+			d: func() Data {
+				d := sample("gaussian", 120, 9)
+				d.Response[7] = 1e6
+				return d
+			}(), m: Model{MaxKnots: 60}},
 		{name: "not a number", dist: "gaussian", want: "row 8: a response or place that is not a finite number", d: replaced(gaussian, func(i int, _, _ float64) float64 {
 			if i == 7 {
 				return math.NaN()
@@ -163,10 +169,10 @@ func TestUnfittable(t *testing.T) {
 			}
 			return 1
 		})},
-		{name: "a place that is not a number", dist: "gaussian", want: "row 3: a response or place that is not a finite number", d: at(gaussian, func(i int) float64 { return math.Log(float64(i - 2)) }, steps(0, 1))},
-		{name: "no exposure", dist: "poisson", want: "row 1: a denominator or weight that is not positive",
+		{name: "a place that is not a number", dist: "gaussian", want: "row 3: a response or place that is not a finite number", d: at(gaussian, steps(0, 1, math.NaN()), steps(0, 1))},
+		{name: "no exposure", dist: "poisson", want: "row 1: a denominator or weight that is not a positive number",
 			d: Data{Response: poisson.Response, Places: poisson.Places, Exposure: make([]float64, 120)}},
-		{name: "infinite weight", dist: "gaussian", want: "row 1: a denominator or weight that is not positive",
+		{name: "infinite weight", dist: "gaussian", want: "row 1: a denominator or weight that is not a positive number",
 			d: Data{Response: gaussian.Response[:3], Places: Places{X: []float64{0, 1, 0}, Y: []float64{0, 0, 1}}, Weight: []float64{math.Inf(1), 1, 1}}},
 		{name: "rows that are sets of points", dist: "poisson", want: "rows that are sets of points cannot be fitted by this version",
 			d: Data{Response: []float64{1, 2}, Places: Places{X: []float64{0, 1, 2}, Y: []float64{0, 1, 3}, Start: []int32{0, 2, 3}, Share: []float64{1, 1, 1}}}},
@@ -217,7 +223,7 @@ func u2(name string, n int, random *rand.Rand) Covariate {
 }
 
 // sound fails unless the surface is an answer: converged, every figure a number, standard errors not negative.
-func sound(t *testing.T, s *Surface, at Places) {
+func sound(t *testing.T, s *Surface, at Places, z ...Covariate) {
 	t.Helper()
 	r := s.Report()
 	if !r.Converged {
@@ -229,7 +235,7 @@ func sound(t *testing.T, s *Surface, at Places) {
 			t.Errorf("%s is %g", what, v)
 		}
 	}
-	eta, se := predict(t, s, at)
+	eta, se := predict(t, s, at, z...)
 	for i := range eta {
 		if bad(eta[i]) || bad(se[i]) || se[i] < 0 {
 			t.Fatalf("predicted %g with standard error %g", eta[i], se[i])
@@ -315,12 +321,15 @@ func TestAwkwardDataFits(t *testing.T) {
 					d.Exposure[i] = d.Response[i] / 2
 				}
 			}
-			s := fit(t, Model{Distribution: "poisson"}, d, Options{Area: at})
-			sound(t, s, at)
-			flat(t, s)
-			eta, _ := predict(t, s, at)
-			for _, v := range eta {
-				near(t, "log rate", v, math.Log(2), 1e-6)
+			for _, method := range []Method{REML, GCV} {
+				s := fit(t, Model{Distribution: "poisson", Smoothness: Smoothness{Method: method}}, d, Options{Area: at})
+				sound(t, s, at)
+				flat(t, s)
+				eta, _ := predict(t, s, at)
+				for _, v := range eta {
+					near(t, "log rate", v, math.Log(2), 1e-6)
+				}
+				near(t, "share of the deviance", s.Report().DevianceShare, 0, 1e-12)
 			}
 		}
 	})
@@ -354,8 +363,16 @@ func TestAwkwardDataFits(t *testing.T) {
 	})
 	t.Run("a smooth surface without error", func(t *testing.T) {
 		d := replaced(sample("gaussian", 200, 117), func(_ int, x, y float64) float64 { return math.Sin(4*x) * math.Cos(3*y) })
-		sound(t, fit(t, Model{Distribution: "gaussian", MaxKnots: 60}, d, Options{}), at)
-		sound(t, fit(t, Model{Distribution: "gaussian"}, d, Options{}), at)
+		for _, knots := range []int{60, 150} {
+			s := fit(t, Model{Distribution: "gaussian", MaxKnots: knots}, d, Options{})
+			sound(t, s, at)
+			eta, _ := predict(t, s, at)
+			for i, v := range eta {
+				near(t, "surface", v, math.Sin(4*at.X[i])*math.Cos(3*at.Y[i]), 0.1)
+			}
+		}
+		all := fit(t, Model{Distribution: "gaussian"}, d, Options{}) // a knot a row: it interpolates
+		nearAll(t, "fitted", all.Rows().Fitted, d.Response, 1e-6, false)
 	})
 	t.Run("one huge count", func(t *testing.T) {
 		for _, knots := range []int{40, 500} {
@@ -399,20 +416,26 @@ func TestAwkwardDataFits(t *testing.T) {
 	})
 	t.Run("one positive in all", func(t *testing.T) {
 		d := sample("binomial", 100, 120)
-		d = replaced(d, func(i int, _, _ float64) float64 {
-			if i == 40 {
-				return 1
+		centre := 0
+		for i := range d.Response {
+			if math.Hypot(d.Places.X[i]-0.5, d.Places.Y[i]-0.5) < math.Hypot(d.Places.X[centre]-0.5, d.Places.Y[centre]-0.5) {
+				centre = i
 			}
-			return 0
-		})
-		s, err := Fit(context.Background(), Model{Distribution: "binomial", MaxKnots: 50}, d, Options{})
-		if err != nil { // a line may part one row from the rest
-			if !strings.Contains(err.Error(), "positives are separated") {
-				t.Fatal(err)
-			}
-			return
 		}
-		sound(t, s, at)
+		for _, m := range []Model{{Distribution: "binomial", MaxKnots: 50}, {Distribution: "poisson", MaxKnots: 50}} {
+			one := replaced(d, func(i int, _, _ float64) float64 {
+				if i == centre {
+					return 1
+				}
+				return 0
+			})
+			if m.Distribution == "poisson" {
+				one.Trials = nil
+			}
+			s := fit(t, m, one, Options{})
+			sound(t, s, at)
+			t.Logf("%s: %.2f degrees of freedom", m.Distribution, s.Report().DF)
+		}
 	})
 	t.Run("negative responses under a log link", func(t *testing.T) {
 		d := sample("gaussian", 200, 121)
@@ -431,11 +454,11 @@ func TestAwkwardDataFits(t *testing.T) {
 	t.Run("more coefficients than rows", func(t *testing.T) {
 		for _, dist := range distributions {
 			d := sample(dist, 12, 122)
-			s := fit(t, Model{Distribution: dist, MaxKnots: 60}, d, Options{Area: grid(20)})
-			if s.Report().Knots <= 12 {
-				t.Fatalf("%d knots", s.Report().Knots)
-			}
-			sound(t, s, at)
+			z := u2("u", 12, rand.New(rand.NewPCG(1, 2)))
+			d.Covariates = []Covariate{z}
+			s := fit(t, Model{Distribution: dist, Effects: []Effect{{"u", Linear}}}, d, Options{})
+			z.Number = make([]float64, at.Len())
+			sound(t, s, at, z)
 		}
 	})
 	t.Run("denominators over twelve powers of ten", func(t *testing.T) {
@@ -588,19 +611,23 @@ func TestLengthsThatDifferPanic(t *testing.T) {
 	}
 	at := grid(3)
 	for name, f := range map[string]func(){
-		"response":           do(func(d *Data) { d.Response = d.Response[:29] }),
-		"no response":        do(func(d *Data) { d.Response = nil }),
-		"exposure":           do(func(d *Data) { d.Exposure = d.Exposure[:29] }),
-		"trials":             do(func(d *Data) { d.Trials = make([]float64, 31) }),
-		"weight":             do(func(d *Data) { d.Weight = make([]float64, 1) }),
-		"y":                  do(func(d *Data) { d.Places.Y = d.Places.Y[:29] }),
-		"more y":             do(func(d *Data) { d.Places.Y = append([]float64{1}, d.Places.Y...) }),
-		"covariate":          do(func(d *Data) { d.Covariates = []Covariate{z} }),
-		"category":           do(func(d *Data) { d.Covariates = []Covariate{k} }),
-		"eta":                func() { s.PredictTo(context.Background(), make([]float64, 8), make([]float64, 9), at, nil) },
-		"se":                 func() { s.PredictTo(context.Background(), make([]float64, 9), make([]float64, 8), at, nil) },
-		"prediction's y":     func() { s.PredictTo(context.Background(), make([]float64, 9), make([]float64, 9), Places{X: at.X, Y: at.Y[:8]}, nil) },
-		"prediction's u":     func() { withU.PredictTo(context.Background(), make([]float64, 9), make([]float64, 9), at, []Covariate{z}) },
+		"response":    do(func(d *Data) { d.Response = d.Response[:29] }),
+		"no response": do(func(d *Data) { d.Response = nil }),
+		"exposure":    do(func(d *Data) { d.Exposure = d.Exposure[:29] }),
+		"trials":      do(func(d *Data) { d.Trials = make([]float64, 31) }),
+		"weight":      do(func(d *Data) { d.Weight = make([]float64, 1) }),
+		"y":           do(func(d *Data) { d.Places.Y = d.Places.Y[:29] }),
+		"more y":      do(func(d *Data) { d.Places.Y = append([]float64{1}, d.Places.Y...) }),
+		"covariate":   do(func(d *Data) { d.Covariates = []Covariate{z} }),
+		"category":    do(func(d *Data) { d.Covariates = []Covariate{k} }),
+		"eta":         func() { s.PredictTo(context.Background(), make([]float64, 8), make([]float64, 9), at, nil) },
+		"se":          func() { s.PredictTo(context.Background(), make([]float64, 9), make([]float64, 8), at, nil) },
+		"prediction's y": func() {
+			s.PredictTo(context.Background(), make([]float64, 9), make([]float64, 9), Places{X: at.X, Y: at.Y[:8]}, nil)
+		},
+		"prediction's u": func() {
+			withU.PredictTo(context.Background(), make([]float64, 9), make([]float64, 9), at, []Covariate{z})
+		},
 		"covariate of a sum": func() { withU.Sums(context.Background(), at, []Covariate{z}, nil, 1, 1) },
 	} {
 		t.Run(name, func(t *testing.T) {

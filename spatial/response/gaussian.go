@@ -103,3 +103,9 @@ func gaussianCDF(o Obs, mean, phi float64) (below, upTo float64) {
 	p := distuv.UnitNormal.CDF((o.Y - mean) / math.Sqrt(phi/o.Weight))
 	return p, p
 }
+
+// ScaleSlope returns -1/2.
+func (Gaussian) ScaleSlope(Obs, float64) float64 { return -0.5 }
+
+// ScaleSlope returns -1/2.
+func (GaussianLog) ScaleSlope(Obs, float64) float64 { return -0.5 }

@@ -120,9 +120,14 @@ func TestReferenceDistributions(t *testing.T) {
 	}
 	seen := map[string]int{}
 	for i, r := range rows[1:] {
-		d, err := New(r[0], "")
-		if err != nil {
-			continue // a distribution of the reference that is not at hand
+		var d Distribution
+		for _, own := range []Distribution{Gaussian{}, Poisson{}, Binomial{}} {
+			if own.Name() == r[0] {
+				d = own
+			}
+		}
+		if d == nil {
+			continue
 		}
 		seen[r[0]]++
 		number := func(k int) float64 {

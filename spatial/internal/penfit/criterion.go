@@ -19,65 +19,73 @@ const (
 // evaluation is the criterion at one point, with the slopes of the mode there.
 type evaluation struct {
 	criterion Criterion
-	rho       []float64
+	at        []float64 // log lambda, then the shape if it is searched
 	value     float64
 	gradient  []float64
-	db        [][]float64 // d beta/d rho_j
+	db        [][]float64 // d beta/d at_j
 }
 
-// score returns the criterion at log lambda rho and its gradient. It moves the mode there and leaves H factored with
-// the weights the distribution's Curvature asks for.
-func (f *fitter) score(c Criterion, rho []float64) (value float64, gradient []float64, err error) {
-	if f.last.rho != nil && f.last.criterion == c && slices.Equal(f.last.rho, rho) {
+// score returns the criterion at a point of the search, log lambda and then the shape if that is searched, with its
+// gradient. It moves the mode there and leaves H factored with the weights the distribution's Curvature asks for.
+func (f *fitter) score(c Criterion, at []float64) (value float64, gradient []float64, err error) {
+	if f.last.at != nil && f.last.criterion == c && slices.Equal(f.last.at, at) {
 		return f.last.value, slices.Clone(f.last.gradient), nil
 	}
-	lambda := exp(rho)
-	if f.last.rho != nil {
-		step := make([]float64, len(rho))
-		for j := range step {
-			step[j] = rho[j] - f.last.rho[j]
-		}
-		if err := f.foresee(step, lambda); err != nil {
-			return 0, nil, err
-		}
+	lambda := exp(at[:f.Engine.Penalties()])
+	if err := f.foresee(at, lambda); err != nil {
+		return 0, nil, err
 	}
 	f.last = evaluation{}
 	if err := f.mode(lambda); err != nil {
 		return 0, nil, err
 	}
-	sb, db := f.modeSlopes(lambda)
-	slopes, err := f.curvature(lambda, db)
+	sb, db, err := f.modeSlopes(lambda)
+	if err != nil {
+		return 0, nil, err
+	}
+	weights, err := f.curvature(lambda, db)
 	if err != nil {
 		return 0, nil, err
 	}
 	if c == GCV {
-		value, gradient, err = f.gcv(lambda, sb, db, slopes)
+		value, gradient, err = f.gcv(lambda, sb, db, weights)
 	} else {
-		value, gradient, err = f.reml(lambda, sb, slopes)
+		value, gradient, err = f.reml(lambda, sb, weights)
 	}
 	if err == nil {
-		f.last = evaluation{c, slices.Clone(rho), value, slices.Clone(gradient), db}
+		f.last = evaluation{c, slices.Clone(at), value, slices.Clone(gradient), db}
 	}
 	return value, gradient, err
 }
 
-// modeSlopes returns S_j b and db/d rho_j = -lambda_j H^-1 S_j b with H of the observed weights, by the implicit
-// function theorem.
-func (f *fitter) modeSlopes(lambda []float64) (sb, db [][]float64) {
-	sb, db = make([][]float64, len(lambda)), make([][]float64, len(lambda))
+// modeSlopes returns S_j b, and how the mode moves with each point of the search: by the implicit function theorem, with
+// H of the observed weights, db/d rho_j = -lambda_j H^-1 S_j b and db/d shape = H^-1 X'(d score/d shape).
+func (f *fitter) modeSlopes(lambda []float64) (sb, db [][]float64, err error) {
+	sb = make([][]float64, len(lambda))
 	for j, l := range lambda {
-		sb[j], db[j] = make([]float64, len(f.beta)), make([]float64, len(f.beta))
+		sb[j] = make([]float64, len(f.beta))
 		f.Engine.PenaltyTo(sb[j], j, f.beta)
+		d := make([]float64, len(f.beta))
 		for k, v := range sb[j] {
-			db[j][k] = -l * v
+			d[k] = -l * v
 		}
-		f.Engine.Solve(db[j])
+		f.Engine.Solve(d)
+		db = append(db, d)
 	}
-	return sb, db
+	if f.shaped == nil {
+		return sb, db, nil
+	}
+	err = f.Engine.Pass(f.ctx, f.beta, func(i int, _ float64) (weight, value float64) {
+		f.shape[i] = f.shaped.ShapeAt(f.Obs[i], f.eta[i])
+		return 0, f.shape[i].Score
+	}, false)
+	d := slices.Clone(f.Engine.Score())
+	f.Engine.Solve(d)
+	return sb, append(db, d), err
 }
 
 // curvature leaves H factored with the weights that count for the determinant, and returns how the rows' weights move
-// with each log lambda; nil where they do not.
+// with each point of the search; nil where they do not.
 func (f *fitter) curvature(lambda []float64, db [][]float64) ([][]float64, error) {
 	if f.Dist.ConstantWeight() {
 		return nil, nil
@@ -91,26 +99,32 @@ func (f *fitter) curvature(lambda []float64, db [][]float64) ([][]float64, error
 			return nil, ErrSingular
 		}
 	}
-	slopes := make([][]float64, len(lambda))
-	for j := range lambda {
-		slopes[j] = make([]float64, len(f.Obs))
-		if err := f.Engine.LinearTo(f.ctx, slopes[j], db[j]); err != nil {
+	moves := make([][]float64, len(db))
+	for j := range db {
+		moves[j] = make([]float64, len(f.Obs))
+		if err := f.Engine.LinearTo(f.ctx, moves[j], db[j]); err != nil {
 			return nil, err
 		}
-		for i := range slopes[j] {
+		for i := range moves[j] {
+			slope, own := f.point[i].Slope, 0.0
 			if expected {
-				slopes[j][i] *= f.point[i].ExpectedSlope
-			} else {
-				slopes[j][i] *= f.point[i].Slope
+				slope = f.point[i].ExpectedSlope
 			}
+			if j == len(lambda) { // the shape moves weights by itself as well
+				own = f.shape[i].Weight
+				if expected {
+					own = f.shape[i].Expected
+				}
+			}
+			moves[j][i] = moves[j][i]*slope + own
 		}
 	}
-	return slopes, nil
+	return moves, nil
 }
 
 // reml returns the restricted likelihood criterion with phi, where unknown, at its own minimum; by the envelope
-// theorem the gradient in rho is the partial one.
-func (f *fitter) reml(lambda []float64, sb, slopes [][]float64) (float64, []float64, error) {
+// theorem the gradient is the partial one.
+func (f *fitter) reml(lambda []float64, sb, weights [][]float64) (float64, []float64, error) {
 	phi := f.remlScale()
 	logdet, rank := f.Engine.LogDetPenalty(lambda)
 	null := float64(f.Engine.NullDim())
@@ -119,7 +133,14 @@ func (f *fitter) reml(lambda []float64, sb, slopes [][]float64) (float64, []floa
 	for j, l := range lambda {
 		g[j] = l*dot(sb[j], f.beta)/(2*phi) + (l*trace[j]-rank[j])/2
 	}
-	if slopes == nil || len(lambda) == 0 {
+	if f.shaped != nil {
+		own := 0.0
+		for i, o := range f.Obs {
+			own += f.shape[i].Deviance/(2*phi) - f.shaped.SaturatedSlope(o, phi)
+		}
+		g = append(g, own)
+	}
+	if weights == nil || len(g) == 0 {
 		return v, g, nil
 	}
 	h := make([]float64, len(f.Obs))
@@ -127,20 +148,76 @@ func (f *fitter) reml(lambda []float64, sb, slopes [][]float64) (float64, []floa
 		return 0, nil, err
 	}
 	for j := range g {
-		g[j] += dot(slopes[j], h) / 2
+		g[j] += dot(weights[j], h) / 2
 	}
 	return v, g, nil
 }
 
-// remlScale returns phi: 1 where known, else where V is least for the mode at hand. For the normal distribution the
-// saturated likelihood depends on phi as -n/2 log phi, so that is D_p/(n - M). A fit without any residual keeps a
-// positive phi, so that the criterion stays finite.
+// remlScale returns phi: 1 where known, else where V is least for the mode at hand,
+//
+//	D_p/(2 phi) + sum_i dl_s/dlog phi + M/2 = 0.
+//
+// For the normal distribution, whose saturated likelihood depends on phi as -n/2 log phi, that is D_p/(n - M). A fit
+// without any residual keeps a positive phi, so that the criterion stays finite.
 func (f *fitter) remlScale() float64 {
-	if f.Dist.KnownDispersion() {
+	dispersed, ok := f.Dist.(response.Dispersed)
+	if f.Dist.KnownDispersion() || !ok {
 		return 1
 	}
-	n := float64(len(f.Obs))
-	return math.Max((f.deviance+f.penalty)/(n-float64(f.Engine.NullDim())), 1e-24*f.scale/n)
+	n, null := float64(len(f.Obs)), float64(f.Engine.NullDim())
+	penalised := f.deviance + f.penalty
+	least := 1e-24 * f.scale / n
+	phi := math.Max(penalised/(n-null), least)
+	if dispersed.Name() == "gaussian" {
+		return phi
+	}
+	excess := func(logPhi float64) float64 {
+		sum := penalised/(2*math.Exp(logPhi)) + null/2
+		for _, o := range f.Obs {
+			sum += dispersed.ScaleSlope(o, math.Exp(logPhi))
+		}
+		return sum
+	}
+	return math.Max(math.Exp(falling(excess, math.Log(phi))), least)
+}
+
+// falling returns the root of a falling function near x, to rounding: a bracket is widened from x, then closed by
+// regula falsi (Illinois form) with bisection where that is slow.
+func falling(f func(float64) float64, x float64) float64 {
+	lo, hi, step := x, x, 0.5
+	flo := f(lo)
+	fhi := flo
+	for ; flo < 0 && step < 1e3; step *= 2 {
+		hi, fhi = lo, flo
+		lo -= step
+		flo = f(lo)
+	}
+	for step = 0.5; fhi > 0 && step < 1e3; step *= 2 {
+		lo, flo = hi, fhi
+		hi += step
+		fhi = f(hi)
+	}
+	wlo, whi := flo, fhi // weights of the Illinois form
+	for n := 0; n < 200 && hi-lo > 1e-15*math.Max(1, math.Abs(lo)); n++ {
+		mid := (lo*whi - hi*wlo) / (whi - wlo)
+		if !(mid > lo && mid < hi) || n%8 == 7 {
+			mid = (lo + hi) / 2
+		}
+		switch v := f(mid); {
+		case v == 0:
+			return mid
+		case v > 0:
+			lo, wlo = mid, v
+			whi /= 2
+		default:
+			hi, whi = mid, v
+			wlo /= 2
+		}
+		if mid == lo && lo+1e-15*math.Max(1, math.Abs(lo)) >= hi {
+			break
+		}
+	}
+	return (lo + hi) / 2
 }
 
 func (f *fitter) saturated(phi float64) (l float64) {
@@ -151,9 +228,9 @@ func (f *fitter) saturated(phi float64) (l float64) {
 }
 
 // gcv returns n D/(n - edf)^2, or D/n - 1 + 2 edf/n where phi is known to be 1.
-func (f *fitter) gcv(lambda []float64, sb, db, slopes [][]float64) (float64, []float64, error) {
+func (f *fitter) gcv(lambda []float64, sb, db, weights [][]float64) (float64, []float64, error) {
 	n, edf := float64(len(f.Obs)), f.edf(lambda)
-	dEdf, err := f.Engine.EdfSlopes(f.ctx, lambda, slopes)
+	dEdf, err := f.Engine.EdfSlopes(f.ctx, lambda, weights)
 	if err != nil {
 		return 0, nil, err
 	}

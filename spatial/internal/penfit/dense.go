@@ -20,8 +20,29 @@ type Design interface {
 	BlockTo(dst []float64, from, to, worker int)
 }
 
-// Ridge is a penalty that is the identity on columns [First, First+Size) of the design.
-type Ridge struct{ First, Size int }
+// Span is a run of columns [First, First+Size) of the design.
+type Span struct{ First, Size int }
+
+// Ridge is a penalty with one lambda that is the identity on the columns of its spans. Bases whiten their own penalties,
+// so that every penalty is of this kind.
+type Ridge []Span
+
+// size returns the number of columns the penalty touches.
+func (r Ridge) size() (n int) {
+	for _, s := range r {
+		n += s.Size
+	}
+	return n
+}
+
+// columns calls f for every column the penalty touches.
+func (r Ridge) columns(f func(k int)) {
+	for _, s := range r {
+		for k := s.First; k < s.First+s.Size; k++ {
+			f(k)
+		}
+	}
+}
 
 // Dense is the engine for a model matrix without structure: the surface's columns and the border's in one matrix, up
 // to about a thousand of them. The last columns' Cholesky pivots are those of the border's Schur complement.
@@ -79,7 +100,7 @@ func (e *Dense) Score() []float64 { return e.score }
 func (e *Dense) NullDim() int {
 	m := e.p
 	for _, r := range e.ridges {
-		m -= r.Size
+		m -= r.size()
 	}
 	return m
 }
@@ -156,9 +177,7 @@ func (e *Dense) Factor(lambda []float64) bool {
 	e.inv = nil
 	copy(c, e.gram)
 	for j, r := range e.ridges {
-		for k := r.First; k < r.First+r.Size; k++ {
-			c[k*p+k] += lambda[j]
-		}
+		r.columns(func(k int) { c[k*p+k] += lambda[j] })
 	}
 	for k := 0; k < p; k++ {
 		d := c[k*p+k]
@@ -202,15 +221,14 @@ func (e *Dense) scaleBy(b []float64) {
 // PenaltyTo writes S_j beta to dst.
 func (e *Dense) PenaltyTo(dst []float64, j int, beta []float64) {
 	clear(dst)
-	r := e.ridges[j]
-	copy(dst[r.First:r.First+r.Size], beta[r.First:])
+	e.ridges[j].columns(func(k int) { dst[k] = beta[k] })
 }
 
 // LogDetPenalty returns the sum over penalties of size times log lambda.
 func (e *Dense) LogDetPenalty(lambda []float64) (value float64, slope []float64) {
 	slope = make([]float64, len(e.ridges))
 	for j, r := range e.ridges {
-		slope[j] = float64(r.Size)
+		slope[j] = float64(r.size())
 		value += slope[j] * math.Log(lambda[j])
 	}
 	return value, slope
@@ -237,9 +255,7 @@ func (e *Dense) inverse() []float64 {
 func (e *Dense) Traces() []float64 {
 	inv, t := e.inverse(), make([]float64, len(e.ridges))
 	for j, r := range e.ridges {
-		for k := r.First; k < r.First+r.Size; k++ {
-			t[j] += inv[k*e.p+k]
-		}
+		r.columns(func(k int) { t[j] += inv[k*e.p+k] })
 	}
 	return t
 }
@@ -295,20 +311,18 @@ func (e *Dense) EdfSlopes(ctx context.Context, lambda []float64, slopes [][]floa
 	scaled := make([]float64, p*p) // S_lambda^(1/2) H^-1
 	for j, r := range e.ridges {
 		root := math.Sqrt(lambda[j])
-		for k := r.First; k < r.First+r.Size; k++ {
+		r.columns(func(k int) {
 			for c := 0; c < p; c++ {
 				scaled[k*p+c] = root * inv[k*p+c]
 			}
-		}
+		})
 	}
 	g := blas64.General{Rows: p, Cols: p, Stride: p, Data: scaled}
 	m := make([]float64, p*p)
 	blas64.Gemm(blas.Trans, blas.NoTrans, 1, g, g, 0, blas64.General{Rows: p, Cols: p, Stride: p, Data: m})
 	out, traces := make([]float64, len(e.ridges)), e.Traces()
 	for j, r := range e.ridges {
-		for k := r.First; k < r.First+r.Size; k++ {
-			out[j] += lambda[j] * m[k*p+k]
-		}
+		r.columns(func(k int) { out[j] += lambda[j] * m[k*p+k] })
 		out[j] -= lambda[j] * traces[j]
 	}
 	if slopes == nil {
@@ -332,9 +346,7 @@ func (e *Dense) Range() (lo, hi []float64) {
 	lo, hi = make([]float64, len(e.ridges)), make([]float64, len(e.ridges))
 	for j, r := range e.ridges {
 		var sum float64
-		for k := r.First; k < r.First+r.Size; k++ {
-			sum += math.Abs(e.gram[k*e.p+k])
-		}
+		r.columns(func(k int) { sum += math.Abs(e.gram[k*e.p+k]) })
 		level := math.Log(math.Max(sum, math.SmallestNonzeroFloat64))
 		lo[j], hi[j] = level-35, level+16
 	}

@@ -3,6 +3,8 @@ package penfit
 import (
 	"context"
 	"math"
+
+	"drumlin/spatial/response"
 )
 
 // Result is a fit. The engine is left with H factored at it.
@@ -23,37 +25,42 @@ type Result struct {
 	Passes            int     // visits to the rows
 	Converged         bool
 	LogLikelihood     float64
+
+	Dist                       response.Distribution // with the shape that was found
+	ShapeAtLower, ShapeAtUpper bool                  // the shape ended at a bound of its box
 }
 
 // Fit fits p. For Given, lambda holds the smoothing parameters; else it is ignored. Trouble is ErrSeparated,
 // ErrSingular or ErrNoMode; a search that stops early is a Result that is not Converged.
 func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result, error) {
 	f := newFitter(ctx, p)
-	rho, err := f.search(c, lambda)
+	at, err := f.search(c, lambda)
 	if err != nil {
 		return nil, err
 	}
-	r := rho.result
-	if r.Value, _, err = f.final(c, rho.x); err != nil {
+	r := at.result
+	if r.Value, _, err = f.final(c, at.x); err != nil {
 		return nil, err
 	}
-	if f.flatten(rho, r.AtUpper) {
-		if r.Value, _, err = f.final(c, rho.x); err != nil {
+	if c != Given && f.flatten(at, r.AtUpper) {
+		if r.Value, _, err = f.final(c, at.x); err != nil {
 			return nil, err
 		}
 	}
-	r.Beta, r.Eta, r.Lambda = f.beta, f.eta, exp(rho.x)
-	r.Deviance, r.Penalty, r.Constant = f.deviance, f.penalty, f.scale
-	r.Edf, r.Passes = f.edf(r.Lambda), f.passes
+	r.Beta, r.Eta, r.Lambda, r.Dist = f.beta, f.eta, exp(at.x[:p.Engine.Penalties()]), f.Dist
+	r.Deviance, r.Penalty, r.Passes = f.deviance, f.penalty, f.passes
+	r.Edf = f.edf(r.Lambda)
+	if r.Constant, err = f.constantDeviance(f.overall()); err != nil {
+		return nil, err
+	}
 	f.scales(c, &r)
 	return &r, nil
 }
 
-// found is where the search ended.
+// found is where the search ended: log lambda, then the shape if it is searched.
 type found struct {
-	x      []float64
-	hi     []float64 // top of the box; nil where nothing was searched
-	result Result
+	x, lo, hi []float64
+	result    Result
 }
 
 // flatEdf is how many degrees of freedom beyond its null space a term may keep and still count as its null space.
@@ -63,68 +70,108 @@ const flatEdf = 1e-3
 // changes, to the top, so that neither AtUpper nor lambda depends on where the search happened to stop. It reports
 // whether any moved.
 func (f *fitter) flatten(at found, upper []bool) (moved bool) {
-	if at.hi == nil {
-		return false
-	}
-	_, rank := f.Engine.LogDetPenalty(exp(at.x))
+	lambda := exp(at.x[:len(upper)])
+	_, rank := f.Engine.LogDetPenalty(lambda)
 	for j, t := range f.Engine.Traces() {
-		if !upper[j] && rank[j]-math.Exp(at.x[j])*t < flatEdf {
+		if !upper[j] && rank[j]-lambda[j]*t < flatEdf {
 			at.x[j], upper[j], moved = at.hi[j], true, true
 		}
 	}
 	return moved
 }
 
-// search finds log lambda.
+// search finds log lambda, unless it is given, and the shape, if that is to be estimated.
 func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
+	var given []float64
 	if c == Given {
-		rho := make([]float64, len(lambda))
-		for j, l := range lambda {
-			rho[j] = math.Log(l)
-		}
-		_, err := f.start(rho)
-		return found{x: rho, result: Result{Converged: true, AtUpper: make([]bool, len(rho))}}, err
+		given = logs(lambda)
 	}
-	rho, err := f.start(nil)
+	rho, err := f.start(given)
 	if err != nil {
 		return found{}, err
 	}
-	lo, hi := f.Engine.Range()
+	at := f.boxes(c, rho)
+	if c == Given && f.shaped == nil {
+		at.result = Result{Converged: true, AtUpper: make([]bool, len(rho))}
+		return at, nil
+	}
 	objective := f.objective(c)
 	if c == GCV {
-		rho = f.scan(objective, rho, lo, hi)
+		at.x = f.scan(objective, at.x, at.lo, at.hi)
 	}
-	// The first point may be out of reach of the iterations although smoother ones are not: go up until there is one.
-	m, err := minimise(f.ctx, objective, rho, lo, hi)
-	for try := 0; try < 3 && err == nil && math.IsInf(m.value, 1); try++ {
-		for j := range rho {
-			rho[j] = math.Min(hi[j], rho[j]+4)
-		}
-		m, err = minimise(f.ctx, objective, rho, lo, hi)
-	}
-	if err == nil && math.IsInf(m.value, 1) {
-		_, _, err = f.score(c, rho)
-	}
+	m, err := f.minimiseFrom(c, objective, at)
 	if err != nil {
 		return found{}, err
 	}
-	r := Result{Gradient: m.projected, Iterations: m.iterations, Converged: m.converged, AtUpper: make([]bool, len(rho))}
+	at.x = m.x
+	at.result = Result{Gradient: m.projected, Iterations: m.iterations, Converged: m.converged, AtUpper: make([]bool, len(rho))}
 	for j := range rho {
-		r.AtUpper[j] = m.x[j] >= hi[j]-1e-9
+		at.result.AtUpper[j] = m.x[j] >= at.hi[j]-1e-9 && c != Given
 	}
-	return found{x: m.x, hi: hi, result: r}, nil
+	if k := len(rho); f.shaped != nil {
+		at.result.ShapeAtLower, at.result.ShapeAtUpper = m.x[k] <= at.lo[k]+1e-9, m.x[k] >= at.hi[k]-1e-9
+	}
+	return at, nil
+}
+
+func logs(lambda []float64) []float64 {
+	rho := make([]float64, len(lambda))
+	for j, l := range lambda {
+		rho[j] = math.Log(l)
+	}
+	return rho
+}
+
+// boxes lays out the search: its starting point and its bounds, which for a given lambda are one.
+func (f *fitter) boxes(c Criterion, rho []float64) found {
+	at := found{x: rho, lo: rho, hi: rho}
+	if c != Given {
+		at.lo, at.hi = f.Engine.Range()
+	}
+	if f.shaped != nil {
+		if low, _ := f.Engine.Range(); c == Given { // beside a shape, an interpolation is one to rounding
+			for j := range rho {
+				rho[j] = math.Max(rho[j], low[j])
+			}
+		}
+		lo, hi := f.shaped.Box()
+		at.x, at.lo, at.hi = join(at.x, f.shaped.Working()), join(at.lo, lo), join(at.hi, hi)
+	}
+	return at
+}
+
+func join(v []float64, last float64) []float64 { return append(append([]float64(nil), v...), last) }
+
+// minimiseFrom searches from a point. It may be out of reach of the iterations although smoother ones are not: then the
+// search goes up until there is one that is not.
+func (f *fitter) minimiseFrom(c Criterion, objective objective, at found) (minimum, error) {
+	x := append([]float64(nil), at.x...)
+	m, err := minimise(f.ctx, objective, x, at.lo, at.hi)
+	for try := 0; try < 3 && err == nil && math.IsInf(m.value, 1); try++ {
+		for j := 0; j < f.Engine.Penalties(); j++ {
+			x[j] = math.Min(at.hi[j], x[j]+4)
+		}
+		m, err = minimise(f.ctx, objective, x, at.lo, at.hi)
+	}
+	if err == nil && math.IsInf(m.value, 1) {
+		_, _, err = f.score(c, x)
+	}
+	return m, err
 }
 
 // objective wraps score for the search: numerical trouble at one point is an infinite value, so that the search halves
 // its step, and cross-validation is put on the scale of a log-likelihood, so that step lengths suit both criteria.
 func (f *fitter) objective(c Criterion) objective {
-	return func(rho []float64) (float64, []float64, error) {
+	if c == Given {
+		c = REML // of the shape
+	}
+	return func(at []float64) (float64, []float64, error) {
 		kept := append([]float64(nil), f.beta...)
-		v, g, err := f.score(c, rho)
+		v, g, err := f.score(c, at)
 		if err != nil && numerical(err) {
 			copy(f.beta, kept)
 			f.current = false
-			return math.Inf(1), make([]float64, len(rho)), nil
+			return math.Inf(1), make([]float64, len(at)), nil
 		}
 		if err == nil && c == GCV {
 			v, g = f.likelihoodScale(v, g)
@@ -167,12 +214,12 @@ func (f *fitter) scan(objective objective, rho, lo, hi []float64) []float64 {
 }
 
 // final evaluates everything at the chosen log lambda; the criterion of an interpolation, lambda 0, has no value.
-func (f *fitter) final(c Criterion, rho []float64) (value float64, gradient []float64, err error) {
+func (f *fitter) final(c Criterion, at []float64) (value float64, gradient []float64, err error) {
 	if c == Given {
 		c = REML
 	}
-	value, gradient, err = f.score(c, rho)
-	for _, r := range rho {
+	value, gradient, err = f.score(c, at)
+	for _, r := range at[:f.Engine.Penalties()] {
 		if math.IsInf(r, -1) {
 			value = math.NaN()
 		}

@@ -55,7 +55,7 @@ func problem(t *testing.T, dist response.Distribution, n int, seed uint64) Probl
 			obs[i].Y = draw(random, func(u float64) bool { return u < dist.Mean(eta) }, int(obs[i].Trials))
 		}
 	}
-	e, err := NewDense(context.Background(), m, []Ridge{{2, 6}, {8, 4}}, 2)
+	e, err := NewDense(context.Background(), m, []Ridge{{{2, 6}}, {{8, 4}}}, 2)
 	if err != nil {
 		t.Fatal(err)
 	}

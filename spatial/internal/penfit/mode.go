@@ -14,6 +14,8 @@ type Problem struct {
 	Dist   response.Distribution
 	Obs    []response.Obs
 	Offset []float64 // of the linear predictor, one a row; nil means none
+	// EstimateShape has the shape of a response.Shaped searched beside the smoothness; Dist's own is where it starts.
+	EstimateShape bool
 }
 
 // ErrSeparated says that the likelihood has no maximum: some linear predictors run off to infinity.
@@ -42,17 +44,24 @@ type fitter struct {
 	deviance float64
 	penalty  float64
 	moved    float64 // largest change of a linear predictor in the last accepted step
-	scale    float64 // deviance of a constant fit: what "small" is measured against
+	scale    float64 // deviance of a constant fit
+	size     float64 // what a small deviance is measured against: scale, or the rows' weight where phi is known
 
 	haveGram bool // a Gram matrix is at hand that stays true: constant weights
 	current  bool // the last pass was at beta, with a Gram matrix of observed weights
 	passes   int
 	last     evaluation
+
+	shaped response.Shaped       // Dist, where its shape is searched
+	shape  []response.ShapePoint // of each row at the mode
 }
 
 func newFitter(ctx context.Context, p Problem) *fitter {
 	n, k := len(p.Obs), p.Engine.Coefs()
 	f := &fitter{Problem: p, ctx: ctx, beta: make([]float64, k), eta: make([]float64, n), point: make([]response.Point, n)}
+	if shaped, ok := p.Dist.(response.Shaped); ok && p.EstimateShape {
+		f.shaped, f.shape = shaped, make([]response.ShapePoint, n)
+	}
 	return f
 }
 
@@ -135,7 +144,7 @@ func (f *fitter) mode(lambda []float64) error {
 		gradient := append([]float64(nil), step...)
 		f.Engine.Solve(step)
 		length := dot(step, gradient)
-		ref := f.scale + f.deviance + f.penalty
+		ref := f.size + f.deviance + f.penalty
 		if length <= modeTol*ref || length < modeFloor*ref && length > before/4 {
 			if moved > 0.1 && !f.Dist.ConstantWeight() {
 				return ErrSeparated
@@ -174,19 +183,30 @@ func (f *fitter) factor(lambda []float64) error {
 	return nil
 }
 
-// foresee moves beta to where the mode will be, to first order, when log lambda moves by step; the move is dropped if it
-// makes matters worse.
-func (f *fitter) foresee(step []float64, lambda []float64) error {
-	if f.Dist.ConstantWeight() || len(f.last.db) == 0 {
-		return nil // one Newton step leads there from anywhere
+// foresee takes the shape to its new value and moves beta to where the mode will be, to first order. The move is dropped
+// if it makes matters worse.
+func (f *fitter) foresee(at, lambda []float64) error {
+	if f.shaped != nil {
+		if s := at[len(lambda)]; s != f.shaped.Working() {
+			f.reshape(f.shaped.WithWorking(s))
+		}
+	}
+	if f.Dist.ConstantWeight() || f.last.at == nil {
+		return nil // for constant weights one Newton step leads there from anywhere
 	}
 	trial := append([]float64(nil), f.beta...)
-	for j, s := range step {
-		for k, d := range f.last.db[j] {
-			trial[k] += s * d
+	for j, d := range f.last.db {
+		for k, v := range d {
+			trial[k] += (at[j] - f.last.at[j]) * v
 		}
 	}
 	sb := make([]float64, len(trial))
+	if !f.current {
+		var err error
+		if f.deviance, err = f.evaluate(f.beta, response.Observed, false); err != nil {
+			return err
+		}
+	}
 	before := f.deviance + f.penaltyAt(sb, lambda, f.beta)
 	d, err := f.evaluate(trial, response.Observed, true)
 	if err != nil {
@@ -197,6 +217,11 @@ func (f *fitter) foresee(step []float64, lambda []float64) error {
 		f.deviance, f.current = d, true
 	}
 	return nil
+}
+
+// reshape goes on with another shape.
+func (f *fitter) reshape(d response.Shaped) {
+	f.shaped, f.Dist, f.current, f.haveGram = d, d, false, false
 }
 
 // advance takes the step, halved until the penalised deviance does not grow; sure steps, too small to be judged by a
@@ -229,14 +254,13 @@ func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
 // start sets beta from the distribution's starting means, and returns log lambda found on the working models: a few
 // multiplicative steps (Wood & Fasiolo 2017, Biometrics 73:1071-1081) bring it near the optimum cheaply.
 func (f *fitter) start(fixed []float64) (rho []float64, err error) {
-	var y, m float64
-	for i, o := range f.Obs {
-		y += o.Weight * o.Y
-		m += o.Weight * o.Trials * f.exposure(i)
-	}
-	f.scale, err = f.constantDeviance(y / m)
-	if err != nil {
+	overall := f.overall()
+	if f.scale, err = f.constantDeviance(overall); err != nil {
 		return nil, err
+	}
+	f.size = f.scale
+	if f.Dist.KnownDispersion() { // a row's deviance is about its weight, however well a constant fits
+		f.size += f.weight()
 	}
 	zwz := make([]float64, len(f.Obs))
 	working := func(i int, eta float64) (float64, float64) {
@@ -254,7 +278,7 @@ func (f *fitter) start(fixed []float64) (rho []float64, err error) {
 		if round == 0 {
 			at = func(i int, _ float64) (float64, float64) {
 				o := f.Obs[i]
-				return working(i, f.Dist.Linear(f.Dist.Start(o, y/m*f.exposure(i))))
+				return working(i, f.Dist.Linear(f.Dist.Start(o, overall*f.exposure(i))))
 			}
 		}
 		if err := f.Engine.Pass(f.ctx, f.beta, at, true); err != nil {
@@ -325,17 +349,50 @@ func (f *fitter) working(rho []float64, fixed bool, zwz float64) ([]float64, err
 	}
 }
 
-// constantDeviance returns the deviance of the fit with one mean a unit of exposure.
+// overall returns the mean of all rows together for one unit of exposure.
+func (f *fitter) overall() float64 {
+	var y, m float64
+	for i, o := range f.Obs {
+		y += o.Weight * o.Y
+		m += o.Weight * o.Trials * f.exposure(i)
+	}
+	return y / m
+}
+
+// constantDeviance returns the deviance of the best fit with one mean a unit of exposure, found by scoring from mean.
 func (f *fitter) constantDeviance(mean float64) (float64, error) {
 	eta := f.Dist.Linear(mean)
 	if math.IsNaN(eta) || math.IsInf(eta, 0) {
 		return 0, ErrSeparated
 	}
-	var d float64
-	for i, o := range f.Obs {
-		d += f.Dist.At(o, eta+f.offset(i)).Deviance
+	best := math.Inf(1)
+	for n := 0; n < 100; n++ {
+		var d, score, weight float64
+		for i, o := range f.Obs {
+			pt := f.Dist.At(o, eta+f.offset(i))
+			d += pt.Deviance
+			score += pt.Score
+			weight += pt.Expected
+		}
+		step := score / weight
+		if d >= best || !(weight > 0) || math.IsNaN(step) {
+			break
+		}
+		best = d
+		eta += step
 	}
-	return d, nil
+	if f.Dist.KnownDispersion() && best < 1e-12*f.weight() { // rounding
+		best = 0
+	}
+	return best, nil
+}
+
+// weight returns the sum of the rows' prior weights.
+func (f *fitter) weight() (sum float64) {
+	for _, o := range f.Obs {
+		sum += o.Weight
+	}
+	return sum
 }
 
 func clamp(v, most float64) float64 { return math.Min(most, math.Max(-most, v)) }
