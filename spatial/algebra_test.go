@@ -406,7 +406,7 @@ func TestOrderOfRowsIsOfNoConsequence(t *testing.T) {
 		}
 		p := Data{Response: by(d.Response), Exposure: by(d.Exposure), Trials: by(d.Trials), Weight: by(d.Weight),
 			Places: Places{X: by(d.Places.X), Y: by(d.Places.Y)}, Covariates: []Covariate{{Name: "depth", Number: by(depth.Number)}}}
-		m := Model{Distribution: dist, MaxKnots: 60, Effects: []Effect{{"depth", Linear}}}
+		m := Model{Distribution: dist, MaxKnots: 60, Effects: []Effect{{Name: "depth", Role: Linear}}}
 		a, b := fit(t, m, d, Options{}), fit(t, m, p, Options{})
 		z := Covariate{Name: "depth", Number: make([]float64, at.Len())}
 		etaA, seA := predict(t, a, at, z)

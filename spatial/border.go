@@ -3,100 +3,190 @@ package spatial
 import (
 	"math"
 	"strings"
+
+	"drumlin/basis2d"
 )
 
-// border holds the unpenalised columns beside the surface. Inside the fit they are orthogonal to one another and to the
-// surface's null space T, which keeps every digit of ill-conditioned covariates: with B the raw columns, the fit sees
+// border holds the columns beside the surface. The free ones, which no penalty touches, are inside the fit orthogonal to
+// one another and to the surface's free columns T, which keeps every digit of ill-conditioned covariates: with B the raw
+// columns, the fit sees
 //
 //	Q = (B - T Mix) R^-1,   coefficients of B = R^-1 (coefficients of Q).
+//
+// The bound ones, of curves and groups, follow as they are; their penalties are the identity.
 type border struct {
 	Effects []fitted  // what the columns are
-	Mix     []float64 // null x q, row-major
+	Mix     []float64 // null x q, row-major, q the number of free columns
 	R       []float64 // q x q, upper triangular, row-major
 	null    int
+	keep    int // free columns of each surface: its null space, or its constant alone
 }
 
 // fitted is an effect as the data had it.
 type fitted struct {
 	Effect
-	Level  []string // of a category; the first is the base
-	Lo, Hi float64  // range of a number over the rows
+	Level  []string         // of a category, a group, or of the category that a curve is for each level of
+	Lo, Hi float64          // range of a number over the rows
+	Curve  []*basis2d.Curve // of a curve: one, or one for each level
+	Unseen float64          // of a group: the variance of a level the data did not have, over phi
 }
 
-func (f fitted) columns() int {
-	if f.Role == Category {
+// free returns the number of columns no penalty touches.
+func (f fitted) free() int {
+	switch f.Role {
+	case Category:
 		return len(f.Level) - 1
+	case Curve:
+		return len(f.Curve)
+	case Group:
+		return 0
 	}
 	return 1
 }
 
-// names returns the coefficients' names: the covariate's for a slope, "name=level" for a step.
-func (b *border) names() []string {
-	var names []string
-	for _, e := range b.Effects {
-		if e.Role == Linear {
-			names = append(names, e.Name)
-			continue
+// bound returns the number of columns with a penalty.
+func (f fitted) bound() (n int) {
+	if f.Role == Group {
+		return len(f.Level)
+	}
+	for _, c := range f.Curve {
+		n += c.Dim() - 1
+	}
+	return n
+}
+
+// names returns the free columns' names: the covariate's for a slope, "name=level" for a step, "name straight" for the
+// straight part of a curve.
+func (f fitted) names() (names []string) {
+	switch f.Role {
+	case Linear:
+		return []string{f.Name}
+	case Category:
+		for _, l := range f.Level[1:] {
+			names = append(names, f.Name+"="+l)
 		}
-		for _, l := range e.Level[1:] {
-			names = append(names, e.Name+"="+l)
+	case Curve:
+		for k := range f.Curve {
+			names = append(names, f.curveName(k)+" straight")
 		}
 	}
 	return names
 }
 
-func (b *border) size() int {
-	q := 0
+// curveName names a curve: "depth", or "depth, soil=loam" where there is one for each level.
+func (f fitted) curveName(k int) string {
+	if f.Per == "" {
+		return f.Name
+	}
+	return f.Name + ", " + f.Per + "=" + f.Level[k]
+}
+
+// names returns the free columns' names.
+func (b *border) names() (names []string) {
 	for _, e := range b.Effects {
-		q += e.columns()
+		names = append(names, e.names()...)
+	}
+	return names
+}
+
+// size returns the number of free columns.
+func (b *border) size() (q int) {
+	for _, e := range b.Effects {
+		q += e.free()
 	}
 	return q
 }
 
-// newBorder collects the effects' levels from the data. A level that no row has is dropped.
-func newBorder(effects []Effect, covariates []Covariate, null int) (*border, [][]float64, error) {
-	b := &border{null: null}
-	var raw [][]float64
+// bound returns the number of columns with a penalty.
+func (b *border) bound() (n int) {
+	for _, e := range b.Effects {
+		n += e.bound()
+	}
+	return n
+}
+
+// newBorder collects the effects' levels, ranges and curves from the data. A level that no row has is dropped.
+func newBorder(effects []Effect, z []Covariate, copies, keep int) (*border, error) {
+	b := &border{null: copies * keep, keep: keep}
 	for _, e := range effects {
-		c, err := find(covariates, e)
+		c, err := find(z, e.Name, e.numeric())
 		if err != nil {
-			return nil, nil, err
+			return nil, err
 		}
 		f := fitted{Effect: e}
-		if e.Role == Linear {
-			f.Lo, f.Hi = math.Inf(1), math.Inf(-1)
-			for i, v := range c.Number {
-				if bad(v) {
-					return nil, nil, unfit("leave the row out", "row %d: covariate %q is not a finite number", i+1, e.Name)
-				}
-				f.Lo, f.Hi = math.Min(f.Lo, v), math.Max(f.Hi, v)
-			}
-			raw = append(raw, append([]float64(nil), c.Number...))
-		} else {
-			code := f.levels(c)
+		switch e.Role {
+		case Linear:
+			err = f.setRange(c)
+		case Category, Group:
+			f.levels(c)
 			if len(f.Level) < 2 {
-				return nil, nil, unfit("leave --category "+e.Name+" out", "covariate %q has one level only, %q: there is nothing to compare", e.Name, c.Level[c.Code[0]])
+				return nil, unfit("leave "+e.Name+" out", "covariate %q has one level only, %q: there is nothing to compare", e.Name, c.Level[c.Code[0]])
 			}
-			for l := 1; l < len(f.Level); l++ {
-				raw = append(raw, indicator(code, int32(l)))
+		case Curve:
+			if err = f.setRange(c); err == nil {
+				err = f.setCurves(c, z)
 			}
+		}
+		if err != nil {
+			return nil, err
 		}
 		b.Effects = append(b.Effects, f)
 	}
-	return b, raw, nil
+	return b, nil
 }
 
-func find(covariates []Covariate, e Effect) (Covariate, error) {
+func (f *fitted) setRange(c Covariate) error {
+	f.Lo, f.Hi = math.Inf(1), math.Inf(-1)
+	for i, v := range c.Number {
+		if bad(v) {
+			return unfit("leave the row out", "row %d: covariate %q is not a finite number", i+1, f.Name)
+		}
+		f.Lo, f.Hi = math.Min(f.Lo, v), math.Max(f.Hi, v)
+	}
+	return nil
+}
+
+// setCurves makes the curve's basis, or one for each level of the category it is per.
+func (f *fitted) setCurves(c Covariate, z []Covariate) error {
+	if f.Per == "" {
+		curve, err := basis2d.NewCurve(c.Number, basis2d.DefaultFunctions)
+		if err != nil {
+			return unfit("use --linear for it", "a curve of %q: %v", f.Name, err)
+		}
+		f.Curve = []*basis2d.Curve{curve}
+		return nil
+	}
+	per, err := find(z, f.Per, false)
+	if err != nil {
+		return err
+	}
+	code := f.levels(per)
+	values := make([][]float64, len(f.Level))
+	for i, k := range code {
+		values[k] = append(values[k], c.Number[i])
+	}
+	for k, v := range values {
+		curve, err := basis2d.NewCurve(v, basis2d.DefaultFunctions)
+		if err != nil {
+			return unfit("use one curve for all levels, or leave the level out", "a curve of %q for %s=%s: %v", f.Name, f.Per, f.Level[k], err)
+		}
+		f.Curve = append(f.Curve, curve)
+	}
+	return nil
+}
+
+// find returns the covariate of that name, numbers or a category as asked.
+func find(covariates []Covariate, name string, number bool) (Covariate, error) {
 	for _, c := range covariates {
-		if c.Name != e.Name {
+		if c.Name != name {
 			continue
 		}
-		if e.Role == Linear && c.Number == nil || e.Role == Category && c.Code == nil {
-			return c, unfit("", "covariate %q is not of the kind its effect needs", e.Name)
+		if number && c.Number == nil || !number && c.Code == nil {
+			return c, unfit("", "covariate %q is not of the kind its effect needs", name)
 		}
 		return c, nil
 	}
-	return Covariate{}, unfit("", "there is no covariate %q", e.Name)
+	return Covariate{}, unfit("", "there is no covariate %q", name)
 }
 
 // levels keeps the levels that occur, in their order, and returns the rows' codes among them.
@@ -119,25 +209,15 @@ func (f *fitted) levels(c Covariate) []int32 {
 	return code
 }
 
-func indicator(code []int32, level int32) []float64 {
-	v := make([]float64, len(code))
-	for i, k := range code {
-		if k == level {
-			v[i] = 1
-		}
-	}
-	return v
-}
-
 // orthogonalise makes the columns null (n values each) and raw orthonormal in turn by Gram-Schmidt, done twice for
 // orthogonality to rounding (Giraud, Langou & Rozloznik 2005), and keeps the transform of raw. It overwrites raw with
 // the columns that the fit sees, of mean square one. A column left with less than least of its own spread is named in
 // the error.
-func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
+func (b *border) orthogonalise(null, raw [][]float64, least float64, c *core) error {
 	t, q := len(null), len(raw)
 	all := make([][]float64, 0, t+q)
 	r := make([][]float64, t+q) // columns of the triangular factor
-	names := append(nullNames[:t:t], b.names()...)
+	names := append(nullNames(t, b.keep), b.names()...)
 	for j := 0; j < t+q; j++ {
 		var v []float64
 		if j < t {
@@ -146,7 +226,10 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
 			v = raw[j-t]
 		}
 		r[j] = make([]float64, t+q)
-		own := 0.0
+		own, level := spread(v), math.Abs(mean(v))*math.Sqrt(float64(len(v)))
+		if j < t && j%b.keep == 0 {
+			own = math.Sqrt(dot(v, v))
+		}
 		for pass := 0; pass < 2; pass++ {
 			for k, u := range all {
 				c := dot(u, v)
@@ -154,14 +237,11 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
 				for i := range v {
 					v[i] -= c * u[i]
 				}
-				if k == 0 && pass == 0 { // spread about the mean, for a constant column comes first
-					own = math.Sqrt(dot(v, v))
-				}
 			}
 		}
 		norm := math.Sqrt(dot(v, v))
-		if j > 0 && !(norm > least*own) || norm == 0 || own == 0 && j > 0 {
-			return b.dependent(j, t, names, r, own)
+		if constant := own <= 1e-12*level; constant || !(norm > least*own) {
+			return b.dependent(j, t, names, r, own, constant, c)
 		}
 		r[j][j] = norm
 		for i := range v {
@@ -169,9 +249,8 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
 		}
 		all = append(all, v)
 	}
-	b.keep(r, t, q, float64(len(all[0])))
-	for j, v := range raw {
-		_ = j
+	b.remember(r, t, q, float64(len(all[0])))
+	for _, v := range raw {
 		for i := range v {
 			v[i] *= math.Sqrt(float64(len(v)))
 		}
@@ -179,10 +258,33 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64) error {
 	return nil
 }
 
-var nullNames = []string{"intercept", "x", "y"}
+// nullNames names t free columns of surfaces, keep of each.
+func nullNames(t, keep int) []string {
+	names := make([]string, t)
+	for k := range names {
+		names[k] = []string{"intercept", "x", "y"}[k%keep]
+	}
+	return names
+}
 
-// keep stores Mix = R_TT^-1 R_TB and R = R_BB/sqrt(n).
-func (b *border) keep(r [][]float64, t, q int, n float64) {
+// spread returns the length of a column about its mean.
+func spread(v []float64) float64 {
+	m, ss := mean(v), 0.0
+	for _, x := range v {
+		ss += (x - m) * (x - m)
+	}
+	return math.Sqrt(ss)
+}
+
+func mean(v []float64) (m float64) {
+	for _, x := range v {
+		m += x / float64(len(v))
+	}
+	return m
+}
+
+// remember stores Mix = R_TT^-1 R_TB and R = R_BB/sqrt(n).
+func (b *border) remember(r [][]float64, t, q int, n float64) {
 	b.Mix, b.R = make([]float64, t*q), make([]float64, q*q)
 	for j := 0; j < q; j++ {
 		col := r[t+j]
@@ -200,12 +302,15 @@ func (b *border) keep(r [][]float64, t, q int, n float64) {
 }
 
 // dependent says which column hangs on which.
-func (b *border) dependent(j, t int, names []string, r [][]float64, own float64) error {
+func (b *border) dependent(j, t int, names []string, r [][]float64, own float64, constant bool, c *core) error {
 	if j < t {
-		return unfit("a surface needs places spread in two directions: use --surface none, or more places",
-			"the places lie on one line, so a surface over the plane cannot be had")
+		level := ""
+		if c.per != "" {
+			level = c.per + "=" + c.level[j/b.keep]
+		}
+		return onOneLine(level)
 	}
-	if own <= 1e-12*math.Abs(r[j][0]) {
+	if constant {
 		return unfit("leave it out", "covariate %q has the same value in every row", names[j])
 	}
 	var on []string
@@ -274,49 +379,114 @@ func (b *border) functional(j, q int) []float64 {
 	return g
 }
 
-// values fits covariates at new places to the effects: a function that writes the raw columns of row i. An unknown
-// level gives NaN.
-func (b *border) values(z []Covariate) (func(dst []float64, i int), error) {
-	var set []func(dst []float64, i int)
-	at := 0
+// filler writes the columns of row i before they are made orthogonal: free ones and bound ones. It returns what the
+// variance of the linear predictor grows by, in multiples of phi, for groups that the data did not have.
+type filler func(free, bound []float64, i int) (unseen float64)
+
+// filler fits covariates to the effects. A level of a category that the data did not have gives NaN. A group may be
+// missing from z: then the row is for a group of average level, without error.
+func (b *border) filler(z []Covariate) (filler, error) {
+	var set []filler
+	freeAt, boundAt := 0, 0
 	for _, e := range b.Effects {
-		c, err := find(z, e.Effect)
+		f, err := e.filler(z)
 		if err != nil {
 			return nil, err
 		}
-		first := at
-		at += e.columns()
-		if e.Role == Linear {
-			set = append(set, func(dst []float64, i int) { dst[first] = c.Number[i] })
-			continue
-		}
-		to := make([]int, len(c.Level))
-		for l, name := range c.Level {
-			to[l] = -1
-			for k, known := range e.Level {
-				if known == name {
-					to[l] = k
-				}
-			}
-		}
-		set = append(set, func(dst []float64, i int) {
-			level := to[c.Code[i]]
-			for k := 1; k < len(e.Level); k++ {
-				dst[first+k-1] = 0
-				switch level {
-				case k:
-					dst[first+k-1] = 1
-				case -1:
-					dst[first+k-1] = math.NaN()
-				}
-			}
-		})
+		f0, f1, b0, b1 := freeAt, freeAt+e.free(), boundAt, boundAt+e.bound()
+		freeAt, boundAt = f1, b1
+		set = append(set, func(free, bound []float64, i int) float64 { return f(free[f0:f1], bound[b0:b1], i) })
 	}
-	return func(dst []float64, i int) {
+	return func(free, bound []float64, i int) (unseen float64) {
+		clear(free)
+		clear(bound)
 		for _, f := range set {
-			f(dst, i)
+			unseen += f(free, bound, i)
 		}
+		return unseen
 	}, nil
+}
+
+// filler writes one effect's columns, which come cleared.
+func (f fitted) filler(z []Covariate) (filler, error) {
+	if f.Role == Group && !has(z, f.Name) {
+		return func(_, _ []float64, _ int) float64 { return 0 }, nil
+	}
+	c, err := find(z, f.Name, f.numeric())
+	if err != nil {
+		return nil, err
+	}
+	switch f.Role {
+	case Linear:
+		return func(free, _ []float64, i int) float64 { free[0] = c.Number[i]; return 0 }, nil
+	case Category:
+		to := lookUp(c.Level, f.Level)
+		return func(free, _ []float64, i int) float64 {
+			switch k := to[c.Code[i]]; {
+			case k > 0:
+				free[k-1] = 1
+			case k < 0:
+				free[0] = math.NaN()
+			}
+			return 0
+		}, nil
+	case Group:
+		to := lookUp(c.Level, f.Level)
+		return func(_, bound []float64, i int) float64 {
+			k := to[c.Code[i]]
+			if k < 0 {
+				return f.Unseen
+			}
+			bound[k] = 1
+			return 0
+		}, nil
+	}
+	return f.curveFiller(c, z)
+}
+
+func (f fitted) curveFiller(c Covariate, z []Covariate) (filler, error) {
+	of := func(int) int { return 0 }
+	if f.Per != "" {
+		per, err := find(z, f.Per, false)
+		if err != nil {
+			return nil, err
+		}
+		to := lookUp(per.Level, f.Level)
+		of = func(i int) int { return to[per.Code[i]] }
+	}
+	bend := f.Curve[0].Dim() - 1
+	return func(free, bound []float64, i int) float64 {
+		k := of(i)
+		if k < 0 {
+			free[0] = math.NaN()
+			return 0
+		}
+		var row [basis2d.DefaultFunctions]float64
+		f.Curve[k].RowTo(row[:1+bend], c.Number[i])
+		free[k] = row[0]
+		copy(bound[k*bend:(k+1)*bend], row[1:])
+		return 0
+	}, nil
+}
+
+// setUnseen remembers the variance that an unseen level of a group has, over phi: one over its lambda.
+func (b *border) setUnseen(list []smooth, lambda []float64) {
+	for i, e := range b.Effects {
+		for j, t := range list {
+			if e.Role == Group && t.kind == GroupSmooth && t.name == "group "+e.Name {
+				b.Effects[i].Unseen = 1 / lambda[j]
+			}
+		}
+	}
+}
+
+func has(z []Covariate, name string) bool {
+	for _, c := range z {
+		if c.Name == name {
+			return true
+		}
+	}
+	return false
 }
 
 func dot(a, b []float64) (s float64) {

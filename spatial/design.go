@@ -1,43 +1,40 @@
 package spatial
 
-import "drumlin/basis2d"
-
-// design is the model matrix of the rows: the surface's columns, then the border's.
+// design is the model matrix of the rows: the surface's columns, the free columns beside it, the bound ones.
 type design struct {
 	x, y    []float64
-	basis   *basis2d.ThinPlate // nil: a constant in its place
-	border  [][]float64        // columns the fit sees, one value a row
-	scratch []basis2d.Spread
+	core    *core
+	of      func(i int) int // which surface a row belongs to
+	free    [][]float64     // orthogonal columns that the fit sees, one value a row
+	bound   int
+	fill    filler
+	scratch []designScratch
+}
+
+// designScratch is one goroutine's space.
+type designScratch struct {
+	core coreScratch
+	raw  []float64
 }
 
 func (d *design) Rows() int { return len(d.x) }
 
-func (d *design) Cols() int { return surfaceColumns(d.basis) + len(d.border) }
-
-func surfaceColumns(b *basis2d.ThinPlate) int {
-	if b == nil {
-		return 1
-	}
-	return b.Dim()
-}
+func (d *design) Cols() int { return d.core.columns() + len(d.free) + d.bound }
 
 func (d *design) BlockTo(dst []float64, from, to, worker int) {
-	p, k := d.Cols(), surfaceColumns(d.basis)
-	surfaceRowsTo(dst, p, d.basis, d.x[from:to], d.y[from:to], &d.scratch[worker])
+	p, k, q := d.Cols(), d.core.columns(), len(d.free)
+	w := &d.scratch[worker]
+	d.core.rowsTo(dst, p, d.x[from:to], d.y[from:to], func(r int) int { return d.of(from + r) }, &w.core)
+	if w.raw == nil {
+		w.raw = make([]float64, q)
+	}
 	for i := from; i < to; i++ {
-		row := dst[(i-from)*p+k : (i-from+1)*p]
-		for j, col := range d.border {
-			row[j] = col[i]
+		row := dst[(i-from)*p : (i-from+1)*p]
+		if d.bound > 0 {
+			d.fill(w.raw, row[k+q:], i)
 		}
-	}
-}
-
-func surfaceRowsTo(dst []float64, stride int, b *basis2d.ThinPlate, x, y []float64, s *basis2d.Spread) {
-	if b != nil {
-		b.RowsTo(dst, stride, x, y, s)
-		return
-	}
-	for i := range x {
-		dst[i*stride] = 1
+		for j, col := range d.free {
+			row[k+j] = col[i]
+		}
 	}
 }

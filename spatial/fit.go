@@ -15,7 +15,7 @@ import (
 // Fit fits m to d. A fit that stops early is a Surface whose Report is not Converged; data from which no fit can be had
 // give an *Error that says why. Fit panics if slices of d differ in length.
 func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
-	dist, err := response.New(m.Distribution, m.Link)
+	dist, err := m.distribution()
 	if err != nil {
 		return nil, err
 	}
@@ -25,37 +25,77 @@ func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
 	if err := fittable(dist, d); err != nil {
 		return nil, err
 	}
-	s := &Surface{model: m, dist: dist, workers: o.Workers}
+	m.Effects = m.effects()
+	s := &Surface{model: m, dist: dist, core: &core{}, workers: o.Workers}
 	if m.Surface == ThinPlate {
-		if err := s.lay(d.Places, o); err != nil {
+		if err := s.lay(d, o); err != nil {
 			return nil, err
 		}
 	}
-	dg, err := s.columns(d, o)
+	dg, err := s.columns(ctx, d, o)
 	if err != nil {
 		return nil, err
 	}
-	if free := d.Places.Len() - s.nullDim(); !dist.KnownDispersion() && free < 1 {
+	list := s.smooths()
+	engine, err := penfit.NewDense(ctx, dg, ridges(list), o.Workers)
+	if err != nil {
+		return nil, err
+	}
+	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d), EstimateShape: m.Shape == nil}
+	if free := d.Places.Len() - engine.NullDim(); !dist.KnownDispersion() && free < 1 {
 		return nil, unfit("use more observations or fewer covariates",
-			"%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), s.nullDim())
+			"%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), engine.NullDim())
 	}
-	engine, err := penfit.NewDense(ctx, dg, s.ridges(), o.Workers)
-	if err != nil {
-		return nil, err
-	}
-	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d)}
-	criterion, lambda := s.criterion()
+	criterion, lambda := s.criterion(list)
 	r, err := penfit.Fit(ctx, problem, criterion, lambda)
 	if err != nil {
 		return nil, explain(err, dist)
 	}
-	s.beta, s.factor, s.phi = r.Beta, engine.Factored(), r.Phi
-	mean, err := meanRow(ctx, engine, surfaceColumns(s.basis))
+	s.dist, s.beta, s.factor, s.phi = r.Dist, r.Beta, engine.Factored(), r.Phi
+	s.border.setUnseen(list, r.Lambda)
+	mean, err := meanRow(ctx, engine)
 	if err != nil {
 		return nil, err
 	}
-	s.report = s.describe(r, d, mean)
+	s.mean = mean
+	s.report = s.describe(r, d, list)
 	return s, s.settleRows(ctx, engine, problem, r, d, o.Seed)
+}
+
+// distribution returns the model's distribution, with its shape where that is given.
+func (m Model) distribution() (response.Distribution, error) {
+	dist, err := response.New(m.Distribution, m.Link)
+	if err != nil || m.Shape == nil {
+		return dist, err
+	}
+	shaped, ok := dist.(interface {
+		WithShape(v float64) (response.Shaped, error)
+	})
+	if !ok {
+		return nil, unfit("leave the shape out", "the %s distribution has no shape to be given", m.Distribution)
+	}
+	return shaped.WithShape(*m.Shape)
+}
+
+// effects returns the model's effects with what they need of one another: a category that curves are per has its own
+// steps as well, and one that surfaces are per has none, since each surface brings its own constant.
+func (m Model) effects() []Effect {
+	var list []Effect
+	steps := map[string]bool{m.SurfacePer: true}
+	for _, e := range m.Effects {
+		if e.Role == Category && steps[e.Name] {
+			continue
+		}
+		steps[e.Name] = steps[e.Name] || e.Role == Category
+		list = append(list, e)
+	}
+	for _, e := range m.Effects {
+		if e.Per != "" && !steps[e.Per] {
+			steps[e.Per] = true
+			list = append(list, Effect{Name: e.Per, Role: Category})
+		}
+	}
+	return list
 }
 
 // fittable refuses data whose likelihood has its maximum at the edge, or none.
@@ -104,7 +144,7 @@ func fittable(dist response.Distribution, d Data) error {
 }
 
 // lay chooses the knots and builds the surface's basis.
-func (s *Surface) lay(at Places, o Options) error {
+func (s *Surface) lay(d Data, o Options) error {
 	most := s.model.MaxKnots
 	if most == 0 {
 		most = DefaultKnots
@@ -112,7 +152,7 @@ func (s *Surface) lay(at Places, o Options) error {
 	if most < basis2d.Null+1 {
 		return unfit("allow more with --max-knots, or use --surface none", "a surface needs at least %d knots, %d were allowed", basis2d.Null+1, most)
 	}
-	s.knots = basis2d.PlaceKnots(at.X, at.Y, o.Area.X, o.Area.Y, most)
+	s.knots = basis2d.PlaceKnots(d.Places.X, d.Places.Y, o.Area.X, o.Area.Y, most)
 	if o.Knots.Len() > 0 {
 		s.knots.X, s.knots.Y, s.knots.InGaps = o.Knots.X, o.Knots.Y, 0
 	}
@@ -122,14 +162,36 @@ func (s *Surface) lay(at Places, o Options) error {
 	}
 	basis, err := basis2d.NewThinPlate(s.knots.X, s.knots.Y)
 	if errors.Is(err, basis2d.ErrCollinear) {
-		return unfit("a surface needs places spread in two directions: use --surface none, or more places",
-			"the places lie on one line, so a surface over the plane cannot be had")
+		return onOneLine("")
 	}
 	if err != nil {
 		return &Error{Message: err.Error(), Cause: err}
 	}
-	s.basis = basis
+	s.core.basis = basis
+	if s.model.SurfacePer == "" {
+		return nil
+	}
+	c, err := find(d.Covariates, s.model.SurfacePer, false)
+	if err != nil {
+		return err
+	}
+	f := fitted{}
+	f.levels(c)
+	if len(f.Level) < 2 {
+		return unfit("leave --surface-per out", "covariate %q has one level only, %q: there is nothing to compare", c.Name, f.Level[0])
+	}
+	s.core.per, s.core.level = c.Name, f.Level
 	return nil
+}
+
+// onOneLine refuses places, of all rows or of one level's, that do not spread in two directions.
+func onOneLine(level string) error {
+	where := ""
+	if level != "" {
+		where = " of " + level
+	}
+	return unfit("a surface needs places spread in two directions: use --surface none, or more places",
+		"the places%s lie on one line, so a surface over the plane cannot be had", where)
 }
 
 // How much of a column's own spread must be left when those before it are taken out: a Schur pivot of 1e-10 beside a
@@ -139,70 +201,98 @@ const (
 	leastPlain         = 1e-13
 )
 
+// The most columns beside the surface, and the most of them times the surface's own.
+const (
+	maxBorder  = 1000
+	maxProduct = 2.5e7
+)
+
 // columns builds the model matrix and remembers what predictions need of it.
-func (s *Surface) columns(d Data, o Options) (*design, error) {
-	n := d.Places.Len()
-	dg := &design{x: d.Places.X, y: d.Places.Y, basis: s.basis, scratch: make([]basis2d.Spread, blocks.Workers(o.Workers))}
-	null := make([][]float64, min(surfaceColumns(s.basis), basis2d.Null))
-	for k := range null {
-		null[k] = make([]float64, n)
-	}
-	var t [basis2d.Null]float64
-	for i := 0; i < n; i++ {
-		s.nullTo(t[:], d.Places.X[i], d.Places.Y[i])
-		for k := range null {
-			null[k][i] = t[k]
-		}
+func (s *Surface) columns(ctx context.Context, d Data, o Options) (*design, error) {
+	keep := s.core.null()
+	if s.model.Shrink {
+		keep = 1
 	}
 	var err error
-	if s.border, dg.border, err = newBorder(s.model.Effects, d.Covariates, len(null)); err != nil {
+	if s.border, err = newBorder(s.model.Effects, d.Covariates, s.core.copies(), keep); err != nil {
 		return nil, err
 	}
-	if len(dg.border) > maxBorder {
-		return nil, unfit("use fewer covariates or levels", "%d columns of covariates are more than the %d allowed", len(dg.border), maxBorder)
+	q, bound, n := s.border.size(), s.border.bound(), d.Places.Len()
+	if q+bound > maxBorder || float64(q+bound)*float64(s.core.columns()) > maxProduct {
+		return nil, &Error{Message: fmt.Sprintf("%d columns of covariates beside %d of the surface are more than can be fitted (%d, and %g for the product)",
+			q+bound, s.core.columns(), maxBorder, maxProduct), Advice: "use fewer covariates, levels or groups, or fewer knots", Request: true}
 	}
-	if n < s.nullDim() {
-		return nil, unfit("use more observations or fewer covariates", "%d observations cannot settle %d unpenalised coefficients", n, s.nullDim())
+	if free := s.border.null + q; n < free {
+		return nil, unfit("use more observations or fewer covariates", "%d observations cannot settle %d unpenalised coefficients", n, free)
+	}
+	dg := &design{x: d.Places.X, y: d.Places.Y, core: s.core, bound: bound, scratch: make([]designScratch, blocks.Workers(o.Workers))}
+	if dg.of, err = s.core.levels(d.Covariates); err != nil {
+		return nil, err
+	}
+	if dg.fill, err = s.border.filler(d.Covariates); err != nil {
+		return nil, err
+	}
+	null, raw, err := s.freeColumns(ctx, dg, q)
+	if err != nil {
+		return nil, err
 	}
 	least := leastPlain
-	if s.basis != nil {
+	if s.core.basis != nil {
 		least = leastBesideSurface
 	}
-	return dg, s.border.orthogonalise(null, dg.border, least)
+	dg.free = raw
+	return dg, s.border.orthogonalise(null, raw, least, s.core)
 }
 
-// maxBorder is the most columns beside the surface.
-const maxBorder = 1000
-
-func (s *Surface) nullTo(t []float64, x, y float64) {
-	if s.basis == nil {
-		t[0] = 1
-		return
+// freeColumns returns the surface's free columns and the raw ones beside it, one value a row.
+func (s *Surface) freeColumns(ctx context.Context, dg *design, q int) (null, raw [][]float64, err error) {
+	n, p, t := dg.Rows(), dg.core.columns(), s.border.null
+	all := make([][]float64, t+q)
+	for j := range all {
+		all[j] = make([]float64, n)
 	}
-	s.basis.NullSpaceTo(t, x, y)
-}
-
-func (s *Surface) ridges() []penfit.Ridge {
-	if s.basis == nil || s.basis.Dim() == basis2d.Null {
+	type space struct {
+		core             coreScratch
+		rows, free, bend []float64
+	}
+	scratch := make([]space, len(dg.scratch))
+	err = blocks.Do(ctx, len(scratch), blocks.Count(n), func(worker, b int) error {
+		w := &scratch[worker]
+		if w.rows == nil {
+			w.rows, w.free, w.bend = make([]float64, blocks.Size*p), make([]float64, t+q), make([]float64, dg.bound)
+		}
+		from, to := blocks.Range(b, n)
+		dg.core.rowsTo(w.rows, p, dg.x[from:to], dg.y[from:to], func(r int) int { return dg.of(from + r) }, &w.core)
+		for i := from; i < to; i++ {
+			dg.core.nullTo(w.free[:t], w.rows[(i-from)*p:], s.border.keep)
+			dg.fill(w.free[t:], w.bend, i)
+			for j, v := range w.free {
+				all[j][i] = v
+			}
+		}
 		return nil
-	}
-	return []penfit.Ridge{{{First: basis2d.Null, Size: s.basis.Dim() - basis2d.Null}}}
+	})
+	return all[:t], all[t:], err
 }
 
-// nullDim returns the number of unpenalised coefficients.
-func (s *Surface) nullDim() int { return min(surfaceColumns(s.basis), basis2d.Null) + s.border.size() }
-
-// criterion turns the model's smoothness into the core's: its penalty is in scaled coordinates, so that
-// lambda J = (lambda/Scale^2) u'u.
-func (s *Surface) criterion() (penfit.Criterion, []float64) {
-	if len(s.ridges()) == 0 {
+// criterion turns the model's smoothness into the core's: the surface's penalty is in scaled coordinates, so that
+// lambda J = (lambda/Scale^2) u'u. A given smoothness is the surface's; the data choose that of curves and groups.
+func (s *Surface) criterion(list []smooth) (penfit.Criterion, []float64) {
+	if len(list) == 0 {
 		return penfit.REML, nil
 	}
 	switch s.model.Smoothness.Method {
 	case GCV:
 		return penfit.GCV, nil
 	case Given:
-		return penfit.Given, []float64{s.model.Smoothness.Lambda / (s.basis.Scale * s.basis.Scale)}
+		lambda := make([]float64, len(list))
+		for j, t := range list {
+			lambda[j] = math.NaN()
+			if t.kind == SurfaceSmooth {
+				lambda[j] = s.model.Smoothness.Lambda / t.scale
+			}
+		}
+		return penfit.Given, lambda
 	}
 	return penfit.REML, nil
 }

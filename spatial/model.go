@@ -35,13 +35,19 @@ type Role int
 const (
 	Linear   Role = iota // a slope
 	Category             // a step for every level but the first
+	Curve                // a smooth function, of mean zero over the rows
+	Group                // a random intercept for each level
 )
 
 // Effect is a covariate with its role.
 type Effect struct {
 	Name string
 	Role Role
+	Per  string // of a curve: the category for each level of which there is one of its own; may be empty
 }
+
+// numeric reports whether the effect's covariate holds numbers.
+func (e Effect) numeric() bool { return e.Role == Linear || e.Role == Curve }
 
 // Kind is the kind of the surface.
 type Kind int
@@ -72,12 +78,23 @@ const DefaultKnots = 200
 
 // Model says what is fitted. The zero value is not valid: Distribution must be named.
 type Model struct {
-	Distribution string // "gaussian", "poisson", "binomial"
-	Link         string // "" means the distribution's own
-	Surface      Kind
-	MaxKnots     int // 0 means DefaultKnots
-	Smoothness   Smoothness
-	Effects      []Effect
+	Distribution string   // one of response.Names
+	Link         string   // "" means the distribution's own
+	Shape        *float64 // of a distribution that has one; nil means that the data choose it
+	// ScaleVariation takes the variance as phi times the distribution's, phi estimated (quasi-likelihood; Wedderburn
+	// 1974). Only for distributions whose dispersion is known.
+	ScaleVariation bool
+	Surface        Kind
+	// SurfacePer names a category for each level of which there is a surface of its own; OwnSmoothness gives each its own
+	// penalty too.
+	SurfacePer    string
+	OwnSmoothness bool
+	// Shrink penalises the surface's slope as well, so that it can vanish (Marra & Wood 2011, Comput. Stat. Data Anal.
+	// 55:2372-2387).
+	Shrink     bool
+	MaxKnots   int // 0 means DefaultKnots
+	Smoothness Smoothness
+	Effects    []Effect
 }
 
 // Data are the observations: slices have one value a row, or are nil where they do not apply.
@@ -105,6 +122,7 @@ type Error struct {
 	Message string
 	Advice  string
 	Cause   error
+	Request bool // the request is too large rather than the data unfit
 }
 
 func (e *Error) Error() string { return e.Message }
@@ -115,8 +133,8 @@ func (e *Error) Unwrap() error { return e.Cause }
 // Hint returns what to do about it.
 func (e *Error) Hint() string { return e.Advice }
 
-// FitFailed marks the error as a fit that could not be had, rather than a request that is wrong.
-func (e *Error) FitFailed() bool { return true }
+// FitFailed tells a fit that could not be had from a request that is wrong.
+func (e *Error) FitFailed() bool { return !e.Request }
 
 func unfit(advice, format string, args ...any) error {
 	return &Error{Message: fmt.Sprintf(format, args...), Advice: advice}

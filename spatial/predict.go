@@ -4,7 +4,6 @@ import (
 	"context"
 	"math"
 
-	"drumlin/basis2d"
 	"drumlin/basis2d/blocks"
 
 	"gonum.org/v1/gonum/blas"
@@ -12,8 +11,9 @@ import (
 )
 
 // PredictTo writes the linear predictor and its standard error, both on the link scale, without offset, at each of the
-// places to eta and se. z holds the covariates the model's effects name, one value a place; a level the data did not
-// have gives NaN in both. It returns an error for a covariate that is missing, or when ctx is cancelled, and panics if
+// places to eta and se. z holds the covariates the model's effects name, one value a place. A level of a category that the
+// data did not have gives NaN in both; such a level of a group has the average level and its variance; a group that z
+// does not hold is taken at the average level, without error. It returns an error for a covariate that is missing, or when ctx is cancelled, and panics if
 // eta, se, at and z differ in length. It is safe for concurrent use.
 func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z []Covariate) error {
 	n := at.Len()
@@ -37,7 +37,7 @@ func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z
 		blas64.Trsm(blas.Right, blas.NoTrans, 1, s.triangle(), x)
 		for i := range x.Rows {
 			v := x.Data[i*p : (i+1)*p]
-			se[from+i] = root * math.Sqrt(dot(v, v))
+			se[from+i] = root * math.Sqrt(dot(v, v)+scratch[worker].unseen[i])
 		}
 		return nil
 	})
@@ -46,8 +46,9 @@ func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z
 // rowScratch is one goroutine's space for rows of the model matrix.
 type rowScratch struct {
 	rows   []float64
-	raw    []float64
-	spread basis2d.Spread
+	raw, t []float64
+	unseen [blocks.Size]float64 // what each row's variance grows by for unseen groups, over phi
+	core   coreScratch
 }
 
 // rows makes the model matrix's rows at places (x, y); of tells which row of the covariates belongs to the k-th of them.
@@ -57,22 +58,26 @@ type rows func(w *rowScratch, x, y []float64, of func(k int) int) blas64.General
 func (s *Surface) rowMaker(at Places, z []Covariate) (rows, error) {
 	at.check()
 	checkLengths(z, at.Len())
-	values, err := s.border.values(z)
+	fill, err := s.border.filler(z)
 	if err != nil {
 		return nil, err
 	}
-	p, k := len(s.beta), surfaceColumns(s.basis)
-	q := p - k
+	level, err := s.core.levels(z)
+	if err != nil {
+		return nil, err
+	}
+	p, k, q := len(s.beta), s.core.columns(), s.border.size()
 	return func(w *rowScratch, x, y []float64, of func(k int) int) blas64.General {
-		if len(w.raw) < q {
-			w.raw = make([]float64, q)
+		if w.t == nil {
+			w.raw, w.t = make([]float64, q), make([]float64, s.border.null)
 		}
 		m := blas64.General{Rows: len(x), Cols: p, Stride: p, Data: w.rows[:len(x)*p]}
-		surfaceRowsTo(m.Data, p, s.basis, x, y, &w.spread)
-		for i := 0; i < len(x) && q > 0; i++ {
+		s.core.rowsTo(m.Data, p, x, y, func(r int) int { return level(of(r)) }, &w.core)
+		for i := 0; i < len(x) && p > k; i++ {
 			row := m.Data[i*p : (i+1)*p]
-			values(w.raw[:q], of(i))
-			s.border.rowTo(row[k:], row, w.raw[:q])
+			w.unseen[i] = fill(w.raw, row[k+q:], of(i))
+			s.core.nullTo(w.t, row, s.border.keep)
+			s.border.rowTo(row[k:k+q], w.t, w.raw)
 		}
 		return m
 	}, nil

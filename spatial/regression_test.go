@@ -53,7 +53,7 @@ func TestReferenceCovariates(t *testing.T) {
 	}
 	var want struct{ Unweighted, Weighted result }
 	expected(t, "with_covariates/expected.json", &want)
-	m := Model{Distribution: "gaussian", Effects: []Effect{{"u", Linear}, {"v", Linear}, {"soil", Category}}}
+	m := Model{Distribution: "gaussian", Effects: []Effect{{Name: "u", Role: Linear}, {Name: "v", Role: Linear}, {Name: "soil", Role: Category}}}
 	for name, w := range map[string]result{"unweighted": want.Unweighted, "weighted": want.Weighted} {
 		t.Run(name, func(t *testing.T) {
 			data := Data{Response: numbers(t, d["z"]), Places: places(t, "with_covariates/data.csv"), Covariates: read("with_covariates/data.csv")}
@@ -110,7 +110,7 @@ func TestReferenceRegressions(t *testing.T) {
 			data := base
 			data.Response = c.response
 			c.set(&data)
-			m := Model{Distribution: c.dist, Surface: None, Effects: []Effect{{"x1", Linear}, {"x2", Linear}, {"group", Category}}}
+			m := Model{Distribution: c.dist, Surface: None, Effects: []Effect{{Name: "x1", Role: Linear}, {Name: "x2", Role: Linear}, {Name: "group", Role: Category}}}
 			s := fit(t, m, data, Options{})
 			w, r := want.Fits[name], s.Report()
 			if len(w.Coefficients) != 5 {
@@ -153,7 +153,7 @@ func TestNISTLinearRegression(t *testing.T) {
 			data := Data{Response: y, Places: Places{X: make([]float64, len(y)), Y: make([]float64, len(y))}}
 			m := Model{Distribution: "gaussian", Surface: None}
 			add := func(name string, v []float64) {
-				m.Effects = append(m.Effects, Effect{name, Linear})
+				m.Effects = append(m.Effects, Effect{Name: name, Role: Linear})
 				data.Covariates = append(data.Covariates, Covariate{Name: name, Number: v})
 			}
 			switch name {

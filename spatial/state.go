@@ -14,6 +14,7 @@ type State struct {
 	Basis  *basis2d.ThinPlate // nil without a surface
 	Gaps   int                // knots in gaps
 	Places int                // distinct places
+	Level  []string           // for each of which there is a surface, of the category Model.SurfacePer
 	Effect []StateEffect
 	Mix, R []float64
 	Beta   []float64
@@ -26,16 +27,19 @@ type State struct {
 type StateEffect struct {
 	Name   string
 	Role   Role
+	Per    string
 	Level  []string
 	Lo, Hi float64
+	Curve  []*basis2d.Curve
+	Unseen float64
 }
 
 // State returns what a restored surface needs. Slices are shared with s and must not be changed.
 func (s *Surface) State() State {
-	st := State{Model: s.model, Basis: s.basis, Gaps: s.knots.InGaps, Places: s.knots.Distinct, Mix: s.border.Mix, R: s.border.R,
+	st := State{Model: s.model, Basis: s.core.basis, Level: s.core.level, Gaps: s.knots.InGaps, Places: s.knots.Distinct, Mix: s.border.Mix, R: s.border.R,
 		Beta: s.beta, Factor: s.factor, Phi: s.phi, Report: s.report}
 	for _, e := range s.border.Effects {
-		st.Effect = append(st.Effect, StateEffect{Name: e.Name, Role: e.Role, Level: e.Level, Lo: e.Lo, Hi: e.Hi})
+		st.Effect = append(st.Effect, StateEffect{e.Name, e.Role, e.Per, e.Level, e.Lo, e.Hi, e.Curve, e.Unseen})
 	}
 	return st
 }
@@ -47,25 +51,32 @@ func Restore(st State, workers int) (*Surface, error) {
 	if err != nil {
 		return nil, err
 	}
-	s := &Surface{model: st.Model, dist: dist, beta: st.Beta, factor: st.Factor, phi: st.Phi, report: st.Report, workers: workers}
-	null := 1
+	s := &Surface{model: st.Model, dist: dist, core: &core{per: st.Model.SurfacePer, level: st.Level},
+		beta: st.Beta, factor: st.Factor, phi: st.Phi, report: st.Report, workers: workers}
 	if st.Basis != nil {
-		if s.basis, err = basis2d.RestoreThinPlate(*st.Basis); err != nil {
+		if s.core.basis, err = basis2d.RestoreThinPlate(*st.Basis); err != nil {
 			return nil, err
 		}
-		null = basis2d.Null
-		s.knots = basis2d.Knots{X: s.basis.KnotX, Y: s.basis.KnotY, InGaps: st.Gaps, Distinct: st.Places}
+		s.knots = basis2d.Knots{X: s.core.basis.KnotX, Y: s.core.basis.KnotY, InGaps: st.Gaps, Distinct: st.Places}
 	}
-	s.border = &border{Mix: st.Mix, R: st.R, null: null}
+	if (s.core.per == "") != (len(st.Level) == 0) || st.Basis == nil && len(st.Level) > 0 {
+		return nil, fmt.Errorf("%d surfaces and their levels do not belong together", len(st.Level))
+	}
+	keep := s.core.null()
+	if st.Model.Shrink {
+		keep = 1
+	}
+	s.border = &border{Mix: st.Mix, R: st.R, null: s.core.copies() * keep, keep: keep}
 	for _, e := range st.Effect {
-		if e.Role == Category && len(e.Level) < 2 || e.Role != Category && e.Role != Linear {
-			return nil, fmt.Errorf("effect %q has no levels", e.Name)
+		f := fitted{Effect{e.Name, e.Role, e.Per}, e.Level, e.Lo, e.Hi, e.Curve, e.Unseen}
+		if err := f.whole(); err != nil {
+			return nil, err
 		}
-		s.border.Effects = append(s.border.Effects, fitted{Effect: Effect{Name: e.Name, Role: e.Role}, Level: e.Level, Lo: e.Lo, Hi: e.Hi})
+		s.border.Effects = append(s.border.Effects, f)
 	}
 	q := s.border.size()
-	p := surfaceColumns(s.basis) + q
-	if len(st.Beta) != p || len(st.Factor) != p*p || len(st.Mix) != null*q || len(st.R) != q*q || !(st.Phi >= 0) {
+	p := s.core.columns() + q + s.border.bound()
+	if len(st.Beta) != p || len(st.Factor) != p*p || len(st.Mix) != s.border.null*q || len(st.R) != q*q || !(st.Phi >= 0) {
 		return nil, fmt.Errorf("%d coefficients with a factor of %d values do not belong together", len(st.Beta), len(st.Factor))
 	}
 	if !regular(st.Factor, p) {
@@ -80,6 +91,33 @@ func Restore(st State, workers int) (*Surface, error) {
 		}
 	}
 	return s, nil
+}
+
+// whole refuses an effect whose parts do not belong together.
+func (f fitted) whole() error {
+	curves := 0
+	switch f.Role {
+	case Category, Group:
+		if len(f.Level) < 2 {
+			return fmt.Errorf("effect %q has no levels", f.Name)
+		}
+	case Curve:
+		if curves = 1; f.Per != "" {
+			curves = len(f.Level)
+		}
+	case Linear:
+	default:
+		return fmt.Errorf("effect %q has a role that there is none of", f.Name)
+	}
+	if len(f.Curve) != curves || f.Role == Curve && curves == 0 || !(f.Unseen >= 0) {
+		return fmt.Errorf("effect %q has %d curves", f.Name, len(f.Curve))
+	}
+	for _, c := range f.Curve {
+		if c == nil || c.Functions != basis2d.DefaultFunctions || !c.Whole() {
+			return fmt.Errorf("a curve of %q is damaged", f.Name)
+		}
+	}
+	return nil
 }
 
 // regular reports whether an upper triangular matrix of order n can be divided by.

@@ -34,7 +34,7 @@ func covered(t testing.TB, dist string, surface Kind, workers int) (s *Surface, 
 	for i := range d.Places.X {
 		d.Places.X[i] *= 0.7 // the rest is a gap
 	}
-	m := Model{Distribution: dist, Surface: surface, MaxKnots: 60, Effects: []Effect{{"depth", Linear}, {"soil", Category}}}
+	m := Model{Distribution: dist, Surface: surface, MaxKnots: 60, Effects: []Effect{{Name: "depth", Role: Linear}, {Name: "soil", Role: Category}}}
 	at = grid(31)
 	s = fit(t, m, d, Options{Area: at, Workers: workers, Seed: 5})
 	return s, at, make(at.Len())

@@ -18,10 +18,11 @@ import (
 type Surface struct {
 	model   Model
 	dist    response.Distribution
-	basis   *basis2d.ThinPlate // nil without a surface
+	core    *core
 	knots   basis2d.Knots
 	border  *border
-	beta    []float64 // surface's columns, then the border's
+	beta    []float64 // surface's columns, then the border's free ones, then its bound ones
+	mean    []float64 // of the model matrix's columns over the rows
 	factor  []float64 // R with R'R = X'WX + S, p x p row-major, upper triangular
 	phi     float64
 	report  Report
@@ -62,7 +63,21 @@ type Report struct {
 	DevianceShare   float64
 	LogLikelihood   float64
 	AIC             float64
-	Coefficients    []Coefficient // the intercept is the surface's mean over rows
+	Coefficients    []Coefficient // the intercept is the surface's mean over rows; curves and groups are not among them
+	Smooths         []Smooth      // the parts with a penalty of their own
+	ShapeName       string        // of the distribution; empty if it has none
+	Shape           float64
+	ShapeEstimated  bool
+	Simpler         string // the simpler distribution that the shape ended at; empty if it did not
+}
+
+// Smooth is a part of the model with a penalty of its own.
+type Smooth struct {
+	Name    string
+	Kind    SmoothKind
+	Lambda  float64 // see SmoothKind
+	DF      float64 // degrees of freedom, constants not counted
+	AtUpper bool    // the data chose the part without a penalty alone
 }
 
 // Report returns the record of the fit.
@@ -71,70 +86,104 @@ func (s *Surface) Report() Report { return s.report }
 // Model returns the model that was fitted.
 func (s *Surface) Model() Model { return s.model }
 
-func (s *Surface) describe(r *penfit.Result, d Data, mean []float64) Report {
+func (s *Surface) describe(r *penfit.Result, d Data, list []smooth) Report {
+	free := float64(s.border.size())
 	rep := Report{
 		Distribution: s.dist.Name(), Link: s.dist.Link(), Rows: len(d.Response),
 		Converged: r.Converged, Iterations: r.Iterations, Passes: r.Passes, ProjectedGradient: r.Gradient,
 		Method: s.model.Smoothness.Method, Lambda: math.NaN(),
-		DF: r.Edf, SurfaceDF: r.Edf - 1 - float64(s.border.size()),
-		Dispersion: r.Phi, KnownDispersion: s.dist.KnownDispersion(), Pearson: r.Pearson,
+		DF: r.Edf, SurfaceDF: float64(s.border.null) - 1,
+		Dispersion: r.Phi, KnownDispersion: s.knownDispersion(), Pearson: r.Pearson,
 		Deviance: r.Deviance, ConstantDev: r.Constant, LogLikelihood: r.LogLikelihood,
 	}
 	if r.Constant > 0 {
 		rep.DevianceShare = 1 - r.Deviance/r.Constant
 	}
-	estimated := 0.0
-	if !rep.KnownDispersion {
-		estimated = 1
-	}
-	rep.AIC = -2*r.LogLikelihood + 2*(r.Edf+estimated)
-	rep.CriterionValue = r.Value
-	if s.basis != nil {
-		rep.Knots, rep.KnotsInGaps, rep.DistinctPlaces = s.basis.Dim(), s.knots.InGaps, s.knots.Distinct
-	}
-	if len(r.Lambda) == 1 {
-		rep.Lambda = r.Lambda[0] * s.basis.Scale * s.basis.Scale
-		rep.AtUpper = r.AtUpper[0]
-	}
-	if rep.Method != GCV || len(r.Lambda) == 0 {
-		rep.CriterionValue += s.border.logDet(s.border.size())
-		if s.basis != nil {
-			rep.CriterionValue += 2 * math.Log(s.basis.Scale)
+	if shaped, ok := s.dist.(response.Shaped); ok {
+		rep.ShapeName, rep.Shape, rep.ShapeEstimated = shaped.ShapeName(), shaped.Shape(), s.model.Shape == nil
+		if r.ShapeAtLower || r.ShapeAtUpper {
+			rep.Simpler = shaped.Simpler(r.ShapeAtUpper)
 		}
 	}
-	rep.Coefficients = s.coefficients(mean)
+	rep.AIC = -2*r.LogLikelihood + 2*(r.Edf+rep.extra())
+	rep.CriterionValue = r.Value
+	if b := s.core.basis; b != nil {
+		rep.Knots, rep.KnotsInGaps, rep.DistinctPlaces = b.Dim(), s.knots.InGaps, s.knots.Distinct
+	}
+	for j, t := range list {
+		smooth := Smooth{Name: t.name, Kind: t.kind, Lambda: r.Lambda[j] * t.scale, DF: r.TermEdf[j] + float64(t.free), AtUpper: r.AtUpper[j]}
+		rep.Smooths = append(rep.Smooths, smooth)
+		switch t.kind {
+		case SurfaceSmooth:
+			if math.IsNaN(rep.Lambda) {
+				rep.Lambda, rep.AtUpper = smooth.Lambda, smooth.AtUpper
+			}
+			rep.SurfaceDF += r.TermEdf[j]
+		case SlopeSmooth:
+			rep.SurfaceDF += r.TermEdf[j]
+		}
+	}
+	if rep.Method != GCV || len(list) == 0 {
+		rep.CriterionValue += s.border.logDet(int(free))
+		if b := s.core.basis; b != nil && s.border.keep == basis2d.Null {
+			rep.CriterionValue += 2 * math.Log(b.Scale) * float64(s.core.copies())
+		}
+	}
+	rep.Coefficients = s.coefficients()
 	return rep
 }
 
-// coefficients reads the raw coefficients off the orthogonal ones the fit works with; mean is the mean of the surface's
-// columns over rows.
-func (s *Surface) coefficients(mean []float64) []Coefficient {
-	k, q := surfaceColumns(s.basis), s.border.size()
-	g := make([]float64, k+q)
-	copy(g, mean)
+// extra counts what was estimated beside the coefficients and the smoothness.
+func (r Report) extra() (n float64) {
+	if !r.KnownDispersion {
+		n++
+	}
+	if r.ShapeEstimated {
+		n++
+	}
+	return n
+}
+
+// knownDispersion reports whether phi is 1 rather than estimated.
+func (s *Surface) knownDispersion() bool { return s.dist.KnownDispersion() && !s.model.ScaleVariation }
+
+// coefficients reads the raw coefficients off the orthogonal ones the fit works with. The intercept is the surface's
+// mean over rows.
+func (s *Surface) coefficients() []Coefficient {
+	k, q := s.core.columns(), s.border.size()
+	g := make([]float64, len(s.beta))
+	copy(g, s.mean[:k])
+	t := make([]float64, s.border.null)
+	s.core.nullTo(t, s.mean, s.border.keep)
 	for j := 0; j < q; j++ { // T a_T = T (a~ - Mix R^-1 c)
 		for l, v := range s.border.functional(j, q) {
-			for t := 0; t < s.border.null; t++ {
-				g[k+l] -= mean[t] * s.border.Mix[t*q+j] * v
+			for m, tm := range t {
+				g[k+l] -= tm * s.border.Mix[m*q+j] * v
 			}
 		}
 	}
 	list := []Coefficient{s.linearForm("intercept", g)}
-	for j, name := range s.border.names() {
-		clear(g)
-		copy(g[k:], s.border.functional(j, q))
-		list = append(list, s.linearForm(name, g))
+	at := 0
+	for _, e := range s.border.Effects {
+		for _, name := range e.names() {
+			if e.Role != Curve { // the straight part of a curve is told with the curve
+				clear(g)
+				copy(g[k:], s.border.functional(at, q))
+				list = append(list, s.linearForm(name, g))
+			}
+			at++
+		}
 	}
 	return list
 }
 
-// meanRow returns the mean of the model matrix's first k columns over its rows.
-func meanRow(ctx context.Context, e penfit.Engine, k int) ([]float64, error) {
+// meanRow returns the mean of the model matrix's columns over its rows.
+func meanRow(ctx context.Context, e penfit.Engine) ([]float64, error) {
 	one := func(int, float64) (weight, value float64) { return 0, 1 }
 	if err := e.Pass(ctx, make([]float64, e.Coefs()), one, false); err != nil {
 		return nil, err
 	}
-	mean := append([]float64(nil), e.Score()[:k]...)
+	mean := append([]float64(nil), e.Score()...)
 	for j := range mean {
 		mean[j] /= float64(e.Rows())
 	}
@@ -178,7 +227,7 @@ type distribution interface {
 }
 
 func (s *Surface) reference() distribution {
-	if s.dist.KnownDispersion() {
+	if s.knownDispersion() {
 		return distuv.UnitNormal
 	}
 	return distuv.StudentsT{Mu: 0, Sigma: 1, Nu: math.Max(float64(s.report.Rows)-s.report.DF, 1)}

@@ -61,7 +61,7 @@ func TestUnfittable(t *testing.T) {
 	}
 	linear := func(names ...string) (e []Effect) {
 		for _, n := range names {
-			e = append(e, Effect{n, Linear})
+			e = append(e, Effect{Name: n, Role: Linear})
 		}
 		return e
 	}
@@ -98,10 +98,10 @@ func TestUnfittable(t *testing.T) {
 		{name: "a covariate of zeros", dist: "gaussian", want: `covariate "c" has the same value in every row`,
 			d: with(gaussian, number("c", gaussian.Places, func(_, _ float64) float64 { return 0 })), m: Model{Effects: linear("c"), Surface: None}},
 		{name: "a category with one level", dist: "gaussian", want: `covariate "soil" has one level only, "clay": there is nothing to compare`,
-			d: with(gaussian, Covariate{Name: "soil", Code: make([]int32, 120), Level: []string{"clay", "sand"}}), m: Model{Effects: []Effect{{"soil", Category}}}},
+			d: with(gaussian, Covariate{Name: "soil", Code: make([]int32, 120), Level: []string{"clay", "sand"}}), m: Model{Effects: []Effect{{Name: "soil", Role: Category}}}},
 		{name: "a covariate twice", dist: "gaussian", want: `covariate "u" cannot be told apart from u`, d: with(gaussian, u), m: Model{Effects: linear("u", "u")}},
 		{name: "no such covariate", dist: "gaussian", want: `there is no covariate "u"`, d: gaussian, m: Model{Effects: linear("u")}, noAdvice: true},
-		{name: "a number as a category", dist: "gaussian", want: `covariate "u" is not of the kind its effect needs`, d: with(gaussian, u), m: Model{Effects: []Effect{{"u", Category}}}, noAdvice: true},
+		{name: "a number as a category", dist: "gaussian", want: `covariate "u" is not of the kind its effect needs`, d: with(gaussian, u), m: Model{Effects: []Effect{{Name: "u", Role: Category}}}, noAdvice: true},
 		{name: "a covariate that is not a number", dist: "gaussian", want: `row 1: covariate "c" is not a finite number`,
 			d: with(gaussian, number("c", gaussian.Places, func(_, _ float64) float64 { return math.NaN() })), m: Model{Effects: linear("c")}},
 		{name: "positives separated by a plane", dist: "binomial", want: "positives are separated: a straight line or a covariate parts the rows that are all positive",
@@ -129,7 +129,7 @@ func TestUnfittable(t *testing.T) {
 					c = append(c, int32(i%3))
 				}
 				return c
-			}()}), m: Model{Effects: []Effect{{"habitat", Category}}}},
+			}()}), m: Model{Effects: []Effect{{Name: "habitat", Role: Category}}}},
 		{name: "all counts zero", dist: "poisson", want: "every count is zero, so no level can be estimated", d: replaced(poisson, func(int, float64, float64) float64 { return 0 })},
 		{name: "a negative count", dist: "poisson", want: "row 4: a count of -1 is negative", d: replaced(poisson, func(i int, _, _ float64) float64 {
 			if i == 3 {
@@ -456,7 +456,7 @@ func TestAwkwardDataFits(t *testing.T) {
 			d := sample(dist, 12, 122)
 			z := u2("u", 12, rand.New(rand.NewPCG(1, 2)))
 			d.Covariates = []Covariate{z}
-			s := fit(t, Model{Distribution: dist, Effects: []Effect{{"u", Linear}}}, d, Options{})
+			s := fit(t, Model{Distribution: dist, Effects: []Effect{{Name: "u", Role: Linear}}}, d, Options{})
 			z.Number = make([]float64, at.Len())
 			sound(t, s, at, z)
 		}
@@ -598,7 +598,7 @@ func TestLengthsThatDifferPanic(t *testing.T) {
 	s := fit(t, Model{Distribution: "poisson"}, d, Options{})
 	z := Covariate{Name: "u", Number: make([]float64, 29)}
 	k := Covariate{Name: "u", Code: make([]int32, 31), Level: []string{"a"}}
-	withU := fit(t, Model{Distribution: "poisson", Effects: []Effect{{"u", Linear}}}, func(d Data) Data {
+	withU := fit(t, Model{Distribution: "poisson", Effects: []Effect{{Name: "u", Role: Linear}}}, func(d Data) Data {
 		d.Covariates = []Covariate{u2("u", 30, rand.New(rand.NewPCG(1, 1)))}
 		return d
 	}(d), Options{})
@@ -650,7 +650,7 @@ func TestPredictionsSayWhatIsMissing(t *testing.T) {
 		soil.Code = append(soil.Code, int32(i%2)*2) // no loam
 	}
 	d.Covariates = []Covariate{soil}
-	s := fit(t, Model{Distribution: "gaussian", Effects: []Effect{{"soil", Category}}}, d, Options{})
+	s := fit(t, Model{Distribution: "gaussian", Effects: []Effect{{Name: "soil", Role: Category}}}, d, Options{})
 	at := grid(2)
 	eta, se := make([]float64, 4), make([]float64, 4)
 	if err := s.PredictTo(context.Background(), eta, se, at, nil); err == nil || err.Error() != `there is no covariate "soil"` {

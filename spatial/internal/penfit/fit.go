@@ -14,15 +14,16 @@ type Result struct {
 	Lambda []float64
 
 	Deviance, Penalty float64
-	Constant          float64 // deviance with one mean a unit of exposure
-	Phi               float64 // dispersion: 1 if known, else estimated; NaN where nothing is left to estimate it from
-	Pearson           float64 // sum of squared Pearson residuals over n - edf
-	Edf               float64 // tr(H^-1 X'WX)
-	Value             float64 // of the criterion, in the engine's own coefficients; NaN if lambda was given as 0
-	Gradient          float64 // projected gradient at the end of the search
-	AtUpper           []bool  // log lambda ended at the top of its box: the term is its null space
-	Iterations        int     // of the search
-	Passes            int     // visits to the rows
+	Constant          float64   // deviance with one mean a unit of exposure
+	Phi               float64   // dispersion: 1 if known, else estimated; NaN where nothing is left to estimate it from
+	Pearson           float64   // sum of squared Pearson residuals over n - edf
+	Edf               float64   // tr(H^-1 X'WX)
+	TermEdf           []float64 // the part of it that is each penalty's: rank - lambda_j tr(H^-1 S_j)
+	Value             float64   // of the criterion, in the engine's own coefficients; NaN if lambda was given as 0
+	Gradient          float64   // projected gradient at the end of the search
+	AtUpper           []bool    // log lambda ended at the top of its box: the term is its null space
+	Iterations        int       // of the search
+	Passes            int       // visits to the rows
 	Converged         bool
 	LogLikelihood     float64
 
@@ -30,8 +31,9 @@ type Result struct {
 	ShapeAtLower, ShapeAtUpper bool                  // the shape ended at a bound of its box
 }
 
-// Fit fits p. For Given, lambda holds the smoothing parameters; else it is ignored. Trouble is ErrSeparated,
-// ErrSingular or ErrNoMode; a search that stops early is a Result that is not Converged.
+// Fit fits p. For Given, lambda holds the smoothing parameters, NaN for one that restricted likelihood is to choose; else
+// it is ignored. Trouble is ErrSeparated, ErrSingular or ErrNoMode; a search that stops early is a Result that is not
+// Converged.
 func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result, error) {
 	f := newFitter(ctx, p)
 	at, err := f.search(c, lambda)
@@ -42,7 +44,7 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 	if r.Value, _, err = f.final(c, at.x); err != nil {
 		return nil, err
 	}
-	if c != Given && f.flatten(at, r.AtUpper) {
+	if f.flatten(at, r.AtUpper) {
 		if r.Value, _, err = f.final(c, at.x); err != nil {
 			return nil, err
 		}
@@ -50,6 +52,10 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 	r.Beta, r.Eta, r.Lambda, r.Dist = f.beta, f.eta, exp(at.x[:p.Engine.Penalties()]), f.Dist
 	r.Deviance, r.Penalty, r.Passes = f.deviance, f.penalty, f.passes
 	r.Edf = f.edf(r.Lambda)
+	_, rank := f.Engine.LogDetPenalty(r.Lambda)
+	for j, t := range f.Engine.Traces() {
+		r.TermEdf = append(r.TermEdf, rank[j]-r.Lambda[j]*t)
+	}
 	if r.Constant, err = f.constantDeviance(f.overall()); err != nil {
 		return nil, err
 	}
@@ -73,25 +79,27 @@ func (f *fitter) flatten(at found, upper []bool) (moved bool) {
 	lambda := exp(at.x[:len(upper)])
 	_, rank := f.Engine.LogDetPenalty(lambda)
 	for j, t := range f.Engine.Traces() {
-		if !upper[j] && rank[j]-lambda[j]*t < flatEdf {
+		if !upper[j] && at.lo[j] < at.hi[j] && rank[j]-lambda[j]*t < flatEdf {
 			at.x[j], upper[j], moved = at.hi[j], true, true
 		}
 	}
 	return moved
 }
 
-// search finds log lambda, unless it is given, and the shape, if that is to be estimated.
+// search finds log lambda, where it is not given, and the shape, if that is to be estimated.
 func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
-	var given []float64
-	if c == Given {
-		given = logs(lambda)
+	if c != Given {
+		lambda = make([]float64, f.Engine.Penalties())
+		for j := range lambda {
+			lambda[j] = math.NaN()
+		}
 	}
-	rho, err := f.start(given)
+	rho, err := f.start(logs(lambda))
 	if err != nil {
 		return found{}, err
 	}
-	at := f.boxes(c, rho)
-	if c == Given && f.shaped == nil {
+	at := f.boxes(rho, logs(lambda))
+	if !at.open() {
 		at.result = Result{Converged: true, AtUpper: make([]bool, len(rho))}
 		return at, nil
 	}
@@ -106,7 +114,7 @@ func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
 	at.x = m.x
 	at.result = Result{Gradient: m.projected, Iterations: m.iterations, Converged: m.converged, AtUpper: make([]bool, len(rho))}
 	for j := range rho {
-		at.result.AtUpper[j] = m.x[j] >= at.hi[j]-1e-9 && c != Given
+		at.result.AtUpper[j] = m.x[j] >= at.hi[j]-1e-9 && at.lo[j] < at.hi[j]
 	}
 	if k := len(rho); f.shaped != nil {
 		at.result.ShapeAtLower, at.result.ShapeAtUpper = m.x[k] <= at.lo[k]+1e-9, m.x[k] >= at.hi[k]-1e-9
@@ -122,20 +130,34 @@ func logs(lambda []float64) []float64 {
 	return rho
 }
 
+// open reports whether there is anything to search.
+func (at found) open() bool {
+	for j := range at.x {
+		if at.lo[j] < at.hi[j] {
+			return true
+		}
+	}
+	return false
+}
+
 // boxes lays out the search: its starting point and its bounds, which for a given lambda are one.
-func (f *fitter) boxes(c Criterion, rho []float64) found {
-	at := found{x: rho, lo: rho, hi: rho}
-	if c != Given {
-		at.lo, at.hi = f.Engine.Range()
+func (f *fitter) boxes(rho, given []float64) found {
+	at := found{x: rho}
+	at.lo, at.hi = f.Engine.Range()
+	for j, g := range given {
+		if !math.IsNaN(g) {
+			at.lo[j], at.hi[j] = g, g
+		}
 	}
 	if f.shaped != nil {
-		if low, _ := f.Engine.Range(); c == Given { // beside a shape, an interpolation is one to rounding
-			for j := range rho {
-				rho[j] = math.Max(rho[j], low[j])
-			}
-		}
 		lo, hi := f.shaped.Box()
 		at.x, at.lo, at.hi = join(at.x, f.shaped.Working()), join(at.lo, lo), join(at.hi, hi)
+	}
+	if at.open() { // beside a search, an interpolation is one to rounding
+		low, _ := f.Engine.Range()
+		for j := range rho {
+			at.x[j], at.lo[j], at.hi[j] = math.Max(at.x[j], low[j]), math.Max(at.lo[j], low[j]), math.Max(at.hi[j], low[j])
+		}
 	}
 	return at
 }

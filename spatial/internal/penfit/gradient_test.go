@@ -80,7 +80,7 @@ func TestGradients(t *testing.T) {
 		for name, c := range map[string]Criterion{"reml": REML, "gcv": GCV} {
 			t.Run(dist.Name()+" "+dist.Link()+" "+name, func(t *testing.T) {
 				f := newFitter(context.Background(), problem(t, dist, 300, 11))
-				if _, err := f.start(nil); err != nil {
+				if _, err := f.start([]float64{math.NaN(), math.NaN()}); err != nil {
 					t.Fatal(err)
 				}
 				value := func(rho []float64) float64 {

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"math"
+	"slices"
 
 	"drumlin/spatial/response"
 )
@@ -251,9 +252,9 @@ func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
 	return ErrNoMode
 }
 
-// start sets beta from the distribution's starting means, and returns log lambda found on the working models: a few
-// multiplicative steps (Wood & Fasiolo 2017, Biometrics 73:1071-1081) bring it near the optimum cheaply.
-func (f *fitter) start(fixed []float64) (rho []float64, err error) {
+// start sets beta from the distribution's starting means, and returns log lambda, where given holds NaN found on the
+// working models: a few multiplicative steps (Wood & Fasiolo 2017, Biometrics 73:1071-1081) bring it near the optimum cheaply.
+func (f *fitter) start(given []float64) (rho []float64, err error) {
 	overall := f.overall()
 	if f.scale, err = f.constantDeviance(overall); err != nil {
 		return nil, err
@@ -272,7 +273,6 @@ func (f *fitter) start(fixed []float64) (rho []float64, err error) {
 		zwz[i] = pt.Expected * z * z
 		return pt.Expected, pt.Expected * z
 	}
-	rho = fixed
 	for round := 0; round < 2; round++ {
 		at := func(i int, linear float64) (float64, float64) { return working(i, linear+f.offset(i)) }
 		if round == 0 {
@@ -289,7 +289,7 @@ func (f *fitter) start(fixed []float64) (rho []float64, err error) {
 		for _, v := range zwz {
 			total += v
 		}
-		if rho, err = f.working(rho, fixed != nil, total); err != nil {
+		if rho, err = f.working(rho, given, total); err != nil {
 			return nil, err
 		}
 		if f.Dist.ConstantWeight() {
@@ -307,14 +307,16 @@ func (f *fitter) exposure(i int) float64 {
 	return math.Exp(f.Offset[i])
 }
 
-// working solves the working model at hand, moving log lambda towards its optimum unless it is fixed.
-func (f *fitter) working(rho []float64, fixed bool, zwz float64) ([]float64, error) {
+// working solves the working model at hand, moving log lambda towards its optimum where it is not given.
+func (f *fitter) working(rho, given []float64, zwz float64) ([]float64, error) {
 	e := f.Engine
 	lo, hi := e.Range()
 	if rho == nil {
-		rho = make([]float64, e.Penalties())
+		rho = slices.Clone(given)
 		for j := range rho {
-			rho[j] = hi[j] - 19 // a twentieth of the Gram matrix's trace
+			if math.IsNaN(rho[j]) {
+				rho[j] = hi[j] - 19 // a twentieth of the Gram matrix's trace
+			}
 		}
 	}
 	score := append([]float64(nil), e.Score()...)
@@ -326,7 +328,7 @@ func (f *fitter) working(rho []float64, fixed bool, zwz float64) ([]float64, err
 		}
 		copy(f.beta, score)
 		e.Solve(f.beta)
-		if fixed || step == 15 || len(rho) == 0 {
+		if step == 15 || len(rho) == 0 {
 			return rho, nil
 		}
 		phi := 1.0
@@ -335,8 +337,11 @@ func (f *fitter) working(rho []float64, fixed bool, zwz float64) ([]float64, err
 		}
 		_, slope := e.LogDetPenalty(lambda)
 		trace := e.Traces()
-		next, largest := make([]float64, len(rho)), 0.0
+		next, largest := slices.Clone(rho), 0.0
 		for j := range rho {
+			if !math.IsNaN(given[j]) {
+				continue
+			}
 			e.PenaltyTo(sb, j, f.beta)
 			ratio := phi * math.Max(slope[j]/lambda[j]-trace[j], 0) / math.Max(dot(sb, f.beta), 1e-300)
 			next[j] = math.Min(hi[j], math.Max(lo[j], rho[j]+clamp(math.Log(ratio), 6)))
