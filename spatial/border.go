@@ -27,6 +27,7 @@ type fitted struct {
 	Effect
 	Level  []string         // of a category, a group, or of the category that a curve is for each level of
 	Lo, Hi float64          // range of a number over the rows
+	Mean   float64          // and its mean
 	Curve  []*basis2d.Curve // of a curve: one, or one for each level
 	Unseen float64          // of a group: the variance of a level the data did not have, over phi
 }
@@ -141,7 +142,7 @@ func (f *fitted) setRange(c Covariate) error {
 		if bad(v) {
 			return unfit("leave the row out", "row %d: covariate %q is not a finite number", i+1, f.Name)
 		}
-		f.Lo, f.Hi = math.Min(f.Lo, v), math.Max(f.Hi, v)
+		f.Lo, f.Hi, f.Mean = math.Min(f.Lo, v), math.Max(f.Hi, v), f.Mean+v/float64(len(c.Number))
 	}
 	return nil
 }

@@ -46,6 +46,7 @@ func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
 		return nil, unfit("use more observations or fewer covariates",
 			"%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), engine.NullDim())
 	}
+	problem.Start = o.start.on(list)
 	criterion, lambda := s.criterion(list)
 	r, err := penfit.Fit(ctx, problem, criterion, lambda)
 	if err != nil {
@@ -58,7 +59,15 @@ func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
 		return nil, err
 	}
 	s.mean = mean
-	s.report = s.describe(r, d, list)
+	spreadDF := 0.0
+	if m.SmoothnessUncertainty {
+		if s.spread.Data, s.spread.Cols, spreadDF, err = penfit.Uncertainty(ctx, problem, r); err != nil {
+			return nil, explain(err, dist)
+		}
+		s.spread.Rows, s.spread.Stride = len(s.beta), s.spread.Cols
+	}
+	s.report = s.describe(r, d, list, spreadDF)
+	s.effects = s.figures(s.overlaps(engine.Gram(), list, r))
 	return s, s.settleRows(ctx, engine, problem, r, d, o.Seed)
 }
 
@@ -278,21 +287,25 @@ func (s *Surface) freeColumns(ctx context.Context, dg *design, q int) (null, raw
 // criterion turns the model's smoothness into the core's: the surface's penalty is in scaled coordinates, so that
 // lambda J = (lambda/Scale^2) u'u. A given smoothness is the surface's; the data choose that of curves and groups.
 func (s *Surface) criterion(list []smooth) (penfit.Criterion, []float64) {
-	if len(list) == 0 {
-		return penfit.REML, nil
-	}
-	switch s.model.Smoothness.Method {
-	case GCV:
-		return penfit.GCV, nil
-	case Given:
-		lambda := make([]float64, len(list))
-		for j, t := range list {
-			lambda[j] = math.NaN()
+	var lambda []float64
+	if s.model.Smoothness.Method == Given {
+		for _, t := range list {
+			given := math.NaN()
 			if t.kind == SurfaceSmooth {
-				lambda[j] = s.model.Smoothness.Lambda / t.scale
+				given = s.model.Smoothness.Lambda / t.scale
 			}
+			lambda = append(lambda, given)
 		}
+	}
+	switch {
+	case s.model.ScaleVariation:
+		return penfit.Quasi, lambda
+	case len(list) == 0:
+		return penfit.REML, nil
+	case lambda != nil:
 		return penfit.Given, lambda
+	case s.model.Smoothness.Method == GCV:
+		return penfit.GCV, nil
 	}
 	return penfit.REML, nil
 }

@@ -94,7 +94,10 @@ type Model struct {
 	Shrink     bool
 	MaxKnots   int // 0 means DefaultKnots
 	Smoothness Smoothness
-	Effects    []Effect
+	// SmoothnessUncertainty adds to every error what not knowing the smoothness and the shape adds, to first order. Only
+	// with restricted likelihood.
+	SmoothnessUncertainty bool
+	Effects               []Effect
 }
 
 // Data are the observations: slices have one value a row, or are nil where they do not apply.
@@ -115,6 +118,26 @@ type Options struct {
 	// Area is a set of points that covers the study area: gaps between places get knots, so that errors grow there.
 	Area Places
 	Seed uint64 // of the randomised quantile residuals of counts
+
+	start start // of the search, from a fit with other knots
+}
+
+// start is the smoothness of an earlier fit of the same terms, as reported.
+type start []Smooth
+
+// on returns log lambda in the core's terms, or nil where the terms are not those of the earlier fit.
+func (s start) on(list []smooth) []float64 {
+	if len(s) != len(list) || len(s) == 0 {
+		return nil
+	}
+	rho := make([]float64, len(list))
+	for j, t := range list {
+		if s[j].Name != t.name || !(s[j].Lambda > 0) {
+			return nil
+		}
+		rho[j] = math.Log(s[j].Lambda / t.scale)
+	}
+	return rho
 }
 
 // Error is a fit that could not be had, with what to do about it.
@@ -169,6 +192,15 @@ func (d Data) check(m Model) error {
 	}
 	if d.Trials != nil && m.Distribution != "binomial" {
 		return unfit("leave the trials out", "trials go with positives, not with the %s distribution", m.Distribution)
+	}
+	if m.ScaleVariation && m.Distribution != "poisson" && m.Distribution != "binomial" {
+		return unfit("leave the scaling out", "the %s distribution estimates its extra variation itself", m.Distribution)
+	}
+	if m.SmoothnessUncertainty && (m.ScaleVariation || m.Smoothness.Method == GCV) {
+		return unfit("leave it out", "the smoothness' uncertainty is known for restricted likelihood only")
+	}
+	if m.ScaleVariation && m.Smoothness.Method == GCV {
+		return unfit("let restricted likelihood choose", "scaled variation and cross-validation do not go together")
 	}
 	if l := m.Smoothness.Lambda; m.Smoothness.Method == Given && !(l >= 0 && !bad(l)) {
 		return unfit("give a smaller penalty as a smaller number: 0 interpolates", "a smoothness of %g is not a number from 0 up", l)

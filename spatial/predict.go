@@ -24,7 +24,7 @@ func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z
 	if err != nil {
 		return err
 	}
-	p, root := len(s.beta), math.Sqrt(s.phi)
+	p := len(s.beta)
 	workers := blocks.Workers(s.workers)
 	scratch := make([]*rowScratch, workers)
 	return blocks.Do(ctx, workers, blocks.Count(n), func(worker, b int) error {
@@ -34,10 +34,14 @@ func (s *Surface) PredictTo(ctx context.Context, eta, se []float64, at Places, z
 		from, to := blocks.Range(b, n)
 		x := rows(scratch[worker], at.X[from:to], at.Y[from:to], func(k int) int { return from + k })
 		blas64.Gemv(blas.NoTrans, 1, x, blas64.Vector{N: p, Inc: 1, Data: s.beta}, 0, blas64.Vector{N: to - from, Inc: 1, Data: eta[from:to]})
+		var spread [blocks.Size]float64
+		for i := 0; i < x.Rows && s.spread.Cols > 0; i++ {
+			spread[i] = s.spreadOf(x.Data[i*p : (i+1)*p])
+		}
 		blas64.Trsm(blas.Right, blas.NoTrans, 1, s.triangle(), x)
 		for i := range x.Rows {
 			v := x.Data[i*p : (i+1)*p]
-			se[from+i] = root * math.Sqrt(dot(v, v)+scratch[worker].unseen[i])
+			se[from+i] = math.Sqrt(s.phi*(dot(v, v)+scratch[worker].unseen[i]) + spread[i])
 		}
 		return nil
 	})

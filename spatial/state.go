@@ -5,6 +5,8 @@ import (
 
 	"drumlin/basis2d"
 	"drumlin/spatial/response"
+
+	"gonum.org/v1/gonum/blas/blas64"
 )
 
 // State is everything a surface predicts with, for storing: floats exact, the factor of H rather than its inverse, the
@@ -20,6 +22,7 @@ type State struct {
 	Beta   []float64
 	Factor []float64
 	Phi    float64
+	Spread []float64 // root of what the smoothness' uncertainty adds, row-major, as many rows as Beta; may be empty
 	Report Report
 }
 
@@ -37,7 +40,7 @@ type StateEffect struct {
 // State returns what a restored surface needs. Slices are shared with s and must not be changed.
 func (s *Surface) State() State {
 	st := State{Model: s.model, Basis: s.core.basis, Level: s.core.level, Gaps: s.knots.InGaps, Places: s.knots.Distinct, Mix: s.border.Mix, R: s.border.R,
-		Beta: s.beta, Factor: s.factor, Phi: s.phi, Report: s.report}
+		Beta: s.beta, Factor: s.factor, Phi: s.phi, Spread: s.spread.Data, Report: s.report}
 	for _, e := range s.border.Effects {
 		st.Effect = append(st.Effect, StateEffect{e.Name, e.Role, e.Per, e.Level, e.Lo, e.Hi, e.Curve, e.Unseen})
 	}
@@ -68,7 +71,7 @@ func Restore(st State, workers int) (*Surface, error) {
 	}
 	s.border = &border{Mix: st.Mix, R: st.R, null: s.core.copies() * keep, keep: keep}
 	for _, e := range st.Effect {
-		f := fitted{Effect{e.Name, e.Role, e.Per}, e.Level, e.Lo, e.Hi, e.Curve, e.Unseen}
+		f := fitted{Effect: Effect{e.Name, e.Role, e.Per}, Level: e.Level, Lo: e.Lo, Hi: e.Hi, Curve: e.Curve, Unseen: e.Unseen}
 		if err := f.whole(); err != nil {
 			return nil, err
 		}
@@ -78,6 +81,15 @@ func Restore(st State, workers int) (*Surface, error) {
 	p := s.core.columns() + q + s.border.bound()
 	if len(st.Beta) != p || len(st.Factor) != p*p || len(st.Mix) != s.border.null*q || len(st.R) != q*q || !(st.Phi >= 0) {
 		return nil, fmt.Errorf("%d coefficients with a factor of %d values do not belong together", len(st.Beta), len(st.Factor))
+	}
+	if len(st.Spread)%p != 0 {
+		return nil, fmt.Errorf("a spread of %d values does not belong to %d coefficients", len(st.Spread), p)
+	}
+	s.spread = blas64.General{Rows: p, Cols: len(st.Spread) / p, Stride: len(st.Spread) / p, Data: st.Spread}
+	for _, v := range st.Spread {
+		if bad(v) {
+			return nil, fmt.Errorf("the spread holds no finite number")
+		}
 	}
 	if !regular(st.Factor, p) {
 		return nil, fmt.Errorf("the factor is singular")

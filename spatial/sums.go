@@ -90,7 +90,7 @@ func (s *Surface) sum(ctx context.Context, rows rows, at Places, set Share, beta
 	if err != nil {
 		return Sum{}, err
 	}
-	return Sum{Value: acc[0], Delta: math.Sqrt(s.phi) * s.length(acc[1:1+p]), Draws: acc[1+p:]}, nil
+	return Sum{Value: acc[0], Delta: s.errorOf(acc[1 : 1+p]), Draws: acc[1+p:]}, nil
 }
 
 // sumScratch is one goroutine's space for a block of places and their draws.
@@ -112,9 +112,15 @@ func (s *Surface) draw(draws int, seed uint64) blas64.General {
 		}
 	}
 	blas64.Trsm(blas.Left, blas.NoTrans, 1, s.triangle(), b)
-	for k := 0; k < p; k++ {
-		for d := 0; d < draws; d++ {
+	for d := 0; d < draws; d++ {
+		for k := 0; k < p; k++ {
 			b.Data[k*draws+d] += s.beta[k]
+		}
+		for c := 0; c < s.spread.Cols; c++ {
+			z := random.NormFloat64()
+			for k := 0; k < p; k++ {
+				b.Data[k*draws+d] += z * s.spread.Data[k*s.spread.Stride+c]
+			}
 		}
 	}
 	return b

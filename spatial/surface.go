@@ -25,8 +25,10 @@ type Surface struct {
 	mean    []float64 // of the model matrix's columns over the rows
 	factor  []float64 // R with R'R = X'WX + S, p x p row-major, upper triangular
 	phi     float64
+	spread  blas64.General // p x k root of what the smoothness' uncertainty adds to the covariance; k may be 0
 	report  Report
 	rows    *Rows
+	effects []EffectFigure
 	workers int
 }
 
@@ -63,12 +65,14 @@ type Report struct {
 	DevianceShare   float64
 	LogLikelihood   float64
 	AIC             float64
-	Coefficients    []Coefficient // the intercept is the surface's mean over rows; curves and groups are not among them
-	Smooths         []Smooth      // the parts with a penalty of their own
-	ShapeName       string        // of the distribution; empty if it has none
-	Shape           float64
-	ShapeEstimated  bool
-	Simpler         string // the simpler distribution that the shape ended at; empty if it did not
+	// AICCorrected counts what choosing the smoothness costs as well; NaN unless the model asked for its uncertainty.
+	AICCorrected   float64
+	Coefficients   []Coefficient // the intercept is the surface's mean over rows; curves and groups are not among them
+	Smooths        []Smooth      // the parts with a penalty of their own
+	ShapeName      string        // of the distribution; empty if it has none
+	Shape          float64
+	ShapeEstimated bool
+	Simpler        string // the simpler distribution that the shape ended at; empty if it did not
 }
 
 // Smooth is a part of the model with a penalty of its own.
@@ -86,7 +90,7 @@ func (s *Surface) Report() Report { return s.report }
 // Model returns the model that was fitted.
 func (s *Surface) Model() Model { return s.model }
 
-func (s *Surface) describe(r *penfit.Result, d Data, list []smooth) Report {
+func (s *Surface) describe(r *penfit.Result, d Data, list []smooth, spreadDF float64) Report {
 	free := float64(s.border.size())
 	rep := Report{
 		Distribution: s.dist.Name(), Link: s.dist.Link(), Rows: len(d.Response),
@@ -105,7 +109,10 @@ func (s *Surface) describe(r *penfit.Result, d Data, list []smooth) Report {
 			rep.Simpler = shaped.Simpler(r.ShapeAtUpper)
 		}
 	}
-	rep.AIC = -2*r.LogLikelihood + 2*(r.Edf+rep.extra())
+	rep.AIC, rep.AICCorrected = -2*r.LogLikelihood+2*(r.Edf+rep.extra()), math.NaN()
+	if s.model.SmoothnessUncertainty {
+		rep.AICCorrected = rep.AIC + 2*spreadDF
+	}
 	rep.CriterionValue = r.Value
 	if b := s.core.basis; b != nil {
 		rep.Knots, rep.KnotsInGaps, rep.DistinctPlaces = b.Dim(), s.knots.InGaps, s.knots.Distinct
@@ -128,6 +135,9 @@ func (s *Surface) describe(r *penfit.Result, d Data, list []smooth) Report {
 		if b := s.core.basis; b != nil && s.border.keep == basis2d.Null {
 			rep.CriterionValue += 2 * math.Log(b.Scale) * float64(s.core.copies())
 		}
+	}
+	if s.model.ScaleVariation { // there is no likelihood
+		rep.CriterionValue, rep.LogLikelihood, rep.AIC = math.NaN(), math.NaN(), math.NaN()
 	}
 	rep.Coefficients = s.coefficients()
 	return rep
@@ -192,7 +202,25 @@ func meanRow(ctx context.Context, e penfit.Engine) ([]float64, error) {
 
 // linearForm returns g'beta with its standard error; it overwrites nothing.
 func (s *Surface) linearForm(name string, g []float64) Coefficient {
-	return Coefficient{Name: name, Estimate: dot(g, s.beta), StandardError: math.Sqrt(s.phi) * s.length(g)}
+	return Coefficient{Name: name, Estimate: dot(g, s.beta), StandardError: s.errorOf(g)}
+}
+
+// errorOf returns the standard error of g'beta.
+func (s *Surface) errorOf(g []float64) float64 {
+	l := s.length(g)
+	return math.Sqrt(s.phi*l*l + s.spreadOf(g))
+}
+
+// spreadOf returns what the smoothness' uncertainty adds to the variance of g'beta.
+func (s *Surface) spreadOf(g []float64) (v float64) {
+	for c := 0; c < s.spread.Cols; c++ {
+		sum := 0.0
+		for i, x := range g {
+			sum += x * s.spread.Data[i*s.spread.Stride+c]
+		}
+		v += sum * sum
+	}
+	return v
 }
 
 // length returns |R'^-1 g|, the square root of g'H^-1 g.

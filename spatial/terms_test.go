@@ -303,3 +303,236 @@ func repeatTo(n int, values ...float64) []float64 {
 	}
 	return v
 }
+
+// TestScaledVariation: with the variance scaled, a fit to counts that are three times as scattered as Poisson allows
+// keeps about the degrees of freedom of the truth, its dispersion is found, and at a given lambda estimates are those of
+// the plain fit with errors larger by the square root of the dispersion (Wedderburn 1974, Biometrika 61:439-447).
+func TestScaledVariation(t *testing.T) {
+	random := rand.New(rand.NewPCG(5, 6))
+	d := Data{}
+	for i := 0; i < 500; i++ {
+		x, y := random.Float64(), random.Float64()
+		mu := 6 * math.Exp(math.Sin(4*x)*math.Cos(2*y))
+		// A gamma-mixed Poisson count with variance 3 mu: shape mu/2, scale 2.
+		d.Response = append(d.Response, poissonDraw(random, gammaDraw(random, mu/2)*2))
+		d.Places.X, d.Places.Y = append(d.Places.X, x), append(d.Places.Y, y)
+	}
+	plain := fit(t, Model{Distribution: "poisson", MaxKnots: 100}, d, Options{}).Report()
+	scaled := fit(t, Model{Distribution: "poisson", MaxKnots: 100, ScaleVariation: true}, d, Options{}).Report()
+	if !scaled.Converged || scaled.KnownDispersion || scaled.Dispersion < 2.3 || scaled.Dispersion > 3.7 {
+		t.Errorf("converged %v, dispersion %g, the truth is 3", scaled.Converged, scaled.Dispersion)
+	}
+	if scaled.DF > 0.6*plain.DF || !math.IsNaN(scaled.AIC) {
+		t.Errorf("%g degrees of freedom scaled, %g plain, AIC %g", scaled.DF, plain.DF, scaled.AIC)
+	}
+	m := Model{Distribution: "poisson", MaxKnots: 100, Smoothness: given(scaled.Lambda)}
+	a := fit(t, m, d, Options{})
+	m.ScaleVariation = true
+	b := fit(t, m, d, Options{})
+	want, wantSE := predict(t, a, d.Places)
+	got, gotSE := predict(t, b, d.Places)
+	nearAll(t, "estimates at one lambda", got, want, 1e-9, false)
+	for i := range wantSE {
+		wantSE[i] *= math.Sqrt(b.Report().Pearson)
+	}
+	nearAll(t, "errors at one lambda", gotSE, wantSE, 1e-9, true)
+}
+
+// gammaDraw draws from the gamma distribution of that shape and scale 1 (Marsaglia & Tsang 2000).
+func gammaDraw(random *rand.Rand, shape float64) float64 {
+	if shape < 1 {
+		return gammaDraw(random, shape+1) * math.Pow(random.Float64(), 1/shape)
+	}
+	d := shape - 1.0/3
+	for {
+		x := random.NormFloat64()
+		v := math.Pow(1+x/math.Sqrt(9*d), 3)
+		if v > 0 && math.Log(random.Float64()) < x*x/2+d-d*v+d*math.Log(v) {
+			return d * v
+		}
+	}
+}
+
+func poissonDraw(random *rand.Rand, mu float64) (k float64) {
+	for p := random.Float64(); p > math.Exp(-mu); p *= random.Float64() {
+		k++
+	}
+	return k
+}
+
+// TestSmoothnessUncertainty rebuilds the first-order correction from fits at given lambdas alone: the added variance at a
+// place is (d eta/d rho)^2 / V”(rho), both by central differences of what such fits report.
+func TestSmoothnessUncertainty(t *testing.T) {
+	random := rand.New(rand.NewPCG(3, 8))
+	d := Data{}
+	for i := 0; i < 200; i++ {
+		x, y := random.Float64(), random.Float64()
+		d.Places.X, d.Places.Y = append(d.Places.X, x), append(d.Places.Y, y)
+		d.Response = append(d.Response, poissonDraw(random, 4*math.Exp(math.Sin(5*x)*y)))
+	}
+	m := Model{Distribution: "poisson", MaxKnots: 60}
+	at := Places{X: []float64{0.2, 0.5, 0.9}, Y: []float64{0.3, 0.5, 0.95}}
+	plain := fit(t, m, d, Options{})
+	_, se := predict(t, plain, at)
+	m.SmoothnessUncertainty = true
+	with := fit(t, m, d, Options{})
+	_, more := predict(t, with, at)
+	const h = 0.02
+	side := func(step float64) (Report, []float64) {
+		g := Model{Distribution: "poisson", MaxKnots: 60, Smoothness: given(plain.Report().Lambda * math.Exp(step))}
+		s := fit(t, g, d, Options{})
+		eta, _ := predict(t, s, at)
+		return s.Report(), eta
+	}
+	up, etaUp := side(h)
+	mid, _ := side(0)
+	down, etaDown := side(-h)
+	curvature := (up.CriterionValue - 2*mid.CriterionValue + down.CriterionValue) / (h * h)
+	for i := range se {
+		slope := (etaUp[i] - etaDown[i]) / (2 * h)
+		near(t, "added variance, relative", (more[i]*more[i]-se[i]*se[i])/(slope*slope/curvature), 1, 2e-3)
+	}
+	if r := with.Report(); !(r.AICCorrected > r.AIC) || math.IsNaN(plain.Report().AIC) || !math.IsNaN(plain.Report().AICCorrected) {
+		t.Errorf("AIC %g, corrected %g", r.AIC, r.AICCorrected)
+	}
+	sums, err := with.Sums(context.Background(), at, nil, []Share{{Index: []int32{0}, Weight: []float64{1}}}, 40000, 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	logs := sums[0].Draws
+	mean, ss := 0.0, 0.0
+	for _, v := range logs {
+		mean += math.Log(v) / float64(len(logs))
+	}
+	for _, v := range logs {
+		ss += (math.Log(v) - mean) * (math.Log(v) - mean) / float64(len(logs)-1)
+	}
+	near(t, "spread of draws, relative", math.Sqrt(ss)/more[0], 1, 4/math.Sqrt(2*40000))
+	restored, err := Restore(with.State(), 1)
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, again := predict(t, restored, at)
+	nearAll(t, "restored", again, more, 0, false)
+}
+
+// TestEffectFigures holds the effects' figures against predictions: a curve's difference between two values is that of
+// the linear predictor, and a band at a slope's mean is the error of the overall level.
+func TestEffectFigures(t *testing.T) {
+	d := simulated(400, 8)
+	u := Covariate{Name: "u"}
+	random := rand.New(rand.NewPCG(2, 2))
+	for range d.Response {
+		u.Number = append(u.Number, 3+random.NormFloat64())
+	}
+	d.Covariates = append(d.Covariates, u)
+	m := Model{Distribution: "gaussian", MaxKnots: 40, Effects: []Effect{{Name: "u", Role: Linear}, {Name: "soil", Role: Category}, {Name: "depth", Role: Curve}, {Name: "site", Role: Group}}}
+	s := fit(t, m, d, Options{})
+	at := Places{X: []float64{0.5, 0.5}, Y: []float64{0.5, 0.5}}
+	level := func(z ...Covariate) float64 {
+		base := []Covariate{{Name: "u", Number: []float64{3, 3}}, {Name: "soil", Code: []int32{0, 0}, Level: d.Covariates[1].Level}, {Name: "depth", Number: []float64{5, 5}}}
+		for _, c := range z {
+			for i := range base {
+				if base[i].Name == c.Name {
+					base[i] = c
+				}
+			}
+			if c.Name == "site" {
+				base = append(base, c)
+			}
+		}
+		eta, _ := predict(t, s, at, base...)
+		return eta[1] - eta[0]
+	}
+	figures := s.Effects()
+	if len(figures) != 4 {
+		t.Fatalf("%d figures", len(figures))
+	}
+	slope, step, curve, group := figures[0], figures[1], figures[2], figures[3]
+	near(t, "slope", slope.Estimate[80]-slope.Estimate[10], level(Covariate{Name: "u", Number: []float64{slope.X[10], slope.X[80]}}), 1e-9)
+	near(t, "step", step.Estimate[2]-step.Estimate[1], level(Covariate{Name: "soil", Code: []int32{1, 2}, Level: d.Covariates[1].Level}), 1e-9)
+	near(t, "curve", curve.Estimate[70]-curve.Estimate[20], level(Covariate{Name: "depth", Number: []float64{curve.X[20], curve.X[70]}}), 1e-9)
+	near(t, "group", group.Estimate[3]-group.Estimate[1], level(Covariate{Name: "site", Code: []int32{1, 3}, Level: d.Covariates[2].Level}), 1e-9)
+	overall := s.errorOf(s.mean)
+	least := math.Inf(1)
+	for _, se := range slope.StandardError {
+		least = math.Min(least, se)
+	}
+	if least < overall || least > 1.02*overall {
+		t.Errorf("the slope's band is narrowest at %g, the overall level has %g", least, overall)
+	}
+	sum := 0.0
+	row := make([]float64, 0)
+	for _, z := range d.Covariates[0].Number {
+		i := int(z / 10 * 100)
+		row = append(row, curve.Estimate[min(i, 100)])
+	}
+	for _, v := range row {
+		sum += v / float64(len(row))
+	}
+	near(t, "the curve is zero on average over the rows", sum, 0, 0.03)
+	for _, f := range figures {
+		if !(f.Overlap >= 0 && f.Overlap < 0.35) {
+			t.Errorf("%s, drawn independently, overlaps with the rest by %g", f.Name, f.Overlap)
+		}
+	}
+
+	// A covariate that is nearly a function of place overlaps with the surface, and one that is exactly so more.
+	place := Covariate{Name: "u"}
+	for i := range d.Response {
+		place.Number = append(place.Number, math.Sin(3*d.Places.X[i])+0.05*random.NormFloat64())
+	}
+	d.Covariates[3] = place
+	confounded := fit(t, m, d, Options{}).Effects()[0]
+	if confounded.Overlap < 0.8 {
+		t.Errorf("a covariate made of place overlaps by %g only", confounded.Overlap)
+	}
+}
+
+// TestOverlapAgainstDenseAlgebra recomputes one effect's overlap from rows: a weighted penalised regression of its
+// contribution on everything else, by normal equations made in the test.
+func TestOverlapAgainstDenseAlgebra(t *testing.T) {
+	d := simulated(150, 21)
+	m := Model{Distribution: "gaussian", MaxKnots: 15, Effects: []Effect{{Name: "depth", Role: Curve}, {Name: "soil", Role: Category}}}
+	s := fit(t, m, d, Options{})
+	n := len(d.Response)
+	basis, curve := s.core.basis, s.border.Effects[0].Curve[0]
+	k := basis.Dim() + 2
+	x := mat.NewDense(n, k, nil)
+	row, bend := make([]float64, basis.Dim()), make([]float64, curve.Dim())
+	var w coreScratch
+	f := make([]float64, n)
+	straight := dot(s.border.functional(0, 3), s.beta[basis.Dim():basis.Dim()+3])
+	for i := 0; i < n; i++ {
+		s.core.oneTo(row, basis.Dim(), d.Places.X[i:i+1], d.Places.Y[i:i+1], &w.spread)
+		for j, v := range row {
+			x.Set(i, j, v)
+		}
+		if l := d.Covariates[1].Code[i]; l > 0 {
+			x.Set(i, basis.Dim()+int(l)-1, 1)
+		}
+		curve.RowTo(bend, d.Covariates[0].Number[i])
+		f[i] = straight*bend[0] + dot(bend[1:], s.beta[basis.Dim()+3:])
+	}
+	h, right := mat.NewDense(k, k, nil), mat.NewVecDense(k, nil)
+	h.Mul(x.T(), x)
+	right.MulVec(x.T(), mat.NewVecDense(n, f))
+	lambda := s.report.Smooths[0].Lambda / (basis.Scale * basis.Scale)
+	for j := 3; j < basis.Dim(); j++ {
+		h.Set(j, j, h.At(j, j)+lambda)
+	}
+	var b, fitted mat.VecDense
+	if err := b.SolveVec(h, right); err != nil {
+		t.Fatal(err)
+	}
+	fitted.MulVec(x, &b)
+	mean, rss, ss := 0.0, 0.0, 0.0
+	for _, v := range f {
+		mean += v / float64(n)
+	}
+	for i, v := range f {
+		rss += (v - fitted.AtVec(i)) * (v - fitted.AtVec(i))
+		ss += (v - mean) * (v - mean)
+	}
+	near(t, "overlap", s.Effects()[0].Overlap, 1-rss/ss, 1e-9)
+}

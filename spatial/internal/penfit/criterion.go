@@ -14,6 +14,7 @@ const (
 	REML  Criterion = iota // exact Laplace restricted likelihood
 	GCV                    // generalised cross-validation; its unbiased-risk form where phi is known
 	Given                  // lambda is given
+	Quasi                  // restricted likelihood of the working model, with phi estimated although the distribution knows it
 )
 
 // evaluation is the criterion at one point, with the slopes of the mode there.

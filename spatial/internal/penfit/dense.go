@@ -9,6 +9,7 @@ import (
 	"gonum.org/v1/gonum/blas"
 	"gonum.org/v1/gonum/blas/blas64"
 	"gonum.org/v1/gonum/lapack/lapack64"
+	"gonum.org/v1/gonum/mat"
 )
 
 // Design gives the rows of a model matrix, block by block.
@@ -351,6 +352,11 @@ func (e *Dense) Range() (lo, hi []float64) {
 		lo[j], hi[j] = level-35, level+16
 	}
 	return lo, hi
+}
+
+// Gram returns X'WX of the last pass that made one.
+func (e *Dense) Gram() *mat.SymDense {
+	return mat.NewSymDense(e.p, append([]float64(nil), e.gram...))
 }
 
 // Factored returns the upper triangular R with R'R = H, p x p row-major, which is what predictions need: the variance

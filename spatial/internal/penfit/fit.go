@@ -31,8 +31,8 @@ type Result struct {
 	ShapeAtLower, ShapeAtUpper bool                  // the shape ended at a bound of its box
 }
 
-// Fit fits p. For Given, lambda holds the smoothing parameters, NaN for one that restricted likelihood is to choose; else
-// it is ignored. Trouble is ErrSeparated, ErrSingular or ErrNoMode; a search that stops early is a Result that is not
+// Fit fits p. For Given and Quasi, lambda may hold smoothing parameters, NaN for one that is to be chosen; otherwise it is
+// nil. Trouble is ErrSeparated, ErrSingular or ErrNoMode; a search that stops early is a Result that is not
 // Converged.
 func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result, error) {
 	f := newFitter(ctx, p)
@@ -88,7 +88,7 @@ func (f *fitter) flatten(at found, upper []bool) (moved bool) {
 
 // search finds log lambda, where it is not given, and the shape, if that is to be estimated.
 func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
-	if c != Given {
+	if lambda == nil {
 		lambda = make([]float64, f.Engine.Penalties())
 		for j := range lambda {
 			lambda[j] = math.NaN()
@@ -102,6 +102,9 @@ func (f *fitter) search(c Criterion, lambda []float64) (found, error) {
 	if !at.open() {
 		at.result = Result{Converged: true, AtUpper: make([]bool, len(rho))}
 		return at, nil
+	}
+	if c == Quasi {
+		return f.quasi(at)
 	}
 	objective := f.objective(c)
 	if c == GCV {
@@ -237,7 +240,7 @@ func (f *fitter) scan(objective objective, rho, lo, hi []float64) []float64 {
 
 // final evaluates everything at the chosen log lambda; the criterion of an interpolation, lambda 0, has no value.
 func (f *fitter) final(c Criterion, at []float64) (value float64, gradient []float64, err error) {
-	if c == Given {
+	if c != GCV {
 		c = REML
 	}
 	value, gradient, err = f.score(c, at)
@@ -261,7 +264,7 @@ func (f *fitter) scales(c Criterion, r *Result) {
 		r.Pearson = math.NaN()
 	}
 	r.Phi = r.Pearson
-	if f.Dist.KnownDispersion() || c == REML {
+	if c != Quasi && (f.Dist.KnownDispersion() || c == REML) {
 		r.Phi = f.remlScale()
 	}
 	for i, o := range f.Obs {

@@ -15,6 +15,8 @@ type Problem struct {
 	Dist   response.Distribution
 	Obs    []response.Obs
 	Offset []float64 // of the linear predictor, one a row; nil means none
+	// Start is where the search begins, log lambda; nil means that a start is found.
+	Start []float64
 	// EstimateShape has the shape of a response.Shaped searched beside the smoothness; Dist's own is where it starts.
 	EstimateShape bool
 }
@@ -314,7 +316,9 @@ func (f *fitter) working(rho, given []float64, zwz float64) ([]float64, error) {
 	if rho == nil {
 		rho = slices.Clone(given)
 		for j := range rho {
-			if math.IsNaN(rho[j]) {
+			if math.IsNaN(rho[j]) && f.Start != nil {
+				rho[j] = math.Min(hi[j], math.Max(lo[j], f.Start[j]))
+			} else if math.IsNaN(rho[j]) {
 				rho[j] = hi[j] - 19 // a twentieth of the Gram matrix's trace
 			}
 		}
@@ -328,7 +332,7 @@ func (f *fitter) working(rho, given []float64, zwz float64) ([]float64, error) {
 		}
 		copy(f.beta, score)
 		e.Solve(f.beta)
-		if step == 15 || len(rho) == 0 {
+		if step == 15 || len(rho) == 0 || f.Start != nil {
 			return rho, nil
 		}
 		phi := 1.0
