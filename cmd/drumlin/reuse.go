@@ -48,7 +48,14 @@ func reuseOptions(s *plan.Settings, out *string) []option {
 	at, _ := plan.Lookup("at")
 	places := ofWord(at, s)
 	places.group, places.help = group, "the table of places to predict at"
-	options := []option{places, ofText("out", group, "FILE", "the table to write; it appears whole or not at all", out)}
+	options := []option{places}
+	for _, name := range []string{"x", "y"} {
+		w, _ := plan.Lookup(name)
+		o := ofWord(w, s)
+		o.group = group
+		options = append(options, o)
+	}
+	options = append(options, ofText("out", group, "FILE", "the table to write; it appears whole or not at all", out))
 	return append(options, runOptions(s, group)...)
 }
 
@@ -68,5 +75,11 @@ func reuseRequest(c command, rest []string, s plan.Settings, out string) (pipeli
 		return pipeline.ReuseRequest{}, err
 	}
 	r := pipeline.ReuseRequest{Saved: saved, At: at, Out: out, Force: *s.Force, Workers: *s.Workers}
+	switch {
+	case s.X != nil && s.Y != nil:
+		r.X, r.Y = *s.X, *s.Y
+	case s.X != nil || s.Y != nil:
+		return r, misuse("name both --x and --y, or neither", "one coordinate column is named without the other")
+	}
 	return r, keepApart(out, saved, at)
 }

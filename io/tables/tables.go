@@ -1,4 +1,12 @@
 // Package tables writes results as CSV: comma, dot, one header row, line feed, UTF-8 (RFC 4180 but for the line end).
+//
+// # Text that a spreadsheet would compute
+//
+// Names of zones and values of unusable rows come from the user's files, and a spreadsheet takes text that begins with
+// =, +, -, @, a tab or a carriage return for a formula, quoted or not. Such text gets an apostrophe in front, which a
+// spreadsheet shows and does not compute, unless it is a plain number such as -3 or +1.5e6. Numbers themselves are never
+// touched. Who joins a result to other data by a name that begins so must allow for the apostrophe. (Common practice, no
+// source.)
 package tables
 
 import (
@@ -13,19 +21,36 @@ import (
 // Digits is the number of significant digits that numbers are written with.
 const Digits = 12
 
-// Column is a named column of numbers, whole numbers, or text; exactly one of the slices is set, or none for a column
-// that stays empty.
+// Column is a named column of numbers, whole numbers, or text: one of the slices is set, or none for a column that
+// stays empty.
 type Column struct {
 	Name   string
 	Number []float64 // NaN and infinities leave the cell empty
 	Whole  []int64
 	Text   []string
+	// Exact has numbers written with all their digits, so that they read back as they were: coordinates, from which
+	// the other columns can then be had again.
+	Exact bool
 }
 
-// Write writes n rows under a header. It returns an error if a column has another number of rows.
+// rows returns the number of rows of a column; ok is false for a column that stays empty.
+func (c Column) rows() (n int, ok bool) {
+	switch {
+	case c.Number != nil:
+		return len(c.Number), true
+	case c.Whole != nil:
+		return len(c.Whole), true
+	case c.Text != nil:
+		return len(c.Text), true
+	}
+	return 0, false
+}
+
+// Write writes n rows under a header. It returns an error, before anything is written, if a column has another number
+// of rows, and the errors of w.
 func Write(w io.Writer, n int, columns []Column) error {
 	for _, c := range columns {
-		if m := max(len(c.Number), len(c.Whole), len(c.Text)); m != 0 && m != n {
+		if m, ok := c.rows(); ok && m != n {
 			return fmt.Errorf("column %q has %d rows, not %d", c.Name, m, n)
 		}
 	}
@@ -44,6 +69,8 @@ func Write(w io.Writer, n int, columns []Column) error {
 		for j, c := range columns {
 			row = separate(row, j)
 			switch {
+			case c.Number != nil && c.Exact:
+				row = appendExact(row, c.Number[i])
 			case c.Number != nil:
 				row = AppendNumber(row, c.Number[i])
 			case c.Whole != nil:
@@ -51,6 +78,9 @@ func Write(w io.Writer, n int, columns []Column) error {
 			case c.Text != nil:
 				row = appendText(row, c.Text[i])
 			}
+		}
+		if len(row) == 0 {
+			row = append(row, `""`...) // an empty line would be no row at all
 		}
 		row = append(row, '\n')
 	}
@@ -60,7 +90,7 @@ func Write(w io.Writer, n int, columns []Column) error {
 	return out.Flush()
 }
 
-// AppendNumber appends v with Digits significant digits, or nothing where v is not finite.
+// AppendNumber appends v to dst with Digits significant digits, or nothing where v is not finite. Zero has no sign.
 func AppendNumber(dst []byte, v float64) []byte {
 	if math.IsNaN(v) || math.IsInf(v, 0) {
 		return dst
@@ -71,6 +101,19 @@ func AppendNumber(dst []byte, v float64) []byte {
 	return strconv.AppendFloat(dst, v, 'g', Digits, 64)
 }
 
+// appendExact appends v with as many digits as tell it from its neighbours.
+func appendExact(dst []byte, v float64) []byte {
+	switch a := math.Abs(v); {
+	case math.IsNaN(v) || math.IsInf(v, 0):
+		return dst
+	case v == 0:
+		return append(dst, '0')
+	case a >= 1e-4 && a < 1e21:
+		return strconv.AppendFloat(dst, v, 'f', -1, 64)
+	}
+	return strconv.AppendFloat(dst, v, 'g', -1, 64)
+}
+
 func separate(row []byte, j int) []byte {
 	if j > 0 {
 		return append(row, ',')
@@ -78,11 +121,28 @@ func separate(row []byte, j int) []byte {
 	return row
 }
 
+// appendText appends s as a field. Bytes that are no UTF-8, which a file name may hold, become U+FFFD.
 func appendText(row []byte, s string) []byte {
+	s = strings.ToValidUTF8(s, "\uFFFD")
+	if isFormula(s) {
+		s = "'" + s
+	}
 	if !strings.ContainsAny(s, ",\"\r\n") {
 		return append(row, s...)
 	}
 	row = append(row, '"')
 	row = append(row, strings.ReplaceAll(s, `"`, `""`)...)
 	return append(row, '"')
+}
+
+// isFormula reports whether a spreadsheet would compute s.
+func isFormula(s string) bool {
+	if s == "" || !strings.Contains("=+-@\t\r", s[:1]) {
+		return false
+	}
+	if strings.Trim(s, "0123456789.eE+-") != "" {
+		return true
+	}
+	_, err := strconv.ParseFloat(s, 64)
+	return err != nil
 }

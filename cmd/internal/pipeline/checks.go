@@ -121,18 +121,28 @@ func (r *run) aside() summary.Check {
 const leastCovered = 0.95
 
 func (z *zoneResults) covering() summary.Check {
-	worst := 0
+	worst, short := 0, 0
 	for k, c := range z.covered {
 		if c < z.covered[worst] {
 			worst = k
 		}
+		if c < leastCovered {
+			short++
+		}
 	}
 	c := summary.Check{Name: "zones", Figure: summary.Number(z.covered[worst]), Level: summary.Clear, Sentence: "the map covers every zone"}
-	if z.covered[worst] < leastCovered {
-		c.Level = summary.Stop
-		c.Sentence = fmt.Sprintf("the map covers only %s %% of zone %s: its figures are for that part; widen the map with --within",
-			summary.Short(summary.Number(100*z.covered[worst])), z.zones[worst].Name)
+	if short == 0 {
+		return c
 	}
+	c.Level = summary.Stop
+	c.Sentence = fmt.Sprintf("the map covers only %s %% of zone %s", summary.Short(summary.Number(100*z.covered[worst])), z.zones[worst].Name)
+	if z.cells[worst] == 0 {
+		c.Sentence = fmt.Sprintf("the map has no cell in zone %s", z.zones[worst].Name)
+	}
+	if short > 1 {
+		c.Sentence += fmt.Sprintf(" and covers less than %g %% of %d of the %d zones", 100*leastCovered, short, len(z.zones))
+	}
+	c.Sentence += ": figures are for the part that is covered; widen the map with --within, and where zones are small ask for smaller cells"
 	return c
 }
 

@@ -177,7 +177,7 @@ func (e *estimates) columns() []tables.Column {
 
 // surfaceTable returns all columns of surface.csv.
 func surfaceTable(system crs.System, at spatial.Places, e *estimates) []tables.Column {
-	lonLat := []tables.Column{{Name: "lon"}, {Name: "lat"}}
+	lonLat := []tables.Column{{Name: "lon", Exact: true}, {Name: "lat", Exact: true}}
 	if system.Geographic() {
 		lon, lat := make([]float64, at.Len()), make([]float64, at.Len())
 		for i := range lon {
@@ -185,6 +185,6 @@ func surfaceTable(system crs.System, at spatial.Places, e *estimates) []tables.C
 		}
 		lonLat[0].Number, lonLat[1].Number = lon, lat
 	}
-	all := []tables.Column{{Name: "x", Number: at.X}, {Name: "y", Number: at.Y}}
+	all := []tables.Column{{Name: "x", Number: at.X, Exact: true}, {Name: "y", Number: at.Y, Exact: true}}
 	return append(append(all, lonLat...), e.columns()...)
 }

@@ -6,15 +6,26 @@ import (
 	"io/fs"
 	"os"
 	"path/filepath"
+	"slices"
+	"syscall"
 )
 
 // Folder makes dir whole or not at all: fill writes into a sibling dir.partial, which is renamed at the end with
-// everything on the disk. An error, a cancelled ctx and a full disk leave no dir.partial behind; what a killed process
-// left behind is cleared by the next one. An existing dir is refused without force, and with force only a folder that
-// drumlin wrote is replaced.
+// everything on the disk. An error, a cancelled ctx and a full disk leave neither dir.partial nor a parent folder that
+// was made for it; what a killed process left behind is cleared by the next one. An existing dir is refused without
+// force, and with force only a folder that drumlin wrote is replaced.
 func Folder(ctx context.Context, dir string, force bool, fill func(partial string) error) (err error) {
 	dir = filepath.Clean(dir)
 	if err := checkFolder(dir, force); err != nil {
+		return err
+	}
+	made, err := makeParents(dir)
+	defer func() {
+		if err != nil {
+			unmake(made)
+		}
+	}()
+	if err != nil {
 		return err
 	}
 	partial := dir + ".partial"
@@ -28,9 +39,6 @@ func Folder(ctx context.Context, dir string, force bool, fill func(partial strin
 		}
 		release()
 	}()
-	if err := os.MkdirAll(filepath.Dir(dir), 0o755); err != nil {
-		return plainly(err, filepath.Dir(dir))
-	}
 	if err := fill(partial); err != nil {
 		return err
 	}
@@ -76,12 +84,36 @@ func isOurs(dir string) bool {
 	return false
 }
 
+// makeParents makes the folders that dir is to stand in and returns those that were not there, the outermost first,
+// also beside an error.
+func makeParents(dir string) (made []string, err error) {
+	var missing []string
+	for p := filepath.Dir(dir); ; p = filepath.Dir(p) {
+		if _, err := os.Stat(p); !errors.Is(err, fs.ErrNotExist) || p == filepath.Dir(p) {
+			break
+		}
+		missing = append(missing, p)
+	}
+	for _, p := range slices.Backward(missing) {
+		if err := os.Mkdir(p, 0o755); err == nil {
+			made = append(made, p)
+		} else if !errors.Is(err, fs.ErrExist) { // another process may have been quicker
+			return made, plainly(err, p)
+		}
+	}
+	return made, nil
+}
+
+// unmake removes the folders again in which nothing stands.
+func unmake(made []string) {
+	for _, p := range slices.Backward(made) {
+		os.Remove(p)
+	}
+}
+
 // claim makes an empty folder partial that no other process works in. The lock dies with its process, so a folder
 // without one is left over from a killed run.
 func claim(partial string) (release func(), err error) {
-	if err := os.MkdirAll(filepath.Dir(partial), 0o755); err != nil {
-		return nil, plainly(err, filepath.Dir(partial))
-	}
 	release, err = lock(partial + ".lock")
 	if err != nil {
 		return nil, err
@@ -107,12 +139,20 @@ func replace(partial, dir string) error {
 		return err
 	}
 	if err := os.Rename(partial, dir); err != nil {
-		return err
+		return errors.Join(plainly(err, dir), restore(old, dir))
 	}
 	if err := syncFolder(filepath.Dir(dir)); err != nil {
 		return err
 	}
 	return os.RemoveAll(old)
+}
+
+// restore puts an old folder back, if there is one.
+func restore(old, dir string) error {
+	if err := os.Rename(old, dir); !errors.Is(err, fs.ErrNotExist) {
+		return err
+	}
+	return nil
 }
 
 // syncFolders brings the entries of a folder and of those in it to the disk.
@@ -137,13 +177,19 @@ func syncFolder(dir string) error {
 	return nil
 }
 
-// plainly says in plain words why a folder cannot be written.
-func plainly(err error, dir string) error {
+// plainly says in plain words why a file or folder cannot be written.
+func plainly(err error, path string) error {
 	switch {
 	case errors.Is(err, fs.ErrPermission):
-		return refuse("name a folder that you may write to", "%s: no right to write there", dir)
+		return refuse("name a folder that you may write to", "%s: no right to write there", path)
 	case errors.Is(err, fs.ErrNotExist):
-		return refuse("check the path", "%s: there is no such folder", dir)
+		return refuse("check the path", "%s: there is no such folder", path)
+	case errors.Is(err, syscall.ENOTDIR):
+		return refuse("check the path", "%s: a part of this path is a file, not a folder", path)
+	case errors.Is(err, syscall.EROFS):
+		return refuse("name a folder on another disk", "%s: the disk can only be read", path)
+	case errors.Is(err, syscall.ENOSPC), errors.Is(err, syscall.EDQUOT), errors.Is(err, syscall.EFBIG):
+		return refuse("make room, name a folder on another disk, or write less with --write", "%s: there is no room left to write it", path)
 	}
 	return err
 }

@@ -5,10 +5,11 @@ package pipeline
 import (
 	"errors"
 	"os"
+	"strings"
 	"syscall"
 )
 
-// lock takes an advisory lock that dies with the process.
+// lock takes an advisory lock, a file called as the output with .partial.lock after it, that dies with the process.
 func lock(path string) (release func(), err error) {
 	for {
 		f, err := os.OpenFile(path, os.O_CREATE|os.O_RDWR, 0o644)
@@ -18,7 +19,7 @@ func lock(path string) (release func(), err error) {
 		if err := syscall.Flock(int(f.Fd()), syscall.LOCK_EX|syscall.LOCK_NB); err != nil {
 			f.Close()
 			if errors.Is(err, syscall.EWOULDBLOCK) {
-				return nil, refuse("wait for it, or name another folder", "another drumlin is writing this folder")
+				return nil, refuse("wait for it, or name another output", "another drumlin is writing %s", strings.TrimSuffix(path, ".partial.lock"))
 			}
 			return nil, err
 		}

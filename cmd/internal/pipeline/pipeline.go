@@ -39,27 +39,30 @@ type run struct {
 // by the document. Errors carry a hint where there is one to give; *spatial.Error is a fit that could not be had.
 func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.Document, error) {
 	r := &run{settings: s, events: ev, version: version()}
-	if err := checkFolder(dir, *s.Force); err != nil {
+	// The folder is claimed first, so that one that cannot be had is told before the work and not after it.
+	err := Folder(ctx, dir, *s.Force, func(partial string) error {
+		for _, step := range []struct {
+			name string
+			do   func(context.Context) error
+		}{
+			{"reading", r.read},
+			{"laying the lattice", r.place},
+			{"fitting", r.fit},
+			{"predicting", r.predict},
+			{"adding up zones", r.addUp},
+		} {
+			ev.Stage(step.name, 0, 0)
+			if err := step.do(ctx); err != nil {
+				return err
+			}
+		}
+		r.describe()
+		return r.write(ctx, partial)
+	})
+	if err != nil {
 		return summary.Document{}, err
 	}
-	for _, step := range []struct {
-		name string
-		do   func(context.Context) error
-	}{
-		{"reading", r.read},
-		{"laying the lattice", r.place},
-		{"fitting", r.fit},
-		{"predicting", r.predict},
-		{"adding up zones", r.addUp},
-	} {
-		ev.Stage(step.name, 0, 0)
-		if err := step.do(ctx); err != nil {
-			return summary.Document{}, err
-		}
-	}
-	r.describe()
-	err := Folder(ctx, dir, *s.Force, func(partial string) error { return r.write(ctx, partial) })
-	return r.document, err
+	return r.document, nil
 }
 
 // fit fits the surface. Places that cannot carry a surface are the fit's to refuse, before the lattice complains of

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"path/filepath"
+	"strings"
 
 	"drumlin/grids"
 	"drumlin/grids/crs"
@@ -38,7 +39,7 @@ func (t *target) own() bool { return t.cells == nil }
 const knotsAcross = 60
 
 // place lays the study area and what is predicted onto.
-func (r *run) place(context.Context) error {
+func (r *run) place(ctx context.Context) error {
 	r.area = &studyArea{}
 	s, at := r.settings, r.obs.data.Places
 	var err error
@@ -49,7 +50,7 @@ func (r *run) place(context.Context) error {
 	}
 	r.layKnotPlaces(at)
 	if s.At != nil {
-		return r.placeAt(*s.At)
+		return r.placeAt(ctx, *s.At)
 	}
 	spec := grids.Spec{X: at.X, Y: at.Y, Within: r.area.within, Across: *s.CellsAcross}
 	if s.CellSize != nil {
@@ -57,8 +58,9 @@ func (r *run) place(context.Context) error {
 	}
 	l, err := grids.NewLattice(r.obs.system, spec)
 	var none *grids.NoAreaError
-	if errors.As(err, &none) {
-		r.area.problem, r.target = err, &target{}
+	if errors.As(err, &none) && !none.Given {
+		r.area.problem = refuse("give the study area with --within, or the places to predict at with --at", "%w", err)
+		r.target = &target{}
 		return nil
 	}
 	if err != nil {
@@ -126,27 +128,38 @@ func (r *run) inDegrees(shapes *vector.Shapes) (bool, error) {
 	b := shapes.Bound()
 	small := b.Min[0] >= -360 && b.Max[0] <= 360 && b.Min[1] >= -90 && b.Max[1] <= 90
 	geographic := r.obs.system.Geographic()
+	said := plainCode(shapes.CRS)
 	switch {
-	case shapes.CRS != "" && crs.IsGeographic(shapes.CRS):
+	case said != "" && crs.IsGeographic(said):
 		if !geographic {
 			return false, refuse("give polygons in the observations' own coordinates, or say what those are with --crs",
 				"%s: the polygons are in longitude and latitude, and the observations in local metres", shapes.Source)
 		}
 		return true, nil
-	case shapes.CRS != "" && sameSystem(shapes.CRS, r.obs.system):
+	case said != "" && sameSystem(said, r.obs.system):
 		return false, nil
-	case shapes.CRS != "":
+	case said != "":
 		return false, refuse("write them in longitude and latitude, or in the coordinates of the observations",
-			"%s: the polygons are in %s, which is not that of the observations (%s)", shapes.Source, shapes.CRS, r.obs.system.Code())
+			"%s: the polygons are in %s, which is not that of the observations (%s)", shapes.Source, said, r.obs.system.Code())
 	case !geographic:
 		return false, nil
 	case small:
 		return true, nil
 	case r.obs.table.Degrees:
 		return false, refuse("write them in longitude and latitude",
-			"%s: coordinates up to (%g, %g) are not longitude and latitude, as those of the observations are", shapes.Source, b.Max[0], b.Max[1])
+			"%s: coordinates up to (%.10g, %.10g) are not longitude and latitude, as those of the observations are", shapes.Source, b.Max[0], b.Max[1])
 	}
 	return false, nil
+}
+
+// plainCode turns the name of a coordinate system as GeoJSON files have it, urn:ogc:def:crs:EPSG::32633 or
+// urn:ogc:def:crs:OGC:1.3:CRS84 (GeoJSON of 2008, section 3.1), into authority and code. Other names come back as they are.
+func plainCode(name string) string {
+	parts := strings.Split(name, ":")
+	if len(parts) == 7 && strings.EqualFold(strings.Join(parts[:4], ":"), "urn:ogc:def:crs") {
+		return parts[4] + ":" + parts[6]
+	}
+	return name
 }
 
 func sameSystem(code string, system crs.System) bool {
@@ -155,12 +168,9 @@ func sameSystem(code string, system crs.System) bool {
 }
 
 // placeAt predicts at the places of a file, row by row.
-func (r *run) placeAt(path string) error {
+func (r *run) placeAt(ctx context.Context, path string) error {
 	s := r.settings
-	want := observe.Request{Strict: true, Axes: observe.AxesPlane}
-	if r.obs.table.Degrees {
-		want.Axes = observe.AxesDegrees
-	}
+	want := placesRequest(r.obs.table.Degrees)
 	if s.X != nil {
 		want.X, want.Y = *s.X, *s.Y
 	}
@@ -175,7 +185,7 @@ func (r *run) placeAt(path string) error {
 			want.Category = append(want.Category, name)
 		}
 	}
-	table, _, err := readTable(path, want)
+	table, err := readPlaceTable(ctx, path, want, r.obs.system)
 	if err != nil {
 		return err
 	}
@@ -185,6 +195,44 @@ func (r *run) placeAt(path string) error {
 	}
 	r.target = &target{lattice: grids.Lattice{CRS: r.obs.system}, places: spatial.Places{X: x, Y: y}}
 	return r.covariatesAt(table)
+}
+
+// placesRequest asks a table for places in the kind of coordinates that the observations had. Every one of them is to
+// get its row in the result, so none is set aside.
+func placesRequest(degrees bool) observe.Request {
+	if degrees {
+		return observe.Request{Strict: true, Axes: observe.AxesDegrees}
+	}
+	return observe.Request{Strict: true, Axes: observe.AxesPlane}
+}
+
+// readPlaceTable reads a table of places. What to do about its faults differs from what to do about those of
+// observations: no row can be set aside, and --crs speaks of the observations.
+func readPlaceTable(ctx context.Context, path string, want observe.Request, system crs.System) (*observe.Table, error) {
+	t, _, err := readTable(ctx, path, want)
+	var fault *observe.Error
+	if !errors.As(err, &fault) {
+		return t, err
+	}
+	advised := *fault
+	switch {
+	case fault.Row > 0 && fault.Column != "" && strings.Contains(fault.Advice, "--strict"):
+		advised.Advice = "correct the row, or take it out: every place of this table gets its row in the result"
+	case strings.Contains(fault.Advice, "--crs"):
+		advised.Advice = "give the places as the observations were given: " + inWords(want.Axes, system) + "; --x and --y name the columns"
+	}
+	return nil, &advised
+}
+
+// inWords says what coordinates places come in.
+func inWords(axes observe.Axes, system crs.System) string {
+	switch {
+	case axes == observe.AxesDegrees:
+		return "in longitude and latitude"
+	case system.Geographic():
+		return "in metres of " + system.Code()
+	}
+	return "in local metres"
 }
 
 // planeOf brings a table's places into a plane.

@@ -9,6 +9,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"sort"
 
 	"drumlin/grids/crs"
@@ -27,13 +28,13 @@ type observations struct {
 }
 
 // read reads the table of observations and puts it into the plane.
-func (r *run) read(context.Context) error {
+func (r *run) read(ctx context.Context) error {
 	want, err := r.request()
 	if err != nil {
 		return err
 	}
 	o := &observations{}
-	if o.table, o.sha256, err = readTable(*r.settings.Observations, want); err != nil {
+	if o.table, o.sha256, err = readTable(ctx, *r.settings.Observations, want); err != nil {
 		return err
 	}
 	if err := o.project(r.settings); err != nil {
@@ -105,18 +106,19 @@ func covariates(t *observe.Table, s plan.Settings) []spatial.Covariate {
 }
 
 // readTable reads a file and its checksum in one go.
-func readTable(path string, want observe.Request) (*observe.Table, string, error) {
+func readTable(ctx context.Context, path string, want observe.Request) (*observe.Table, string, error) {
 	f, err := openFile(path)
 	if err != nil {
 		return nil, "", err
 	}
 	defer f.Close()
 	sum := sha256.New()
-	t, err := observe.ReadCSV(io.TeeReader(f, sum), filepath.Base(path), want)
+	from := &stoppable{ctx: ctx, from: f}
+	t, err := observe.ReadCSV(io.TeeReader(from, sum), filepath.Base(path), want)
 	if err != nil {
 		return nil, "", err
 	}
-	if _, err := io.Copy(sum, f); err != nil { // what the reader left unread
+	if _, err := io.Copy(sum, from); err != nil { // what the reader left unread
 		return nil, "", err
 	}
 	return t, hex.EncodeToString(sum.Sum(nil)), nil
@@ -162,11 +164,27 @@ func (o *observations) project(s plan.Settings) error {
 			if o.system, err = crs.Parse(*s.CRS); err != nil {
 				return refuse("", "--crs: %w", err)
 			}
+			if o.system.Geographic() && inRangeOfDegrees(x, y) {
+				return refuse("leave out --crs for longitude and latitude, or name other columns with --x and --y",
+					"%s: %s run from %.6g to %.6g and from %.6g to %.6g, which looks like degrees and not like metres of %s",
+					o.table.Source, columns, slices.Min(x), slices.Max(x), slices.Min(y), slices.Max(y), o.system.Code())
+			}
 			o.said = columns + " taken as " + o.system.Code() + " in metres"
 		}
 	}
 	o.data.Places = spatial.Places{X: x, Y: y}
 	return o.onThePlane(x, y)
+}
+
+// inRangeOfDegrees reports whether all coordinates could be degrees. In a national or world-wide plane that would be one
+// spot of some hundred metres at its origin, where nobody is.
+func inRangeOfDegrees(x, y []float64) bool {
+	for i := range x {
+		if math.Abs(x[i]) > 360 || math.Abs(y[i]) > 90 {
+			return false
+		}
+	}
+	return true
 }
 
 // onThePlane refuses coordinates where the projection is not defined: they are in another system than was said.

@@ -2,14 +2,15 @@ package pipeline
 
 import (
 	"context"
+	"errors"
 	"io"
+	"io/fs"
 	"os"
 	"path/filepath"
 
 	"drumlin/grids"
 	"drumlin/grids/crs"
 	"drumlin/io/archive"
-	"drumlin/io/observe"
 	"drumlin/io/tables"
 	"drumlin/spatial"
 )
@@ -17,17 +18,23 @@ import (
 // ReuseRequest asks a saved surface for its estimates at new places.
 type ReuseRequest struct {
 	Saved, At, Out string // paths
+	X, Y           string // columns of At with the coordinates; empty to find them by their names
 	Force          bool   // replace Out
 	Workers        int
 }
 
 // Reuse writes the columns of surface.csv for the places of a file, in its order. Out appears whole or not at all.
 func Reuse(ctx context.Context, q ReuseRequest, ev Events) error {
-	if _, err := os.Lstat(q.Out); err == nil && !q.Force {
+	switch info, err := os.Lstat(q.Out); {
+	case err == nil && info.IsDir():
+		return refuse("name a file in it", "%s: that is a folder", q.Out)
+	case err == nil && !q.Force:
 		return refuse("name another file, or add --force to replace it", "%s exists already", q.Out)
+	case err != nil && !errors.Is(err, fs.ErrNotExist):
+		return plainly(err, q.Out)
 	}
 	ev.Stage("reading", 0, 0)
-	saved, surface, err := readSaved(q.Saved, q.Workers)
+	saved, surface, err := readSaved(ctx, q.Saved, q.Workers)
 	if err != nil {
 		return err
 	}
@@ -35,7 +42,7 @@ func Reuse(ctx context.Context, q ReuseRequest, ev Events) error {
 	if err != nil {
 		return refuse("", "%s: %w", q.Saved, err)
 	}
-	at, z, err := readPlaces(q.At, saved, system)
+	at, z, err := readPlaces(ctx, q, saved, system)
 	if err != nil {
 		return err
 	}
@@ -46,18 +53,22 @@ func Reuse(ctx context.Context, q ReuseRequest, ev Events) error {
 	}
 	e.nearest = grids.Nearest(saved.PlaceX, saved.PlaceY, at.X, at.Y)
 	ev.Stage("writing", 0, 0)
-	return replaceFile(q.Out, func(w io.Writer) error {
+	return replaceFile(ctx, q.Out, func(w io.Writer) error {
 		return tables.Write(w, at.Len(), surfaceTable(system, at, e))
 	})
 }
 
-func readSaved(path string, workers int) (archive.Saved, *spatial.Surface, error) {
+func readSaved(ctx context.Context, path string, workers int) (archive.Saved, *spatial.Surface, error) {
 	f, err := openFile(path)
 	if err != nil {
 		return archive.Saved{}, nil, err
 	}
 	defer f.Close()
-	saved, err := archive.Read(f)
+	if info, err := f.Stat(); err == nil && info.Size() > archive.Limit { // before it is read into memory
+		return archive.Saved{}, nil, refuse("name the file saved.surface that drumlin map wrote",
+			"%s: it is larger than %d MiB, which no saved surface is", path, archive.Limit>>20)
+	}
+	saved, err := archive.Read(&stoppable{ctx: ctx, from: f})
 	if err != nil {
 		return archive.Saved{}, nil, refuse("", "%s: %w", path, err)
 	}
@@ -69,11 +80,9 @@ func readSaved(path string, workers int) (archive.Saved, *spatial.Surface, error
 }
 
 // readPlaces reads the places and the covariates that the surface needs.
-func readPlaces(path string, saved archive.Saved, system crs.System) (spatial.Places, []spatial.Covariate, error) {
-	want := observe.Request{Strict: true, Axes: observe.AxesPlane}
-	if saved.Reporting.Degrees {
-		want.Axes = observe.AxesDegrees
-	}
+func readPlaces(ctx context.Context, q ReuseRequest, saved archive.Saved, system crs.System) (spatial.Places, []spatial.Covariate, error) {
+	want := placesRequest(saved.Reporting.Degrees)
+	want.X, want.Y = q.X, q.Y
 	for _, e := range saved.Surface.Effect {
 		if e.Role == spatial.Category {
 			want.Category = append(want.Category, e.Name)
@@ -81,7 +90,7 @@ func readPlaces(path string, saved archive.Saved, system crs.System) (spatial.Pl
 			want.Linear = append(want.Linear, e.Name)
 		}
 	}
-	t, _, err := readTable(path, want)
+	t, err := readPlaceTable(ctx, q.At, want, system)
 	if err != nil {
 		return spatial.Places{}, nil, err
 	}
@@ -102,23 +111,32 @@ func readPlaces(path string, saved archive.Saved, system crs.System) (spatial.Pl
 	return spatial.Places{X: x, Y: y}, z, nil
 }
 
-// replaceFile writes a file beside path and renames it when it is whole.
-func replaceFile(path string, content func(w io.Writer) error) error {
-	folder, name := filepath.Dir(path), filepath.Base(path)+".partial"
-	if err := os.MkdirAll(folder, 0o755); err != nil {
-		return plainly(err, folder)
+// replaceFile writes a file beside path and renames it when it is whole. An error leaves nothing behind.
+func replaceFile(ctx context.Context, path string, content func(w io.Writer) error) (err error) {
+	folder, partial := filepath.Dir(path), path+".partial"
+	made, err := makeParents(path)
+	defer func() {
+		if err != nil {
+			unmake(made)
+		}
+	}()
+	if err != nil {
+		return err
 	}
-	partial := filepath.Join(folder, name)
-	if err := os.RemoveAll(partial); err != nil {
-		return plainly(err, folder)
+	release, err := lock(partial + ".lock")
+	if err != nil {
+		return err
 	}
-	if _, err := writeFile(folder, name, content); err != nil {
+	defer release()
+	if err := os.Remove(partial); err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return plainly(err, partial)
+	}
+	if _, err = writeFile(ctx, folder, filepath.Base(partial), content); err == nil {
+		err = os.Rename(partial, path)
+	}
+	if err != nil {
 		os.Remove(partial)
-		return plainly(err, folder)
-	}
-	if err := os.Rename(partial, path); err != nil {
-		os.Remove(partial)
-		return plainly(err, folder)
+		return plainly(err, path)
 	}
 	return syncFolder(folder)
 }

@@ -35,7 +35,7 @@ func (r *run) write(ctx context.Context, folder string) error {
 			return err
 		}
 		r.events.Stage("writing "+a.file, k, len(list))
-		sum, err := writeFile(folder, a.file, a.content)
+		sum, err := writeFile(ctx, folder, a.file, a.content)
 		if err != nil {
 			return err
 		}
@@ -45,7 +45,7 @@ func (r *run) write(ctx context.Context, folder string) error {
 		}
 		r.document.Outputs = append(r.document.Outputs, o)
 	}
-	_, err := writeFile(folder, "summary.json", r.document.WriteJSON)
+	_, err := writeFile(ctx, folder, "summary.json", r.document.WriteJSON)
 	return err
 }
 
@@ -133,7 +133,7 @@ func (r *run) writeResiduals(w io.Writer) error {
 		x[i], y[i] = p[0], p[1]
 	}
 	return tables.Write(w, n, []tables.Column{
-		{Name: "row", Whole: row}, {Name: "x", Number: x}, {Name: "y", Number: y},
+		{Name: "row", Whole: row}, {Name: "x", Number: x, Exact: true}, {Name: "y", Number: y, Exact: true},
 		{Name: "response", Number: r.obs.data.Response}, {Name: "fitted", Number: rows.Fitted},
 		{Name: "deviance_residual", Number: rows.Deviance}, {Name: "quantile_residual", Number: rows.Quantile},
 		{Name: "leverage", Number: rows.Leverage},
@@ -155,26 +155,47 @@ func (r *run) writeAside(w io.Writer) error {
 }
 
 // writeFile writes one file, brings it to the disk, and returns its checksum.
-func writeFile(folder, name string, content func(w io.Writer) error) (string, error) {
+func writeFile(ctx context.Context, folder, name string, content func(w io.Writer) error) (string, error) {
 	path := filepath.Join(folder, name)
 	f, err := os.OpenFile(path, os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
 	if err != nil {
-		return "", err
+		return "", plainly(err, name)
 	}
 	sum := sha256.New()
-	if err := fill(f, sum, content); err != nil {
+	if err := fill(ctx, f, sum, content); err != nil {
 		f.Close()
-		return "", fmt.Errorf("%s: %w", name, err)
+		return "", plainly(fmt.Errorf("%s: %w", name, err), name)
 	}
 	return hex.EncodeToString(sum.Sum(nil)), nil
 }
 
-func fill(f *os.File, sum hash.Hash, content func(w io.Writer) error) error {
-	if err := content(io.MultiWriter(f, sum)); err != nil {
+func fill(ctx context.Context, f *os.File, sum hash.Hash, content func(w io.Writer) error) error {
+	if err := content(&stoppable{ctx: ctx, to: io.MultiWriter(f, sum)}); err != nil {
 		return err
 	}
 	if err := f.Sync(); err != nil {
 		return err
 	}
 	return f.Close()
+}
+
+// stoppable is a file that can be neither read nor written any more once its ctx is cancelled: a large one takes long.
+type stoppable struct {
+	ctx  context.Context
+	from io.Reader
+	to   io.Writer
+}
+
+func (s *stoppable) Read(p []byte) (int, error) {
+	if err := s.ctx.Err(); err != nil {
+		return 0, err
+	}
+	return s.from.Read(p)
+}
+
+func (s *stoppable) Write(p []byte) (int, error) {
+	if err := s.ctx.Err(); err != nil {
+		return 0, err
+	}
+	return s.to.Write(p)
 }

@@ -20,6 +20,7 @@ const zoneDraws = 2000
 
 // zoneResults are the rows of zones.csv.
 type zoneResults struct {
+	source  string // file of the zones
 	zones   []grids.Zone
 	totals  bool
 	note    string
@@ -53,7 +54,7 @@ func (r *run) addUp(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	z := &zoneResults{unit: plan.SquareMetres}
+	z := &zoneResults{source: shapes.Source, unit: plan.SquareMetres}
 	for i, f := range shapes.Features {
 		zone := grids.Zone{Name: names[i], Shape: f.Shape}
 		if err := zone.Validate(); err != nil {
@@ -105,6 +106,10 @@ func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 		z.cells = append(z.cells, int64(len(cells)))
 		z.area = append(z.area, ground/squareMetres[z.unit])
 		z.covered = append(z.covered, math.Min(1, ground/grids.AreaOf(zone, l.CRS)))
+	}
+	if slices.Max(z.cells) == 0 {
+		return refuse("check that the zones are in the coordinates of the observations or in longitude and latitude, ask for smaller cells, or widen the map with --within",
+			"%s: no cell of the map lies in any of the zones", z.source)
 	}
 	sums, err := r.surface.Sums(ctx, r.target.places, r.target.covariates, sets, zoneDraws, *r.settings.Seed)
 	if err != nil {
