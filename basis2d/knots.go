@@ -115,10 +115,12 @@ func (w *spread) take(x, y float64) {
 	}
 }
 
+// widest returns the candidate farthest from every knot; the first of those that differ by rounding only, so that the
+// unit of the coordinates does not decide.
 func (w *spread) widest() int {
 	best := 0
 	for i, d := range w.nearest {
-		if d > w.nearest[best] {
+		if d > w.nearest[best]*(1+1e-9) {
 			best = i
 		}
 	}
@@ -134,7 +136,7 @@ func (w *spread) farthest(most int, apart float64) []int {
 	first := 0
 	d := func(i int) float64 { return (w.x[i]-cx)*(w.x[i]-cx) + (w.y[i]-cy)*(w.y[i]-cy) }
 	for i := range w.x {
-		if d(i) < d(first) {
+		if d(i) < d(first)*(1-1e-9) {
 			first = i
 		}
 	}

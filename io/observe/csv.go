@@ -277,7 +277,7 @@ func (r *rows) mostlyAside() error {
 	i := slices.IndexFunc(r.table.Aside, func(a Aside) bool { return a.Code == counts[0].Code && a.Column == counts[0].Column })
 	a := r.table.Aside[i]
 	return &Error{File: r.header.source, Value: a.Value,
-		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; the first of the former kind is row %d (line %d), where %s",
+		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; for example row %d (line %d), where %s",
 			len(r.table.Aside), r.table.Rows, strings.Join(reasons, "; "), a.Row, a.Line, a.sentence()),
 		Advice: "check that the right columns are named, and that missing values are written as empty fields or NA"}
 }

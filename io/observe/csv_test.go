@@ -127,11 +127,11 @@ func TestReadCSVRefusals(t *testing.T) {
 			`correct the row, or leave out --strict to set such rows aside`},
 		{"mostly unusable", "x,y,z,d\n1,2,,1\n1,2,3,1\n1,2,oak,\n1,2,NA,\n1,2,4,4\n", Request{Response: "z", Kind: Measure, Linear: []string{"d"}},
 			`wells.csv: 3 of 5 rows cannot be used, more than half: column "z", response is missing (2); column "z", response is not a number (1); ` +
-				`the first of the former kind is row 1 (line 2), where response is missing`,
+				`for example row 1 (line 2), where response is missing`,
 			`check that the right columns are named, and that missing values are written as empty fields or NA`},
 		{"four reasons", "x,y,z\n,2,3\n1,,3\n1,2,\n1,2,-\n", measure,
 			`wells.csv: 4 of 4 rows cannot be used, more than half: column "x", coordinate is missing (1); column "y", coordinate is missing (1); ` +
-				`column "z", response is missing (1); 1 more reasons; the first of the former kind is row 1 (line 2), where coordinate is missing`,
+				`column "z", response is missing (1); 1 more reasons; for example row 1 (line 2), where coordinate is missing`,
 			`check that the right columns are named, and that missing values are written as empty fields or NA`},
 
 		{"kind without response", "", Request{Kind: Count}, `wells.csv: no column is named for the response`, `name it with --response`},

@@ -25,8 +25,19 @@ func (e *Error) Hint() string { return e.hint }
 // advise makes the part of an Error that a parser knows; located adds the word and what was said.
 func advise(message, hint string) error { return &Error{Message: message, hint: hint} }
 
+// blame points at the part of a list that is wrong.
+func blame(part string, err error) error {
+	if e, ok := err.(*Error); ok {
+		e.Value = part
+	}
+	return err
+}
+
 func located(word, value string, err error) error {
 	if e, ok := err.(*Error); ok {
+		if e.Value != "" {
+			value = e.Value
+		}
 		return &Error{Word: word, Value: value, Message: e.Message, hint: e.hint}
 	}
 	return &Error{Word: word, Value: value, Message: err.Error()}

@@ -40,7 +40,7 @@ func (s Settings) distribution() (name, why string) {
 	case s.Distribution != nil:
 		return *s.Distribution, s.why["distribution"]
 	case s.Trials != nil:
-		return Binomial, "the response is a number positive among " + *s.Trials + " examined"
+		return Binomial, "the response is a number positive, with the number examined in " + *s.Trials
 	case kind != "":
 		return Poisson, "the response is a count with " + kind + " (" + column + ") behind it"
 	}

@@ -170,7 +170,7 @@ func parseChoices(value string, among []string) ([]string, error) {
 	for part := range strings.SplitSeq(value, ",") {
 		part = strings.TrimSpace(part)
 		if !slices.Contains(among, part) {
-			return nil, notAmong(part, among)
+			return nil, blame(part, notAmong(part, among))
 		}
 		said[part] = true
 	}
@@ -197,7 +197,7 @@ func parseSmoothness(value string) (Smoothness, error) {
 	}
 	v, err := parseNumber(value)
 	if err != nil || v < 0 {
-		return Smoothness{}, advise("is neither reml nor gcv nor a number of 0 or more", "")
+		return Smoothness{}, advise("is neither reml nor gcv nor a number of 0 or more", "leave out --smoothness to let the data choose")
 	}
 	return Smoothness{By: ByNumber, Lambda: v}, nil
 }

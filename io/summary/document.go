@@ -161,6 +161,7 @@ type Estimates struct {
 	Threshold           Number `json:"threshold"`
 	Above               Number `json:"share_with_chance_above_0.95"`
 	Confidence          Number `json:"confidence"`
+	Reference           Number `json:"reference"` // level that relative risks are taken against
 }
 
 // Zones says what the zones' figures are.
@@ -205,10 +206,29 @@ func (d Document) Worst() Level {
 	return worst
 }
 
-// WriteJSON writes summary.json.
+// WriteJSON writes summary.json: keys in the order of the types, a list or table without entries as [] or {}, null only
+// for what is not there or not finite.
 func (d Document) WriteJSON(w io.Writer) error {
+	d.Input.SetAside = table(d.Input.SetAside)
+	d.Fit.Lambda, d.Fit.DegreesOfFreedom = table(d.Fit.Lambda), table(d.Fit.DegreesOfFreedom)
+	d.Coefficients, d.Effects = list(d.Coefficients), list(d.Effects)
+	d.Checks, d.Cautions, d.Outputs = list(d.Checks), list(d.Cautions), list(d.Outputs)
 	e := json.NewEncoder(w)
 	e.SetEscapeHTML(false)
 	e.SetIndent("", "  ")
 	return e.Encode(d)
+}
+
+func list[T any](v []T) []T {
+	if v == nil {
+		return []T{}
+	}
+	return v
+}
+
+func table[T any](v map[string]T) map[string]T {
+	if v == nil {
+		return map[string]T{}
+	}
+	return v
 }

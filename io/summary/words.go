@@ -1,7 +1,7 @@
 package summary
 
 import (
-	"bufio"
+	"cmp"
 	"fmt"
 	"io"
 	"maps"
@@ -9,112 +9,201 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"unicode"
+	"unicode/utf8"
 )
 
-// width is where lines of the telling are broken.
-const width = 96
+const (
+	width  = 96 // columns, where lines of the telling are broken
+	indent = 9  // of the sentences, behind the word in front
+	most   = 20 // lines that the telling comes to, as far as zones can give way
+)
 
-// Words tells the run in ten to twenty lines: what went in, what was fitted, what it says and how sure it is, what to
-// look at, and where it was written. A reader without statistics can stop after the level; the figures in brackets are
-// for one with.
+// Words tells the run in ten to twenty lines, each a word and a sentence: what went in, what was fitted, what it says and
+// how sure it is, what to look at, and where it was written. A reader without statistics can stop after the level; the
+// figures in brackets are for one with. Long lists are shortened: the whole is in summary.json and the tables.
 func (d Document) Words(w io.Writer) error {
-	t := &telling{out: bufio.NewWriter(w)}
-	t.line("data", d.dataWords())
-	t.line("places", d.placeWords())
-	t.line("model", d.modelWords())
-	t.line("surface", d.surfaceWords())
-	if c := d.covariateWords(); c != "" {
-		t.line("effects", c)
+	before := []line{
+		{"data", d.dataWords()},
+		{"places", d.placeWords()},
+		{"model", d.modelWords()},
+		{"surface", d.surfaceWords()},
+		{"effects", d.covariateWords()},
+		{"level", d.levelWords()},
+		{"limits", d.limitWords()},
+		{"above", d.aboveWords()},
 	}
-	t.line("level", d.levelWords())
-	t.line("sure", d.sureWords())
-	if e := d.Estimates; !math.IsNaN(float64(e.Threshold)) {
-		t.line("above", fmt.Sprintf("%s of the map exceeds %s with a chance over 0.95", percent(e.Above), Short(e.Threshold)))
-	}
+	after := []line{}
 	if d.Zones != nil {
-		for _, l := range d.Zones.Lines {
-			t.line("zone", l)
+		after = append(after, line{"zones", d.Zones.Note})
+	}
+	after = append(after, d.checkWords()...)
+	after = append(after, line{"caution", d.cautionWords()}, line{"written", d.writtenWords()})
+	zones := d.zoneWords(most - height(before) - height(after))
+	for _, l := range slices.Concat(before, zones, after) {
+		if _, err := io.WriteString(w, l.broken()); err != nil {
+			return err
 		}
-		if d.Zones.Note != "" {
-			t.line("zones", d.Zones.Note)
-		}
 	}
-	for _, c := range d.checksToTell() {
-		t.line(string(c.Level), c.Sentence)
-	}
-	if len(d.Cautions) > 0 {
-		t.line("caution", d.Cautions[0]+map[bool]string{true: fmt.Sprintf(" (%d more in summary.json)", len(d.Cautions)-1)}[len(d.Cautions) > 1])
-	}
-	t.line("written", d.writtenWords())
-	return t.out.Flush()
+	return nil
 }
 
-// telling writes lines with a word in front, broken at width with the rest indented.
-type telling struct{ out *bufio.Writer }
+// line is a word in front and the text behind it; without text nothing is told.
+type line struct{ word, text string }
 
-func (t *telling) line(word, text string) {
-	const indent = 9
-	fmt.Fprintf(t.out, "%-*s", indent, word)
+// tie is a blank at which no line is broken.
+const tie = '\u00a0'
+
+// broken is the line as it is shown: broken at width, with the rest indented. What could steer a terminal is taken out,
+// for names come from the user's files.
+func (l line) broken() string {
+	if l.text == "" {
+		return ""
+	}
+	var b strings.Builder
+	fmt.Fprintf(&b, "%-*s", indent, l.word)
 	at := indent
-	for i, part := range strings.Fields(text) {
-		if i > 0 && at+1+len([]rune(part)) > width {
-			fmt.Fprintf(t.out, "\n%*s", indent, "")
+	for i, part := range strings.FieldsFunc(l.text, func(r rune) bool { return r != tie && unicode.IsSpace(r) }) {
+		part = strings.Map(shown, part)
+		n := utf8.RuneCountInString(part)
+		switch {
+		case i > 0 && at+1+n > width:
+			fmt.Fprintf(&b, "\n%*s", indent, "")
 			at = indent
-		} else if i > 0 {
-			fmt.Fprint(t.out, " ")
+		case i > 0:
+			b.WriteByte(' ')
 			at++
 		}
-		fmt.Fprint(t.out, part)
-		at += len([]rune(part))
+		b.WriteString(part)
+		at += n
 	}
-	fmt.Fprintln(t.out)
+	b.WriteByte('\n')
+	return b.String()
+}
+
+func shown(r rune) rune {
+	switch {
+	case r == tie:
+		return ' '
+	case !unicode.IsGraphic(r):
+		return unicode.ReplacementChar
+	}
+	return r
+}
+
+// height is how many lines a terminal shows.
+func height(lines []line) (n int) {
+	for _, l := range lines {
+		n += strings.Count(l.broken(), "\n")
+	}
+	return n
+}
+
+// zoneWords tells the zones in about the room there is, but two at least.
+func (d Document) zoneWords(room int) []line {
+	if d.Zones == nil {
+		return nil
+	}
+	var told []line
+	for _, text := range d.Zones.Lines {
+		told = append(told, line{"zone", text})
+	}
+	const least = 2
+	if height(told) <= room {
+		return told
+	}
+	for len(told) > least && height(told)+1 > room {
+		told = told[:len(told)-1]
+	}
+	if rest := d.Zones.Count - len(told); rest > 0 {
+		told = append(told, line{"zone", fmt.Sprintf("and %d more in zones.csv", rest)})
+	}
+	return told
 }
 
 func (d Document) dataWords() string {
-	s := fmt.Sprintf("%s: %s used of %d", d.Input.Name, count(d.Input.Used, "observation"), d.Input.Rows)
-	if len(d.Input.SetAside) == 0 {
+	s := fmt.Sprintf("%s: %d of %s used", d.Input.Name, d.Input.Used, count(d.Input.Rows, "row"))
+	reasons := slices.SortedFunc(maps.Keys(d.Input.SetAside), func(a, b string) int {
+		return cmp.Or(cmp.Compare(d.Input.SetAside[b], d.Input.SetAside[a]), cmp.Compare(a, b))
+	})
+	if len(reasons) == 0 {
 		return s
 	}
-	var reasons []string
-	for _, r := range slices.Sorted(maps.Keys(d.Input.SetAside)) {
-		reasons = append(reasons, fmt.Sprintf("%d %s", d.Input.SetAside[r], strings.ReplaceAll(r, "-", " ")))
+	const most = 4
+	var parts []string
+	other := 0
+	for k, r := range reasons {
+		if n := d.Input.SetAside[r]; k < most || len(reasons) == most+1 {
+			parts = append(parts, fmt.Sprintf("%d %s", n, strings.ReplaceAll(r, "-", " ")))
+		} else {
+			other += n
+		}
 	}
-	return s + "; set aside: " + strings.Join(reasons, ", ")
+	if other > 0 {
+		parts = append(parts, fmt.Sprintf("%d for other reasons", other))
+	}
+	return s + "; set aside: " + strings.Join(parts, ", ")
 }
 
 func (d Document) placeWords() string {
-	s := fmt.Sprintf("%s, median spacing %s; %s", count(d.Input.DistinctPlaces, "distinct place"), metres(d.Input.MedianSpacing), d.Input.Coordinates)
-	if d.Lattice.Kind == "places" {
-		return s + fmt.Sprintf("; predicted at %s of your own", count(d.Lattice.Count, "place"))
+	s := count(d.Input.DistinctPlaces, "distinct place")
+	if !math.IsNaN(float64(d.Input.MedianSpacing)) {
+		s += ", median spacing " + metres(d.Input.MedianSpacing)
 	}
-	return s + fmt.Sprintf("; mapped on %d cells of %s", d.Lattice.Count, metres(d.Lattice.Cell))
+	s += "; " + d.Input.Coordinates
+	if d.ownPlaces() {
+		return s + "; predicted at " + count(d.Lattice.Count, "place") + " of your own"
+	}
+	return s + fmt.Sprintf("; mapped on %s, %s across", count(d.Lattice.Count, "cell"), metres(d.Lattice.Cell))
 }
+
+func (d Document) ownPlaces() bool { return d.Lattice.Kind == "places" }
 
 func (d Document) modelWords() string {
 	s := fmt.Sprintf("%s with %s link", d.Fit.Distribution, d.Fit.Link)
+	said := map[string]string{}
 	for _, e := range d.Settings {
-		switch e.Key {
-		case "people", "area", "effort", "expected", "trials":
-			s += fmt.Sprintf(", %s from column %v", e.Key, e.Value)
+		said[e.Key] = fmt.Sprint(e.Value)
+	}
+	for _, kind := range []string{"people", "area", "effort", "expected"} {
+		if column, ok := said[kind]; ok {
+			s += fmt.Sprintf("; counts divided by %s, column %s", kind, column)
 		}
 	}
-	if !d.Fit.DispersionKnown {
-		s += fmt.Sprintf("; residual standard deviation %s", Short(Number(math.Sqrt(float64(d.Fit.Dispersion)))))
+	if unit := said["area_unit"]; unit != "" {
+		s += " in " + unit
+	}
+	if column, ok := said["trials"]; ok {
+		s += "; positives among trials, column " + column
+	}
+	if column, ok := said["weight"]; ok {
+		s += "; weights, column " + column
+	}
+	switch {
+	case d.Fit.DispersionKnown:
+	case d.Fit.Distribution == "gaussian":
+		s += "; residual standard deviation " + Short(Number(math.Sqrt(float64(d.Fit.Dispersion))))
+	default:
+		s += "; dispersion " + Short(d.Fit.Dispersion)
 	}
 	return s
 }
 
 func (d Document) surfaceWords() string {
 	f := d.Fit
+	share := fmt.Sprintf("the fit accounts for %s of the variation (deviance)", percent(f.DevianceShare))
 	df, ok := f.DegreesOfFreedom["surface"]
-	if !ok {
-		return fmt.Sprintf("none; a regression with %s degrees of freedom accounts for %s of the deviance", Short(f.DegreesOfFreedom["total"]), percent(f.DevianceShare))
+	switch {
+	case !ok:
+		total, noun := Short(f.DegreesOfFreedom["total"]), "degrees"
+		if total == "1" {
+			noun = "degree"
+		}
+		return fmt.Sprintf("none: a regression with %s %s of freedom; %s", total, noun, share)
+	case f.Plane:
+		return fmt.Sprintf("thin-plate on %d knots, which came out as a tilted plane (smoothness by %s); %s", f.Knots, f.Criterion, share)
 	}
-	shape := fmt.Sprintf("thin-plate with %d knots, of which the data use %s degrees of freedom", f.Knots, Short(df))
-	if f.Plane {
-		shape = "thin-plate; the data ask for no more than a tilted plane"
-	}
-	return fmt.Sprintf("%s (smoothness by %s); the fit accounts for %s of the deviance", shape, f.Criterion, percent(f.DevianceShare))
+	return fmt.Sprintf("thin-plate on %d knots, %s degrees of freedom used of %d (smoothness by %s); %s", f.Knots, Short(df), f.Knots-1, f.Criterion, share)
 }
 
 func (d Document) covariateWords() string {
@@ -134,15 +223,15 @@ func (d Document) covariateWords() string {
 		more = fmt.Sprintf(" and %d more", len(parts)-most)
 		parts = parts[:most]
 	}
+	s := strings.Join(parts, ", ") + more
+	if d.Fit.Link != "identity" {
+		s = "on the " + d.Fit.Link + " scale: " + s
+	}
 	var held []string
 	for _, e := range d.Effects {
 		if e.Held != "" {
 			held = append(held, e.Name+" = "+e.Held)
 		}
-	}
-	s := "on the " + d.Fit.Link + " scale: " + strings.Join(parts, ", ") + more
-	if d.Fit.Link == "identity" {
-		s = strings.TrimPrefix(s, "on the identity scale: ")
 	}
 	if held != nil {
 		s += "; the map is adjusted to " + strings.Join(held, ", ")
@@ -151,34 +240,77 @@ func (d Document) covariateWords() string {
 }
 
 func (d Document) levelWords() string {
-	e := d.Estimates
-	return fmt.Sprintf("%s to %s, half of the map below %s (%s)", Short(e.Least), Short(e.Most), Short(e.Median), e.Unit)
+	e, where := d.Estimates, "across the map, half of it"
+	if d.ownPlaces() {
+		where = "at your places, half of them"
+	}
+	return fmt.Sprintf("%s to %s %s below %s (%s)", Short(e.Least), Short(e.Most), where, Short(e.Median), e.Unit)
 }
 
-func (d Document) sureWords() string {
+func (d Document) limitWords() string {
 	e := d.Estimates
-	return fmt.Sprintf("median standard error %s; limits are %s %% for the mean, not for a future observation",
-		Short(e.MedianStandardError), Short(100*e.Confidence))
+	return fmt.Sprintf("%s limits of the mean, not of a future observation; median standard error %s", percent(e.Confidence), Short(e.MedianStandardError))
 }
 
-// checksToTell returns the checks that found something, or one that says all are clear.
-func (d Document) checksToTell() []Check {
-	var told []Check
-	for _, level := range []Level{Stop, Look} {
+func (d Document) aboveWords() string {
+	e := d.Estimates
+	if math.IsNaN(float64(e.Threshold)) {
+		return ""
+	}
+	rest := fmt.Sprintf("a chance over 0.95 of more than %s (%s)", Short(e.Threshold), e.Unit)
+	switch own := d.ownPlaces(); {
+	case e.Above == 0 && own:
+		return "none of your places has " + rest
+	case e.Above == 0:
+		return "nowhere on the map is there " + rest
+	case own:
+		return percent(e.Above) + " of your places have " + rest
+	}
+	return percent(e.Above) + " of the map has " + rest
+}
+
+// checkWords tells the checks that found something, the gravest first, and names the others.
+func (d Document) checkWords() []line {
+	var told []line
+	var clear []string
+	for _, level := range []Level{Stop, Look, Clear} {
 		for _, c := range d.Checks {
-			if c.Level == level {
-				told = append(told, c)
+			switch {
+			case c.Level != level:
+			case level == Clear:
+				clear = append(clear, c.Name)
+			default:
+				told = append(told, line{string(c.Level), c.Sentence})
 			}
 		}
 	}
-	if told == nil {
-		var names []string
-		for _, c := range d.Checks {
-			names = append(names, c.Name)
-		}
-		return []Check{{Level: Clear, Sentence: "nothing to remark on " + strings.Join(names, ", ")}}
+	switch {
+	case clear == nil:
+		return told
+	case told == nil:
+		return []line{{string(Clear), "nothing was found by the checks of " + listed(clear)}}
 	}
-	return told
+	return append(told, line{string(Clear), "nothing was found by the other checks, of " + listed(clear)})
+}
+
+// listed joins names as a sentence does.
+func listed(names []string) string {
+	last := len(names) - 1
+	if last == 0 {
+		return names[0]
+	}
+	return strings.Join(names[:last], ", ") + " and " + names[last]
+}
+
+func (d Document) cautionWords() string {
+	switch n := len(d.Cautions); n {
+	case 0:
+		return ""
+	case 1:
+		return d.Cautions[0]
+	default:
+		return fmt.Sprintf("%s (%d more in summary.json)", d.Cautions[0], n-1)
+	}
 }
 
 func (d Document) writtenWords() string {
@@ -189,15 +321,16 @@ func (d Document) writtenWords() string {
 	return d.Folder + ": " + strings.Join(names, ", ")
 }
 
-// Short writes a number in three significant digits, without an exponent between a thousandth and a million.
+// Short writes a number for reading: three significant digits, but whole numbers in full up to a thousand million, and
+// an exponent only beyond that or below a thousandth. A number that is not finite is "unknown".
 func Short(n Number) string {
 	v := float64(n)
 	switch a := math.Abs(v); {
-	case math.IsNaN(v):
+	case math.IsNaN(v) || math.IsInf(v, 0):
 		return "unknown"
 	case a == 0:
 		return "0"
-	case a >= 1e6 || a < 1e-3:
+	case a >= 1e9 || a < 1e-3:
 		return strconv.FormatFloat(v, 'g', 3, 64)
 	case a >= 100:
 		return strconv.FormatFloat(v, 'f', 0, 64)
@@ -208,13 +341,19 @@ func Short(n Number) string {
 	}
 }
 
-func percent(n Number) string { return Short(100*n) + " %" }
+// percent writes a share; what is left of 0 by rounding is 0.
+func percent(n Number) string {
+	if math.Abs(float64(n)) < 1e-10 {
+		n = 0
+	}
+	return Short(100*n) + string(tie) + "%"
+}
 
 func metres(n Number) string {
 	if n >= 10000 {
-		return Short(n/1000) + " km"
+		return Short(n/1000) + string(tie) + "km"
 	}
-	return Short(n) + " m"
+	return Short(n) + string(tie) + "m"
 }
 
 func count(n int, noun string) string {

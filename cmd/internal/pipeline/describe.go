@@ -69,7 +69,11 @@ func (r *run) describeFit(d *summary.Document) {
 			Lower: summary.Number(c.Estimate - q*c.StandardError), Upper: summary.Number(c.Estimate + q*c.StandardError)})
 	}
 	for _, e := range r.surface.Model().Effects {
-		d.Fit.DegreesOfFreedom[e.Name] = summary.Number(r.columnsOf(e))
+		name := e.Name
+		if _, taken := d.Fit.DegreesOfFreedom[name]; taken || name == "surface" {
+			name += " (covariate)"
+		}
+		d.Fit.DegreesOfFreedom[name] = summary.Number(r.columnsOf(e))
 	}
 }
 
@@ -118,7 +122,10 @@ func (r *run) describeEstimates() summary.Estimates {
 	sorted := slices.Sorted(slices.Values(r.estimates.estimate))
 	errors := slices.Sorted(slices.Values(r.estimates.standardError))
 	e := summary.Estimates{Unit: r.reporting.Unit, Confidence: summary.Number(*r.settings.Confidence),
-		Threshold: summary.Number(math.NaN()), Above: summary.Number(math.NaN())}
+		Threshold: summary.Number(math.NaN()), Above: summary.Number(math.NaN()), Reference: summary.Number(math.NaN())}
+	if ref := r.reporting.Reference; ref > 0 {
+		e.Reference = summary.Number(ref)
+	}
 	if n := len(sorted); n > 0 {
 		e.Least, e.Median, e.Most = summary.Number(sorted[0]), summary.Number(sorted[n/2]), summary.Number(sorted[n-1])
 		e.MedianStandardError = summary.Number(errors[n/2])

@@ -39,6 +39,9 @@ func Folder(ctx context.Context, dir string, force bool, fill func(partial strin
 		}
 		release()
 	}()
+	if err := bringBack(dir, force); err != nil {
+		return err
+	}
 	if err := fill(partial); err != nil {
 		return err
 	}
@@ -130,7 +133,7 @@ func claim(partial string) (release func(), err error) {
 
 // replace puts partial in the place of dir, and an old dir out of the way first.
 func replace(partial, dir string) error {
-	old := dir + ".replaced"
+	old := dir + replacedSuffix
 	if err := os.RemoveAll(old); err != nil {
 		return err
 	}
@@ -146,6 +149,21 @@ func replace(partial, dir string) error {
 	}
 	return os.RemoveAll(old)
 }
+
+// bringBack undoes a replacement that a kill cut short between its two renames: the old folder is put back, and then
+// counts as any other that is there.
+func bringBack(dir string, force bool) error {
+	if _, err := os.Lstat(dir); !errors.Is(err, fs.ErrNotExist) {
+		return nil
+	}
+	if err := restore(dir+replacedSuffix, dir); err != nil {
+		return plainly(err, dir)
+	}
+	return checkFolder(dir, force)
+}
+
+// replacedSuffix marks an old folder that is out of the way until the new one is in place.
+const replacedSuffix = ".replaced"
 
 // restore puts an old folder back, if there is one.
 func restore(old, dir string) error {

@@ -148,10 +148,8 @@ func TestFolderThatIsThere(t *testing.T) {
 func TestFolderClearsLeftovers(t *testing.T) {
 	base := t.TempDir()
 	dir := filepath.Join(base, "out")
-	for _, p := range []string{dir + ".partial", dir + ".replaced"} {
-		if err := errors.Join(os.Mkdir(p, 0o755), os.WriteFile(filepath.Join(p, "surface.csv"), []byte("half"), 0o644)); err != nil {
-			t.Fatal(err)
-		}
+	if err := errors.Join(os.Mkdir(dir+".partial", 0o755), os.WriteFile(filepath.Join(dir+".partial", "surface.csv"), []byte("half"), 0o644)); err != nil {
+		t.Fatal(err)
 	}
 	if err := os.WriteFile(dir+".partial.lock", nil, 0o644); err != nil {
 		t.Fatal(err)
@@ -294,4 +292,39 @@ func TestReuseLeavesNothing(t *testing.T) {
 		t.Errorf("%v, %q", err, raw)
 	}
 	only(t, base, "out.csv")
+}
+
+// TestFolderUndoesAReplacementCutShort: a kill between the two renames of a replacement leaves the old folder beside its
+// place; the next run finds it there again, refuses without force, and replaces it with force.
+func TestFolderUndoesAReplacementCutShort(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "out")
+	write := func(text string) func(string) error {
+		return func(partial string) error {
+			return os.WriteFile(filepath.Join(partial, "summary.json"), []byte(text), 0o644)
+		}
+	}
+	if err := Folder(context.Background(), dir, false, write("old")); err != nil {
+		t.Fatal(err)
+	}
+	if err := os.Rename(dir, dir+replacedSuffix); err != nil {
+		t.Fatal(err)
+	}
+	if err := Folder(context.Background(), dir, false, write("new")); err == nil {
+		t.Error("the old folder was replaced without force")
+	}
+	if got, err := os.ReadFile(filepath.Join(dir, "summary.json")); err != nil || string(got) != "old" {
+		t.Errorf("the old folder holds %q, %v", got, err)
+	}
+	if err := os.Rename(dir, dir+replacedSuffix); err != nil {
+		t.Fatal(err)
+	}
+	if err := Folder(context.Background(), dir, true, write("new")); err != nil {
+		t.Fatal(err)
+	}
+	if got, err := os.ReadFile(filepath.Join(dir, "summary.json")); err != nil || string(got) != "new" {
+		t.Errorf("the new folder holds %q, %v", got, err)
+	}
+	if _, err := os.Stat(dir + replacedSuffix); !os.IsNotExist(err) {
+		t.Errorf("the old folder is still beside the new one: %v", err)
+	}
 }

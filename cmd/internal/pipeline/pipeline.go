@@ -74,6 +74,9 @@ func (r *run) fit(ctx context.Context) error {
 	if r.area != nil {
 		options.Area = r.area.knotPlaces
 	}
+	if model.Smoothness.Method == spatial.Given && model.Smoothness.Lambda == 0 {
+		return throughEveryRow()
+	}
 	var err error
 	if r.surface, err = spatial.Fit(ctx, model, o.data, options); err != nil {
 		return err
@@ -83,10 +86,15 @@ func (r *run) fit(ctx context.Context) error {
 	}
 	rep := r.surface.Report()
 	if !rep.KnownDispersion && !(rep.Dispersion > 0) {
-		return &spatial.Error{Message: "the fit passes through every observation, so nothing is left to estimate its error from",
-			Advice: "let the data choose the smoothness, or give a larger number with --smoothness"}
+		return throughEveryRow()
 	}
 	return nil
+}
+
+// throughEveryRow refuses an interpolation, whose errors cannot be told.
+func throughEveryRow() error {
+	return &spatial.Error{Message: "the fit passes through every observation, so nothing is left to estimate its error from",
+		Advice: "let the data choose the smoothness, or give a larger number with --smoothness"}
 }
 
 // model turns the settings into the model.

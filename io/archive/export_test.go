@@ -1,0 +1,4 @@
+package archive
+
+// ReadUpTo is Read with a limit that a test can reach.
+var ReadUpTo = readUpTo
