@@ -358,10 +358,15 @@ func (b *border) rowTo(dst, t, raw []float64) {
 	}
 }
 
-// logDet returns log |det R|.
+// logDet returns log |det R|, with the straight parts of curves in the covariate's own unit.
 func (b *border) logDet(q int) (l float64) {
 	for j := 0; j < q; j++ {
 		l += math.Log(math.Abs(b.R[j*q+j]))
+	}
+	for _, e := range b.Effects {
+		for _, c := range e.Curve {
+			l += math.Log(c.Scale)
+		}
 	}
 	return l
 }

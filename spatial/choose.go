@@ -5,21 +5,34 @@ import (
 	"errors"
 	"fmt"
 	"math"
-
-	"drumlin/spatial/response"
+	"strconv"
 )
 
-// Knots are added while the fit still moves: while its root mean square change at the rows is above settledRMS mean
-// standard errors of the linear predictor, or its largest one above settledMost. More knots than that change degrees of
+// Knots are added while the fit still moves: while its root mean square change at the rows is above SettledRMS mean
+// standard errors of the linear predictor, or its largest one above SettledMost. More knots than that change degrees of
 // freedom by some per cent and the fit by nothing that matters.
 const (
 	firstKnots  = 50
-	settledRMS  = 0.1
-	settledMost = 0.5
+	SettledRMS  = 0.1
+	SettledMost = 0.5
 )
 
-// MostKnots is where FitKnots stops in any case.
-const MostKnots = 800
+// MostKnots is where FitKnots stops in any case. With many rows it stops earlier, at the most knots of the sequence for
+// which a visit to the rows costs no more than mostVisit multiplications, but not below leastMost.
+const (
+	MostKnots = 800
+	mostVisit = 1e9
+	leastMost = 100
+)
+
+// MostKnotsFor returns where FitKnots stops for a number of rows.
+func MostKnotsFor(rows int) int {
+	k := MostKnots
+	for k > leastMost && float64(rows)*float64(k)*float64(k) > mostVisit {
+		k /= 2
+	}
+	return k
+}
 
 // KnotStep is one fit on the way to enough knots.
 type KnotStep struct {
@@ -29,10 +42,10 @@ type KnotStep struct {
 }
 
 // FitKnots fits m with more and more knots until the fit no longer moves, every place has one, or there are most of them
-// (0 means MostKnots). Each search starts where the last one ended. It returns the last fit and the way to it.
+// (0 means MostKnotsFor the rows). Each search starts where the last one ended. It returns the last fit and the way to it.
 func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surface, []KnotStep, error) {
 	if most == 0 {
-		most = MostKnots
+		most = MostKnotsFor(d.Places.Len())
 	}
 	if m.Surface == None {
 		s, err := Fit(ctx, m, d, o)
@@ -44,9 +57,9 @@ func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surfa
 	)
 	for k := min(firstKnots, most); ; k = min(2*k, most) {
 		m.MaxKnots = k
-		s, err := Fit(ctx, m, d, o)
+		s, finish, err := fitAlone(ctx, m, d, o)
 		if err != nil {
-			return last, path, err
+			return nil, path, err
 		}
 		step := KnotStep{Knots: s.report.Knots, DF: s.report.DF, RMS: math.NaN(), Most: math.NaN()}
 		if last != nil {
@@ -55,22 +68,26 @@ func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surfa
 			}
 		}
 		path = append(path, step)
-		settled := step.RMS <= settledRMS && step.Most <= settledMost
+		settled := step.RMS <= SettledRMS && step.Most <= SettledMost
 		if full := s.report.Knots < k || s.knots.Distinct <= s.report.Knots-s.knots.InGaps; settled || full || k == most {
-			return s, path, nil
+			return s, path, finish()
 		}
 		last, o.start = s, s.report.Smooths
 	}
 }
 
+// changeRows is the number of rows that a change is measured at: evenly spaced ones where there are more.
+const changeRows = 2000
+
 // change returns how far the linear predictor at the rows moved from another fit, in mean standard errors.
 func (s *Surface) change(ctx context.Context, from *Surface, d Data) (rms, most float64, err error) {
-	n := d.Places.Len()
+	at, z := some(d.Places, d.Covariates, changeRows)
+	n := at.Len()
 	a, b, se, unused := make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n)
-	if err := s.PredictTo(ctx, a, se, d.Places, d.Covariates); err != nil {
+	if err := s.PredictTo(ctx, a, se, at, z); err != nil {
 		return 0, 0, err
 	}
-	if err := from.PredictTo(ctx, b, unused, d.Places, d.Covariates); err != nil {
+	if err := from.PredictTo(ctx, b, unused, at, z); err != nil {
 		return 0, 0, err
 	}
 	unit := mean(se)
@@ -80,6 +97,32 @@ func (s *Surface) change(ctx context.Context, from *Surface, d Data) (rms, most 
 		most = math.Max(most, change)
 	}
 	return math.Sqrt(rms), most, nil
+}
+
+// some returns at most that many evenly spaced rows.
+func some(at Places, z []Covariate, most int) (Places, []Covariate) {
+	n := at.Len()
+	if n <= most {
+		return at, z
+	}
+	var p Places
+	few := make([]Covariate, len(z))
+	for k, c := range z {
+		few[k] = Covariate{Name: c.Name, Level: c.Level}
+	}
+	for j := 0; j < most; j++ {
+		i := j * n / most
+		p.X, p.Y = append(p.X, at.X[i]), append(p.Y, at.Y[i])
+		for k, c := range z {
+			if c.Number != nil {
+				few[k].Number = append(few[k].Number, c.Number[i])
+			}
+			if c.Code != nil {
+				few[k].Code = append(few[k].Code, c.Code[i])
+			}
+		}
+	}
+	return p, few
 }
 
 // Variation is the outcome of comparing a distribution of counts or positives with the one that has extra variation.
@@ -133,29 +176,34 @@ func FitVariation(ctx context.Context, m Model, fit func(context.Context, Model)
 	return plain, v, nil
 }
 
+// figure writes a gain in three digits, without an exponent.
+func figure(v float64) string {
+	if math.Abs(v) >= 100 {
+		return strconv.FormatFloat(v, 'f', 0, 64)
+	}
+	return strconv.FormatFloat(v, 'g', 3, 64)
+}
+
 // weigh decides for extra variation or against, and words why.
 func (v *Variation) weigh(plain, extra Report) bool {
 	v.PlainCriterion, v.ExtraCriterion, v.PlainAIC, v.ExtraAIC = plain.CriterionValue, extra.CriterionValue, plain.AIC, extra.AIC
 	gain, aic := v.PlainCriterion-v.ExtraCriterion, v.PlainAIC-v.ExtraAIC
-	shape := fmt.Sprintf("%s %.3g", extra.ShapeName, extra.Shape)
+	shape, even := fmt.Sprintf("%s %.3g", extra.ShapeName, extra.Shape), math.Round(100*gain)/100+0 // no negative zero
 	switch {
 	case extra.Simpler != "":
 		v.Reason = fmt.Sprintf("the %s went back to the %s: there is no extra variation", v.Extra, v.Plain)
 		return false
 	case gain > clearGain:
-		v.Reason = fmt.Sprintf("the restricted likelihood is better by %.3g with extra variation (%s)", gain, shape)
+		v.Reason = fmt.Sprintf("the restricted likelihood is better by %s with extra variation (%s)", figure(gain), shape)
 	case gain < -clearGain:
-		v.Reason = fmt.Sprintf("the restricted likelihood is better by %.3g without extra variation", -gain)
+		v.Reason = fmt.Sprintf("the restricted likelihood is better by %s without extra variation", figure(-gain))
 		return false
 	case aic > 0:
-		v.Reason = fmt.Sprintf("the restricted likelihood is about even (%.2g) and the AIC better by %.3g with extra variation (%s)", gain, aic, shape)
+		v.Reason = fmt.Sprintf("the restricted likelihood is about even (%.2g) and the AIC better by %s with extra variation (%s)", even, figure(aic), shape)
 	default:
-		v.Reason = fmt.Sprintf("the restricted likelihood is about even (%.2g) and the AIC better by %.3g without extra variation", gain, -aic)
+		v.Reason = fmt.Sprintf("the restricted likelihood is about even (%.2g) and the AIC better by %s without extra variation", even, figure(-aic))
 		return false
 	}
 	v.Chosen = v.Extra
 	return true
 }
-
-// Distributions returns the words of the distributions that can be fitted.
-func Distributions() []string { return response.Names() }

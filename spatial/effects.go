@@ -11,6 +11,9 @@ import (
 // EffectFigure is what an effect does to the linear predictor, at values of its covariate.
 type EffectFigure struct {
 	Name          string // the covariate; for a curve of one level "depth, soil=loam"
+	Covariate     string
+	Level         string  // of a curve for each level of a category: "soil=loam"; else empty
+	DF, Lambda    float64 // degrees of freedom, and the penalty where there is one, as in Smooth
 	Role          Role
 	X             []float64 // of a slope or a curve: values of the covariate, ascending
 	Label         []string  // of a category or group: the levels
@@ -30,7 +33,7 @@ const figurePoints = 101
 // figures works the effects out.
 func (s *Surface) figures(overlap []float64) (list []EffectFigure) {
 	q := s.border.size()
-	free, bound := 0, s.core.columns()+q
+	free, bound, done := 0, s.core.columns()+q, 0
 	for i, e := range s.border.Effects {
 		switch e.Role {
 		case Linear:
@@ -44,14 +47,26 @@ func (s *Surface) figures(overlap []float64) (list []EffectFigure) {
 		case Group:
 			list = append(list, s.groupFigure(e, bound))
 		}
-		for k := range list {
-			if list[k].Overlap == 0 {
-				list[k].Overlap = overlap[i]
-			}
+		for k := done; k < len(list); k++ {
+			s.complete(&list[k], e, k-done, overlap[i])
 		}
+		done = len(list)
 		free, bound = free+e.free(), bound+e.bound()
 	}
 	return list
+}
+
+// complete adds what the report knows of the k-th figure of an effect.
+func (s *Surface) complete(f *EffectFigure, e fitted, k int, overlap float64) {
+	f.Covariate, f.Overlap, f.DF = e.Name, overlap, float64(e.free())
+	if e.Role == Curve && e.Per != "" {
+		f.Level = e.Per + "=" + e.Level[k]
+	}
+	for _, t := range s.report.Smooths {
+		if t.Kind == CurveSmooth && e.Role == Curve && t.Name == "curve "+f.Name || t.Kind == GroupSmooth && e.Role == Group && t.Name == "group "+f.Name {
+			f.DF, f.Lambda = t.DF, t.Lambda
+		}
+	}
 }
 
 // slopeFigure: b (x - mean x).
@@ -135,6 +150,9 @@ func between(lo, hi float64) []float64 {
 // current penalties. gram is X'WX in the fit's columns; the raw columns, in which effects are apart from one another,
 // are X A.
 func (s *Surface) overlaps(gram *mat.SymDense, list []smooth, r *penfit.Result) []float64 {
+	if len(s.border.Effects) == 0 {
+		return nil
+	}
 	p, k, q := len(s.beta), s.core.columns(), s.border.size()
 	a := mat.NewDense(p, p, nil)
 	for i := 0; i < p; i++ {

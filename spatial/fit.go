@@ -15,60 +15,80 @@ import (
 // Fit fits m to d. A fit that stops early is a Surface whose Report is not Converged; data from which no fit can be had
 // give an *Error that says why. Fit panics if slices of d differ in length.
 func Fit(ctx context.Context, m Model, d Data, o Options) (*Surface, error) {
-	dist, err := m.distribution()
+	s, finish, err := fitAlone(ctx, m, d, o)
 	if err != nil {
 		return nil, err
 	}
-	if err := d.check(m); err != nil {
-		return nil, err
+	return s, finish()
+}
+
+// fitAlone fits without what is told of each row and effect; finish adds that. A fit that only leads to another one does
+// without: leverages cost as much as a few visits to the rows.
+func fitAlone(ctx context.Context, m Model, d Data, o Options) (s *Surface, finish func() error, err error) {
+	dist, err := m.distribution()
+	if err != nil {
+		return nil, nil, err
+	}
+	if err := d.check(m, dist); err != nil {
+		return nil, nil, err
 	}
 	if err := fittable(dist, d); err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	m.Effects = m.effects()
-	s := &Surface{model: m, dist: dist, core: &core{}, workers: o.Workers}
+	s = &Surface{model: m, dist: dist, core: &core{}, workers: o.Workers}
 	if m.Surface == ThinPlate {
 		if err := s.lay(d, o); err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 	}
 	dg, err := s.columns(ctx, d, o)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	list := s.smooths()
 	engine, err := penfit.NewDense(ctx, dg, ridges(list), o.Workers)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
-	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d), EstimateShape: m.Shape == nil}
+	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d), EstimateShape: m.Shape == nil, Workers: o.Workers}
 	if free := d.Places.Len() - engine.NullDim(); !dist.KnownDispersion() && free < 1 {
-		return nil, unfit("use more observations or fewer covariates",
+		return nil, nil, unfit("use more observations or fewer covariates",
 			"%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), engine.NullDim())
 	}
 	problem.Start = o.start.on(list)
 	criterion, lambda := s.criterion(list)
 	r, err := penfit.Fit(ctx, problem, criterion, lambda)
 	if err != nil {
-		return nil, explain(err, dist)
+		return nil, nil, explain(err, dist)
 	}
 	s.dist, s.beta, s.factor, s.phi = r.Dist, r.Beta, engine.Factored(), r.Phi
 	s.border.setUnseen(list, r.Lambda)
 	mean, err := meanRow(ctx, engine)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	s.mean = mean
 	spreadDF := 0.0
 	if m.SmoothnessUncertainty {
 		if s.spread.Data, s.spread.Cols, spreadDF, err = penfit.Uncertainty(ctx, problem, r); err != nil {
-			return nil, explain(err, dist)
+			return nil, nil, explain(err, dist)
 		}
 		s.spread.Rows, s.spread.Stride = len(s.beta), s.spread.Cols
 	}
 	s.report = s.describe(r, d, list, spreadDF)
-	s.effects = s.figures(s.overlaps(engine.Gram(), list, r))
-	return s, s.settleRows(ctx, engine, problem, r, d, o.Seed)
+	return s, func() error {
+		s.effects = s.figures(s.overlaps(engine.Gram(), list, r))
+		return s.settleRows(ctx, engine, problem, r, d, o.Seed)
+	}, nil
+}
+
+// fewer is the advice where there are too few rows.
+func fewer(m Model) string {
+	if len(m.Effects) > 0 {
+		return "use more observations, or fewer covariates"
+	}
+	return "use more observations, or --surface none"
 }
 
 // distribution returns the model's distribution, with its shape where that is given.
@@ -77,9 +97,7 @@ func (m Model) distribution() (response.Distribution, error) {
 	if err != nil || m.Shape == nil {
 		return dist, err
 	}
-	shaped, ok := dist.(interface {
-		WithShape(v float64) (response.Shaped, error)
-	})
+	shaped, ok := dist.(response.Shaped)
 	if !ok {
 		return nil, unfit("leave the shape out", "the %s distribution has no shape to be given", m.Distribution)
 	}
@@ -110,16 +128,27 @@ func (m Model) effects() []Effect {
 // fittable refuses data whose likelihood has its maximum at the edge, or none.
 func fittable(dist response.Distribution, d Data) error {
 	n := len(d.Response)
-	if n == 0 {
-		return unfit("", "there are no observations")
+	switch n {
+	case 0:
+		return unfit("name a table with rows that can be used", "there are no observations")
+	case 1:
+		return unfit("a map needs more of them", "there is one observation, which says nothing of the variation between places")
 	}
 	var total, trials, weight, lo, hi float64 = 0, 0, 0, math.Inf(1), math.Inf(-1)
+	kind := kindOf(dist)
+	_, shaped := dist.(response.Shaped)
 	for i, o := range observations(d) {
 		y := o.Y
-		if y < 0 && dist.Name() != "gaussian" {
+		switch {
+		case y < 0 && kind == counts:
 			return unfit("leave the row out", "row %d: a count of %g is negative", i+1, y)
-		}
-		if dist.Name() == "binomial" && d.Trials != nil && !(positive(o.Trials) && y <= o.Trials) {
+		case y < 0 && kind != measurements:
+			return unfit("leave the row out", "row %d: %g is negative", i+1, y)
+		case shaped && kind != amounts && (y != math.Floor(y) || o.Trials != math.Floor(o.Trials)):
+			return unfit("leave the row out, or use "+plainOf[dist.Name()], "row %d: %g is not a whole number, and %s needs one", i+1, y, dist.Name())
+		case y == 0 && kind == positiveAmounts:
+			return unfit("use tweedie where amounts can be 0, or leave the row out", "row %d: the gamma distribution has no 0", i+1)
+		case kind == shares && d.Trials != nil && !(positive(o.Trials) && y <= o.Trials):
 			return unfit("leave the row out", "row %d: %g positive of %g examined", i+1, y, o.Trials)
 		}
 		total += o.Weight * y
@@ -127,29 +156,51 @@ func fittable(dist response.Distribution, d Data) error {
 		weight += o.Weight
 		lo, hi = math.Min(lo, y), math.Max(hi, y)
 	}
-	switch dist.Name() {
-	case "poisson":
-		if total == 0 {
-			return unfit("nothing can be said but that the level is low: see the rule of three in any text on proportions",
-				"every count is zero, so no level can be estimated")
-		}
-	case "binomial":
-		if d.Trials == nil {
-			return unfit("name the column with --trials", "positives need the number examined behind them")
-		}
-		if total == 0 || total == trials {
-			return unfit("nothing can be said but that the share is near its end: see the rule of three in any text on proportions",
-				"positives are separated: every row has %s positive, so no level can be estimated", map[bool]string{true: "none", false: "all"}[total == 0])
-		}
-	case "gaussian":
-		if lo == hi {
-			return unfit("", "the response is %g in every row: there is no variation to map", lo)
-		}
-		if dist.Link() == "log" && total <= 0 {
-			return unfit("use --link identity", "the mean response is %g, and a log link needs a positive mean", total/weight)
-		}
+	const ruleOfThree = "see the rule of three in any text on proportions"
+	switch {
+	case kind == counts && total == 0:
+		return unfit("nothing can be said but that the level is low: "+ruleOfThree, "every count is zero, so no level can be estimated")
+	case kind == amounts && total == 0:
+		return unfit("nothing can be said but that the level is low", "every amount is zero, so no level can be estimated")
+	case kind == shares && d.Trials == nil:
+		return unfit("name the column with --trials", "positives need the number examined behind them")
+	case kind == shares && (total == 0 || total == trials):
+		return unfit("nothing can be said but that the share is near its end: "+ruleOfThree,
+			"positives are separated: every row has %s positive, so no level can be estimated", map[bool]string{true: "none", false: "all"}[total == 0])
+	case lo == hi && (kind == measurements || kind == positiveAmounts || kind == amounts):
+		return unfit("check that it is the right column", "the response is %g in every row: there is no variation to map", lo)
+	case kind == measurements && dist.Link() == "log" && total <= 0:
+		return unfit("use --link identity", "the mean response is %g, and a log link needs a positive mean", total/weight)
 	}
 	return nil
+}
+
+// plainOf names the distribution that takes fractions where the one with extra variation does not.
+var plainOf = map[string]string{"negative-binomial": "poisson", "beta-binomial": "binomial"}
+
+// kind is what a distribution's responses are.
+type kind int
+
+const (
+	measurements    kind = iota
+	counts               // 0, 1, 2, ...
+	shares               // positives among trials
+	amounts              // 0 or more
+	positiveAmounts      // more than 0
+)
+
+func kindOf(dist response.Distribution) kind {
+	switch dist.Name() {
+	case "poisson", "negative-binomial":
+		return counts
+	case "binomial", "beta-binomial":
+		return shares
+	case "tweedie":
+		return amounts
+	case "gamma":
+		return positiveAmounts
+	}
+	return measurements
 }
 
 // lay chooses the knots and builds the surface's basis.
@@ -228,11 +279,11 @@ func (s *Surface) columns(ctx context.Context, d Data, o Options) (*design, erro
 	}
 	q, bound, n := s.border.size(), s.border.bound(), d.Places.Len()
 	if q+bound > maxBorder || float64(q+bound)*float64(s.core.columns()) > maxProduct {
-		return nil, &Error{Message: fmt.Sprintf("%d columns of covariates beside %d of the surface are more than can be fitted (%d, and %g for the product)",
+		return nil, &Error{Message: fmt.Sprintf("%d columns of covariates beside %d of the surface are more than can be fitted (%d, and %.0f for the product)",
 			q+bound, s.core.columns(), maxBorder, maxProduct), Advice: "use fewer covariates, levels or groups, or fewer knots", Request: true}
 	}
 	if free := s.border.null + q; n < free {
-		return nil, unfit("use more observations or fewer covariates", "%d observations cannot settle %d unpenalised coefficients", n, free)
+		return nil, unfit(fewer(s.model), "%d observations cannot settle %d unpenalised coefficients", n, free)
 	}
 	dg := &design{x: d.Places.X, y: d.Places.Y, core: s.core, bound: bound, scratch: make([]designScratch, blocks.Workers(o.Workers))}
 	if dg.of, err = s.core.levels(d.Covariates); err != nil {
@@ -338,7 +389,7 @@ func offsets(d Data) []float64 {
 // explain says in the user's words what the core ran into.
 func explain(err error, dist response.Distribution) error {
 	switch {
-	case errors.Is(err, penfit.ErrSeparated) && dist.Name() == "binomial":
+	case errors.Is(err, penfit.ErrSeparated) && kindOf(dist) == shares:
 		return &Error{Cause: err, Message: "positives are separated: a straight line or a covariate parts the rows that are all positive from those that are not, so the chance runs off to 0 or 1",
 			Advice: "leave covariates out, use --surface none, or gather more rows where both outcomes occur"}
 	case dist.Name() == "gaussian" && dist.Link() == "log" && (errors.Is(err, penfit.ErrSeparated) || errors.Is(err, penfit.ErrSingular)):

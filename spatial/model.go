@@ -3,6 +3,8 @@ package spatial
 import (
 	"fmt"
 	"math"
+
+	"drumlin/spatial/response"
 )
 
 // Places are where rows lie, in metres. With Start nil row i is the point (X[i], Y[i]). Else row i is the set of points
@@ -164,7 +166,7 @@ func unfit(advice, format string, args ...any) error {
 }
 
 // check panics if slices do not have one value a row, and returns an error for values that no model can take.
-func (d Data) check(m Model) error {
+func (d Data) check(m Model, dist response.Distribution) error {
 	n := d.Places.Len()
 	if len(d.Response) != n {
 		panic(lengths)
@@ -187,10 +189,10 @@ func (d Data) check(m Model) error {
 			return unfit("leave the row out", "row %d: a denominator or weight that is not a positive number", i+1)
 		}
 	}
-	if d.Exposure != nil && m.Distribution != "poisson" {
+	if k := kindOf(dist); d.Exposure != nil && k != counts && k != amounts {
 		return unfit("name trials for positives, or leave the denominator out", "a denominator goes with counts, not with the %s distribution", m.Distribution)
 	}
-	if d.Trials != nil && m.Distribution != "binomial" {
+	if d.Trials != nil && kindOf(dist) != shares {
 		return unfit("leave the trials out", "trials go with positives, not with the %s distribution", m.Distribution)
 	}
 	if m.ScaleVariation && m.Distribution != "poisson" && m.Distribution != "binomial" {
@@ -201,6 +203,9 @@ func (d Data) check(m Model) error {
 	}
 	if m.ScaleVariation && m.Smoothness.Method == GCV {
 		return unfit("let restricted likelihood choose", "scaled variation and cross-validation do not go together")
+	}
+	if _, shaped := dist.(response.Shaped); shaped && m.Shape == nil && m.Smoothness.Method == GCV {
+		return unfit("use restricted likelihood, or give the shape", "cross-validation cannot choose the shape of the %s distribution", m.Distribution)
 	}
 	if l := m.Smoothness.Lambda; m.Smoothness.Method == Given && !(l >= 0 && !bad(l)) {
 		return unfit("give a smaller penalty as a smaller number: 0 interpolates", "a smoothness of %g is not a number from 0 up", l)

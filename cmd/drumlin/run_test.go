@@ -74,7 +74,7 @@ func TestMapHandsOverTheSettings(t *testing.T) {
 		t.Errorf("out: %q", got.dirs)
 	}
 	// The settings come resolved: with the defaults and the choices that need no data.
-	if *s.MaxKnots != 200 || *s.Distribution != plan.Gaussian || s.Said("distribution") {
+	if !s.MaxKnots.Auto || *s.Distribution != plan.Gaussian || s.Said("distribution") {
 		t.Errorf("got %v", s.Effective())
 	}
 }

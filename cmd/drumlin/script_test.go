@@ -24,7 +24,7 @@ func TestMain(m *testing.M) {
 }
 
 // observed are the open data sets that the scripts find in the folder $DATA; see testdata/README.md at the top.
-var observed = []string{"meuse.csv", "nc_sids.csv", "nc_sids_counties.geojson", "burkina_faso_malaria.csv"}
+var observed = []string{"meuse.csv", "nc_sids.csv", "nc_sids_counties.geojson", "burkina_faso_malaria.csv", "rongelap_radiation.csv", "beet_webworms.csv"}
 
 // TestScripts runs the program as a person would. Each script keeps one promise.
 func TestScripts(t *testing.T) {

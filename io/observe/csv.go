@@ -86,7 +86,7 @@ func newRows(h header, want Request) (*rows, error) {
 	}{
 		{response, named(want.Response)}, {trials, named(want.Trials)}, {denominator, named(want.Denominator)},
 		{weight, named(want.Weight)}, {coordinateX, named(c.x)}, {coordinateY, named(c.y)},
-		{linear, want.Linear}, {category, want.Category}, {keep, want.Keep},
+		{linear, want.Linear}, {category, want.Category}, {category, h.among(want.Optional)}, {keep, want.Keep},
 	}
 	for _, list := range lists {
 		for _, name := range list.names {

@@ -4,6 +4,7 @@ import (
 	"encoding/csv"
 	"fmt"
 	"io"
+	"slices"
 	"strings"
 )
 
@@ -57,6 +58,16 @@ func (h header) find(name, part string) (int, error) {
 		}
 	}
 	return 0, absent(h.source, h.line, name, part, h.names)
+}
+
+// among returns those of names that the header has.
+func (h header) among(names []string) (there []string) {
+	for _, name := range names {
+		if slices.Contains(h.names, name) {
+			there = append(there, name)
+		}
+	}
+	return there
 }
 
 // pair is two names by which coordinate columns are known.

@@ -39,6 +39,7 @@ type Request struct {
 	Axes        Axes     // what the coordinates are
 	Linear      []string // covariates that are finite numbers
 	Category    []string // covariates that are text, not missing
+	Optional    []string // categories that the table need not have: where it has the column, it is one of Category
 	Keep        []string // text to carry along; may be missing, is never a reason to set a row aside
 	Strict      bool     // refuse the first row that cannot be used instead of setting it aside
 }
@@ -83,7 +84,7 @@ func (q Request) overlap() error {
 	for _, list := range []struct {
 		names []string
 		part  string
-	}{{q.Linear, "a linear covariate"}, {q.Category, "a category"}} {
+	}{{q.Linear, "a linear covariate"}, {q.Category, "a category"}, {q.Optional, "a category"}} {
 		for _, name := range list.names {
 			switch before, seen := covariate[name]; {
 			case name == "":

@@ -28,9 +28,13 @@ func (s Settings) Resolve() (Settings, error) {
 // links lists the links that suit a distribution, the usual one first. A mean that may be negative adds up as it is;
 // a count multiplies; a share adds up in its logit (common practice, no source).
 var links = map[string][]string{
-	Gaussian: {Identity, Log},
-	Poisson:  {Log},
-	Binomial: {Logit},
+	Gaussian:         {Identity, Log},
+	Gamma:            {Log},
+	Tweedie:          {Log},
+	Poisson:          {Log},
+	NegativeBinomial: {Log},
+	Binomial:         {Logit, ComplementaryLogLog},
+	BetaBinomial:     {Logit},
 }
 
 // distribution returns what was said or else what follows from the other words, and why.

@@ -22,13 +22,25 @@ type Settings struct {
 	Trials   *string // column
 	Weight   *string // column
 
-	Distribution *string // Gaussian, Poisson or Binomial
-	Link         *string // Identity, Log or Logit
-	Surface      *string // ThinPlate or NoSurface
-	MaxKnots     *int
-	Smoothness   *Smoothness
-	Linear       []string // columns
-	Category     []string // columns
+	Distribution   *string // Gaussian, Poisson, NegativeBinomial, Binomial, BetaBinomial, Gamma or Tweedie
+	Link           *string // Identity, Log, Logit or ComplementaryLogLog
+	Shape          *float64
+	ExtraVariation *string // Auto, NoVariation or ScaleVariation
+
+	Surface               *string // ThinPlate or NoSurface
+	SurfacePer            *string // column
+	SurfaceSmoothness     *string // SharedSmoothness or OwnSmoothness
+	Shrink                *bool
+	MaxKnots              *Knots
+	Smoothness            *Smoothness
+	SmoothnessUncertainty *string  // Auto, On or Off
+	Linear                []string // columns
+	Curve                 []string // columns
+	CurvePer              []CurvePer
+	Category              []string // columns
+	Group                 []string // columns
+	TestVariation         *bool
+	Also                  []Alternative
 
 	CellSize    *float64 // metres
 	CellsAcross *int
@@ -63,18 +75,22 @@ const byDefault = "default"
 // Defaults returns the settings that hold where nothing was said. This is the only place where they are written.
 func Defaults() Settings {
 	s := Settings{
-		Surface:     new(ThinPlate),
-		MaxKnots:    new(200),
-		Smoothness:  &Smoothness{By: ByREML},
-		CellsAcross: new(100),
-		Per:         new(1.0),
-		Confidence:  new(0.95),
-		Write:       []string{CSV, GeoJSON, Pictures, Saved},
-		Strict:      new(false),
-		Seed:        new(uint64(1)),
-		Workers:     new(runtime.GOMAXPROCS(0)),
-		Force:       new(false),
-		Quiet:       new(false),
+		ExtraVariation:        new(Auto),
+		Surface:               new(ThinPlate),
+		SmoothnessUncertainty: new(Auto),
+		TestVariation:         new(false),
+		Shrink:                new(false),
+		MaxKnots:              &Knots{Auto: true},
+		Smoothness:            &Smoothness{By: ByREML},
+		CellsAcross:           new(100),
+		Per:                   new(1.0),
+		Confidence:            new(0.95),
+		Write:                 []string{CSV, GeoJSON, Pictures, Saved},
+		Strict:                new(false),
+		Seed:                  new(uint64(1)),
+		Workers:               new(runtime.GOMAXPROCS(0)),
+		Force:                 new(false),
+		Quiet:                 new(false),
 	}
 	s.why = map[string]string{}
 	for _, w := range words {
@@ -163,13 +179,35 @@ func (s Settings) moot(name string) bool {
 	switch name {
 	case "cells-across":
 		return s.CellSize != nil || s.At != nil
-	case "max-knots", "smoothness":
+	case "max-knots", "shrink":
 		return s.Surface != nil && *s.Surface == NoSurface
+	case "smoothness", "smoothness-uncertainty":
+		return !s.hasSmooths()
+	case "extra-variation":
+		d, _ := s.distribution()
+		chosen := !s.Said("distribution") && (d == NegativeBinomial || d == BetaBinomial)
+		return !chosen && !s.ChoosesVariation()
 	case "per":
 		d, _ := s.distribution()
 		return d == Gaussian
 	}
 	return false
+}
+
+// hasSmooths reports whether anything has a penalty.
+func (s Settings) hasSmooths() bool {
+	return s.Surface == nil || *s.Surface != NoSurface || len(s.Curve)+len(s.CurvePer)+len(s.Group) > 0
+}
+
+// ChoosesVariation reports whether the data are to decide between the distribution of counts or positives and the one
+// with extra variation. A distribution that was said stays, unless the choice was asked for as well; cross-validation
+// cannot choose a shape.
+func (s Settings) ChoosesVariation() bool {
+	d, _ := s.distribution()
+	free := !s.Said("distribution") || s.Said("extra-variation")
+	gcv := s.Smoothness != nil && s.Smoothness.By == ByGCV
+	auto := s.ExtraVariation == nil || *s.ExtraVariation == Auto
+	return auto && free && !gcv && (d == Poisson || d == Binomial && s.link() == Logit)
 }
 
 // Denominator returns the kind of denominator that was named ("people", "area", "effort" or "expected") and its

@@ -5,6 +5,8 @@ import (
 	"slices"
 	"strings"
 	"testing"
+
+	"drumlin/spatial/response"
 )
 
 // say makes settings from pairs of "word value", as they would be said.
@@ -109,7 +111,7 @@ func TestChoosePanics(t *testing.T) {
 // TestDefaults spells out the defaults that the design fixes.
 func TestDefaults(t *testing.T) {
 	want := map[string]string{
-		"surface": "thin-plate", "max-knots": "200", "smoothness": "reml", "cells-across": "100", "per": "1",
+		"surface": "thin-plate", "max-knots": "auto", "extra-variation": "auto", "smoothness-uncertainty": "auto", "smoothness": "reml", "cells-across": "100", "per": "1",
 		"confidence": "0.95", "write": "csv,geojson,pictures,saved", "seed": "1",
 	}
 	for _, w := range Words() {
@@ -145,6 +147,11 @@ func TestResolveChooses(t *testing.T) {
 		{"area with the unit in the name", with("area area_ha"), "poisson", "log", []string{"area_unit", "distribution", "link"}},
 		{"trials", with("trials n"), "binomial", "logit", []string{"distribution", "link"}},
 		{"counts without a denominator", with("distribution poisson"), "poisson", "log", []string{"link"}},
+		{"amounts", with("distribution tweedie", "effort hours"), "tweedie", "log", []string{"link"}},
+		{"positive measurements", with("distribution gamma"), "gamma", "log", []string{"link"}},
+		{"counts that scatter", with("people pop", "distribution negative-binomial"), "negative-binomial", "log", []string{"link"}},
+		{"positives that scatter", with("trials n", "distribution beta-binomial"), "beta-binomial", "logit", []string{"link"}},
+		{"extreme values", with("trials n", "link complementary-log-log"), "binomial", "complementary-log-log", []string{"distribution"}},
 		{"all said", with("distribution binomial", "trials n", "link logit"), "binomial", "logit", nil},
 	}
 	for _, test := range tests {
@@ -176,6 +183,100 @@ func TestResolveChooses(t *testing.T) {
 	}
 }
 
+// TestChoosesVariation: the data decide about extra variation where a count or a number positive is all that is known.
+func TestChoosesVariation(t *testing.T) {
+	tests := []struct {
+		name string
+		said []string
+		want bool
+	}{
+		{"counts", with("people pop"), true},
+		{"positives", with("trials n"), true},
+		{"asked for", with("people pop", "extra-variation auto"), true},
+		{"asked for beside a distribution", with("distribution poisson", "extra-variation auto"), true},
+		{"a distribution that was said", with("people pop", "distribution poisson"), false},
+		{"scaled", with("people pop", "extra-variation scale"), false},
+		{"none", with("trials n", "extra-variation none"), false},
+		{"cross-validated", with("people pop", "smoothness gcv"), false},
+		{"a number", with("people pop", "smoothness 4"), true},
+		{"another link", with("trials n", "link complementary-log-log"), false},
+		{"measurements", with(), false},
+		{"scattering already", with("people pop", "distribution negative-binomial"), false},
+	}
+	for _, test := range tests {
+		t.Run(test.name, func(t *testing.T) {
+			s, err := say(t, test.said...).Resolve()
+			if err != nil {
+				t.Fatal(err)
+			}
+			if s.ChoosesVariation() != test.want {
+				t.Errorf("got %v", !test.want)
+			}
+		})
+	}
+	// What the data chose is not what somebody said, and the record keeps that they were to choose.
+	s, err := say(t, with("people pop")...).Resolve()
+	if err != nil {
+		t.Fatal(err)
+	}
+	s.Choose("distribution", NegativeBinomial, "the counts scatter more than poisson")
+	if e, ok := entry(s.Effective(), "extra_variation"); !ok || e.Value != Auto || e.Chosen {
+		t.Errorf("recorded %v: %+v", ok, e)
+	}
+}
+
+// TestCovariates: numbers and categories with those that curves and surfaces are per, each once.
+func TestCovariates(t *testing.T) {
+	s := say(t, "linear a", "curve b", "curve-per c=soil", "curve-per d=soil", "category lime", "surface-per year", "group observer")
+	if got := s.Numbers(); !slices.Equal(got, []string{"a", "b", "c", "d"}) {
+		t.Errorf("numbers %q", got)
+	}
+	if got := s.Categories(); !slices.Equal(got, []string{"lime", "soil", "year"}) {
+		t.Errorf("categories %q", got)
+	}
+	s = say(t, "curve-per c=soil", "category soil", "surface-per soil")
+	if got := s.Categories(); !slices.Equal(got, []string{"soil"}) {
+		t.Errorf("categories %q", got)
+	}
+}
+
+// TestShapeBounds: what a shape may be is what the distribution takes.
+func TestShapeBounds(t *testing.T) {
+	for name, shape := range shapes {
+		d, err := response.New(name, "")
+		if err != nil {
+			t.Fatal(err)
+		}
+		shaped := d.(response.Shaped)
+		if shaped.ShapeName() != shape.name {
+			t.Errorf("%s: its shape is the %s, not the %s", name, shaped.ShapeName(), shape.name)
+		}
+		for v, want := range map[float64]bool{shape.lo: true, shape.hi: true, shape.lo * (1 - 1e-9): false, shape.hi * (1 + 1e-9): false} {
+			if _, err := shaped.WithShape(v); (err == nil) != want {
+				t.Errorf("%s takes a %s of %g: %v, %v", name, shape.name, v, !want, err)
+			}
+		}
+	}
+	for _, name := range response.Names() {
+		d, err := response.New(name, "")
+		if err != nil {
+			t.Fatal(err)
+		}
+		_, shaped := d.(response.Shaped)
+		if _, ok := shapes[name]; ok != shaped {
+			t.Errorf("%s has a shape: %v, and a bound: %v", name, shaped, ok)
+		}
+		if _, ok := links[name]; !ok {
+			t.Errorf("no word of links for %s", name)
+		}
+		for _, link := range links[name] {
+			if _, err := response.New(name, link); err != nil {
+				t.Errorf("%s with %s: %v", name, link, err)
+			}
+		}
+	}
+}
+
 func TestUnitInName(t *testing.T) {
 	for column, want := range map[string]string{
 		"area_ha": "ha", "Area (km2)": "km2", "m2": "m2", "area.HA": "ha", "alpha": "", "area": "", "ha_left": "", "": "", "%": "",
@@ -199,7 +300,11 @@ func TestMootDefaults(t *testing.T) {
 		{"cell size", with("cell-size 5"), []string{"cells_across"}, []string{"cell_size"}},
 		{"places", with("at p.csv"), []string{"cells_across"}, []string{"at"}},
 		{"no surface", with("surface none"), []string{"max_knots", "smoothness"}, []string{"surface", "cells_across"}},
-		{"rates", with("people pop"), nil, []string{"per"}},
+		{"rates", with("people pop"), nil, []string{"per", "extra_variation"}},
+		{"measurements", with(), []string{"extra_variation"}, []string{"smoothness_uncertainty", "shrink"}},
+		{"a distribution that was said", with("people pop", "distribution poisson"), []string{"extra_variation"}, []string{"distribution"}},
+		{"a regression", with("surface none", "linear d", "at p.csv"), []string{"smoothness_uncertainty", "shrink", "max_knots"}, nil},
+		{"curves alone", with("surface none", "curve d", "at p.csv"), []string{"shrink", "max_knots"}, []string{"smoothness_uncertainty", "smoothness"}},
 	}
 	for _, test := range tests {
 		t.Run(test.name, func(t *testing.T) {

@@ -2,6 +2,7 @@ package plan
 
 import (
 	"slices"
+	"strconv"
 	"strings"
 )
 
@@ -15,6 +16,9 @@ func (s Settings) Validate() error {
 		areaHasUnit,
 		distributionSuits,
 		linkSuits,
+		shapeSuits,
+		variationSuits,
+		uncertaintySuits,
 		weightSuits,
 		surfaceSuits,
 		covariatesOnce,
@@ -23,6 +27,7 @@ func (s Settings) Validate() error {
 		perSuits,
 		thresholdSuits,
 		referenceSuits,
+		alternativesSuit,
 	} {
 		if err := rule(s); err != nil {
 			return err
@@ -92,15 +97,18 @@ func distributionSuits(s Settings) error {
 	case kind != "" && d == Gaussian:
 		return refuse("distribution", "divide the measurement yourself, or leave out --distribution for a count",
 			"%s is for counts, and gaussian is for measurements, which have no denominator", kind)
-	case kind != "" && d == Binomial:
+	case kind != "" && d == Gamma:
+		return refuse("distribution", "divide the measurement yourself, or use tweedie for amounts",
+			"%s is for counts and amounts, and gamma is for measurements, which have no denominator", kind)
+	case kind != "" && (d == Binomial || d == BetaBinomial):
 		return refuse("distribution", "name the number examined with --trials",
-			"%s is for counts, and binomial is for positives among trials", kind)
-	case s.Trials != nil && d != Binomial:
+			"%s is for counts, and %s is for positives among trials", kind, d)
+	case s.Trials != nil && d != Binomial && d != BetaBinomial:
 		return refuse("distribution", "leave out --distribution, or --trials",
 			"positives among trials are binomial, not %s", d)
-	case s.Trials == nil && d == Binomial:
+	case s.Trials == nil && (d == Binomial || d == BetaBinomial):
 		return refuse("distribution", "name the number examined with --trials; for a response of 0 and 1 add a column of ones",
-			"binomial needs the number examined behind each number positive")
+			"%s needs the number examined behind each number positive", d)
 	}
 	return nil
 }
@@ -118,23 +126,104 @@ func linkSuits(s Settings) error {
 }
 
 func weightSuits(s Settings) error {
-	if d, _ := s.distribution(); s.Weight != nil && d != Gaussian {
+	if d, _ := s.distribution(); s.Weight != nil && d != Gaussian && d != Gamma && d != Tweedie {
 		return refuse("weight", "leave out --weight",
-			"counts and positives carry their own weight; only measurements (gaussian) can be given one")
+			"counts and positives carry their own weight; only measurements (gaussian, gamma, tweedie) can be given one")
+	}
+	return nil
+}
+
+// shapes lists the distributions with a shape, and what it may be; spatial/response has the same bounds.
+var shapes = map[string]struct {
+	name   string
+	lo, hi float64
+}{
+	NegativeBinomial: {"theta", 0.001, 1e7},
+	BetaBinomial:     {"correlation", 1e-7, 0.99},
+	Tweedie:          {"power", 1.01, 1.99},
+}
+
+func shapeSuits(s Settings) error {
+	if s.Shape == nil {
+		return nil
+	}
+	d, _ := s.distribution()
+	shape, ok := shapes[d]
+	switch {
+	case !ok:
+		return refuse("shape", "name negative-binomial, beta-binomial or tweedie with --distribution, or leave out --shape", "%s has no shape", d)
+	case !(*s.Shape >= shape.lo && *s.Shape <= shape.hi):
+		return refuse("shape", "leave out --shape to let the data choose", "the %s of %s lies between %s and %s, not at %s",
+			shape.name, d, decimal(shape.lo), decimal(shape.hi), spoken(*s.Shape))
+	}
+	return nil
+}
+
+// decimal is a number without a power of ten.
+func decimal(v float64) string { return strconv.FormatFloat(v, 'f', -1, 64) }
+
+func variationSuits(s Settings) error {
+	if s.ExtraVariation == nil || !s.Said("extra-variation") || *s.ExtraVariation == NoVariation {
+		return nil
+	}
+	d, _ := s.distribution()
+	gcv := s.Smoothness != nil && s.Smoothness.By == ByGCV
+	switch {
+	case d != Poisson && d != Binomial:
+		return refuse("extra-variation", "leave it out", "%s estimates its variation itself; this is for poisson and binomial", d)
+	case gcv:
+		return refuse("extra-variation", "leave out --smoothness gcv", "cross-validation cannot choose a shape or a scale")
+	case *s.ExtraVariation == Auto && s.link() == ComplementaryLogLog:
+		return refuse("extra-variation", "use scale, or the logit link", "beta-binomial has no complementary log-log link to choose it with")
+	}
+	return nil
+}
+
+// uncertaintySuits refuses the uncertainty of a smoothness that no restricted likelihood chose.
+func uncertaintySuits(s Settings) error {
+	if s.SmoothnessUncertainty == nil || *s.SmoothnessUncertainty != On || !s.Said("smoothness-uncertainty") {
+		return nil
+	}
+	by := ByREML
+	if s.Smoothness != nil {
+		by = s.Smoothness.By
+	}
+	switch {
+	case by == ByGCV:
+		return refuse("smoothness-uncertainty", "leave it out, or leave out --smoothness gcv", "it follows from the restricted likelihood, and cross-validation chooses the smoothness")
+	case s.ExtraVariation != nil && *s.ExtraVariation == ScaleVariation:
+		return refuse("smoothness-uncertainty", "leave it out, or leave out --extra-variation scale", "it is not known where the variation is scaled")
+	case by == ByNumber && len(s.Curve)+len(s.CurvePer)+len(s.Group) == 0:
+		return refuse("smoothness-uncertainty", "leave it out, or leave out --smoothness", "the smoothness is given as a number, so nothing about it is uncertain")
 	}
 	return nil
 }
 
 func surfaceSuits(s Settings) error {
+	if s.SurfaceSmoothness != nil && s.SurfacePer == nil {
+		return refuse("surface-smoothness", "name the category that surfaces are for each level of with --surface-per, or leave it out", "there is one surface only")
+	}
 	if s.Surface == nil || *s.Surface != NoSurface {
 		return nil
 	}
-	for _, name := range []string{"smoothness", "max-knots"} {
-		if s.Said(name) {
+	for _, name := range []string{"smoothness", "smoothness-uncertainty", "max-knots", "surface-per", "surface-smoothness", "shrink"} {
+		if s.Said(name) && !s.actsOnCurves(name) {
 			return refuse(name, "leave out --"+name+", or --surface none", "there is no surface for it to act on")
 		}
 	}
 	return nil
+}
+
+// actsOnCurves reports whether a word that shapes the surface shapes curves and groups as well. A smoothness given as a
+// number is that of the surface alone.
+func (s Settings) actsOnCurves(name string) bool {
+	switch name {
+	case "smoothness":
+		return s.hasSmooths() && s.Smoothness.By != ByNumber
+	case "smoothness-uncertainty":
+		return s.hasSmooths() || *s.SmoothnessUncertainty != On
+	}
+	return false
 }
 
 func covariatesOnce(s Settings) error {
@@ -143,29 +232,75 @@ func covariatesOnce(s Settings) error {
 		other, again := taken[c.column]
 		switch {
 		case s.Response != nil && c.column == *s.Response:
-			return refuse(c.role, "", "column %q is the response and cannot explain itself", c.column)
-		case again && other == c.role:
-			return refuse(c.role, "", "column %q is named twice", c.column)
+			return refuse(c.word, "", "column %q is the response and cannot explain itself", c.column)
+		case again && other == c.word:
+			return refuse(c.word, "", "column %q is named twice", c.column)
 		case again:
-			return refuse(c.role, "keep one of the two", "column %q is already %s", c.column, other)
+			return refuse(c.word, "keep one of the two", "column %q is already %s", c.column, other)
 		}
-		taken[c.column] = c.role
+		taken[c.column] = c.word
 	}
 	return nil
 }
 
-type covariate struct{ role, column string }
+// covariate is a column with its role and the word that named it.
+type covariate struct{ word, role, column string }
 
 func (s Settings) covariates() []covariate {
 	var list []covariate
 	for _, c := range s.Linear {
-		list = append(list, covariate{"linear", c})
+		list = append(list, covariate{"linear", "linear", c})
+	}
+	for _, c := range s.Curve {
+		list = append(list, covariate{"curve", "curve", c})
+	}
+	for _, c := range s.CurvePer {
+		list = append(list, covariate{"curve-per", "curve", c.Curve})
 	}
 	for _, c := range s.Category {
-		list = append(list, covariate{"category", c})
+		list = append(list, covariate{"category", "category", c})
+	}
+	for _, c := range s.Group {
+		list = append(list, covariate{"group", "group", c})
+	}
+	for _, c := range s.levels() {
+		word := "surface-per"
+		if slices.ContainsFunc(s.CurvePer, func(p CurvePer) bool { return p.Category == c }) {
+			word = "curve-per"
+		}
+		list = append(list, covariate{word, "category", c})
 	}
 	return list
 }
+
+// levels lists the categories that curves and surfaces are per and that are not named as categories themselves.
+func (s Settings) levels() []string {
+	var list []string
+	add := func(c string) {
+		if !slices.Contains(s.Category, c) && !slices.Contains(list, c) {
+			list = append(list, c)
+		}
+	}
+	for _, c := range s.CurvePer {
+		add(c.Category)
+	}
+	if s.SurfacePer != nil {
+		add(*s.SurfacePer)
+	}
+	return list
+}
+
+// Numbers lists the columns of numeric covariates, Categories those of categories, groups apart.
+func (s Settings) Numbers() []string {
+	list := slices.Concat(s.Linear, s.Curve)
+	for _, c := range s.CurvePer {
+		list = append(list, c.Curve)
+	}
+	return list
+}
+
+// Categories lists the columns of categories, those that curves and surfaces are per among them.
+func (s Settings) Categories() []string { return slices.Concat(s.Category, s.levels()) }
 
 func placesSuit(s Settings) error {
 	if s.CellSize != nil && s.Said("cells-across") {
@@ -209,7 +344,7 @@ func holdsSuit(s Settings) error {
 	}
 	var missing, add []string
 	for _, c := range s.covariates() {
-		if !held[c.column] {
+		if !held[c.column] && c.role != "group" {
 			missing = append(missing, c.column)
 			add = append(add, "--hold "+c.column+"="+usualHold(c.role))
 		}
@@ -231,14 +366,16 @@ func usualHold(role string) string {
 func holdSuits(h Hold, roles map[string]string, names []string) error {
 	switch roles[h.Name] {
 	case "":
-		hint := "name it with --linear or --category, or leave out --hold"
+		hint := "name it with --linear, --curve or --category, or leave out --hold"
 		if near, ok := Nearest(h.Name, names); ok {
 			hint = "did you mean " + near + "?"
 		}
 		return refuse("hold", hint, "%s is not a covariate of the model", h.Name)
-	case "linear":
+	case "group":
+		return refuse("hold", "leave it out", "%s is a group, and the map shows the average one", h.Name)
+	case "linear", "curve":
 		if _, err := parseNumber(h.Value); err != nil && h.Value != AtMean {
-			return refuse("hold", "for example --hold "+h.Name+"=mean", "%s is linear and is held at a number or at mean, not at %q",
+			return refuse("hold", "for example --hold "+h.Name+"=mean", "%s is a number and is held at one or at mean, not at %q",
 				h.Name, h.Value)
 		}
 	case "category":
@@ -278,11 +415,26 @@ func thresholdSuits(s Settings) error {
 	case s.link() != Identity && *s.Threshold <= 0:
 		return refuse("threshold", "give a level above 0, in the unit of the map",
 			"the mean is above 0 everywhere, so it exceeds %s with certainty", spoken(*s.Threshold))
-	case d == Binomial && *s.Threshold >= per:
+	case (d == Binomial || d == BetaBinomial) && *s.Threshold >= per:
 		return refuse("threshold", "the threshold is in the unit of the map, which --per decides",
 			"a share per %s stays below %s, so it never exceeds %s", spoken(per), spoken(per), spoken(*s.Threshold))
 	}
 	return nil
+}
+
+func alternativesSuit(s Settings) error {
+	if len(s.Also) == 0 {
+		return nil
+	}
+	names := map[string]bool{}
+	for _, a := range s.Also {
+		if names[a.Name] {
+			return refuse("also", "", "%q is said twice", a.Name)
+		}
+		names[a.Name] = true
+	}
+	_, err := s.Candidates()
+	return err
 }
 
 func referenceSuits(s Settings) error {

@@ -14,13 +14,28 @@ const (
 	Hectares         = "ha"
 	SquareKilometres = "km2"
 
-	Gaussian = "gaussian"
-	Poisson  = "poisson"
-	Binomial = "binomial"
+	Gaussian         = "gaussian"
+	Poisson          = "poisson"
+	NegativeBinomial = "negative-binomial"
+	Binomial         = "binomial"
+	BetaBinomial     = "beta-binomial"
+	Gamma            = "gamma"
+	Tweedie          = "tweedie"
 
-	Identity = "identity"
-	Log      = "log"
-	Logit    = "logit"
+	Identity            = "identity"
+	Log                 = "log"
+	Logit               = "logit"
+	ComplementaryLogLog = "complementary-log-log"
+
+	Auto           = "auto" // the data decide
+	ScaleVariation = "scale"
+	NoVariation    = "none"
+
+	On  = "on"
+	Off = "off"
+
+	SharedSmoothness = "shared"
+	OwnSmoothness    = "own"
 
 	ThinPlate = "thin-plate"
 	NoSurface = "none"
@@ -52,6 +67,24 @@ func (s Smoothness) plain() any {
 	}
 	return s.By
 }
+
+// Knots is how many basis functions a surface may have.
+type Knots struct {
+	Auto bool // as many as the fit needs
+	N    int  // otherwise, at least 4
+}
+
+func (k Knots) plain() any {
+	if k.Auto {
+		return Auto
+	}
+	return k.N
+}
+
+// CurvePer is a curve of its own for each level of a category.
+type CurvePer struct{ Curve, Category string }
+
+func (c CurvePer) plain() any { return c.Curve + "=" + c.Category }
 
 // Reference is the level that relative risks are taken against.
 type Reference struct {
@@ -200,6 +233,25 @@ func parseSmoothness(value string) (Smoothness, error) {
 		return Smoothness{}, advise("is neither reml nor gcv nor a number of 0 or more", "leave out --smoothness to let the data choose")
 	}
 	return Smoothness{By: ByNumber, Lambda: v}, nil
+}
+
+func parseKnots(value string) (Knots, error) {
+	if value == Auto {
+		return Knots{Auto: true}, nil
+	}
+	if _, err := strconv.Atoi(strings.TrimSpace(value)); err != nil {
+		return Knots{}, advise("is neither auto nor a whole number", "leave out --max-knots to let the fit decide")
+	}
+	n, err := parseWhole(4)(value)
+	return Knots{N: n}, err
+}
+
+func parseCurvePer(value string) (CurvePer, error) {
+	curve, category, found := strings.Cut(value, "=")
+	if !found || strings.TrimSpace(curve) == "" || strings.TrimSpace(category) == "" {
+		return CurvePer{}, advise("is not of the form CURVE=CATEGORY", "for example depth=soil, for a curve of depth on each soil")
+	}
+	return CurvePer{strings.TrimSpace(curve), strings.TrimSpace(category)}, nil
 }
 
 func parseReference(value string) (Reference, error) {

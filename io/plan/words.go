@@ -58,29 +58,72 @@ var words = []Word{
 		Help: "measurements only: how much a row counts, as the inverse of its variance"},
 		func(s *Settings) **string { return &s.Weight }, parseText),
 	one(Word{Name: "distribution", Group: groupKind, Arg: "NAME",
-		Help: "gaussian for measurements, poisson for counts, binomial for positives among trials. Without it: binomial " +
-			"with --trials, poisson with people, area, effort or expected, else gaussian"},
-		func(s *Settings) **string { return &s.Distribution }, parseChoice(Gaussian, Poisson, Binomial)),
+		Help: "gaussian for measurements, gamma for measurements above 0 whose spread grows with their level, tweedie for " +
+			"amounts that can be 0, poisson or negative-binomial for counts, binomial or beta-binomial for positives among " +
+			"trials. Without it: binomial with --trials, poisson with people, area, effort or expected, else gaussian; " +
+			"--extra-variation says whether the data may ask for more scatter than that"},
+		func(s *Settings) **string { return &s.Distribution },
+		parseChoice(Gaussian, Gamma, Tweedie, Poisson, NegativeBinomial, Binomial, BetaBinomial)),
 	one(Word{Name: "link", Group: groupKind, Arg: "NAME",
-		Help: "the scale on which effects add up: identity or log for gaussian, log for poisson, logit for binomial; the " +
-			"first of these if not given"},
-		func(s *Settings) **string { return &s.Link }, parseChoice(Identity, Log, Logit)),
+		Help: "the scale on which effects add up: identity or log for gaussian, logit or complementary-log-log for binomial, " +
+			"logit for beta-binomial, log for all others; the first of these if not given"},
+		func(s *Settings) **string { return &s.Link }, parseChoice(Identity, Log, Logit, ComplementaryLogLog)),
+	one(Word{Name: "extra-variation", Group: groupKind, Arg: "HOW",
+		Help: "what to do about counts and positives that scatter more than poisson and binomial allow: auto to let the data " +
+			"choose between those and negative-binomial and beta-binomial, scale to widen errors by an estimated factor, none. " +
+			"A distribution that is named stays, unless auto is named too"},
+		func(s *Settings) **string { return &s.ExtraVariation }, parseChoice(Auto, ScaleVariation, NoVariation)),
+	one(Word{Name: "shape", Group: groupKind, Arg: "NUMBER",
+		Help: "fix the distribution's shape, which the data choose otherwise: theta of negative-binomial, correlation of " +
+			"beta-binomial, power of tweedie"},
+		func(s *Settings) **float64 { return &s.Shape }, parsePositive),
 
 	one(Word{Name: "surface", Group: groupModel, Arg: "NAME",
 		Help: "the smooth function of place: thin-plate, or none to fit the covariates alone"},
 		func(s *Settings) **string { return &s.Surface }, parseChoice(ThinPlate, NoSurface)),
 	one(Word{Name: "max-knots", Group: groupModel, Arg: "N",
-		Help: "how many basis functions the surface may have; the data decide how much of them is used"},
-		func(s *Settings) **int { return &s.MaxKnots }, parseWhole(3)),
+		Help: "how many basis functions the surface may have, the data deciding how much of them is used; auto doubles them " +
+			"from 50 while the fit still moves, up to 800, or fewer where there are many rows"},
+		func(s *Settings) **Knots { return &s.MaxKnots }, parseKnots),
 	one(Word{Name: "smoothness", Group: groupModel, Arg: "HOW",
 		Help: "how the penalty is chosen: reml, gcv, or a number of 0 or more to fix it"},
 		func(s *Settings) **Smoothness { return &s.Smoothness }, parseSmoothness),
+	one(Word{Name: "smoothness-uncertainty", Group: groupModel, Arg: "WHEN",
+		Help: "whether errors include that the smoothness is not known: on, off, or auto, which means on below 1000 rows"},
+		func(s *Settings) **string { return &s.SmoothnessUncertainty }, parseChoice(Auto, On, Off)),
+	one(Word{Name: "surface-per", Group: groupModel, Arg: "COLUMN",
+		Help: "a surface of its own for each level of this category"},
+		func(s *Settings) **string { return &s.SurfacePer }, parseText),
+	one(Word{Name: "surface-smoothness", Group: groupModel, Arg: "HOW",
+		Help: "whether surfaces per level have one smoothness, shared, or each its own; shared if not given"},
+		func(s *Settings) **string { return &s.SurfaceSmoothness }, parseChoice(SharedSmoothness, OwnSmoothness)),
+	one(Word{Name: "shrink", Group: groupModel,
+		Help: "let the surface vanish altogether where the data show no variation between places"},
+		func(s *Settings) **bool { return &s.Shrink }, parseTruth),
 	several(Word{Name: "linear", Group: groupModel, Arg: "COLUMN",
 		Help: "a numeric covariate with a straight-line effect"},
 		func(s *Settings) *[]string { return &s.Linear }, parseText),
+	several(Word{Name: "curve", Group: groupModel, Arg: "COLUMN",
+		Help: "a numeric covariate with a smooth effect whose smoothness the data decide"},
+		func(s *Settings) *[]string { return &s.Curve }, parseText),
+	several(Word{Name: "curve-per", Group: groupModel, Arg: "COLUMN=CATEGORY",
+		Help: "a smooth effect of its own for each level of a category"},
+		func(s *Settings) *[]CurvePer { return &s.CurvePer }, parseCurvePer),
 	several(Word{Name: "category", Group: groupModel, Arg: "COLUMN",
 		Help: "a covariate with an effect for each of its levels"},
 		func(s *Settings) *[]string { return &s.Category }, parseText),
+	several(Word{Name: "group", Group: groupModel, Arg: "COLUMN",
+		Help: "groups of rows, such as observers or sites, whose levels scatter at random; the map shows the average group"},
+		func(s *Settings) *[]string { return &s.Group }, parseText),
+
+	one(Word{Name: "test-variation", Group: groupModel,
+		Help: "test whether there is any variation between places, by fitting 199 draws from the model without a surface; " +
+			"groups and curves are tested too"},
+		func(s *Settings) **bool { return &s.TestVariation }, parseTruth),
+	several(Word{Name: "also", Group: groupModel, Arg: "WORD=VALUE",
+		Help: "fit the same rows another way too, and compare: what differs from the map's own model, as in " +
+			"surface=none, or \"distribution=gamma; link=log\""},
+		func(s *Settings) *[]Alternative { return &s.Also }, parseAlternative),
 
 	one(Word{Name: "cell-size", Group: groupWhere, Arg: "METRES",
 		Help: "the side of a cell of the map"},

@@ -12,7 +12,10 @@ import (
 var sample = map[string]string{
 	"observations": "plots.csv", "response": "stems", "x": "east", "y": "north", "crs": "EPSG:32633",
 	"people": "persons", "area": "ground", "area-unit": "km2", "effort": "hours", "expected": "e", "trials": "tested",
-	"weight": "w", "distribution": "poisson", "link": "log", "surface": "none", "max-knots": "35",
+	"weight": "w", "distribution": "poisson", "link": "log", "extra-variation": "scale", "shape": "1.5",
+	"surface": "none", "max-knots": "35", "smoothness-uncertainty": "on", "surface-per": "year", "surface-smoothness": "own",
+	"shrink": "true", "curve": "slope", "curve-per": "depth=soil", "group": "observer", "test-variation": "true",
+	"also":       "distribution=gamma; link=log",
 	"smoothness": "0.25", "linear": "depth, in cm", "category": "soil", "cell-size": "12.5", "cells-across": "7",
 	"at": "places.csv", "within": "edge.geojson", "zones": "zones.geojson", "zone-name": "name",
 	"hold": "depth, in cm=-3.5", "threshold": "-3", "per": "100000", "unit-label": "stems per ha",
@@ -77,7 +80,7 @@ func TestWordsAreComplete(t *testing.T) {
 		if _, ok := sample[w.Name]; !ok {
 			t.Errorf("%s has no sample", w.Name)
 		}
-		if w.Flag() != (w.Name == "strict" || w.Name == "force" || w.Name == "quiet") {
+		if w.Flag() != (w.Name == "strict" || w.Name == "shrink" || w.Name == "test-variation" || w.Name == "force" || w.Name == "quiet") {
 			t.Errorf("%s: stands alone: %v", w.Name, w.Flag())
 		}
 	}
@@ -105,14 +108,18 @@ func TestGroupsStandTogether(t *testing.T) {
 // here again from the design rather than read from the code.
 func TestChoicesAreNamed(t *testing.T) {
 	for name, choices := range map[string][]string{
-		"area-unit":    {"m2", "ha", "km2"},
-		"distribution": {"gaussian", "poisson", "binomial"},
-		"link":         {"identity", "log", "logit"},
-		"surface":      {"thin-plate", "none"},
-		"smoothness":   {"reml", "gcv"},
-		"write":        {"csv", "geojson", "pictures", "saved"},
-		"hold":         {"d=mean", "d=commonest"},
-		"reference":    {"overall"},
+		"area-unit":              {"m2", "ha", "km2"},
+		"distribution":           {"gaussian", "gamma", "tweedie", "poisson", "negative-binomial", "binomial", "beta-binomial"},
+		"link":                   {"identity", "log", "logit", "complementary-log-log"},
+		"extra-variation":        {"auto", "scale", "none"},
+		"smoothness-uncertainty": {"auto", "on", "off"},
+		"surface-smoothness":     {"shared", "own"},
+		"max-knots":              {"auto"},
+		"surface":                {"thin-plate", "none"},
+		"smoothness":             {"reml", "gcv"},
+		"write":                  {"csv", "geojson", "pictures", "saved"},
+		"hold":                   {"d=mean", "d=commonest"},
+		"reference":              {"overall"},
 	} {
 		w, ok := Lookup(name)
 		if !ok {
@@ -217,17 +224,34 @@ func TestValuesRefused(t *testing.T) {
 		{"confidence", "95", `confidence: "95" is not between 0 and 1`, "for 95 per cent write 0.95"},
 		{"confidence", "1", `confidence: "1" is not between 0 and 1`, ""},
 		{"confidence", "0", `confidence: "0" is not between 0 and 1`, ""},
-		{"max-knots", "2", `max-knots: "2" is less than 3`, ""},
-		{"max-knots", "20.5", `max-knots: "20.5" is not a whole number`, ""},
+		{"max-knots", "2", `max-knots: "2" is less than 4`, ""},
+		{"max-knots", "20.5", `max-knots: "20.5" is neither auto nor a whole number`, "leave out --max-knots to let the fit decide"},
+		{"max-knots", "automatic", `max-knots: "automatic" is neither auto nor a whole number`, "leave out --max-knots to let the fit decide"},
+		{"max-knots", "-4", `max-knots: "-4" is less than 4`, ""},
+		{"extra-variation", "quasi", `extra-variation: "quasi" is not one of auto, scale, none`, ""},
+		{"extra-variation", "scaled", `extra-variation: "scaled" is not one of auto, scale, none`, "did you mean scale?"},
+		{"shape", "0", `shape: "0" is not above 0`, ""},
+		{"shape", "auto", `shape: "auto" is not a number`, ""},
+		{"smoothness-uncertainty", "yes", `smoothness-uncertainty: "yes" is not one of auto, on, off`, ""},
+		{"surface-smoothness", "each", `surface-smoothness: "each" is not one of shared, own`, ""},
+		{"surface-per", " ", `surface-per: " " nothing is given`, ""},
+		{"curve-per", "depth", `curve-per: "depth" is not of the form CURVE=CATEGORY`, "for example depth=soil, for a curve of depth on each soil"},
+		{"curve-per", "=soil", `curve-per: "=soil" is not of the form CURVE=CATEGORY`, "for example depth=soil, for a curve of depth on each soil"},
+		{"curve-per", "depth= ", `curve-per: "depth= " is not of the form CURVE=CATEGORY`, "for example depth=soil, for a curve of depth on each soil"},
+		{"link", "cloglog", `link: "cloglog" is not one of identity, log, logit, complementary-log-log`, ""},
+		{"shrink", "maybe", `shrink: "maybe" is neither true nor false`, ""},
 		{"workers", "0", `workers: "0" is less than 1`, ""},
 		{"seed", "-1", `seed: "-1" is not a whole number of 0 or more`, ""},
 		{"smoothness", "-1", `smoothness: "-1" is neither reml nor gcv nor a number of 0 or more`, "leave out --smoothness to let the data choose"},
 		{"reference", "0", `reference: "0" is neither overall nor a number above 0`, ""},
-		{"distribution", "guassian", `distribution: "guassian" is not one of gaussian, poisson, binomial`, "did you mean gaussian?"},
-		{"link", "", `link: is not one of identity, log, logit`, ""},
+		{"distribution", "guassian", `distribution: "guassian" is not one of gaussian, gamma, tweedie, poisson, negative-binomial, binomial, beta-binomial`, "did you mean gaussian?"},
+		{"link", "", `link: is not one of identity, log, logit, complementary-log-log`, ""},
 		{"write", "csv,png", `write: "png" is not one of csv, geojson, pictures, saved`, ""},
 		{"hold", "depth", `hold: "depth" is not of the form NAME=VALUE`, "for example depth=3.5, depth=mean or soil=commonest"},
 		{"hold", "=3", `hold: "=3" is not of the form NAME=VALUE`, "for example depth=3.5, depth=mean or soil=commonest"},
+		{"also", "surfase=none", `also: "surfase" is no word in which a model can differ`, "did you mean surface?"},
+		{"also", "surface=none; title=x", `also: "title" is no word in which a model can differ`, "it may differ in distribution, link, shape, " +
+			"extra-variation, surface, surface-per, surface-smoothness, shrink, max-knots, smoothness, smoothness-uncertainty, linear, curve, curve-per, category, group"},
 		{"strict", "perhaps", `strict: "perhaps" is neither true nor false`, ""},
 	}
 	for _, test := range tests {

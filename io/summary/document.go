@@ -32,6 +32,8 @@ type Document struct {
 	Coefficients []Coefficient `json:"coefficients"`
 	Effects      []Effect      `json:"effects"`
 	Estimates    Estimates     `json:"estimates"`
+	Tests        []Test        `json:"tests"`      // only where they were asked for
+	Candidates   []Candidate   `json:"candidates"` // only where alternatives were named
 	Zones        *Zones        `json:"zones"`
 	Checks       []Check       `json:"checks"`
 	Cautions     []string      `json:"cautions"`
@@ -127,11 +129,43 @@ type Fit struct {
 	Dispersion       Number            `json:"dispersion"`
 	DispersionKnown  bool              `json:"dispersion_known"`
 	Pearson          Number            `json:"pearson_dispersion"`
-	Shape            *Number           `json:"shape"`
+	Shape            *Shape            `json:"shape"`           // null where the distribution has none
+	ExtraVariation   *ExtraVariation   `json:"extra_variation"` // null where there was nothing to choose
+	KnotPath         []KnotStep        `json:"knot_path"`       // on the way to enough knots
+	UncertainSmooth  bool              `json:"smoothness_uncertainty"`
 	Deviance         Number            `json:"deviance"`
 	DevianceShare    Number            `json:"deviance_share"`
 	LogLikelihood    Number            `json:"log_likelihood"`
 	AIC              Number            `json:"aic"`
+	AICCorrected     Number            `json:"aic_corrected"`
+}
+
+// Shape is the distribution's third parameter.
+type Shape struct {
+	Name      string `json:"name"`
+	Value     Number `json:"value"`
+	Estimated bool   `json:"estimated"`
+	Simpler   string `json:"simpler"` // the simpler distribution that it ended at
+}
+
+// ExtraVariation is the outcome of comparing a distribution with the one that has extra variation.
+type ExtraVariation struct {
+	Plain          string `json:"plain"`
+	Extra          string `json:"extra"`
+	PlainCriterion Number `json:"plain_criterion"`
+	ExtraCriterion Number `json:"extra_criterion"`
+	PlainAIC       Number `json:"plain_aic"`
+	ExtraAIC       Number `json:"extra_aic"`
+	Chosen         string `json:"chosen"`
+	Reason         string `json:"reason"`
+}
+
+// KnotStep is one fit on the way to enough knots; changes are in mean standard errors.
+type KnotStep struct {
+	Knots            int    `json:"knots"`
+	DegreesOfFreedom Number `json:"degrees_of_freedom"`
+	RMSChange        Number `json:"rms_change"`
+	LargestChange    Number `json:"largest_change"`
 }
 
 // Coefficient is on the link scale.
@@ -145,10 +179,16 @@ type Coefficient struct {
 
 // Effect is a covariate with its role and the value it is held at on the map.
 type Effect struct {
-	Name  string `json:"name"`
-	Role  string `json:"role"`
-	Held  string `json:"held"` // empty where the map has the covariate's own values
-	Range string `json:"range"`
+	Name string `json:"name"`
+	Role string `json:"role"`
+	Per  string `json:"per"`  // the category that a curve is for each level of; may be empty
+	Held string `json:"held"` // empty where the map has the covariate's own values
+	// HeldValue is the held number to the last digit; null where a level or nothing is held.
+	HeldValue        Number `json:"held_value"`
+	Range            string `json:"range"`
+	DegreesOfFreedom Number `json:"degrees_of_freedom"`
+	Deviation        Number `json:"standard_deviation"` // of a group's levels, on the link scale
+	Overlap          Number `json:"overlap"`            // share of its variation that the rest of the model could take over
 }
 
 // Estimates are the map's figures in the reporting unit.
@@ -170,6 +210,39 @@ type Zones struct {
 	Totals bool     `json:"totals"`
 	Note   string   `json:"note"`
 	Lines  []string `json:"-"` // the first few, in words
+}
+
+// Test is a test of whether a part of the model is needed.
+type Test struct {
+	Of               string `json:"of"`
+	Method           string `json:"method"`
+	Statistic        Number `json:"statistic"`
+	DegreesOfFreedom Number `json:"degrees_of_freedom"` // reference ones, of a curve
+	Draws            int    `json:"draws"`
+	Exceeded         int    `json:"exceeded"`
+	Failed           int    `json:"failed"`
+	P                Number `json:"p"`
+	Skipped          string `json:"skipped"` // why there is no test
+}
+
+// Candidate is one way to fit the rows. Figures without a meaning are null, and Missing says why.
+type Candidate struct {
+	Name                 string            `json:"name"`
+	Distribution         string            `json:"distribution"`
+	Link                 string            `json:"link"`
+	DegreesOfFreedom     Number            `json:"degrees_of_freedom"`
+	DevianceShare        Number            `json:"deviance_share"`
+	AIC                  Number            `json:"aic"`
+	AICCorrected         Number            `json:"aic_corrected"`
+	RestrictedLikelihood Number            `json:"restricted_likelihood"`
+	LogScore             Number            `json:"log_score"` // of rows left out in blocks of neighbours; more is better
+	LogScoreSE           Number            `json:"log_score_standard_error"`
+	Difference           Number            `json:"difference"` // from the map's own model
+	DifferenceSE         Number            `json:"difference_standard_error"`
+	Blocks               int               `json:"blocks"`
+	Scored               int               `json:"scored"`
+	LeftOut              int               `json:"left_out"`
+	Missing              map[string]string `json:"missing"`
 }
 
 // Level is the outcome of a check.
@@ -211,7 +284,9 @@ func (d Document) Worst() Level {
 func (d Document) WriteJSON(w io.Writer) error {
 	d.Input.SetAside = table(d.Input.SetAside)
 	d.Fit.Lambda, d.Fit.DegreesOfFreedom = table(d.Fit.Lambda), table(d.Fit.DegreesOfFreedom)
+	d.Fit.KnotPath = list(d.Fit.KnotPath)
 	d.Coefficients, d.Effects = list(d.Coefficients), list(d.Effects)
+	d.Tests, d.Candidates = list(d.Tests), list(d.Candidates)
 	d.Checks, d.Cautions, d.Outputs = list(d.Checks), list(d.Cautions), list(d.Outputs)
 	e := json.NewEncoder(w)
 	e.SetEscapeHTML(false)

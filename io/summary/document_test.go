@@ -24,6 +24,7 @@ func asJSON(t *testing.T, d summary.Document) string {
 func TestJSON(t *testing.T) {
 	golden(t, "measurements.json", asJSON(t, measurements()))
 	golden(t, "counts.json", asJSON(t, counts()))
+	golden(t, "chosen.json", asJSON(t, chosen()))
 }
 
 // keys returns the keys of an object in the order in which they stand.
@@ -58,7 +59,7 @@ func TestKeysInOrder(t *testing.T) {
 		"":      "version input settings fit coefficients effects checks cautions rehearsal validation outputs",
 		"input": "name sha256 rows used set_aside",
 		"fit": "converged iterations projected_gradient criterion criterion_value lambda degrees_of_freedom knots dispersion shape " +
-			"deviance deviance_share log_likelihood aic",
+			"extra_variation knot_path smoothness_uncertainty deviance deviance_share log_likelihood aic aic_corrected",
 	} {
 		object := raw
 		if part != "" {
@@ -82,10 +83,36 @@ func TestKeysInOrder(t *testing.T) {
 	if got := strings.Join(keys(t, coefficients[0]), " "); got != "name estimate standard_error lower upper" {
 		t.Errorf("a coefficient has %s", got)
 	}
+	for list, want := range map[string]string{
+		"effects":       "name role per held held_value range degrees_of_freedom standard_deviation overlap",
+		"fit.knot_path": "knots degrees_of_freedom rms_change largest_change",
+	} {
+		if got := strings.Join(keys(t, firstOf(t, asJSON(t, chosen()), list)), " "); got != want {
+			t.Errorf("an entry of %s has %s", list, got)
+		}
+	}
 	// Settings stand in their own order, not in that of the alphabet.
 	if got := strings.Join(keys(t, parts["settings"]), " "); got != "response area area_unit linear" {
 		t.Errorf("settings are %s", got)
 	}
+}
+
+// firstOf returns the first entry of a list, found by keys that are joined with stops.
+func firstOf(t *testing.T, text, path string) json.RawMessage {
+	t.Helper()
+	at := json.RawMessage(text)
+	for key := range strings.SplitSeq(path, ".") {
+		var parts map[string]json.RawMessage
+		if err := json.Unmarshal(at, &parts); err != nil {
+			t.Fatal(err)
+		}
+		at = parts[key]
+	}
+	var list []json.RawMessage
+	if err := json.Unmarshal(at, &list); err != nil || len(list) == 0 {
+		t.Fatalf("%s: no list with entries: %v", path, err)
+	}
+	return list[0]
 }
 
 func TestNumbers(t *testing.T) {
@@ -114,7 +141,7 @@ func TestNothingIsNullButWhatIsNotThere(t *testing.T) {
 			t.Errorf("%q of an empty document is %v", key, value)
 		}
 	}
-	for _, key := range []string{"lambda", "degrees_of_freedom"} {
+	for _, key := range []string{"lambda", "degrees_of_freedom", "knot_path"} {
 		if got["fit"].(map[string]any)[key] == nil {
 			t.Errorf("%q is null", key)
 		}

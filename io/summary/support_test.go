@@ -141,3 +141,52 @@ func plane() summary.Document {
 	d.Fit.Distribution, d.Fit.Link = "gamma", "log"
 	return d
 }
+
+// chosen has a distribution that the data chose, knots that the fit chose, curves for each level of a category, and a
+// group, with the map held at values.
+func chosen() summary.Document {
+	d := measurements()
+	d.Input.Name = "traps.csv"
+	reason := "the restricted likelihood is better by 31.2 with extra variation (theta 2.38)"
+	d.Settings = summary.Settings{{Key: "response", Value: "caught"}, {Key: "effort", Value: "nights"},
+		{Key: "distribution", Value: "negative-binomial", Chosen: reason},
+		{Key: "max_knots", Value: 100, Chosen: "from 50 knots to 100 the fit moved by no more than 0.12 mean standard errors"},
+		{Key: "curve_per", Value: []string{"slope=soil"}}, {Key: "group", Value: []string{"observer"}}}
+	d.Fit.Distribution, d.Fit.Link, d.Fit.DispersionKnown, d.Fit.Dispersion, d.Fit.Pearson = "negative-binomial", "log", true, 1, 1.03125
+	d.Fit.Shape = &summary.Shape{Name: "theta", Value: 2.375, Estimated: true}
+	d.Fit.ExtraVariation = &summary.ExtraVariation{Plain: "poisson", Extra: "negative-binomial", PlainCriterion: 214.45, ExtraCriterion: 183.25,
+		PlainAIC: 471.5, ExtraAIC: 430.5, Chosen: "negative-binomial", Reason: reason}
+	d.Fit.KnotPath = []summary.KnotStep{{Knots: 50, DegreesOfFreedom: 11.5, RMSChange: unknown, LargestChange: unknown},
+		{Knots: 100, DegreesOfFreedom: 12.75, RMSChange: 0.0625, LargestChange: 0.125}}
+	d.Fit.Knots, d.Fit.UncertainSmooth, d.Fit.AICCorrected = 100, true, 433.25
+	d.Effects = []summary.Effect{
+		{Name: "slope", Role: "curve", Per: "soil=clay", Held: "12.3 (mean)", HeldValue: 12.34375, Range: "0 to 31", DegreesOfFreedom: 3.25, Deviation: unknown, Overlap: 0.25},
+		{Name: "slope", Role: "curve", Per: "soil=peat", Held: "12.3 (mean)", HeldValue: 12.34375, Range: "0 to 28", DegreesOfFreedom: 1, Deviation: unknown, Overlap: 0.25},
+		{Name: "observer", Role: "group", HeldValue: unknown, Range: "6 levels", DegreesOfFreedom: 4.5, Deviation: 0.3125, Overlap: 0.0625},
+		{Name: "soil", Role: "category", Held: "peat", HeldValue: unknown, Range: "2 levels, clay the base", DegreesOfFreedom: 1, Deviation: unknown, Overlap: 0.5},
+	}
+	d.Coefficients = append(d.Coefficients, summary.Coefficient{Name: "soil=peat", Estimate: 0.75, StandardError: 0.25, Lower: 0.25, Upper: 1.25})
+	return d
+}
+
+// levels has a surface for each level of a category, held at one of them, amounts behind an effort, and a shape at its
+// bound.
+func levels() summary.Document {
+	d := measurements()
+	d.Settings = summary.Settings{{Key: "response", Value: "kilograms"}, {Key: "effort", Value: "hours"}, {Key: "surface_per", Value: "year"}}
+	d.Fit.Distribution, d.Fit.Link, d.Fit.Dispersion = "tweedie", "log", 0.0859375
+	d.Fit.Shape = &summary.Shape{Name: "power", Value: 1.99, Estimated: true, Simpler: "gamma"}
+	d.Effects = []summary.Effect{{Name: "year", Role: "surface-per", Held: "2021", HeldValue: unknown, Range: "3 levels", DegreesOfFreedom: 11.75, Deviation: unknown, Overlap: unknown}}
+	return d
+}
+
+// nothing is a surface that was allowed to vanish and did.
+func nothing() summary.Document {
+	d := measurements()
+	d.Fit.DegreesOfFreedom = map[string]summary.Number{"surface": 0.00048828125, "intercept": 1, "site": 0.0009765625, "total": 1.00146484375}
+	d.Effects = []summary.Effect{{Name: "site", Role: "group", HeldValue: unknown, Range: "9 levels", DegreesOfFreedom: 0.0009765625, Deviation: 2.34e-5, Overlap: 0.25}}
+	d.Fit.ExtraVariation = &summary.ExtraVariation{Plain: "poisson", Extra: "negative-binomial", Chosen: "poisson",
+		Reason: "the negative-binomial went back to the poisson: there is no extra variation"}
+	d.Fit.Distribution, d.Fit.Link, d.Fit.DispersionKnown, d.Fit.Pearson = "poisson", "log", true, 0.96875
+	return d
+}

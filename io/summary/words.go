@@ -37,6 +37,10 @@ func (d Document) Words(w io.Writer) error {
 	if d.Zones != nil {
 		after = append(after, line{"zones", d.Zones.Note})
 	}
+	for _, t := range d.Tests {
+		after = append(after, line{"test", t.words()})
+	}
+	after = append(after, line{"compare", d.candidateWords()})
 	after = append(after, d.checkWords()...)
 	after = append(after, line{"caution", d.cautionWords()}, line{"written", d.writtenWords()})
 	zones := d.zoneWords(most - height(before) - height(after))
@@ -121,6 +125,41 @@ func (d Document) zoneWords(room int) []line {
 	return told
 }
 
+// words tells a test.
+func (t Test) words() string {
+	switch {
+	case t.Skipped != "":
+		return fmt.Sprintf("%s: no test, %s", t.Of, t.Skipped)
+	case t.Draws > 0:
+		return fmt.Sprintf("%s: p %s; %d of %d draws without it gain as much", t.Of, Short(t.P), t.Exceeded, t.Draws)
+	}
+	return fmt.Sprintf("%s: p %s; statistic %s on %s degrees of freedom", t.Of, Short(t.P), Short(t.Statistic), Short(t.DegreesOfFreedom))
+}
+
+// candidateWords names the alternatives that predict rows left out better than the map's own model, or says that none do.
+func (d Document) candidateWords() string {
+	if len(d.Candidates) == 0 {
+		return ""
+	}
+	var parts []string
+	for _, c := range d.Candidates[1:] {
+		switch {
+		case math.IsNaN(float64(c.Difference)):
+			parts = append(parts, c.Name+": no score")
+		default:
+			parts = append(parts, fmt.Sprintf("%s: %s a row (standard error %s)", c.Name, signed(c.Difference), Short(c.DifferenceSE)))
+		}
+	}
+	return "log score of rows left out in blocks, against the model as asked, more is better: " + strings.Join(parts, ", ") + "; see candidates.csv"
+}
+
+func signed(n Number) string {
+	if n > 0 {
+		return "+" + Short(n)
+	}
+	return Short(n)
+}
+
 func (d Document) dataWords() string {
 	s := fmt.Sprintf("%s: %d of %s used", d.Input.Name, d.Input.Used, count(d.Input.Rows, "row"))
 	reasons := slices.SortedFunc(maps.Keys(d.Input.SetAside), func(a, b string) int {
@@ -167,7 +206,11 @@ func (d Document) modelWords() string {
 	}
 	for _, kind := range []string{"people", "area", "effort", "expected"} {
 		if column, ok := said[kind]; ok {
-			s += fmt.Sprintf("; counts divided by %s, column %s", kind, column)
+			what := "counts"
+			if d.Fit.Distribution == "tweedie" {
+				what = "amounts"
+			}
+			s += fmt.Sprintf("; %s divided by %s, column %s", what, kind, column)
 		}
 	}
 	if unit := said["area_unit"]; unit != "" {
@@ -178,6 +221,11 @@ func (d Document) modelWords() string {
 	}
 	if column, ok := said["weight"]; ok {
 		s += "; weights, column " + column
+	}
+	if v := d.Fit.ExtraVariation; v != nil { // the reason tells the shape
+		s += fmt.Sprintf("; chosen over %s: %s", v.other(), v.Reason)
+	} else if shape := d.Fit.Shape; shape != nil {
+		s += shape.words()
 	}
 	switch {
 	case d.Fit.DispersionKnown:
@@ -191,31 +239,84 @@ func (d Document) modelWords() string {
 
 func (d Document) surfaceWords() string {
 	f := d.Fit
+	kind := "thin-plate"
+	if per := d.said("surface_per"); per != "" {
+		kind += " for each level of " + per
+	}
 	share := fmt.Sprintf("the fit accounts for %s of the variation (deviance)", percent(f.DevianceShare))
 	df, ok := f.DegreesOfFreedom["surface"]
 	switch {
 	case !ok:
-		total, noun := Short(f.DegreesOfFreedom["total"]), "degrees"
-		if total == "1" {
-			noun = "degree"
-		}
-		return fmt.Sprintf("none: a regression with %s %s of freedom; %s", total, noun, share)
+		return fmt.Sprintf("none: a regression with %s; %s", freedom(f.DegreesOfFreedom["total"]), share)
 	case f.Plane:
-		return fmt.Sprintf("thin-plate on %d knots, which came out as a tilted plane (smoothness by %s); %s", f.Knots, f.Criterion, share)
+		return fmt.Sprintf("%s on %d knots, which came out as a tilted plane (smoothness by %s); %s", kind, f.Knots, f.Criterion, share)
+	case df < vanished:
+		return fmt.Sprintf("%s on %d knots, which vanished: no variation between places was found (smoothness by %s); %s", kind, f.Knots, f.Criterion, share)
+	case kind != "thin-plate":
+		return fmt.Sprintf("%s on %d knots, %s used in all (smoothness by %s); %s", kind, f.Knots, freedom(df), f.Criterion, share)
 	}
-	return fmt.Sprintf("thin-plate on %d knots, %s degrees of freedom used of %d (smoothness by %s); %s", f.Knots, Short(df), f.Knots-1, f.Criterion, share)
+	return fmt.Sprintf("%s on %d knots, %s used of %d (smoothness by %s); %s", kind, f.Knots, freedom(df), f.Knots-1, f.Criterion, share)
+}
+
+// vanished is the degrees of freedom below which nothing is left of a surface.
+const vanished = 0.05
+
+// freedom is so many degrees of freedom.
+func freedom(n Number) string {
+	if s := Short(n); s != "1" {
+		return s + " degrees of freedom"
+	}
+	return "1 degree of freedom"
+}
+
+// said returns the value of a setting in force, or nothing.
+func (d Document) said(key string) string {
+	for _, e := range d.Settings {
+		if e.Key == key {
+			return fmt.Sprint(e.Value)
+		}
+	}
+	return ""
+}
+
+func (s Shape) words() string {
+	if s.Simpler != "" {
+		return fmt.Sprintf("; %s at its bound, %s, where it is as good as %s", s.Name, Short(s.Value), s.Simpler)
+	}
+	return fmt.Sprintf("; %s %s", s.Name, Short(s.Value))
+}
+
+// other is the distribution that was not chosen.
+func (v ExtraVariation) other() string {
+	if v.Chosen == v.Plain {
+		return v.Extra
+	}
+	return v.Plain
 }
 
 func (d Document) covariateWords() string {
 	var parts []string
+	for _, e := range d.Effects {
+		switch e.Role {
+		case "curve":
+			name := e.Name
+			if e.Per != "" {
+				name += " (" + e.Per + ")"
+			}
+			parts = append(parts, fmt.Sprintf("%s a curve of %s", name, freedom(e.DegreesOfFreedom)))
+		case "group":
+			scatter := "scatter by " + Short(e.Deviation)
+			if e.DegreesOfFreedom < vanished {
+				scatter = "do not differ"
+			}
+			parts = append(parts, fmt.Sprintf("%s in %s that %s", e.Name, e.Range, scatter))
+		}
+	}
 	for _, c := range d.Coefficients {
 		if c.Name == "intercept" {
 			continue
 		}
 		parts = append(parts, fmt.Sprintf("%s %s (%s to %s)", c.Name, Short(c.Estimate), Short(c.Lower), Short(c.Upper)))
-	}
-	if len(parts) == 0 {
-		return ""
 	}
 	const most = 6
 	more := ""
@@ -223,20 +324,26 @@ func (d Document) covariateWords() string {
 		more = fmt.Sprintf(" and %d more", len(parts)-most)
 		parts = parts[:most]
 	}
-	s := strings.Join(parts, ", ") + more
-	if d.Fit.Link != "identity" {
-		s = "on the " + d.Fit.Link + " scale: " + s
+	var told []string
+	if s := strings.Join(parts, ", ") + more; s != "" && d.Fit.Link != "identity" {
+		told = append(told, "on the "+d.Fit.Link+" scale: "+s)
+	} else if s != "" {
+		told = append(told, s)
 	}
-	var held []string
+	if held := d.held(); held != nil {
+		told = append(told, "the map is adjusted to "+strings.Join(held, ", "))
+	}
+	return strings.Join(told, "; ")
+}
+
+// held lists what the map is adjusted to, a covariate with several curves once.
+func (d Document) held() (list []string) {
 	for _, e := range d.Effects {
-		if e.Held != "" {
-			held = append(held, e.Name+" = "+e.Held)
+		if text := e.Name + " = " + e.Held; e.Held != "" && !slices.Contains(list, text) {
+			list = append(list, text)
 		}
 	}
-	if held != nil {
-		s += "; the map is adjusted to " + strings.Join(held, ", ")
-	}
-	return s
+	return list
 }
 
 func (d Document) levelWords() string {

@@ -51,6 +51,7 @@ func fits(t *testing.T, text string, most int) {
 func TestWords(t *testing.T) {
 	for name, d := range map[string]summary.Document{
 		"measurements": measurements(), "counts": counts(), "stopped": stopped(), "places": places(), "regression": regression(), "plane": plane(),
+		"chosen": chosen(), "levels": levels(), "nothing": nothing(),
 	} {
 		t.Run(name, func(t *testing.T) {
 			text := told(t, d)
@@ -74,6 +75,12 @@ func TestWordsSayWhatCounts(t *testing.T) {
 		"places":     {places(), []string{"3 places", "33.3 %", "of your places", "50", "weights, column w"}},
 		"regression": {regression(), []string{"1 distinct place;", "none", "9 degrees of freedom", "and 2 more", "soil = kind 3 (commonest)", "standard deviation unknown"}},
 		"plane":      {plane(), []string{"plane", "a given number", "dispersion 30.2"}},
+		"chosen": {chosen(), []string{"negative-binomial with log link", "counts divided by effort, column nights", "chosen over poisson", "theta 2.38",
+			"slope (soil=clay) a curve of 3.25 degrees of freedom", "slope (soil=peat) a curve of 1 degree of freedom", "observer in 6 levels that scatter by 0.312",
+			"soil=peat 0.75 (0.25 to 1.25); the map is adjusted to slope = 12.3 (mean), soil = peat level"}},
+		"levels": {levels(), []string{"amounts divided by effort, column hours", "power at its bound, 1.99, where it is as good as gamma", "dispersion 0.0859",
+			"thin-plate for each level of year on 63 knots, 11.8 degrees of freedom used in all", "effects the map is adjusted to year = 2021 level"}},
+		"nothing": {nothing(), []string{"site in 9 levels that do not differ", "chosen over negative-binomial: the negative-binomial went back to the poisson", "vanished: no variation between places was found"}},
 	} {
 		text := strings.Join(strings.Fields(told(t, test.document)), " ")
 		for _, w := range test.want {

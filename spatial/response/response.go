@@ -9,6 +9,7 @@ package response
 import (
 	"fmt"
 	"math"
+	"strings"
 )
 
 // Obs is one observation.
@@ -69,8 +70,8 @@ const (
 	Expected                  // its expectation
 )
 
-// New returns the distribution of that name with that link; an empty link means the distribution's own. The error
-// names the links there are.
+// New returns the distribution of that name with that link; an empty link means the distribution's own. A shape has a
+// middling value from which a search may start. The error names the links there are.
 func New(name, link string) (Distribution, error) {
 	switch name + " " + link {
 	case "gaussian ", "gaussian identity":
@@ -79,28 +80,43 @@ func New(name, link string) (Distribution, error) {
 		return GaussianLog{}, nil
 	case "poisson ", "poisson log":
 		return Poisson{}, nil
+	case "negative-binomial ", "negative-binomial log":
+		return NegativeBinomial{Theta: 5}, nil
 	case "binomial ", "binomial logit":
 		return Binomial{}, nil
+	case "binomial complementary-log-log":
+		return BinomialCloglog{}, nil
+	case "beta-binomial ", "beta-binomial logit":
+		return BetaBinomial{Correlation: 0.05}, nil
+	case "gamma ", "gamma log":
+		return Gamma{}, nil
+	case "tweedie ", "tweedie log":
+		return Tweedie{Power: 1.5}, nil
 	}
 	for _, n := range Names() {
 		if n == name {
 			return nil, fmt.Errorf("distribution %s has no link %q: it takes %s", name, link, Links(name))
 		}
 	}
-	return nil, fmt.Errorf("there is no distribution %q: choose gaussian, poisson or binomial", name)
+	last := len(Names()) - 1
+	return nil, fmt.Errorf("there is no distribution %q: choose %s or %s", name, strings.Join(Names()[:last], ", "), Names()[last])
 }
 
 // Names returns the words of the distributions.
-func Names() []string { return []string{"gaussian", "poisson", "binomial"} }
+func Names() []string {
+	return []string{"gaussian", "poisson", "negative-binomial", "binomial", "beta-binomial", "gamma", "tweedie"}
+}
 
 // Links returns the words of the links of a distribution, its own first.
 func Links(name string) []string {
 	switch name {
 	case "gaussian":
 		return []string{"identity", "log"}
-	case "poisson":
+	case "poisson", "negative-binomial", "gamma", "tweedie":
 		return []string{"log"}
 	case "binomial":
+		return []string{"logit", "complementary-log-log"}
+	case "beta-binomial":
 		return []string{"logit"}
 	}
 	return nil

@@ -324,8 +324,8 @@ func TestNewNamesWhatThereIs(t *testing.T) {
 		}
 	}
 	for request, want := range map[[2]string]string{
-		{"cauchy", ""}:          `there is no distribution "cauchy": choose gaussian, poisson or binomial`,
-		{"", "log"}:             `there is no distribution "": choose gaussian, poisson or binomial`,
+		{"cauchy", ""}:          `there is no distribution "cauchy": choose gaussian, poisson, negative-binomial, binomial, beta-binomial, gamma or tweedie`,
+		{"", "log"}:             `there is no distribution "": choose gaussian, poisson, negative-binomial, binomial, beta-binomial, gamma or tweedie`,
 		{"poisson", "identity"}: `distribution poisson has no link "identity": it takes [log]`,
 		{"gaussian", "logit"}:   `distribution gaussian has no link "logit": it takes [identity log]`,
 	} {

@@ -12,6 +12,8 @@ type Shaped interface {
 	Working() float64
 	// WithWorking returns the distribution with another shape.
 	WithWorking(s float64) Shaped
+	// WithShape returns the distribution with another shape, as reported; the error says what it may be.
+	WithShape(v float64) (Shaped, error)
 	// Box returns the bounds of the search on the working scale.
 	Box() (lo, hi float64)
 	// Simpler names the distribution that the shape's lower or upper bound stands for; empty if it stands for none.

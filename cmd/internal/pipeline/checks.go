@@ -5,7 +5,6 @@ import (
 	"math"
 
 	"drumlin/grids"
-	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
 )
@@ -16,15 +15,19 @@ func (r *run) checks() []summary.Check {
 	rep := r.surface.Report()
 	list := []summary.Check{converged(rep)}
 	if rep.Knots > 0 {
-		list = append(list, knots(rep))
+		list = append(list, knots(rep, r.surfaces()))
 	}
 	if rep.KnownDispersion {
 		list = append(list, dispersion(rep))
 	}
+	list = append(list, r.alike())
 	if !r.target.own() {
 		list = append(list, r.far())
 	}
 	list = append(list, r.aside())
+	if len(r.surface.Effects()) > 0 {
+		list = append(list, overlap(r.surface.Effects()))
+	}
 	if r.zones != nil {
 		list = append(list, r.zones.covering())
 	}
@@ -52,9 +55,10 @@ func converged(rep spatial.Report) summary.Check {
 }
 
 // knots warns when the surface uses most of what it was allowed, so that the limit rather than the data may be what
-// makes it smooth; or when it follows nearly every place.
-func knots(rep spatial.Report) summary.Check {
-	share := rep.SurfaceDF / float64(rep.Knots-1)
+// makes it smooth; or when it follows nearly every place. Each of several surfaces has all the knots.
+func knots(rep spatial.Report, surfaces int) summary.Check {
+	share := rep.SurfaceDF / float64(surfaces*rep.Knots-1)
+	followed := min(rep.Rows, surfaces*rep.DistinctPlaces)
 	c := summary.Check{Name: "knots", Figure: summary.Number(share), Level: summary.Clear,
 		Sentence: "the data use " + summary.Short(summary.Number(100*share)) + " % of the degrees of freedom that the knots allow"}
 	places := rep.Knots - rep.KnotsInGaps
@@ -62,10 +66,10 @@ func knots(rep spatial.Report) summary.Check {
 	case places < rep.DistinctPlaces && share > 0.7:
 		c.Level = summary.Look
 		c.Sentence += ": the surface may be smoother than the data ask for; allow more with --max-knots"
-	case places >= rep.DistinctPlaces && rep.SurfaceDF > 0.6*float64(rep.DistinctPlaces):
+	case places >= rep.DistinctPlaces && rep.SurfaceDF > 0.6*float64(followed):
 		c.Level = summary.Look
 		c.Sentence = fmt.Sprintf("the surface uses %s degrees of freedom for %d places: it follows single observations closely, and noise may be the cause",
-			summary.Short(summary.Number(rep.SurfaceDF)), rep.DistinctPlaces)
+			summary.Short(summary.Number(rep.SurfaceDF)), followed)
 	}
 	return c
 }
@@ -90,6 +94,25 @@ func dispersion(rep spatial.Report) summary.Check {
 	return c
 }
 
+// alikeZ is how many standard deviations Moran's I of the residuals may lie above what it is without any likeness.
+const alikeZ = 3
+
+// alike reports whether neighbouring residuals are alike. It warns, and never decides anything.
+func (r *run) alike() summary.Check {
+	a := r.surface.ResidualAutocorrelation(r.obs.data.Places)
+	c := summary.Check{Name: "residuals", Figure: summary.Number(a.I), Level: summary.Clear,
+		Sentence: fmt.Sprintf("neighbouring residuals are not alike (Moran's I %s)", summary.Short(summary.Number(a.I)))}
+	if math.IsNaN(a.I) {
+		c.Sentence = "nothing is left to tell whether neighbouring residuals are alike"
+	}
+	if a.Z() > alikeZ {
+		c.Level = summary.Look
+		c.Sentence = fmt.Sprintf("neighbouring residuals are alike (Moran's I %s, %s standard deviations above chance): the surface misses something that neighbours share, and errors are too small",
+			summary.Short(summary.Number(a.I)), summary.Short(summary.Number(a.Z())))
+	}
+	return c
+}
+
 // farFactor says what far from data is: more than this many times the median spacing.
 const farFactor = 3
 
@@ -105,6 +128,27 @@ func (r *run) far() summary.Check {
 	return summary.Check{Name: "distance", Figure: summary.Number(share), Level: level(share, 0.1, 0.5),
 		Sentence: fmt.Sprintf("%s %% of the map lies farther than %d times the median spacing from any observation: there it rests on the model alone",
 			summary.Short(summary.Number(100*share)), farFactor)}
+}
+
+// mostOverlap is the share of an effect's variation that the rest of the model may be able to take over.
+const mostOverlap = 0.8
+
+// overlap warns where the data cannot tell an effect from the rest of the model.
+func overlap(effects []spatial.EffectFigure) summary.Check {
+	worst := effects[0]
+	for _, f := range effects {
+		if f.Overlap > worst.Overlap {
+			worst = f
+		}
+	}
+	c := summary.Check{Name: "overlap", Figure: summary.Number(worst.Overlap), Level: summary.Clear,
+		Sentence: "effects can be told apart from one another and from the surface"}
+	if worst.Overlap > mostOverlap {
+		c.Level = summary.Look
+		c.Sentence = fmt.Sprintf("%s %% of the variation of the effect of %s could be put down to the surface or to other effects as well: its size depends on the model",
+			summary.Short(summary.Number(100*worst.Overlap)), worst.Name)
+	}
+	return c
 }
 
 func (r *run) aside() summary.Check {
@@ -169,8 +213,8 @@ func (r *run) cautions() []string {
 	if len(r.target.held) > 0 {
 		list = append(list, "The map is adjusted to held covariates: it shows what would be found there at those values.")
 	}
-	if *s.Distribution != plan.Gaussian {
-		list = append(list, "Intervals are for the smoothness that the data chose, as if it were known.")
+	if m := r.surface.Model(); smooth(m) && !m.SmoothnessUncertainty {
+		list = append(list, "Intervals are for the smoothness at hand, as if it were known.")
 	}
 	return list
 }

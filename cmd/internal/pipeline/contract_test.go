@@ -23,7 +23,7 @@ const (
 
 func TestHeaders(t *testing.T) {
 	text := plain.table(1)
-	text = strings.TrimSuffix(text, "\n") + "\n10,10,1,-3,1,1,100,1,10,1,clay\n" // a negative count is set aside
+	text = strings.TrimSuffix(text, "\n") + "\n10,10,1,-3,1,1,100,1,10,1,clay,wet,A,1,1,1,1\n" // a negative count is set aside
 	zones := write(t, "zones.geojson", rectangles([]string{"all"}, [4]float64{0, 0, 1000, 800}))
 	dir := mapped(t, write(t, "obs.csv", text), "response=n", "area=plot_ha", "threshold=4", "zones="+zones, "cells-across=20", "write=csv")
 	for file, want := range map[string]string{
@@ -61,7 +61,7 @@ func TestSummaryKeys(t *testing.T) {
 	dir := mapped(t, write(t, "obs.csv", plain.table(1)), "response=zinc", "linear=depth", "hold=depth=2", "cells-across=20", "write=csv")
 	d := readSummary(t, dir)
 	for where, want := range map[string][]string{
-		"": {"version", "input", "settings", "lattice", "fit", "coefficients", "effects", "estimates", "zones", "checks", "cautions",
+		"": {"version", "input", "settings", "lattice", "fit", "coefficients", "effects", "estimates", "tests", "candidates", "zones", "checks", "cautions",
 			"rehearsal", "validation", "outputs"},
 		"input": {"name", "sha256", "rows", "used", "set_aside", "distinct_places", "median_spacing_m", "coordinates"},
 	} {
@@ -81,7 +81,8 @@ func TestSummaryKeys(t *testing.T) {
 	}
 	fit := d["fit"].(map[string]any)
 	for _, key := range []string{"converged", "iterations", "projected_gradient", "criterion", "criterion_value", "lambda", "degrees_of_freedom",
-		"knots", "dispersion", "shape", "deviance", "deviance_share", "log_likelihood", "aic"} {
+		"knots", "dispersion", "shape", "deviance", "deviance_share", "log_likelihood", "aic",
+		"extra_variation", "knot_path", "smoothness_uncertainty", "aic_corrected"} {
 		if _, ok := fit[key]; !ok {
 			t.Errorf("fit has no %q", key)
 		}
@@ -164,6 +165,11 @@ var (
 		func(e float64) float64 { return math.Exp(-e) / ((1 + math.Exp(-e)) * (1 + math.Exp(-e))) },
 		func(m float64) float64 { return math.Log(m / (1 - m)) },
 	}
+	extreme = link{
+		func(e float64) float64 { return -math.Expm1(-math.Exp(e)) },
+		func(e float64) float64 { return math.Exp(e - math.Exp(e)) },
+		func(m float64) float64 { return math.Log(-math.Log1p(-m)) },
+	}
 )
 
 // normalBelow is the standard normal distribution function.
@@ -203,6 +209,13 @@ func TestSurfaceFollowsFromTheLinearPredictor(t *testing.T) {
 		{"counts on plots", []string{"response=n", "area=plot_ha", "threshold=6"}, logLink, 1, 0.95, 6, false},
 		{"cases per 1000", []string{"response=cases", "people=people", "per=1000", "threshold=3", "confidence=0.9", "reference=2.5"}, logLink, 1000, 0.9, 3, false},
 		{"percent positive", []string{"response=positive", "trials=examined", "per=100", "threshold=40"}, logit, 100, 0.95, 40, false},
+		{"counts that scatter", []string{"response=caught", "effort=plot_ha", "distribution=negative-binomial", "threshold=9", "confidence=0.8"}, logLink, 1, 0.8, 9, false},
+		{"positives that scatter", []string{"response=seen", "trials=examined", "per=100", "threshold=40"}, logit, 100, 0.95, 40, false},
+		{"positives of extremes", []string{"response=positive", "trials=examined", "link=complementary-log-log", "threshold=0.4"}, extreme, 1, 0.95, 0.4, false},
+		{"scaled counts", []string{"response=caught", "effort=plot_ha", "extra-variation=scale", "threshold=9"}, logLink, 1, 0.95, 9, true},
+		{"a dose", []string{"response=dose", "distribution=gamma", "threshold=4"}, logLink, 1, 0.95, 4, true},
+		{"rainfall", []string{"response=rain", "distribution=tweedie", "threshold=2"}, logLink, 1, 0.95, 2, true},
+		{"rainfall on ground", []string{"response=rain", "distribution=tweedie", "area=plot_ha", "per=10", "threshold=20"}, logLink, 10, 0.95, 20, true},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			dir := mapped(t, obs, append(c.words, "cells-across=20", "write=csv")...)
@@ -259,6 +272,17 @@ func TestResidualsFollowFromTheFit(t *testing.T) {
 		{"positive", "examined", []string{"trials=examined", "per=1000"}, func(y, m, of float64) float64 {
 			return 2 * (times(y, math.Log(y/m)) + times(of-y, math.Log((of-y)/(of-m))))
 		}},
+		{"positive", "examined", []string{"trials=examined", "per=1000", "link=complementary-log-log"}, func(y, m, of float64) float64 {
+			return 2 * (times(y, math.Log(y/m)) + times(of-y, math.Log((of-y)/(of-m))))
+		}},
+		// with theta 1.5: twice the difference of the log-likelihoods at y and at m, Lawless (1987), Can. J. Statist. 15:209-225 (from memory)
+		{"caught", "plot_ha", []string{"effort=plot_ha", "per=1000", "distribution=negative-binomial", "shape=1.5"}, func(y, m, _ float64) float64 {
+			return 2 * (times(y, math.Log(y/m)) - (y+1.5)*math.Log((y+1.5)/(m+1.5)))
+		}},
+		// with power 1.6: Dunn & Smyth (2005), Stat. Comput. 15:267-280 (from memory)
+		{"rain", "plot_ha", []string{"area=plot_ha", "per=1000", "distribution=tweedie", "shape=1.6"}, func(y, m, _ float64) float64 {
+			return 2 * (math.Pow(y, 0.4)/(-0.6*0.4) - y*math.Pow(m, -0.6)/-0.6 + math.Pow(m, 0.4)/0.4)
+		}},
 	} {
 		dir := mapped(t, path, append(c.words, "response="+c.response, "at="+path, "write=csv")...)
 		s, r, d := readSheet(t, filepath.Join(dir, "surface.csv")), readSheet(t, filepath.Join(dir, "residuals.csv")), readSummary(t, dir)
@@ -295,8 +319,8 @@ func TestFittedTotalsAreTheObservedOnes(t *testing.T) {
 		words []string
 		total float64
 	}{
-		{"nc_sids.csv", []string{"response=sid74", "people=bir74", "cells-across=10", "write=csv"}, 667},
-		{"burkina_faso_malaria.csv", []string{"response=positive", "trials=examined", "cells-across=10", "write=csv"}, 25674},
+		{"nc_sids.csv", []string{"response=sid74", "people=bir74", "extra-variation=none", "cells-across=10", "write=csv"}, 667},
+		{"burkina_faso_malaria.csv", []string{"response=positive", "trials=examined", "extra-variation=none", "cells-across=10", "write=csv"}, 25674},
 	} {
 		dir := mapped(t, filepath.Join(repository, c.file), c.words...)
 		sum := 0.0

@@ -25,7 +25,7 @@ func (r *run) holdAll() error {
 	held := r.heldNames()
 	var lacking []string
 	for _, c := range r.obs.data.Covariates {
-		if held[c.Name] {
+		if held[c.Name] || !r.mapNeeds(c.Name) {
 			continue
 		}
 		value := plan.AtMean
@@ -38,13 +38,19 @@ func (r *run) holdAll() error {
 		return refuse(fmt.Sprintf("add %s for a map adjusted to that, or --at FILE with places that have the covariate", strings.Join(lacking, " ")),
 			"the map needs a value of %s in every cell", coveredBy(r.settings))
 	}
-	r.target.held = map[string]string{}
+	r.target.held, r.target.heldNumber = map[string]string{}, map[string]float64{}
 	for _, h := range r.settings.Hold {
 		if err := r.hold(h); err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+// mapNeeds reports whether the map's own model needs a covariate everywhere: not a group, of which the map shows the
+// average, and not a covariate of an alternative.
+func (r *run) mapNeeds(name string) bool {
+	return slices.Contains(r.settings.Numbers(), name) || slices.Contains(r.settings.Categories(), name)
 }
 
 // quoted puts quotes around an argument that a shell would take apart.
@@ -56,7 +62,7 @@ func quoted(s string) string {
 }
 
 func coveredBy(s plan.Settings) string {
-	return strings.Join(slices.Concat(s.Linear, s.Category), ", ")
+	return strings.Join(slices.Concat(s.Numbers(), s.Categories()), ", ")
 }
 
 // hold fixes one covariate at all places of the target.
@@ -73,6 +79,7 @@ func (r *run) hold(h plan.Hold) error {
 				return err
 			}
 			fixed.Number = repeat(v, n)
+			r.target.heldNumber[c.Name] = v
 			r.target.held[c.Name] = summary.Short(summary.Number(v))
 			if h.Value == plan.AtMean {
 				r.target.held[c.Name] += " (mean)"
@@ -106,7 +113,7 @@ func heldNumber(c spatial.Covariate, h plan.Hold) (float64, error) {
 	}
 	v, err := strconv.ParseFloat(h.Value, 64)
 	if err != nil || v-v != 0 {
-		return 0, refuse("give a number, or "+plan.AtMean, "--hold %s=%s: %q is not a number, and %s is linear", h.Name, h.Value, h.Value, h.Name)
+		return 0, refuse("give a number, or "+plan.AtMean, "--hold %s=%s: %q is not a number", h.Name, h.Value, h.Value)
 	}
 	return v, nil
 }
@@ -144,12 +151,18 @@ func repeat(v float64, n int) []float64 {
 // covariatesAt takes covariates from the places' own columns, or from --hold.
 func (r *run) covariatesAt(t *observe.Table) error {
 	held := r.heldNames()
-	r.target.held = map[string]string{}
+	r.target.held, r.target.heldNumber = map[string]string{}, map[string]float64{}
 	for _, c := range r.obs.data.Covariates {
 		if held[c.Name] {
 			continue
 		}
 		own := t.Column(c.Name)
+		if !r.mapNeeds(c.Name) {
+			if own != nil && slices.Contains(r.settings.Group, c.Name) { // a level that is new has the average level and its variance
+				r.target.covariates = append(r.target.covariates, spatial.Covariate{Name: c.Name, Code: own.Code, Level: own.Level})
+			}
+			continue
+		}
 		if c.Number != nil {
 			r.target.covariates = append(r.target.covariates, spatial.Covariate{Name: c.Name, Number: own.Number})
 			continue

@@ -28,6 +28,8 @@ func (r *run) describe() {
 	d.Lattice = r.describeTarget()
 	r.describeFit(d)
 	d.Effects = r.describeEffects()
+	d.Tests = append([]summary.Test{}, r.tests...)
+	d.Candidates = r.describeCandidates()
 	d.Estimates = r.describeEstimates()
 	if r.zones != nil {
 		d.Zones = r.zones.describe(r.reporting.Unit)
@@ -51,43 +53,67 @@ func (r *run) describeFit(d *summary.Document) {
 		Distribution: rep.Distribution, Link: rep.Link,
 		Converged: rep.Converged, Iterations: rep.Iterations, Gradient: summary.Number(rep.ProjectedGradient),
 		Criterion: criterionName(rep), CriterionValue: summary.Number(rep.CriterionValue),
-		Lambda:           map[string]summary.Term{},
-		DegreesOfFreedom: map[string]summary.Number{"intercept": 1, "total": summary.Number(rep.DF)},
-		Knots:            rep.Knots, KnotsInGaps: rep.KnotsInGaps, Plane: rep.Knots > 0 && rep.SurfaceDF < 2.01,
+		Lambda: map[string]summary.Term{}, DegreesOfFreedom: degreesOfFreedom(rep, r.surface),
+		Knots: rep.Knots, KnotsInGaps: rep.KnotsInGaps, Plane: r.plane(),
 		Dispersion: summary.Number(rep.Dispersion), DispersionKnown: rep.KnownDispersion, Pearson: summary.Number(rep.Pearson),
 		Deviance: summary.Number(rep.Deviance), DevianceShare: summary.Number(rep.DevianceShare),
-		LogLikelihood: summary.Number(rep.LogLikelihood), AIC: summary.Number(rep.AIC),
+		LogLikelihood: summary.Number(rep.LogLikelihood), AIC: summary.Number(rep.AIC), AICCorrected: summary.Number(rep.AICCorrected),
+		UncertainSmooth: r.surface.Model().SmoothnessUncertainty,
 	}
-	if rep.Knots > 0 {
-		d.Fit.DegreesOfFreedom["surface"] = summary.Number(rep.SurfaceDF)
-		d.Fit.Lambda["surface"] = summary.Term{Value: summary.Number(rep.Lambda),
-			Convention: "deviance + lambda J(f), J the integral of f_xx^2 + 2 f_xy^2 + f_yy^2 with places in metres"}
+	for _, t := range rep.Smooths {
+		d.Fit.Lambda[t.Name] = summary.Term{Value: summary.Number(t.Lambda), Convention: conventions[t.Kind]}
+	}
+	if rep.ShapeName != "" {
+		d.Fit.Shape = &summary.Shape{Name: rep.ShapeName, Value: summary.Number(rep.Shape), Estimated: rep.ShapeEstimated, Simpler: rep.Simpler}
+	}
+	if v := r.variation; v != nil {
+		d.Fit.ExtraVariation = &summary.ExtraVariation{Plain: v.Plain, Extra: v.Extra,
+			PlainCriterion: summary.Number(v.PlainCriterion), ExtraCriterion: summary.Number(v.ExtraCriterion),
+			PlainAIC: summary.Number(v.PlainAIC), ExtraAIC: summary.Number(v.ExtraAIC), Chosen: v.Chosen, Reason: v.Reason}
+	}
+	d.Fit.KnotPath = []summary.KnotStep{}
+	for _, k := range r.knotPath {
+		d.Fit.KnotPath = append(d.Fit.KnotPath, summary.KnotStep{Knots: k.Knots, DegreesOfFreedom: summary.Number(k.DF),
+			RMSChange: summary.Number(k.RMS), LargestChange: summary.Number(k.Most)})
 	}
 	q := r.surface.Quantile(*r.settings.Confidence)
 	for _, c := range rep.Coefficients {
 		d.Coefficients = append(d.Coefficients, summary.Coefficient{Name: c.Name, Estimate: summary.Number(c.Estimate), StandardError: summary.Number(c.StandardError),
 			Lower: summary.Number(c.Estimate - q*c.StandardError), Upper: summary.Number(c.Estimate + q*c.StandardError)})
 	}
-	for _, e := range r.surface.Model().Effects {
-		name := e.Name
-		if _, taken := d.Fit.DegreesOfFreedom[name]; taken || name == "surface" {
-			name += " (covariate)"
-		}
-		d.Fit.DegreesOfFreedom[name] = summary.Number(r.columnsOf(e))
-	}
 }
 
-// columnsOf counts an effect's coefficients.
-func (r *run) columnsOf(e spatial.Effect) int {
-	if e.Role == spatial.Linear {
-		return 1
+// plane reports whether every surface came out as a tilted plane: two slopes each, and the levels of all but the first.
+func (r *run) plane() bool {
+	rep := r.surface.Report()
+	return rep.Knots > 0 && !r.surface.Model().Shrink && rep.SurfaceDF < float64(3*r.surfaces())-1+0.01
+}
+
+// surfaces counts the surfaces: one, or one for each level of a category.
+func (r *run) surfaces() int { return max(1, len(r.surface.State().Level)) }
+
+// conventions say what a lambda multiplies.
+var conventions = map[spatial.SmoothKind]string{
+	spatial.SurfaceSmooth: "deviance + lambda J(f), J the integral of f_xx^2 + 2 f_xy^2 + f_yy^2 with places in metres",
+	spatial.SlopeSmooth:   "deviance + lambda times the squared slope in units of the knots' spread",
+	spatial.CurveSmooth:   "deviance + lambda times the sum of squared second differences of the B-spline coefficients",
+	spatial.GroupSmooth:   "deviance + lambda times the sum of squared levels; dispersion over lambda is their variance",
+}
+
+// degreesOfFreedom lists them by term, with the total. A covariate whose name is taken is marked.
+func degreesOfFreedom(rep spatial.Report, s *spatial.Surface) map[string]summary.Number {
+	df := map[string]summary.Number{"intercept": 1, "total": summary.Number(rep.DF)}
+	if rep.Knots > 0 {
+		df["surface"] = summary.Number(rep.SurfaceDF)
 	}
-	for _, c := range r.obs.data.Covariates {
-		if c.Name == e.Name {
-			return len(c.Level) - 1
+	for _, f := range s.Effects() {
+		name := f.Name
+		if _, taken := df[name]; taken || name == "surface" {
+			name += " (covariate)"
 		}
+		df[name] = summary.Number(f.DF)
 	}
-	return 0
+	return df
 }
 
 func criterionName(rep spatial.Report) string {
@@ -105,18 +131,33 @@ func criterionName(rep spatial.Report) string {
 
 func (r *run) describeEffects() []summary.Effect {
 	list := []summary.Effect{}
-	for _, c := range r.obs.data.Covariates {
-		e := summary.Effect{Name: c.Name, Role: "category", Held: r.target.held[c.Name]}
-		if c.Number != nil {
-			e.Role = "linear"
-			e.Range = summary.Short(summary.Number(slices.Min(c.Number))) + " to " + summary.Short(summary.Number(slices.Max(c.Number)))
-		} else {
-			e.Range = fmt.Sprintf("%d levels, %s the base", len(c.Level), c.Level[0])
+	none := summary.Number(math.NaN())
+	dispersion := r.surface.Report().Dispersion
+	if per := r.settings.SurfacePer; per != nil {
+		list = append(list, summary.Effect{Name: *per, Role: "surface-per", Held: r.target.held[*per], HeldValue: none, Deviation: none,
+			Range: fmt.Sprintf("%d levels", r.surfaces()), DegreesOfFreedom: summary.Number(r.surface.Report().SurfaceDF), Overlap: none})
+	}
+	for _, f := range r.surface.Effects() {
+		e := summary.Effect{Name: f.Covariate, Role: roles[f.Role], Per: f.Level, Held: r.target.held[f.Covariate], HeldValue: none, Deviation: none,
+			DegreesOfFreedom: summary.Number(f.DF), Overlap: summary.Number(f.Overlap)}
+		if v, ok := r.target.heldNumber[f.Covariate]; ok {
+			e.HeldValue = summary.Number(v)
+		}
+		switch {
+		case f.X != nil:
+			e.Range = summary.Short(summary.Number(f.X[0])) + " to " + summary.Short(summary.Number(f.X[len(f.X)-1]))
+		case f.Role == spatial.Group:
+			e.Range = fmt.Sprintf("%d levels", len(f.Label))
+			e.Deviation = summary.Number(math.Sqrt(dispersion / f.Lambda))
+		default:
+			e.Range = fmt.Sprintf("%d levels, %s the base", len(f.Label), f.Label[0])
 		}
 		list = append(list, e)
 	}
 	return list
 }
+
+var roles = map[spatial.Role]string{spatial.Linear: "linear", spatial.Category: "category", spatial.Curve: "curve", spatial.Group: "group"}
 
 func (r *run) describeEstimates() summary.Estimates {
 	sorted := slices.Sorted(slices.Values(r.estimates.estimate))
@@ -144,3 +185,6 @@ func (r *run) describeEstimates() summary.Estimates {
 
 // wants reports whether a kind of file was asked for.
 func (r *run) wants(kind string) bool { return slices.Contains(r.settings.Write, kind) }
+
+// notKnown is a figure that there is none of; null in JSON.
+var notKnown = math.NaN()

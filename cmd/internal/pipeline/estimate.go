@@ -79,13 +79,11 @@ func (r *run) unit() string {
 	}
 	kind, column := s.Denominator()
 	switch {
-	case *s.Distribution == plan.Gaussian:
-		return *s.Response
-	case *s.Distribution == plan.Binomial && *s.Per == 1:
+	case s.Trials != nil && *s.Per == 1:
 		return *s.Response + ", share of " + *s.Trials
-	case *s.Distribution == plan.Binomial && *s.Per == 100:
+	case s.Trials != nil && *s.Per == 100:
 		return *s.Response + ", % of " + *s.Trials
-	case *s.Distribution == plan.Binomial:
+	case s.Trials != nil:
 		return *s.Response + " per " + per + *s.Trials
 	case kind == "people" && per == "":
 		return *s.Response + " per person"
@@ -97,6 +95,8 @@ func (r *run) unit() string {
 		return *s.Response + ", observed over expected"
 	case kind == "effort":
 		return *s.Response + " per " + per + "unit of " + column
+	case *s.Distribution == plan.Gaussian || *s.Distribution == plan.Gamma || *s.Distribution == plan.Tweedie:
+		return *s.Response
 	case per != "":
 		return *s.Response + " per " + strings.TrimSpace(per) + " observations"
 	}

@@ -25,20 +25,25 @@ type run struct {
 	events   Events
 	version  string
 
-	obs       *observations
-	area      *studyArea
-	target    *target
-	surface   *spatial.Surface
-	reporting reporting
-	estimates *estimates
-	zones     *zoneResults
-	document  summary.Document
+	obs        *observations
+	area       *studyArea
+	target     *target
+	surface    *spatial.Surface
+	knotPath   []spatial.KnotStep // on the way to enough knots
+	asked      plan.Settings      // the settings as they came, before the data made choices
+	comparison []spatial.Comparison
+	tests      []summary.Test
+	variation  *spatial.Variation // nil where there was nothing to choose
+	reporting  reporting
+	estimates  *estimates
+	zones      *zoneResults
+	document   summary.Document
 }
 
 // Run fits and maps one region. s must be resolved. The folder dir appears whole or not at all; what it holds is told
 // by the document. Errors carry a hint where there is one to give; *spatial.Error is a fit that could not be had.
 func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.Document, error) {
-	r := &run{settings: s, events: ev, version: version()}
+	r := &run{settings: s, asked: s, events: ev, version: version()}
 	// The folder is claimed first, so that one that cannot be had is told before the work and not after it.
 	err := Folder(ctx, dir, *s.Force, func(partial string) error {
 		for _, step := range []struct {
@@ -48,6 +53,8 @@ func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.D
 			{"reading", r.read},
 			{"laying the lattice", r.place},
 			{"fitting", r.fit},
+			{"testing", r.test},
+			{"comparing", r.compare},
 			{"predicting", r.predict},
 			{"adding up zones", r.addUp},
 		} {
@@ -63,60 +70,6 @@ func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.D
 		return summary.Document{}, err
 	}
 	return r.document, nil
-}
-
-// fit fits the surface. Places that cannot carry a surface are the fit's to refuse, before the lattice complains of
-// them in its own terms.
-func (r *run) fit(ctx context.Context) error {
-	o := r.obs
-	model := r.model()
-	options := spatial.Options{Workers: *r.settings.Workers, Seed: *r.settings.Seed}
-	if r.area != nil {
-		options.Area = r.area.knotPlaces
-	}
-	if model.Smoothness.Method == spatial.Given && model.Smoothness.Lambda == 0 {
-		return throughEveryRow()
-	}
-	var err error
-	if r.surface, err = spatial.Fit(ctx, model, o.data, options); err != nil {
-		return err
-	}
-	if r.area.problem != nil {
-		return r.area.problem
-	}
-	rep := r.surface.Report()
-	if !rep.KnownDispersion && !(rep.Dispersion > 0) {
-		return throughEveryRow()
-	}
-	return nil
-}
-
-// throughEveryRow refuses an interpolation, whose errors cannot be told.
-func throughEveryRow() error {
-	return &spatial.Error{Message: "the fit passes through every observation, so nothing is left to estimate its error from",
-		Advice: "let the data choose the smoothness, or give a larger number with --smoothness"}
-}
-
-// model turns the settings into the model.
-func (r *run) model() spatial.Model {
-	s := r.settings
-	m := spatial.Model{Distribution: *s.Distribution, Link: *s.Link, MaxKnots: *s.MaxKnots}
-	if *s.Surface == plan.NoSurface {
-		m.Surface = spatial.None
-	}
-	switch s.Smoothness.By {
-	case plan.ByGCV:
-		m.Smoothness.Method = spatial.GCV
-	case plan.ByNumber:
-		m.Smoothness = spatial.Smoothness{Method: spatial.Given, Lambda: s.Smoothness.Lambda}
-	}
-	for _, name := range s.Linear {
-		m.Effects = append(m.Effects, spatial.Effect{Name: name, Role: spatial.Linear})
-	}
-	for _, name := range s.Category {
-		m.Effects = append(m.Effects, spatial.Effect{Name: name, Role: spatial.Category})
-	}
-	return m
 }
 
 // predict evaluates the surface on the target and states it in the reporting unit.

@@ -30,6 +30,7 @@ type target struct {
 	places     spatial.Places
 	covariates []spatial.Covariate
 	held       map[string]string // covariates fixed at one value, as told
+	heldNumber map[string]float64
 }
 
 func (t *target) own() bool { return t.cells == nil }
@@ -175,12 +176,13 @@ func (r *run) placeAt(ctx context.Context, path string) error {
 		want.X, want.Y = *s.X, *s.Y
 	}
 	held := r.heldNames()
-	for _, name := range s.Linear {
+	want.Optional = s.Group
+	for _, name := range s.Numbers() {
 		if !held[name] {
 			want.Linear = append(want.Linear, name)
 		}
 	}
-	for _, name := range s.Category {
+	for _, name := range s.Categories() {
 		if !held[name] {
 			want.Category = append(want.Category, name)
 		}

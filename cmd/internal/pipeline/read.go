@@ -11,6 +11,7 @@ import (
 	"path/filepath"
 	"slices"
 	"sort"
+	"strconv"
 
 	"drumlin/grids/crs"
 	"drumlin/io/observe"
@@ -41,6 +42,9 @@ func (r *run) read(ctx context.Context) error {
 		return err
 	}
 	o.data.Response = o.table.Column(*r.settings.Response).Number
+	if err := o.withinReach(*r.settings.Response, *r.settings.Distribution); err != nil {
+		return err
+	}
 	if _, column := r.settings.Denominator(); column != "" {
 		o.data.Exposure = o.table.Column(column).Number
 	}
@@ -55,14 +59,34 @@ func (r *run) read(ctx context.Context) error {
 	return nil
 }
 
+// withinReach refuses a measurement that its distribution cannot have. To set such rows aside would raise the level.
+func (o *observations) withinReach(response, distribution string) error {
+	for i, y := range o.data.Response {
+		fault := &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: response,
+			Value: strconv.FormatFloat(y, 'g', -1, 64)}
+		switch {
+		case distribution == plan.Gamma && y == 0:
+			fault.What, fault.Advice = "a gamma distribution has no 0", "use --distribution tweedie, in which amounts can be 0"
+		case (distribution == plan.Gamma || distribution == plan.Tweedie) && y < 0:
+			fault.What = "a " + distribution + " distribution has no negative values: " + strconv.Quote(fault.Value)
+			fault.Advice = "correct the row, or use --distribution gaussian"
+		default:
+			continue
+		}
+		return fault
+	}
+	return nil
+}
+
 // request says which columns the settings need and what they must hold.
 func (r *run) request() (observe.Request, error) {
 	s := r.settings
-	want := observe.Request{Response: *s.Response, Kind: observe.Measure, Linear: s.Linear, Category: s.Category, Strict: *s.Strict}
+	want := observe.Request{Response: *s.Response, Kind: observe.Measure, Linear: allCovariates(s, plan.Settings.Numbers),
+		Category: allCovariates(s, everyCategory), Strict: *s.Strict}
 	switch *s.Distribution {
-	case plan.Poisson:
+	case plan.Poisson, plan.NegativeBinomial:
 		want.Kind = observe.Count
-	case plan.Binomial:
+	case plan.Binomial, plan.BetaBinomial:
 		want.Kind = observe.Positives
 		want.Trials = *s.Trials
 	}
@@ -95,15 +119,18 @@ func axes(s plan.Settings) (observe.Axes, error) {
 // covariates takes the covariates' columns out of a table.
 func covariates(t *observe.Table, s plan.Settings) []spatial.Covariate {
 	var list []spatial.Covariate
-	for _, name := range s.Linear {
+	for _, name := range allCovariates(s, plan.Settings.Numbers) {
 		list = append(list, spatial.Covariate{Name: name, Number: t.Column(name).Number})
 	}
-	for _, name := range s.Category {
+	for _, name := range allCovariates(s, everyCategory) {
 		c := t.Column(name)
 		list = append(list, spatial.Covariate{Name: name, Code: c.Code, Level: c.Level})
 	}
 	return list
 }
+
+// everyCategory lists categories and groups.
+func everyCategory(s plan.Settings) []string { return slices.Concat(s.Categories(), s.Group) }
 
 // readTable reads a file and its checksum in one go.
 func readTable(ctx context.Context, path string, want observe.Request) (*observe.Table, string, error) {

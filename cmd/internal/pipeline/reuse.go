@@ -5,8 +5,10 @@ import (
 	"errors"
 	"io"
 	"io/fs"
+	"maps"
 	"os"
 	"path/filepath"
+	"slices"
 
 	"drumlin/grids"
 	"drumlin/grids/crs"
@@ -83,13 +85,21 @@ func readSaved(ctx context.Context, path string, workers int) (archive.Saved, *s
 func readPlaces(ctx context.Context, q ReuseRequest, saved archive.Saved, system crs.System) (spatial.Places, []spatial.Covariate, error) {
 	want := placesRequest(saved.Reporting.Degrees)
 	want.X, want.Y = q.X, q.Y
+	levels := map[string][]string{} // of the categories
+	if per := saved.Surface.Model.SurfacePer; per != "" {
+		levels[per] = saved.Surface.Level
+	}
 	for _, e := range saved.Surface.Effect {
-		if e.Role == spatial.Category {
-			want.Category = append(want.Category, e.Name)
-		} else {
+		switch e.Role {
+		case spatial.Category:
+			levels[e.Name] = e.Level
+		case spatial.Group:
+			want.Optional = append(want.Optional, e.Name)
+		default:
 			want.Linear = append(want.Linear, e.Name)
 		}
 	}
+	want.Category = slices.Sorted(maps.Keys(levels))
 	t, err := readPlaceTable(ctx, q.At, want, system)
 	if err != nil {
 		return spatial.Places{}, nil, err
@@ -99,14 +109,17 @@ func readPlaces(ctx context.Context, q ReuseRequest, saved archive.Saved, system
 		return spatial.Places{}, nil, err
 	}
 	var z []spatial.Covariate
-	for _, e := range saved.Surface.Effect {
-		c := t.Column(e.Name)
-		if e.Role == spatial.Category {
-			if err := knownLevels(t, c, e.Level); err != nil {
+	for _, name := range slices.Concat(want.Linear, want.Category, want.Optional) {
+		c := t.Column(name)
+		if c == nil {
+			continue // a group that the table does not have: the average one
+		}
+		if known, ok := levels[name]; ok {
+			if err := knownLevels(t, c, known); err != nil {
 				return spatial.Places{}, nil, err
 			}
 		}
-		z = append(z, spatial.Covariate{Name: e.Name, Number: c.Number, Code: c.Code, Level: c.Level})
+		z = append(z, spatial.Covariate{Name: name, Number: c.Number, Code: c.Code, Level: c.Level})
 	}
 	return spatial.Places{X: x, Y: y}, z, nil
 }

@@ -8,6 +8,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 	"testing"
 
@@ -50,6 +51,28 @@ var models = []struct {
 	{"rate", []string{"response=cases", "people=people", "per=1000", "threshold=3", "reference=overall"}, nil},
 	{"share", []string{"response=positive", "trials=examined", "per=100", "threshold=40", "category=soil"}, []string{"hold=soil=peat"}},
 	{"no surface", []string{"response=n", "area=plot_ha", "surface=none", "linear=depth"}, []string{"hold=depth=0.375"}},
+	{"curve", []string{"response=zinc", "curve=depth", "smoothness-uncertainty=off"}, []string{"hold=depth=0.375"}},
+	{"group", []string{"response=caught", "effort=plot_ha", "group=observer", "threshold=9"}, nil},
+}
+
+// planar are models that need no other plane than the local one to be tried in.
+var planar = []struct {
+	name        string
+	words, hold []string
+}{
+	{"curve for each soil", []string{"response=zinc", "curve-per=depth=soil", "group=observer", "threshold=30"}, []string{"hold=depth=0.375", "hold=soil=peat"}},
+	{"surface for each year", []string{"response=caught", "effort=plot_ha", "surface-per=year", "curve=depth", "per=10"}, []string{"hold=depth=0.375", "hold=year=dry"}},
+	{"surfaces with groups", []string{"response=seen", "trials=examined", "surface-per=year", "surface-smoothness=own", "group=observer"}, []string{"hold=year=dry"}},
+	{"shrunken", []string{"response=zinc", "shrink", "category=soil"}, []string{"hold=soil=peat"}},
+	{"curves alone", []string{"response=dose", "distribution=gamma", "surface=none", "curve=depth", "group=observer"}, []string{"hold=depth=0.375"}},
+	{"certain", []string{"response=cases", "people=people", "smoothness-uncertainty=off", "max-knots=30"}, nil},
+	{"negative-binomial", []string{"response=caught", "effort=plot_ha", "distribution=negative-binomial", "reference=overall"}, nil},
+	{"beta-binomial", []string{"response=seen", "trials=examined", "distribution=beta-binomial", "threshold=0.4"}, nil},
+	{"gamma", []string{"response=dose", "distribution=gamma", "linear=depth"}, []string{"hold=depth=0.375"}},
+	{"tweedie", []string{"response=rain", "distribution=tweedie", "area=plot_ha", "threshold=2"}, nil},
+	{"shape given", []string{"response=rain", "distribution=tweedie", "shape=1.6", "confidence=0.5"}, nil},
+	{"complementary log-log", []string{"response=positive", "trials=examined", "link=complementary-log-log", "curve=depth"}, []string{"hold=depth=0.375"}},
+	{"scaled", []string{"response=caught", "effort=plot_ha", "extra-variation=scale", "threshold=9"}, nil},
 }
 
 // TestReuseIsMap: the saved surface gives the same text as map --at for the same places, and as map for the cells of
@@ -57,7 +80,11 @@ var models = []struct {
 func TestReuseIsMap(t *testing.T) {
 	for plane, f := range map[string]field{"local": plain, "utm": utm, "lon-lat": lonLat} {
 		obs, elsewhere := write(t, "obs.csv", f.table(1)), write(t, "at.csv", f.table(2))
-		for _, m := range models {
+		tried := models
+		if plane == "local" && !testing.Short() {
+			tried = slices.Concat(models, planar)
+		}
+		for _, m := range tried {
 			t.Run(plane+"/"+m.name, func(t *testing.T) {
 				words := m.words
 				if plane == "utm" {
@@ -98,9 +125,9 @@ func TestReuseIsMap(t *testing.T) {
 // places writes the coordinates of the cells with the covariates that the models hold.
 func places(cells sheet, x, y string) string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "name,%s,%s,depth,soil\n", x, y)
+	fmt.Fprintf(&b, "name,%s,%s,depth,soil,year\n", x, y)
 	for i, v := range cells.text(x) {
-		fmt.Fprintf(&b, "cell %d,%s,%s,0.375,peat\n", i, v, cells.text(y)[i])
+		fmt.Fprintf(&b, "cell %d,%s,%s,0.375,peat,dry\n", i, v, cells.text(y)[i])
 	}
 	return b.String()
 }

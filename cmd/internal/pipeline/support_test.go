@@ -155,8 +155,10 @@ func write(t *testing.T, name, text string) string {
 }
 
 // field is an invented survey of n places on a ground of wide x high units: a measurement, a count on a plot, a count
-// among people, a number positive among examined, a linear covariate and a category. The level rises from west to east
-// with a hump in the middle. Every coordinate is times scale.
+// among people, a number positive among examined, a linear covariate and a category; then a second category, an observer
+// whose catch is high or low, a count and a number positive that scatter more than poisson and binomial, a dose above 0
+// and a rainfall that can be 0. The level rises from west to east with a hump in the middle. Every coordinate is times
+// scale.
 type field struct {
 	n          int
 	wide, high float64
@@ -169,9 +171,9 @@ type field struct {
 var plain = field{n: 60, wide: 1000, high: 800, scale: 1, xName: "x", yName: "y"}
 
 func (f field) table(seed uint64) string {
-	random := rand.New(rand.NewPCG(seed, 1))
+	random, more := rand.New(rand.NewPCG(seed, 1)), rand.New(rand.NewPCG(seed, 2))
 	var b strings.Builder
-	fmt.Fprintf(&b, "%s,%s,zinc,n,plot_ha,cases,people,positive,examined,depth,soil\n", f.xName, f.yName)
+	fmt.Fprintf(&b, "%s,%s,zinc,n,plot_ha,cases,people,positive,examined,depth,soil,year,observer,caught,seen,dose,rain\n", f.xName, f.yName)
 	for range f.n {
 		u, v := random.Float64(), random.Float64()
 		level := math.Exp(0.5 + u + math.Exp(-20*((u-0.5)*(u-0.5)+(v-0.5)*(v-0.5))))
@@ -186,11 +188,41 @@ func (f field) table(seed uint64) string {
 				positive++
 			}
 		}
-		fmt.Fprintf(&b, "%v,%v,%.3f,%d,%.3f,%d,%d,%d,%d,%v,%s\n", f.x0+f.scale*u*f.wide, f.y0+f.scale*v*f.high,
+		fmt.Fprintf(&b, "%v,%v,%.3f,%d,%.3f,%d,%d,%d,%d,%v,%s,", f.x0+f.scale*u*f.wide, f.y0+f.scale*v*f.high,
 			20+3*level+4*depth+random.NormFloat64(), poisson(random, 2*level*plot), plot,
 			poisson(random, level*float64(people)/1000), people, positive, examined, depth, soil)
+		b.WriteString(scattered(more, level, depth, examined))
 	}
 	return b.String()
+}
+
+// scattered is the second half of a row.
+func scattered(random *rand.Rand, level, depth float64, examined int) string {
+	year, observer := random.IntN(2), random.IntN(7)
+	portion := gamma(random, 2) / 2 // a count with theta 2
+	share := gamma(random, 2)
+	share /= share + gamma(random, 3) // a share with correlation 1/(2 + 3 + 1)
+	seen := 0
+	for range examined {
+		if random.Float64() < share {
+			seen++
+		}
+	}
+	rain := 0.0
+	for range poisson(random, level/3) {
+		rain += gamma(random, 2)
+	}
+	catch := level * math.Exp(float64(observer-3)/6+math.Sin(5*depth)/2+float64(year)/2)
+	return fmt.Sprintf("%s,%s,%d,%d,%.4f,%.2f\n", []string{"wet", "dry"}[year], string(rune('A'+observer)),
+		poisson(random, 2*catch*portion), seen, level*gamma(random, 3)/3, rain)
+}
+
+// gamma draws from a gamma distribution with a whole shape and scale 1.
+func gamma(random *rand.Rand, shape int) (v float64) {
+	for range shape {
+		v += random.ExpFloat64()
+	}
+	return v
 }
 
 // poisson draws by counting exponential waiting times; mean must be moderate.

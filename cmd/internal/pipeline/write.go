@@ -63,6 +63,12 @@ func (r *run) artefacts() []artefact {
 			list = append(list, artefact{"zones.csv", true, r.writeZones})
 		}
 	}
+	if r.wants(plan.CSV) && len(r.surface.Effects()) > 0 {
+		list = append(list, artefact{"effects.csv", true, r.writeEffects})
+	}
+	if r.wants(plan.CSV) && len(r.comparison) > 0 {
+		list = append(list, artefact{"candidates.csv", true, r.writeCandidates})
+	}
 	if r.wants(plan.GeoJSON) && (len(r.target.cells) <= geojsonCells || r.settings.Said("write")) {
 		list = append(list, artefact{"surface.geojson", true, r.writeGeoJSON})
 		if r.zones != nil {
@@ -75,6 +81,9 @@ func (r *run) artefacts() []artefact {
 	if r.wants(plan.Pictures) {
 		for _, p := range r.pictures() {
 			list = append(list, artefact{p.file, false, p.WritePNG})
+		}
+		if len(r.surface.Effects()) > 0 {
+			list = append(list, artefact{"effects.png", false, r.effectsPicture().WritePNG})
 		}
 	}
 	return list

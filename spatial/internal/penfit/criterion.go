@@ -4,6 +4,7 @@ import (
 	"math"
 	"slices"
 
+	"drumlin/basis2d/blocks"
 	"drumlin/spatial/response"
 )
 
@@ -126,20 +127,27 @@ func (f *fitter) curvature(lambda []float64, db [][]float64) ([][]float64, error
 // reml returns the restricted likelihood criterion with phi, where unknown, at its own minimum; by the envelope
 // theorem the gradient is the partial one.
 func (f *fitter) reml(lambda []float64, sb, weights [][]float64) (float64, []float64, error) {
-	phi := f.remlScale()
+	phi, err := f.remlScale()
+	if err != nil {
+		return 0, nil, err
+	}
+	sums, err := f.saturation(phi)
+	if err != nil {
+		return 0, nil, err
+	}
 	logdet, rank := f.Engine.LogDetPenalty(lambda)
 	null := float64(f.Engine.NullDim())
-	v := (f.deviance+f.penalty)/(2*phi) - f.saturated(phi) + (f.Engine.LogDet()-logdet)/2 - null/2*math.Log(2*math.Pi*phi)
+	v := (f.deviance+f.penalty)/(2*phi) - sums.value + (f.Engine.LogDet()-logdet)/2 - null/2*math.Log(2*math.Pi*phi)
 	g, trace := make([]float64, len(lambda)), f.Engine.Traces()
 	for j, l := range lambda {
 		g[j] = l*dot(sb[j], f.beta)/(2*phi) + (l*trace[j]-rank[j])/2
 	}
 	if f.shaped != nil {
 		own := 0.0
-		for i, o := range f.Obs {
-			own += f.shape[i].Deviance/(2*phi) - f.shaped.SaturatedSlope(o, phi)
+		for _, s := range f.shape {
+			own += s.Deviance / (2 * phi)
 		}
-		g = append(g, own)
+		g = append(g, own-sums.shape)
 	}
 	if weights == nil || len(g) == 0 {
 		return v, g, nil
@@ -160,72 +168,111 @@ func (f *fitter) reml(lambda []float64, sb, weights [][]float64) (float64, []flo
 //
 // For the normal distribution, whose saturated likelihood depends on phi as -n/2 log phi, that is D_p/(n - M). A fit
 // without any residual keeps a positive phi, so that the criterion stays finite.
-func (f *fitter) remlScale() float64 {
-	dispersed, ok := f.Dist.(response.Dispersed)
-	if f.Dist.KnownDispersion() || !ok {
-		return 1
+func (f *fitter) remlScale() (float64, error) {
+	if _, ok := f.Dist.(response.Dispersed); f.Dist.KnownDispersion() || !ok {
+		return 1, nil
 	}
 	n, null := float64(len(f.Obs)), float64(f.Engine.NullDim())
 	penalised := f.deviance + f.penalty
 	least := 1e-24 * f.scale / n
 	phi := math.Max(penalised/(n-null), least)
-	if dispersed.Name() == "gaussian" {
-		return phi
+	if f.Dist.Name() == "gaussian" {
+		return phi, nil
 	}
-	excess := func(logPhi float64) float64 {
-		sum := penalised/(2*math.Exp(logPhi)) + null/2
-		for _, o := range f.Obs {
-			sum += dispersed.ScaleSlope(o, math.Exp(logPhi))
+	from := phi
+	if f.sums.phi > least { // it moves little from one point of the search to the next
+		from = f.sums.phi
+	}
+	var err error
+	precision := rising(func(u float64) float64 { // nearly a straight line in 1/phi
+		if err != nil {
+			return 0
 		}
-		return sum
-	}
-	return math.Max(math.Exp(falling(excess, math.Log(phi))), least)
+		var s saturation
+		s, err = f.saturation(1 / u)
+		return (penalised*u+null)/2 + s.scale
+	}, 1/from, penalised/2, 1/least)
+	return 1 / precision, err
 }
 
-// falling returns the root of a falling function near x, to rounding: a bracket is widened from x, then closed by
-// regula falsi (Illinois form) with bisection where that is slow.
-func falling(f func(float64) float64, x float64) float64 {
-	lo, hi, step := x, x, 0.5
-	flo := f(lo)
-	fhi := flo
-	for ; flo < 0 && step < 1e3; step *= 2 {
-		hi, fhi = lo, flo
-		lo -= step
-		flo = f(lo)
-	}
-	for step = 0.5; fhi > 0 && step < 1e3; step *= 2 {
-		lo, flo = hi, fhi
-		hi += step
-		fhi = f(hi)
-	}
-	wlo, whi := flo, fhi // weights of the Illinois form
-	for n := 0; n < 200 && hi-lo > 1e-15*math.Max(1, math.Abs(lo)); n++ {
-		mid := (lo*whi - hi*wlo) / (whi - wlo)
-		if !(mid > lo && mid < hi) || n%8 == 7 {
-			mid = (lo + hi) / 2
-		}
-		switch v := f(mid); {
-		case v == 0:
-			return mid
-		case v > 0:
-			lo, wlo = mid, v
-			whi /= 2
-		default:
-			hi, whi = mid, v
-			wlo /= 2
-		}
-		if mid == lo && lo+1e-15*math.Max(1, math.Abs(lo)) >= hi {
+// rising returns the root of a rising function of u > 0, or most where it is below zero up to there, by secants inside a
+// bracket; it begins at u with a guess of the slope. The last call of f is at what is returned.
+func rising(f func(u float64) float64, u, slope, most float64) float64 {
+	lo, hi := 0.0, math.Inf(1)
+	var before, was float64 // the last u and its value
+	for n := 0; n < 200; n++ {
+		v := f(u)
+		if v == 0 || math.IsNaN(v) {
 			break
 		}
+		if v < 0 {
+			lo = u
+		} else {
+			hi = u
+		}
+		if n > 0 && v != was {
+			slope = (v - was) / (u - before)
+		}
+		next := u - v/slope
+		if !(next > lo && next < hi) {
+			next = (lo + hi) / 2
+		}
+		next = math.Min(most, math.Max(u/100, math.Min(100*u, next)))
+		if math.Abs(next-u) <= 1e-14*u {
+			break
+		}
+		before, was, u = u, v, next
 	}
-	return (lo + hi) / 2
+	return u
 }
 
-func (f *fitter) saturated(phi float64) (l float64) {
-	for _, o := range f.Obs {
-		l += f.Dist.Saturated(o, phi)
+// saturation holds what the rows' saturated log-likelihoods sum to at a dispersion, with the derivatives of the sum in
+// log phi and in the working shape, 0 where there is none.
+type saturation struct {
+	dist                     response.Distribution
+	phi, value, scale, shape float64
+}
+
+// saturation returns the sums at phi; the last ones are remembered.
+func (f *fitter) saturation(phi float64) (saturation, error) {
+	if f.sums.dist == f.Dist && f.sums.phi == phi {
+		return f.sums, nil
 	}
-	return l
+	row := f.saturatedRow()
+	sum := make([]float64, 3)
+	err := blocks.Sum(f.ctx, f.Workers, len(f.Obs), sum, func(_, from, to int, acc []float64) error {
+		for _, o := range f.Obs[from:to] {
+			value, scale, shape := row(o, phi)
+			acc[0] += value
+			acc[1] += scale
+			acc[2] += shape
+		}
+		return nil
+	})
+	if err != nil {
+		return saturation{}, err
+	}
+	f.sums = saturation{f.Dist, phi, sum[0], sum[1], sum[2]}
+	return f.sums, nil
+}
+
+// saturatedRow returns a row's part of them. A distribution whose three parts come from one sum says so.
+func (f *fitter) saturatedRow() func(o response.Obs, phi float64) (value, scale, shape float64) {
+	if d, ok := f.Dist.(interface {
+		SaturatedSlopes(o response.Obs, phi float64) (value, scale, working float64)
+	}); ok {
+		return d.SaturatedSlopes
+	}
+	dispersed, _ := f.Dist.(response.Dispersed)
+	return func(o response.Obs, phi float64) (value, scale, shape float64) {
+		if dispersed != nil {
+			scale = dispersed.ScaleSlope(o, phi)
+		}
+		if f.shaped != nil {
+			shape = f.shaped.SaturatedSlope(o, phi)
+		}
+		return f.Dist.Saturated(o, phi), scale, shape
+	}
 }
 
 // gcv returns n D/(n - edf)^2, or D/n - 1 + 2 edf/n where phi is known to be 1.

@@ -22,6 +22,7 @@ type Result struct {
 	Value             float64   // of the criterion, in the engine's own coefficients; NaN if lambda was given as 0
 	Gradient          float64   // projected gradient at the end of the search
 	AtUpper           []bool    // log lambda ended at the top of its box: the term is its null space
+	Given             []bool    // lambda was given
 	Iterations        int       // of the search
 	Passes            int       // visits to the rows
 	Converged         bool
@@ -50,6 +51,10 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 		}
 	}
 	r.Beta, r.Eta, r.Lambda, r.Dist = f.beta, f.eta, exp(at.x[:p.Engine.Penalties()]), f.Dist
+	r.Given = make([]bool, len(r.Lambda))
+	for j, l := range lambda {
+		r.Given[j] = !math.IsNaN(l)
+	}
 	r.Deviance, r.Penalty, r.Passes = f.deviance, f.penalty, f.passes
 	r.Edf = f.edf(r.Lambda)
 	_, rank := f.Engine.LogDetPenalty(r.Lambda)
@@ -59,8 +64,7 @@ func Fit(ctx context.Context, p Problem, c Criterion, lambda []float64) (*Result
 	if r.Constant, err = f.constantDeviance(f.overall()); err != nil {
 		return nil, err
 	}
-	f.scales(c, &r)
-	return &r, nil
+	return &r, f.scales(c, &r)
 }
 
 // found is where the search ended: log lambda, then the shape if it is searched.
@@ -253,7 +257,7 @@ func (f *fitter) final(c Criterion, at []float64) (value float64, gradient []flo
 }
 
 // scales sets dispersion, Pearson statistic and log-likelihood.
-func (f *fitter) scales(c Criterion, r *Result) {
+func (f *fitter) scales(c Criterion, r *Result) (err error) {
 	free := float64(len(f.Obs)) - r.Edf
 	var pearson float64
 	for i, o := range f.Obs {
@@ -265,9 +269,12 @@ func (f *fitter) scales(c Criterion, r *Result) {
 	}
 	r.Phi = r.Pearson
 	if c != Quasi && (f.Dist.KnownDispersion() || c == REML) {
-		r.Phi = f.remlScale()
+		if r.Phi, err = f.remlScale(); err != nil {
+			return err
+		}
 	}
 	for i, o := range f.Obs {
 		r.LogLikelihood += f.Dist.LogLikelihood(o, f.eta[i], r.Phi)
 	}
+	return nil
 }

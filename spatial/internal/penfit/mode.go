@@ -19,6 +19,7 @@ type Problem struct {
 	Start []float64
 	// EstimateShape has the shape of a response.Shaped searched beside the smoothness; Dist's own is where it starts.
 	EstimateShape bool
+	Workers       int // goroutines; 0 means one a processor
 }
 
 // ErrSeparated says that the likelihood has no maximum: some linear predictors run off to infinity.
@@ -54,6 +55,7 @@ type fitter struct {
 	current  bool // the last pass was at beta, with a Gram matrix of observed weights
 	passes   int
 	last     evaluation
+	sums     saturation // at the last dispersion
 
 	shaped response.Shaped       // Dist, where its shape is searched
 	shape  []response.ShapePoint // of each row at the mode
@@ -343,11 +345,12 @@ func (f *fitter) working(rho, given []float64, zwz float64) ([]float64, error) {
 		trace := e.Traces()
 		next, largest := slices.Clone(rho), 0.0
 		for j := range rho {
-			if !math.IsNaN(given[j]) {
+			share := slope[j]/lambda[j] - trace[j]
+			if !math.IsNaN(given[j]) || share <= 1e-8*slope[j]/lambda[j] { // nothing left to it but rounding
 				continue
 			}
 			e.PenaltyTo(sb, j, f.beta)
-			ratio := phi * math.Max(slope[j]/lambda[j]-trace[j], 0) / math.Max(dot(sb, f.beta), 1e-300)
+			ratio := phi * share / math.Max(dot(sb, f.beta), 1e-300)
 			next[j] = math.Min(hi[j], math.Max(lo[j], rho[j]+clamp(math.Log(ratio), 6)))
 			largest = math.Max(largest, math.Abs(next[j]-rho[j]))
 		}

@@ -4,6 +4,8 @@ import (
 	"context"
 	"errors"
 	"math"
+
+	"gonum.org/v1/gonum/mat"
 )
 
 // objective returns a value and its gradient; a value of +Inf means that there is none at x.
@@ -35,8 +37,10 @@ func minimise(ctx context.Context, f objective, x, lo, hi []float64) (minimum, e
 	if m.value, m.gradient, err = f(m.x); err != nil {
 		return m, err
 	}
-	h := identity(n)
-	fresh := true
+	h, fresh, err := firstCurvature(f, m, lo, hi)
+	if err != nil {
+		return m, err
+	}
 	for m.iterations = 0; ; m.iterations++ {
 		free := m.project(lo, hi)
 		if m.projected <= gradientTol*(1+math.Abs(m.value)) {
@@ -66,6 +70,74 @@ func minimise(ctx context.Context, f objective, x, lo, hi []float64) (minimum, e
 		next.iterations = m.iterations
 		m = next
 	}
+}
+
+const (
+	firstStep      = 0.1  // in each component, from which the first curvature is differenced
+	leastFirstBend = 0.05 // and the least that is believed
+)
+
+// firstCurvature returns the inverse Hessian to begin with, from differences of the gradient: a shape bends the
+// criterion hundreds of times as much as a smoothness does, and quasi-Newton steps alone take long to learn that. One
+// component alone is learnt from its first step; then, and where a difference cannot be had, it is the identity, which
+// is fresh: without a scale yet.
+func firstCurvature(f objective, m minimum, lo, hi []float64) (h []float64, fresh bool, err error) {
+	h = identity(len(m.x))
+	var index []int
+	for i, free := range m.project(lo, hi) {
+		if free && lo[i] < hi[i] {
+			index = append(index, i)
+		}
+	}
+	if len(index) < 2 || math.IsInf(m.value, 0) {
+		return h, true, nil
+	}
+	bend := mat.NewSymDense(len(index), nil)
+	for a, i := range index {
+		x := append([]float64(nil), m.x...)
+		step := math.Min(firstStep, (hi[i]-lo[i])/4)
+		if x[i]+step > hi[i] {
+			step = -step
+		}
+		x[i] += step
+		value, gradient, err := f(x)
+		if err != nil {
+			return nil, false, err
+		}
+		for b, j := range index {
+			slope := (gradient[j] - m.gradient[j]) / step
+			if math.IsInf(value, 0) || math.IsNaN(value+slope) {
+				return h, true, nil
+			}
+			if a != b {
+				slope = bend.At(a, b) + slope/2
+			}
+			bend.SetSym(a, b, slope)
+		}
+	}
+	return h, !invert(h, bend, index), nil
+}
+
+// invert sets the elements of h that index picks to the inverse of a curvature. Directions that bend the wrong way
+// count by how much they bend.
+func invert(h []float64, bend *mat.SymDense, index []int) bool {
+	var eigen mat.EigenSym
+	if !eigen.Factorize(bend, true) {
+		return false
+	}
+	var u mat.Dense
+	eigen.VectorsTo(&u)
+	n := int(math.Sqrt(float64(len(h))))
+	for a, i := range index {
+		for b, j := range index {
+			sum := 0.0
+			for c, v := range eigen.Values(nil) {
+				sum += u.At(a, c) * u.At(b, c) / math.Max(math.Abs(v), leastFirstBend)
+			}
+			h[i*n+j] = sum
+		}
+	}
+	return true
 }
 
 // project sets the projected gradient and says which components are free to move.

@@ -4,6 +4,8 @@ import (
 	"context"
 	"math"
 
+	"drumlin/spatial/response"
+
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -13,7 +15,7 @@ const uncertaintyStep = 1e-2
 // Uncertainty returns what not knowing the smoothness and the shape adds to the covariance of the coefficients, to first
 // order: J V J' with J = db/d(log lambda, shape) and V the inverse Hessian of the restricted likelihood there (Kass &
 // Steffey 1989, J. Am. Stat. Assoc. 84:717-726; Wood, Pya & Saefken 2016, same journal 111:1548-1563). It comes as a
-// root E, Coefs x k row-major, with J V J' = E E'. Parameters that ended at a bound of their box are left out; where the
+// root E, Coefs x k row-major, with J V J' = E E'. Parameters that were given or ended at a bound are left out; where the
 // criterion is flat its curvature is floored, so that the step stays inside what the data can tell. extra is
 // tr(E E' X'WX)/phi, the degrees of freedom it adds. The engine is left factored at the fit.
 func Uncertainty(ctx context.Context, p Problem, r *Result) (root []float64, k int, extra float64, err error) {
@@ -24,7 +26,7 @@ func Uncertainty(ctx context.Context, p Problem, r *Result) (root []float64, k i
 	at := logs(r.Lambda)
 	open := make([]bool, len(at))
 	for j := range open {
-		open[j] = !r.AtUpper[j] && !math.IsInf(at[j], 0)
+		open[j] = !r.AtUpper[j] && !r.Given[j] && !math.IsInf(at[j], 0)
 	}
 	if f.shaped != nil {
 		at, open = join(at, f.shaped.Working()), append(open, !r.ShapeAtLower && !r.ShapeAtUpper)
@@ -113,7 +115,11 @@ func (f *fitter) information(root []float64, k int) (sum float64, err error) {
 			return 0, err
 		}
 		for i, v := range linear {
-			sum += f.point[i].Expected * v * v
+			w := f.point[i].Weight
+			if f.Dist.Curvature() == response.Expected {
+				w = f.point[i].Expected
+			}
+			sum += w * v * v
 		}
 	}
 	return sum, nil
