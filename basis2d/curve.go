@@ -41,7 +41,7 @@ func NewCurve(z []float64, functions int) (*Curve, error) {
 		}
 	}
 	if len(seen) < 3 {
-		return nil, fmt.Errorf("only %d distinct values, and a curve needs at least 3", len(seen))
+		return nil, fmt.Errorf("a curve needs at least 3 distinct values, and there %s", [...]string{"is none", "is 1", "are 2"}[len(seen)])
 	}
 	if err := c.whiten(); err != nil {
 		return nil, err

@@ -196,7 +196,7 @@ func TestConstantCovariates(t *testing.T) {
 		want, advice string
 	}{
 		{Model{Effects: []Effect{{Name: "c", Role: Linear}}}, `covariate "c" has the same value in every row`, "leave it out"},
-		{Model{Effects: []Effect{{Name: "c", Role: Curve}}}, `a curve of "c": only 1 distinct values, and a curve needs at least 3`, "use --linear for it"},
+		{Model{Effects: []Effect{{Name: "c", Role: Curve}}}, `a curve of "c": a curve needs at least 3 distinct values, and there is 1`, "leave it out"},
 		{Model{Effects: []Effect{{Name: "k", Role: Category}}}, `covariate "k" has one level only, "only": there is nothing to compare`, "leave k out"},
 		{Model{Effects: []Effect{{Name: "k", Role: Group}}}, `covariate "k" has one level only, "only": there is nothing to compare`, "leave k out"},
 		{Model{SurfacePer: "k"}, `covariate "k" has one level only, "only": there is nothing to compare`, "leave --surface-per out"},
@@ -397,7 +397,7 @@ func TestCurvesOfFewRows(t *testing.T) {
 		m := Model{Distribution: "gaussian", MaxKnots: 40, Effects: []Effect{{Name: "depth", Role: Curve, Per: "soil"}}}
 		s, err := Fit(context.Background(), m, d, Options{})
 		if few == 2 {
-			if want := `a curve of "depth" for soil=sand: only 2 distinct values, and a curve needs at least 3`; err == nil || err.Error() != want {
+			if want := `a curve of "depth" for soil=sand: a curve needs at least 3 distinct values, and there are 2`; err == nil || err.Error() != want {
 				t.Errorf("two rows: %v", err)
 			}
 			continue

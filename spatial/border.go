@@ -152,7 +152,11 @@ func (f *fitted) setCurves(c Covariate, z []Covariate) error {
 	if f.Per == "" {
 		curve, err := basis2d.NewCurve(c.Number, basis2d.DefaultFunctions)
 		if err != nil {
-			return unfit("use --linear for it", "a curve of %q: %v", f.Name, err)
+			advice := "use --linear for it"
+			if f.Lo == f.Hi {
+				advice = "leave it out"
+			}
+			return unfit(advice, "a curve of %q: %v", f.Name, err)
 		}
 		f.Curve = []*basis2d.Curve{curve}
 		return nil

@@ -46,6 +46,9 @@ type KnotStep struct {
 func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surface, []KnotStep, error) {
 	if most == 0 {
 		most = MostKnotsFor(d.Places.Len())
+		if m.SurfacePer != "" { // every level has as many
+			most = max(firstKnots, most/levelsOf(d, m.SurfacePer))
+		}
 	}
 	if m.Surface == None {
 		s, err := Fit(ctx, m, d, o)
@@ -78,6 +81,16 @@ func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surfa
 
 // changeRows is the number of rows that a change is measured at: evenly spaced ones where there are more.
 const changeRows = 2000
+
+// levelsOf returns how many levels a category has, at least 1.
+func levelsOf(d Data, category string) int {
+	for _, c := range d.Covariates {
+		if c.Name == category {
+			return max(1, len(c.Level))
+		}
+	}
+	return 1
+}
 
 // change returns how far the linear predictor at the rows moved from another fit, in mean standard errors.
 func (s *Surface) change(ctx context.Context, from *Surface, d Data) (rms, most float64, err error) {

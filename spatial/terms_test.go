@@ -281,7 +281,7 @@ func TestTermRefusals(t *testing.T) {
 		m    Model
 		want string
 	}{
-		"a curve of two values":       {Model{Effects: []Effect{{Name: "flag", Role: Curve}}}, `a curve of "flag": only 2 distinct values, and a curve needs at least 3`},
+		"a curve of two values":       {Model{Effects: []Effect{{Name: "flag", Role: Curve}}}, `a curve of "flag": a curve needs at least 3 distinct values, and there are 2`},
 		"a curve and a line of one":   {Model{Effects: []Effect{{Name: "depth", Role: Linear}, {Name: "depth", Role: Curve}}}, `covariate "depth straight" cannot be told apart from depth`},
 		"a curve of a category":       {Model{Effects: []Effect{{Name: "soil", Role: Curve}}}, `covariate "soil" is not of the kind its effect needs`},
 		"surfaces of one place each":  {Model{SurfacePer: "big"}, `80 observations cannot settle 240 unpenalised coefficients`},

@@ -66,13 +66,33 @@ func (s Settings) Candidates() ([]Candidate, error) {
 				return nil, refuse("also", hintOf(err), "%q has a part that cannot be: %v", a.Name, err)
 			}
 		}
-		merged, err := differs.Over(base).Resolve()
+		merged, err := differs.Over(base.without(differs)).Resolve()
 		if err != nil {
 			return nil, refuse("also", hintOf(err), "%q cannot be fitted: %v", a.Name, err)
 		}
 		list = append(list, Candidate{a.Name, merged})
 	}
 	return list, nil
+}
+
+// without returns s without what an alternative rules out: the surface's words where it has none, and the covariates that
+// it gives another role.
+func (s Settings) without(differs Settings) Settings {
+	if differs.Surface != nil && *differs.Surface == NoSurface {
+		s.MaxKnots, s.Shrink, s.SurfacePer, s.SurfaceSmoothness = nil, nil, nil, nil
+		if s.Smoothness != nil && s.Smoothness.By == ByNumber {
+			s.Smoothness = nil
+		}
+	}
+	taken := map[string]bool{}
+	for _, c := range differs.covariates() {
+		taken[c.column] = true
+	}
+	for _, list := range []*[]string{&s.Linear, &s.Curve, &s.Category, &s.Group} {
+		*list = slices.DeleteFunc(slices.Clone(*list), func(c string) bool { return taken[c] })
+	}
+	s.CurvePer = slices.DeleteFunc(slices.Clone(s.CurvePer), func(c CurvePer) bool { return taken[c.Curve] })
+	return s
 }
 
 // onlyModel keeps what was said of the rows and the model. A map needs values of covariates everywhere, a fit does not:

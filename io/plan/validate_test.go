@@ -212,3 +212,43 @@ func TestValidateRefuses(t *testing.T) {
 		})
 	}
 }
+
+// TestAlternatives: an alternative replaces what it names and drops what it rules out.
+func TestAlternatives(t *testing.T) {
+	s := say(t, with("max-knots 60", "shrink true", "curve depth", "linear slope", "hold depth=mean", "hold slope=mean",
+		"also surface=none", "also linear=depth", "also distribution=gamma; link=log")...)
+	list, err := s.Candidates()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(list) != 4 || list[0].Name != "as asked" || list[2].Name != "linear=depth" {
+		t.Fatalf("got %d candidates", len(list))
+	}
+	if own := list[0]; own.MaxKnots.N != 60 || !*own.Shrink || len(own.Curve) != 1 {
+		t.Errorf("as asked: %v", own.Effective())
+	}
+	if none := list[1]; *none.Surface != NoSurface || none.Said("max-knots") || *none.Shrink || len(none.Curve) != 1 {
+		t.Errorf("surface=none: %v", none.Effective())
+	}
+	if line := list[2]; len(line.Curve) != 0 || len(line.Linear) != 1 || line.Linear[0] != "depth" {
+		t.Errorf("linear=depth: %v", line.Effective())
+	}
+	if gamma := list[3]; *gamma.Distribution != Gamma || *gamma.Link != Log || gamma.MaxKnots.N != 60 {
+		t.Errorf("gamma: %v", gamma.Effective())
+	}
+	for _, test := range []struct{ also, message, hint string }{
+		{"threshold=3", `also: "threshold" is no word in which a model can differ`, "it may differ in"},
+		{"curv=depth", `also: "curv" is no word in which a model can differ`, "did you mean curve?"},
+	} {
+		w, _ := Lookup("also")
+		err := w.Set(&Settings{}, test.also)
+		e, ok := err.(*Error)
+		if !ok || e.Error() != test.message || !strings.HasPrefix(e.Hint(), test.hint) {
+			t.Errorf("%s: %v", test.also, err)
+		}
+	}
+	bad := say(t, with("also distribution=binomial")...)
+	if err := bad.Validate(); err == nil || !strings.Contains(err.Error(), "cannot be fitted") {
+		t.Errorf("binomial without trials: %v", err)
+	}
+}

@@ -70,7 +70,7 @@ var words = []Word{
 		func(s *Settings) **string { return &s.Link }, parseChoice(Identity, Log, Logit, ComplementaryLogLog)),
 	one(Word{Name: "extra-variation", Group: groupKind, Arg: "HOW",
 		Help: "what to do about counts and positives that scatter more than poisson and binomial allow: auto to let the data " +
-			"choose between those and negative-binomial and beta-binomial, scale to widen errors by an estimated factor, none. " +
+			"choose between those and negative-binomial and beta-binomial, scale to multiply errors by an estimated factor, none. " +
 			"A distribution that is named stays, unless auto is named too"},
 		func(s *Settings) **string { return &s.ExtraVariation }, parseChoice(Auto, ScaleVariation, NoVariation)),
 	one(Word{Name: "shape", Group: groupKind, Arg: "NUMBER",

@@ -86,6 +86,10 @@ func dispersion(rep spatial.Report) summary.Check {
 	case math.IsNaN(phi):
 		c.Level = summary.Look
 		c.Sentence = "nothing is left to judge the scatter about the map from"
+	case free < 0.3*float64(rep.Rows) && phi <= chance:
+		c.Level = summary.Look
+		c.Sentence = fmt.Sprintf("the fit uses %s of %d degrees of freedom, which leaves little to judge the scatter about the map from",
+			summary.Short(summary.Number(rep.DF)), rep.Rows)
 	case phi > chance && phi > 1.2:
 		c.Level = level(phi, 1.2, 3)
 		c.Sentence += fmt.Sprintf(": the intervals are too narrow by its square root, %s, and part of the surface may be noise",

@@ -370,7 +370,7 @@ func TestManyColumnsAreRefused(t *testing.T) {
 		words      []string
 	}{
 		{"columns", "1100 columns of covariates beside ", false, []string{"group=who"}},
-		{"a curve of two values", `a curve of "twice": only 2 distinct values`, true, []string{"curve=twice", "hold=twice=1"}},
+		{"a curve of two values", `a curve of "twice": a curve needs at least 3 distinct values, and there are 2`, true, []string{"curve=twice", "hold=twice=1"}},
 		{"a level in two places", "places of street=other lie on one line", true, []string{"surface-per=street", "hold=street=one"}},
 	} {
 		_, err := Run(t.Context(), settings(t, obs, append(c.words, "response=z", "max-knots=10", "cells-across=5", "write=csv")...), filepath.Join(t.TempDir(), "out"), silent{})
