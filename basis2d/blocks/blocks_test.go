@@ -185,8 +185,11 @@ func TestCancelStops(t *testing.T) {
 		ctx, cancel := context.WithCancel(context.Background())
 		var done atomic.Int32
 		err := Do(ctx, workers, 100_000, func(_, task int) error {
-			if done.Add(1) == 5 {
+			switch n := done.Add(1); {
+			case n == 5:
 				cancel()
+			case n > 5: // on another worker, while the fifth is on its way to cancel
+				<-ctx.Done()
 			}
 			return nil
 		})
