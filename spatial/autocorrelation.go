@@ -2,6 +2,7 @@ package spatial
 
 import (
 	"math"
+	"slices"
 	"sort"
 )
 
@@ -116,13 +117,29 @@ func (g *cells) column(i int) int { return min(int((g.at.X[i]-g.x0)/g.side), g.n
 func (g *cells) row(i int) int    { return min(int((g.at.Y[i]-g.y0)/g.side), g.ny-1) }
 func (g *cells) cell(i int) int   { return g.row(i)*g.nx + g.column(i) }
 
+// neighbour is a place with its squared distance.
+type neighbour struct {
+	place int
+	d2    float64
+}
+
+// before reports whether a comes before b: nearer, or of lower row at the same distance.
+func (a neighbour) before(b neighbour) bool {
+	return a.d2 < b.d2 || a.d2 == b.d2 && a.place < b.place
+}
+
 // around returns the k places nearest to place i: ring after ring of cells, until no place beyond could be nearer.
 func (g *cells) around(i, k int) []int {
-	type found struct {
-		place int
-		d2    float64
+	best := make([]neighbour, 0, k+1) // in order
+	offer := func(j int) {
+		dx, dy := g.at.X[j]-g.at.X[i], g.at.Y[j]-g.at.Y[i]
+		c := neighbour{j, dx*dx + dy*dy}
+		if len(best) == k && !c.before(best[k-1]) {
+			return
+		}
+		at := sort.Search(len(best), func(r int) bool { return c.before(best[r]) })
+		best = slices.Insert(best, at, c)[:min(k, len(best)+1)]
 	}
-	var list []found
 	cx, cy := g.column(i), g.row(i)
 	for ring := 0; ring <= max(g.nx, g.ny); ring++ {
 		for y := max(cy-ring, 0); y <= min(cy+ring, g.ny-1); y++ {
@@ -136,25 +153,18 @@ func (g *cells) around(i, k int) []int {
 				}
 				for _, j := range g.order[g.first[y*g.nx+x]:g.first[y*g.nx+x+1]] {
 					if j != i {
-						dx, dy := g.at.X[j]-g.at.X[i], g.at.Y[j]-g.at.Y[i]
-						list = append(list, found{j, dx*dx + dy*dy})
+						offer(j)
 					}
 				}
 			}
 		}
-		sort.Slice(list, func(a, b int) bool {
-			if list[a].d2 != list[b].d2 {
-				return list[a].d2 < list[b].d2
-			}
-			return list[a].place < list[b].place
-		})
-		if reach := float64(ring) * g.side; len(list) >= k && list[k-1].d2 <= reach*reach {
+		if reach := float64(ring) * g.side; len(best) == k && best[k-1].d2 <= reach*reach {
 			break
 		}
 	}
 	near := make([]int, k)
 	for r := range near {
-		near[r] = list[r].place
+		near[r] = best[r].place
 	}
 	return near
 }
@@ -163,10 +173,31 @@ func (g *cells) around(i, k int) []int {
 const residualNeighbours = 8
 
 // ResidualAutocorrelation returns Moran's I of the quantile residuals: well above its expectation where the surface
-// misses something that neighbours share. It is zero for a restored surface. at are the places of the rows.
+// misses something that neighbours share. Rows of one place are taken together, as their mean times the root of their
+// number, so that repeated visits do not pass for neighbours. It is zero for a restored surface. at are the places of
+// the rows.
 func (s *Surface) ResidualAutocorrelation(at Places) Autocorrelation {
 	if s.rows == nil {
 		return Autocorrelation{}
 	}
-	return Moran(at, s.rows.Quantile, residualNeighbours)
+	type place struct{ x, y float64 }
+	index := map[place]int{}
+	var p Places
+	var sum, count []float64
+	for i, v := range s.rows.Quantile {
+		here := place{at.X[i], at.Y[i]}
+		k, ok := index[here]
+		if !ok {
+			k = len(sum)
+			index[here] = k
+			p.X, p.Y = append(p.X, here.x), append(p.Y, here.y)
+			sum, count = append(sum, 0), append(count, 0)
+		}
+		sum[k] += v
+		count[k]++
+	}
+	for k := range sum {
+		sum[k] /= math.Sqrt(count[k])
+	}
+	return Moran(p, sum, residualNeighbours)
 }

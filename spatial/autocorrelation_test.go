@@ -82,3 +82,24 @@ func TestResidualsThatAreAlikeAreFound(t *testing.T) {
 		t.Errorf("the chosen surface leaves z = %g", chosen.Z())
 	}
 }
+
+// TestRepeatedVisitsAreNoNeighbours: many rows at few places are taken together, so that what a place has of its own does
+// not count as likeness of neighbours, and crowds cost no time.
+func TestRepeatedVisitsAreNoNeighbours(t *testing.T) {
+	random := rand.New(rand.NewPCG(9, 9))
+	var d Data
+	for place := 0; place < 40; place++ {
+		x, y, own := random.Float64(), random.Float64(), random.NormFloat64()
+		for visit := 0; visit < 500; visit++ {
+			d.Places.X, d.Places.Y = append(d.Places.X, x), append(d.Places.Y, y)
+			d.Response = append(d.Response, own+0.5*random.NormFloat64())
+		}
+	}
+	s := fit(t, Model{Distribution: "gaussian", MaxKnots: 10, Smoothness: given(1e9)}, d, Options{})
+	if z := s.ResidualAutocorrelation(d.Places).Z(); math.Abs(z) > 3 {
+		t.Errorf("z = %g for places that have nothing in common", z)
+	}
+	if z := Moran(d.Places, s.Rows().Quantile, residualNeighbours).Z(); z < 50 {
+		t.Errorf("row by row z = %g", z)
+	}
+}

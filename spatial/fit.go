@@ -53,8 +53,7 @@ func fitAlone(ctx context.Context, m Model, d Data, o Options) (s *Surface, fini
 	}
 	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d), EstimateShape: m.Shape == nil, Workers: o.Workers}
 	if free := d.Places.Len() - engine.NullDim(); !dist.KnownDispersion() && free < 1 {
-		return nil, nil, unfit("use more observations or fewer covariates",
-			"%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), engine.NullDim())
+		return nil, nil, unfit(fewer(m), "%d observations cannot settle %d unpenalised coefficients and a variance", d.Places.Len(), engine.NullDim())
 	}
 	problem.Start = o.start.on(list)
 	criterion, lambda := s.criterion(list)

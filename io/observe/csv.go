@@ -279,5 +279,13 @@ func (r *rows) mostlyAside() error {
 	return &Error{File: r.header.source, Value: a.Value,
 		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; for example row %d (line %d), where %s",
 			len(r.table.Aside), r.table.Rows, strings.Join(reasons, "; "), a.Row, a.Line, a.sentence()),
-		Advice: "check that the right columns are named, and that missing values are written as empty fields or NA"}
+		Advice: adviceFor(counts[0].Code)}
+}
+
+// adviceFor says what to do about rows that are mostly unusable for one reason.
+func adviceFor(code string) string {
+	if code == "fractional-count" {
+		return "amounts that are not whole numbers are no counts: use --distribution tweedie for them"
+	}
+	return "check that the right columns are named, and that missing values are written as empty fields or NA"
 }

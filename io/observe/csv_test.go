@@ -516,3 +516,11 @@ func BenchmarkReadCSV(b *testing.B) {
 		})
 	}
 }
+
+// TestFractionsAreAmounts: a table of amounts read as counts is told what it is.
+func TestFractionsAreAmounts(t *testing.T) {
+	_, err := read("x,y,catch\n0,0,1.5\n1,0,0\n0,1,2.25\n1,1,3.5\n", Request{Response: "catch", Kind: Count})
+	if err == nil || hint(err) != "amounts that are not whole numbers are no counts: use --distribution tweedie for them" {
+		t.Errorf("%v, hint %q", err, hint(err))
+	}
+}
