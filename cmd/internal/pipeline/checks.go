@@ -5,6 +5,7 @@ import (
 	"math"
 
 	"drumlin/grids"
+	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
 )
@@ -19,6 +20,9 @@ func (r *run) checks() []summary.Check {
 	}
 	if rep.KnownDispersion {
 		list = append(list, dispersion(rep))
+	}
+	if rep.Distribution == plan.Tweedie {
+		list = append(list, amounts(r.obs.data.Response))
 	}
 	list = append(list, r.alike())
 	if !r.target.own() {
@@ -94,6 +98,30 @@ func dispersion(rep spatial.Report) summary.Check {
 		c.Level = level(phi, 1.2, 3)
 		c.Sentence += fmt.Sprintf(": the intervals are too narrow by its square root, %s, and part of the surface may be noise",
 			summary.Short(summary.Number(math.Sqrt(phi))))
+	}
+	return c
+}
+
+// amounts looks at what a tweedie distribution is for: amounts that are not whole numbers, some of them zero.
+func amounts(response []float64) summary.Check {
+	zeros, fractions := 0, 0
+	for _, y := range response {
+		if y == 0 {
+			zeros++
+		}
+		if y != math.Floor(y) {
+			fractions++
+		}
+	}
+	c := summary.Check{Name: "amounts", Level: summary.Clear, Figure: summary.Number(float64(zeros) / float64(len(response))),
+		Sentence: "the response is of amounts with zeros among them, which tweedie is for"}
+	switch {
+	case fractions == 0:
+		c.Level = summary.Look
+		c.Sentence = "every response is a whole number: tweedie is for amounts, and counts are for poisson or negative-binomial"
+	case zeros == 0:
+		c.Level = summary.Look
+		c.Sentence = "no response is zero: tweedie is for amounts with zeros, and gamma does for those above 0"
 	}
 	return c
 }
