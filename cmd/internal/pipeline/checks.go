@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"math"
 
-	"drumlin/grids"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -149,10 +148,9 @@ func (r *run) alike() summary.Check {
 const farFactor = 3
 
 func (r *run) far() summary.Check {
-	spacing := grids.MedianSpacing(r.obs.data.Places.X, r.obs.data.Places.Y)
 	n := 0
 	for _, d := range r.estimates.nearest {
-		if d > farFactor*spacing {
+		if d > farFactor*r.obs.spacing {
 			n++
 		}
 	}

@@ -22,29 +22,14 @@ func (r *run) compare(ctx context.Context) error {
 	}
 	var list []spatial.Candidate
 	for _, c := range candidates {
-		list = append(list, spatial.Candidate{Name: c.Name, Model: model(c.Settings), Fit: fitAs(c.Settings)})
+		list = append(list, spatial.Candidate{Name: c.Name, Model: model(c.Settings),
+			Fit: func(ctx context.Context, m spatial.Model, d spatial.Data, o spatial.Options) (*spatial.Surface, error) {
+				f, err := fitAs(ctx, c.Settings, m, d, o)
+				return f.surface, err
+			}})
 	}
 	r.comparison, err = spatial.Compare(ctx, list, r.obs.data, r.options(), nil)
 	return err
-}
-
-// fitAs returns how a candidate is fitted: as the map's own model is, with as many knots as it needs where it names none
-// and with the variation that the data ask for where it leaves that open.
-func fitAs(s plan.Settings) func(context.Context, spatial.Model, spatial.Data, spatial.Options) (*spatial.Surface, error) {
-	return func(ctx context.Context, m spatial.Model, d spatial.Data, o spatial.Options) (*spatial.Surface, error) {
-		once := func(ctx context.Context, m spatial.Model) (*spatial.Surface, error) {
-			if !s.MaxKnots.Auto {
-				return spatial.Fit(ctx, m, d, o)
-			}
-			surface, _, err := spatial.FitKnots(ctx, m, d, o, 0)
-			return surface, err
-		}
-		if !s.ChoosesVariation() {
-			return once(ctx, m)
-		}
-		surface, _, err := spatial.FitVariation(ctx, m, once)
-		return surface, err
-	}
 }
 
 // writeCandidates writes candidates.csv.

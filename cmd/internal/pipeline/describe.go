@@ -5,7 +5,6 @@ import (
 	"math"
 	"slices"
 
-	"drumlin/grids"
 	"drumlin/io/summary"
 	"drumlin/spatial"
 )
@@ -13,12 +12,11 @@ import (
 // describe fills the document, but for the outputs.
 func (r *run) describe() {
 	o := r.obs
-	x, _ := distinctPlaces(o.data.Places)
 	d := &r.document
 	d.Version = r.version
 	d.Input = summary.Input{Name: o.table.Source, SHA256: o.sha256, Rows: o.table.Rows, Used: o.table.Len(), SetAside: map[string]int{},
-		DistinctPlaces: len(x), Coordinates: o.said,
-		MedianSpacing: summary.Number(grids.MedianSpacing(o.data.Places.X, o.data.Places.Y))}
+		DistinctPlaces: len(o.placeX), Coordinates: o.said,
+		MedianSpacing: summary.Number(o.spacing)}
 	for _, a := range o.table.Aside {
 		d.Input.SetAside[a.Code]++
 	}

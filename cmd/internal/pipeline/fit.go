@@ -18,14 +18,13 @@ func (r *run) fit(ctx context.Context) error {
 	if model.Smoothness.Method == spatial.Given && model.Smoothness.Lambda == 0 {
 		return throughEveryRow()
 	}
-	var err error
-	if r.settings.ChoosesVariation() {
-		err = r.chooseVariation(ctx, model)
-	} else {
-		r.surface, r.knotPath, err = r.fitKnots(ctx, model)
-	}
+	f, err := fitAs(ctx, r.settings, model, r.obs.data, r.options())
 	if err != nil {
 		return err
+	}
+	r.surface, r.knotPath, r.variation = f.surface, f.knotPath, f.variation
+	if v := f.variation; v != nil {
+		r.settings.Choose("distribution", v.Chosen, v.Reason)
 	}
 	if r.area.problem != nil {
 		return r.area.problem
@@ -38,35 +37,37 @@ func (r *run) fit(ctx context.Context) error {
 	return nil
 }
 
-// chooseVariation lets the data decide between a distribution and the one with extra variation, each with the knots it
-// needs: with fewer, detail that the knots cannot follow would pass for extra variation.
-func (r *run) chooseVariation(ctx context.Context, model spatial.Model) error {
-	paths := map[string][]spatial.KnotStep{}
-	surface, v, err := spatial.FitVariation(ctx, model, func(ctx context.Context, m spatial.Model) (*spatial.Surface, error) {
-		s, path, err := r.fitKnots(ctx, m)
-		paths[m.Distribution] = path
-		return s, err
-	})
-	if err != nil {
-		return err
-	}
-	r.surface, r.knotPath, r.variation = surface, paths[v.Chosen], &v
-	r.settings.Choose("distribution", v.Chosen, v.Reason)
-	return nil
-}
-
 // options are how the region is fitted.
 func (r *run) options() spatial.Options {
 	return spatial.Options{Workers: *r.settings.Workers, Seed: *r.settings.Seed, Area: r.area.knotPlaces}
 }
 
-// fitKnots fits a model with the knots that the settings allow, or with as many as the fit needs.
-func (r *run) fitKnots(ctx context.Context, m spatial.Model) (*spatial.Surface, []spatial.KnotStep, error) {
-	if r.settings.MaxKnots.Auto {
-		return spatial.FitKnots(ctx, m, r.obs.data, r.options(), 0)
+// fitted is a surface with the choices that the data made on the way to it.
+type fitted struct {
+	surface   *spatial.Surface
+	knotPath  []spatial.KnotStep // nil where the knots were given
+	variation *spatial.Variation // nil where there was nothing to choose
+}
+
+// fitAs fits a model as the settings say: with the knots they allow, or with as many as the fit needs, and with the
+// variation that the data ask for where they leave that open. Each distribution then has the knots it needs: with fewer,
+// detail that the knots cannot follow would pass for extra variation.
+func fitAs(ctx context.Context, s plan.Settings, m spatial.Model, d spatial.Data, o spatial.Options) (fitted, error) {
+	paths := map[string][]spatial.KnotStep{}
+	once := func(ctx context.Context, m spatial.Model) (*spatial.Surface, error) {
+		if !s.MaxKnots.Auto {
+			return spatial.Fit(ctx, m, d, o)
+		}
+		surface, path, err := spatial.FitKnots(ctx, m, d, o, 0)
+		paths[m.Distribution] = path
+		return surface, err
 	}
-	s, err := spatial.Fit(ctx, m, r.obs.data, r.options())
-	return s, nil, err
+	if !s.ChoosesVariation() {
+		surface, err := once(ctx, m)
+		return fitted{surface, paths[m.Distribution], nil}, err
+	}
+	surface, v, err := spatial.FitVariation(ctx, m, once)
+	return fitted{surface, paths[v.Chosen], &v}, err
 }
 
 // recordKnots records how many knots were enough, and why.

@@ -48,7 +48,7 @@ func (r *run) pictures() []picture {
 func (r *run) picture(file, legend string, kind chart.Kind, value []float64) picture {
 	m := chart.Map{Title: r.reporting.title, Subtitle: r.subtitle(), Legend: legend, Kind: kind, Lattice: r.target.lattice,
 		Outline: r.area.outline, Stamp: r.stamp(), Foot: r.document.Cautions}
-	m.Observations.X, m.Observations.Y = distinctPlaces(r.obs.data.Places)
+	m.Observations.X, m.Observations.Y = r.obs.placeX, r.obs.placeY
 	if r.target.own() {
 		m.Dots = chart.Dots{X: r.target.places.X, Y: r.target.places.Y, Value: value}
 	} else {

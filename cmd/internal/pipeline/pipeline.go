@@ -89,8 +89,7 @@ func (r *run) predict(ctx context.Context) error {
 
 // saved is the fitted surface as the archive keeps it.
 func (r *run) saved() archive.Saved {
-	x, y := distinctPlaces(r.obs.data.Places)
-	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: x, PlaceY: y}
+	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: r.obs.placeX, PlaceY: r.obs.placeY}
 }
 
 // refusal is a request or an input that is wrong, with what to do about it.

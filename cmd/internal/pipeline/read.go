@@ -13,6 +13,7 @@ import (
 	"sort"
 	"strconv"
 
+	"drumlin/grids"
 	"drumlin/grids/crs"
 	"drumlin/io/observe"
 	"drumlin/io/plan"
@@ -26,6 +27,9 @@ type observations struct {
 	system crs.System
 	said   string // how the coordinates were taken, in words
 	data   spatial.Data
+
+	placeX, placeY []float64 // distinct places, sorted by x, then y
+	spacing        float64   // median distance from one to the nearest other
 }
 
 // read reads the table of observations and puts it into the plane.
@@ -41,6 +45,8 @@ func (r *run) read(ctx context.Context) error {
 	if err := o.project(r.settings); err != nil {
 		return err
 	}
+	o.placeX, o.placeY = distinctPlaces(o.data.Places)
+	o.spacing = grids.MedianSpacing(o.placeX, o.placeY)
 	o.data.Response = o.table.Column(*r.settings.Response).Number
 	if err := o.withinReach(*r.settings.Response, *r.settings.Distribution); err != nil {
 		return err
