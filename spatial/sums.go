@@ -72,7 +72,9 @@ func (s *Surface) sum(ctx context.Context, rows rows, at Places, set Share, beta
 		}
 		x := rows(&w.rowScratch, w.x[:len(index)], w.y[:len(index)], func(k int) int { return int(index[k]) })
 		drawn := blas64.General{Rows: x.Rows, Cols: draws, Stride: draws, Data: w.drawn[:x.Rows*draws]}
-		blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, x, betas, 0, drawn)
+		if draws > 0 {
+			blas64.Gemm(blas.NoTrans, blas.NoTrans, 1, x, betas, 0, drawn)
+		}
 		for k, a := range weight {
 			row := x.Data[k*p : (k+1)*p]
 			eta := dot(row, s.beta)
@@ -105,6 +107,9 @@ func (s *Surface) draw(draws int, seed uint64) blas64.General {
 	p := len(s.beta)
 	random := rand.New(rand.NewPCG(seed, 0x73757266616365))
 	b := blas64.General{Rows: p, Cols: draws, Stride: draws, Data: make([]float64, p*draws)}
+	if draws == 0 {
+		return b
+	}
 	root := math.Sqrt(s.phi)
 	for d := 0; d < draws; d++ {
 		for k := 0; k < p; k++ {

@@ -31,15 +31,46 @@ func ReadCSV(r io.Reader, source string, want Request) (*Table, error) {
 	if err != nil {
 		return nil, err
 	}
+	return readTable(h, want, &stream{in: in, source: source})
+}
+
+// readTable makes a table of the records below a header.
+func readTable(h header, want Request, from records) (*Table, error) {
 	rows, err := newRows(h, want)
 	if err != nil {
 		return nil, err
 	}
-	if err := rows.readAll(in); err != nil {
+	if err := rows.readAll(from); err != nil {
 		return nil, err
 	}
 	rows.table.sortLevels()
 	return rows.table, nil
+}
+
+// records gives the records below a header one by one, each with the line of the file on which it starts and the
+// number of its row. The slice is good until the next call. The error is io.EOF after the last, else an *Error.
+type records interface {
+	next() (record []string, line, row int, err error)
+}
+
+// stream gives the records of a file as it is read.
+type stream struct {
+	in     *csv.Reader // below the header
+	source string
+	row    int
+}
+
+func (s *stream) next() (record []string, line, row int, err error) {
+	record, err = s.in.Read()
+	if err == io.EOF {
+		return nil, 0, 0, err
+	}
+	if err != nil {
+		return nil, 0, 0, readError(s.source, err)
+	}
+	line, _ = s.in.FieldPos(0)
+	s.row++
+	return record, line, s.row, nil
 }
 
 func inFile(err error, source string) error {
@@ -134,24 +165,23 @@ func (r *rows) add(p part, name string) error {
 }
 
 // readAll reads the records to the end and refuses a table that is mostly unusable.
-func (r *rows) readAll(in *csv.Reader) error {
+func (r *rows) readAll(from records) error {
 	for {
-		record, err := in.Read()
+		record, line, row, err := from.next()
 		if err == io.EOF {
 			break
 		}
 		if err != nil {
-			return readError(r.header.source, err)
+			return err
 		}
-		line, _ := in.FieldPos(0)
 		r.table.Rows++
-		if err := r.readRow(record, line); err != nil {
+		if err := r.readRow(record, line, row); err != nil {
 			return err
 		}
 	}
 	switch {
 	case r.table.Rows == 0:
-		return &Error{File: r.header.source, Line: r.header.line, What: "no rows stand below the header", Advice: adviceWhole}
+		return r.header.noRows()
 	case len(r.table.Aside) > r.table.Rows/2:
 		return r.mostlyAside()
 	}
@@ -159,44 +189,23 @@ func (r *rows) readAll(in *csv.Reader) error {
 }
 
 // readRow keeps one record or sets it aside. An error refuses the whole table.
-func (r *rows) readRow(record []string, line int) error {
-	here := Error{File: r.header.source, Line: line, Row: r.table.Rows}
-	if err := r.checkRecord(record, here); err != nil {
+func (r *rows) readRow(record []string, line, row int) error {
+	here := Error{File: r.header.source, Line: line, Row: row}
+	if err := r.header.checkRecord(record, here); err != nil {
 		return err
 	}
 	if err := r.checkLatitude(record, here); err != nil {
 		return err
 	}
 	if a, bad := r.firstFault(record); bad {
-		a.Line, a.Row = int32(line), int32(r.table.Rows)
+		a.Line, a.Row = int32(line), int32(row)
 		if r.want.Strict {
 			return r.refuse(a)
 		}
 		r.table.Aside = append(r.table.Aside, a)
 		return nil
 	}
-	r.keepRow(line)
-	return nil
-}
-
-// checkRecord refuses records of the wrong length and fields that are not text, whether or not they are asked for.
-func (r *rows) checkRecord(record []string, here Error) error {
-	if len(record) != len(r.header.names) {
-		here.What = fmt.Sprintf("%d fields where the header has %d", len(record), len(r.header.names))
-		here.Advice = "check the line for a missing comma, or for one that belongs inside quotes"
-		return &here
-	}
-	if here.Line > math.MaxInt32 {
-		here.What = "the file has more lines than can be counted"
-		return &here
-	}
-	for i, s := range record {
-		if !clean(s) {
-			here.Column, here.Value = r.header.names[i], shorten(s)
-			here.What, here.Advice = fmt.Sprintf("%q is not UTF-8 text", here.Value), adviceText
-			return &here
-		}
-	}
+	r.keepRow(line, row)
 	return nil
 }
 
@@ -215,10 +224,10 @@ func (r *rows) checkLatitude(record []string, here Error) error {
 }
 
 // keepRow appends the row at hand to the table.
-func (r *rows) keepRow(line int) {
+func (r *rows) keepRow(line, row int) {
 	t := r.table
 	t.Line = append(t.Line, int32(line))
-	t.Row = append(t.Row, int32(t.Rows))
+	t.Row = append(t.Row, int32(row))
 	t.Geometry = append(t.Geometry, orb.Point{r.value[r.x], r.value[r.y]})
 	for i, f := range r.fields {
 		switch {

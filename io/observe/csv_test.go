@@ -172,6 +172,7 @@ func TestReadCSVRefusals(t *testing.T) {
 			if diff := cmp.Diff(test.hint, hint(err)); diff != "" {
 				t.Errorf("hint (-want +got):\n%s", diff)
 			}
+			checkParts(t, test.text, test.want, err)
 		})
 	}
 }

@@ -5,5 +5,8 @@
 // response, a denominator of 0) is set aside with its reason, and the rest goes on, unless the request is strict or
 // more than half of the rows would be lost.
 //
+// A table that holds many regions is read once: Whole keeps it in memory as it stands, Split deals its rows to parts,
+// and ReadPart reads each part as ReadCSV reads a file, with the lines and rows of the whole file in its messages.
+//
 // The package opens no files: it is given a reader and the name to call the source by in messages.
 package observe

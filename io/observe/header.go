@@ -4,6 +4,7 @@ import (
 	"encoding/csv"
 	"fmt"
 	"io"
+	"math"
 	"slices"
 	"strings"
 )
@@ -15,16 +16,31 @@ type header struct {
 	names  []string
 }
 
-// readHeader reads the names. Blank names are let pass: spreadsheets leave them, and nobody can ask for one.
+// readHeader reads the names.
 func readHeader(in *csv.Reader, source string) (header, error) {
 	record, err := in.Read()
 	if err == io.EOF {
-		return header{}, &Error{File: source, What: "the file is empty", Advice: adviceWhole}
+		return header{}, emptyFile(source)
 	}
 	if err != nil {
 		return header{}, readError(source, err)
 	}
 	line, _ := in.FieldPos(0)
+	return newHeader(record, line, source)
+}
+
+func emptyFile(source string) error {
+	return &Error{File: source, What: "the file is empty", Advice: adviceWhole}
+}
+
+// noRows says that nothing stands below the header.
+func (h header) noRows() error {
+	return &Error{File: h.source, Line: h.line, What: "no rows stand below the header", Advice: adviceWhole}
+}
+
+// newHeader takes the names from the first record, which starts on the given line. Blank names are let pass:
+// spreadsheets leave them, and nobody can ask for one.
+func newHeader(record []string, line int, source string) (header, error) {
 	h := header{source: source, line: line, names: make([]string, len(record))}
 	first := map[string]int{}
 	numbers := 0
@@ -48,6 +64,27 @@ func readHeader(in *csv.Reader, source string) (header, error) {
 			Advice: "put the names of the columns on the first line"}
 	}
 	return h, nil
+}
+
+// checkRecord refuses records of the wrong length and fields that are not text, whether or not they are asked for.
+func (h header) checkRecord(record []string, here Error) error {
+	if len(record) != len(h.names) {
+		here.What = fmt.Sprintf("%d fields where the header has %d", len(record), len(h.names))
+		here.Advice = "check the line for a missing comma, or for one that belongs inside quotes"
+		return &here
+	}
+	if here.Line > math.MaxInt32 {
+		here.What = "the file has more lines than can be counted"
+		return &here
+	}
+	for i, s := range record {
+		if !clean(s) {
+			here.Column, here.Value = h.names[i], shorten(s)
+			here.What, here.Advice = fmt.Sprintf("%q is not UTF-8 text", here.Value), adviceText
+			return &here
+		}
+	}
+	return nil
 }
 
 // find returns the position of a column, which must exist.

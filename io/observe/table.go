@@ -2,6 +2,7 @@ package observe
 
 import (
 	"cmp"
+	"fmt"
 	"slices"
 
 	"github.com/paulmach/orb"
@@ -111,5 +112,76 @@ func (t *Table) sortLevels() {
 			}
 		}
 		c.Level = sorted
+	}
+}
+
+// Append adds the kept rows of another table that was read with the same request, such as those of a neighbouring
+// region. Levels are merged and sorted. Rows and Aside stay those of t, and Line and Row of the added rows are those
+// of the source of other. It is an error, and t stays as it is, if only one of the two is in degrees or their columns
+// differ. Append does not change other and shares nothing with it.
+func (t *Table) Append(other *Table) error {
+	if err := t.checkAlike(other); err != nil {
+		return err
+	}
+	t.Line = append(t.Line, other.Line...)
+	t.Row = append(t.Row, other.Row...)
+	t.Geometry = append(t.Geometry, other.Geometry...)
+	for i := range t.Columns {
+		t.Columns[i].append(&other.Columns[i])
+	}
+	t.sortLevels()
+	return nil
+}
+
+// checkAlike refuses a table whose rows mean something else than those of t.
+func (t *Table) checkAlike(other *Table) error {
+	refuse := func(format string, args ...any) error {
+		return &Error{File: other.Source, What: "its rows cannot be added to those of " + t.Source + ": " + fmt.Sprintf(format, args...)}
+	}
+	if t.Degrees != other.Degrees {
+		return refuse("the coordinates are in %s, those of the other table in %s", axesWord(other.Degrees), axesWord(t.Degrees))
+	}
+	if len(t.Columns) != len(other.Columns) {
+		return refuse("%d columns were read, and %d of the other table", len(other.Columns), len(t.Columns))
+	}
+	for i, c := range t.Columns {
+		o := other.Columns[i]
+		if c.Name != o.Name {
+			return refuse("column %d is %q, and %q in the other table", i+1, shorten(o.Name), shorten(c.Name))
+		}
+		if (c.Number == nil) != (o.Number == nil) || (c.Code == nil) != (o.Code == nil) {
+			return refuse("column %q was read as numbers in one table and as text in the other", shorten(c.Name))
+		}
+	}
+	return nil
+}
+
+func axesWord(degrees bool) string {
+	if degrees {
+		return "degrees"
+	}
+	return "metres"
+}
+
+// append adds the values of another column; its levels that are new come last.
+func (c *Column) append(other *Column) {
+	c.Number = append(c.Number, other.Number...)
+	known := make(map[string]int32, len(c.Level))
+	for code, level := range c.Level {
+		known[level] = int32(code)
+	}
+	to := make([]int32, len(other.Level))
+	for code, level := range other.Level {
+		if _, seen := known[level]; !seen {
+			known[level] = int32(len(c.Level))
+			c.Level = append(c.Level, level)
+		}
+		to[code] = known[level]
+	}
+	for _, code := range other.Code {
+		if code >= 0 {
+			code = to[code]
+		}
+		c.Code = append(c.Code, code)
 	}
 }

@@ -19,29 +19,45 @@ const (
 	adviceWhole = "check that this is the right file and that it was written completely"
 )
 
+// headSize is how much of a file is looked at to tell what it is.
+const headSize = 1 << 16
+
 // openText looks at the start of r, refuses what is not comma-separated UTF-8 text, and returns a reader of records
 // standing at the header.
 func openText(r io.Reader, source string) (*csv.Reader, error) {
-	buffered := bufio.NewReaderSize(&bounded{from: r, source: source, line: 1, start: 1}, 1<<16)
-	head, err := buffered.Peek(buffered.Size())
+	buffered := bufio.NewReaderSize(newBounded(r, source), headSize)
+	head, err := buffered.Peek(headSize)
+	mark, err := checkHead(head, err, source)
+	if err != nil {
+		return nil, err
+	}
+	buffered.Discard(mark) // cannot fail: the bytes are in the buffer
+	return newCSV(buffered), nil
+}
+
+// checkHead looks at the first headSize bytes of a file, or at those that came before err, and refuses what is not
+// comma-separated UTF-8 text. It returns the length of the byte order mark, which may be 0.
+func checkHead(head []byte, err error, source string) (int, error) {
 	if err != nil && err != io.EOF && len(head) == 0 {
-		return nil, readError(source, err)
+		return 0, readError(source, err)
 	}
 	if what, advice := notText(head); what != "" {
-		return nil, &Error{File: source, What: what, Advice: advice}
+		return 0, &Error{File: source, What: what, Advice: advice}
 	}
-	if mark := []byte("\xef\xbb\xbf"); bytes.HasPrefix(head, mark) {
-		head = head[len(mark):]
-		buffered.Discard(len(mark)) // cannot fail: the bytes are in the buffer
+	text := bytes.TrimPrefix(head, []byte("\xef\xbb\xbf"))
+	if what := notCommas(text); what != "" {
+		return 0, &Error{File: source, What: what, Advice: adviceText}
 	}
-	if what := notCommas(head); what != "" {
-		return nil, &Error{File: source, What: what, Advice: adviceText}
-	}
-	in := csv.NewReader(buffered)
-	in.FieldsPerRecord = -1 // counted by readRow, which can say how many there should be
+	return len(head) - len(text), nil
+}
+
+// newCSV returns a reader of records by the rules of the package: those of every table, however it is read.
+func newCSV(r io.Reader) *csv.Reader {
+	in := csv.NewReader(r)
+	in.FieldsPerRecord = -1 // counted by checkRecord, which can say how many there should be
 	in.ReuseRecord = true
 	in.TrimLeadingSpace = true // or a quote after ", " would be an error; values are trimmed in any case
-	return in, nil
+	return in
 }
 
 // notText names a file that is something other than text, by its first bytes.
@@ -99,6 +115,10 @@ type bounded struct {
 	size        int // bytes of the record so far
 	quoted      bool
 	err         error // kept: a buffer above may ask again
+}
+
+func newBounded(r io.Reader, source string) *bounded {
+	return &bounded{from: r, source: source, line: 1, start: 1}
 }
 
 // Read passes on what from gives.

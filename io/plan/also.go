@@ -102,7 +102,7 @@ func (s Settings) onlyModel() Settings {
 	for _, w := range words {
 		keep := slices.Contains(modelWords, w.Name) || w.Group == groupData || w.Group == groupKind || w.RunOnly || w.Name == "seed"
 		if keep && s.Said(w.Name) {
-			w.copy(&model, s)
+			w.copy(&model, &s)
 		}
 	}
 	model.At = new("places")

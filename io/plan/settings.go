@@ -94,7 +94,7 @@ func Defaults() Settings {
 	}
 	s.why = map[string]string{}
 	for _, w := range words {
-		if w.filled(s) {
+		if w.filled(&s) {
 			s.why[w.Name] = byDefault
 		}
 	}
@@ -107,10 +107,10 @@ func (s Settings) Over(base Settings) Settings {
 	out := base
 	out.why = maps.Clone(base.why)
 	for _, w := range words {
-		if !w.filled(s) {
+		if !w.filled(&s) {
 			continue
 		}
-		w.copy(&out, s)
+		w.copy(&out, &s)
 		delete(out.why, w.Name)
 		if why := s.why[w.Name]; why != "" {
 			if out.why == nil {
@@ -133,7 +133,7 @@ func (s *Settings) Choose(name, value, why string) {
 	if err := w.Set(&fresh, value); err != nil {
 		panic("plan: " + err.Error())
 	}
-	w.copy(s, fresh)
+	w.copy(s, &fresh)
 	s.why = maps.Clone(s.why)
 	if s.why == nil {
 		s.why = map[string]string{}
@@ -144,7 +144,7 @@ func (s *Settings) Choose(name, value, why string) {
 // Said reports whether somebody said the word; a default or a choice of the program was not said.
 func (s Settings) Said(name string) bool {
 	w, ok := Lookup(name)
-	return ok && w.filled(s) && s.why[name] == ""
+	return ok && w.filled(&s) && s.why[name] == ""
 }
 
 // Entry is one setting as it took effect.
@@ -161,10 +161,10 @@ type Entry struct {
 func (s Settings) Effective() []Entry {
 	var list []Entry
 	for _, w := range words {
-		if w.RunOnly || !w.filled(s) || (s.why[w.Name] == byDefault && s.moot(w.Name)) {
+		if w.RunOnly || !w.filled(&s) || (s.why[w.Name] == byDefault && s.moot(w.Name)) {
 			continue
 		}
-		v := w.value(s)
+		v := w.value(&s)
 		if w.File {
 			v = filepath.Base(v.(string))
 		}
@@ -238,8 +238,8 @@ func (s Settings) denominators() []denominator {
 func (s Settings) Files() []string {
 	var list []string
 	for _, w := range words {
-		if w.File && w.filled(s) {
-			list = append(list, w.value(s).(string))
+		if w.File && w.filled(&s) {
+			list = append(list, w.value(&s).(string))
 		}
 	}
 	return list
@@ -248,14 +248,14 @@ func (s Settings) Files() []string {
 // RelativeTo returns s with every relative path of an input file taken from dir.
 func (s Settings) RelativeTo(dir string) Settings {
 	for _, w := range words {
-		if !w.File || !w.filled(s) {
+		if !w.File || !w.filled(&s) {
 			continue
 		}
-		if path := w.value(s).(string); !filepath.IsAbs(path) {
+		if path := w.value(&s).(string); !filepath.IsAbs(path) {
 			var moved Settings
 			// A path that was accepted once is accepted with a folder before it.
 			if err := w.Set(&moved, filepath.Join(dir, path)); err == nil {
-				w.copy(&s, moved)
+				w.copy(&s, &moved)
 			}
 		}
 	}

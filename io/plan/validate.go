@@ -55,10 +55,10 @@ func columnsApart(s Settings) error {
 	taken := map[string]string{}
 	for _, name := range []string{"response", "x", "y", "people", "area", "effort", "expected", "trials", "weight"} {
 		w, _ := Lookup(name)
-		if !w.filled(s) {
+		if !w.filled(&s) {
 			continue
 		}
-		column := w.value(s).(string)
+		column := w.value(&s).(string)
 		if other, ok := taken[column]; ok {
 			return refuse(name, "", "column %q is already the %s", column, other)
 		}

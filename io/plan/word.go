@@ -17,9 +17,35 @@ type Word struct {
 	// of a word without Arg means true. The error is an *Error.
 	Set func(s *Settings, value string) error
 
-	filled func(Settings) bool
-	copy   func(dst *Settings, src Settings)
-	value  func(Settings) any
+	takes  form // as a value in a plan
+	filled func(*Settings) bool
+	copy   func(dst, src *Settings)
+	value  func(*Settings) any
+}
+
+// form is a set of the ways in which a value can be written in a plan.
+type form uint8
+
+const (
+	asText form = 1 << iota
+	asNumber
+	asTruth
+	asList // of texts
+)
+
+// formOf is how a value of type T is written in a plan.
+func formOf[T any]() form {
+	switch any(*new(T)).(type) {
+	case string:
+		return asText
+	case float64, int, uint64:
+		return asNumber
+	case bool:
+		return asTruth
+	case Knots, Smoothness, Reference:
+		return asNumber | asText
+	}
+	return 0
 }
 
 // Key is the word as a key of a plan and of summary.json: with underscores.
@@ -32,10 +58,10 @@ func (w Word) Flag() bool { return w.Arg == "" }
 // without Arg and RunOnly words, whose defaults are plain or depend on the machine.
 func (w Word) Default() string {
 	d := Defaults()
-	if !w.filled(d) || w.Flag() || w.RunOnly {
+	if !w.filled(&d) || w.Flag() || w.RunOnly {
 		return ""
 	}
-	return spoken(w.value(d))
+	return spoken(w.value(&d))
 }
 
 // Lookup finds a word by its name.
@@ -60,6 +86,7 @@ func simplify(v any) any {
 
 // one makes a word for a field that holds one value.
 func one[T any](w Word, field func(*Settings) **T, parse func(string) (T, error)) Word {
+	w.takes = formOf[T]()
 	w.Set = func(s *Settings, value string) error {
 		v, err := parse(value)
 		if err != nil {
@@ -68,9 +95,9 @@ func one[T any](w Word, field func(*Settings) **T, parse func(string) (T, error)
 		*field(s) = &v
 		return nil
 	}
-	w.filled = func(s Settings) bool { return *field(&s) != nil }
-	w.copy = func(dst *Settings, src Settings) { *field(dst) = *field(&src) }
-	w.value = func(s Settings) any { return simplify(**field(&s)) }
+	w.filled = func(s *Settings) bool { return *field(s) != nil }
+	w.copy = func(dst, src *Settings) { *field(dst) = *field(src) }
+	w.value = func(s *Settings) any { return simplify(**field(s)) }
 	return w
 }
 
@@ -103,11 +130,12 @@ func choices(w Word, field func(*Settings) *[]string, among []string) Word {
 }
 
 func listed[T any](w Word, field func(*Settings) *[]T) Word {
-	w.filled = func(s Settings) bool { return len(*field(&s)) > 0 }
-	w.copy = func(dst *Settings, src Settings) { *field(dst) = *field(&src) }
-	w.value = func(s Settings) any {
+	w.takes = asList | asText
+	w.filled = func(s *Settings) bool { return len(*field(s)) > 0 }
+	w.copy = func(dst, src *Settings) { *field(dst) = *field(src) }
+	w.value = func(s *Settings) any {
 		list := []string{}
-		for _, v := range *field(&s) {
+		for _, v := range *field(s) {
 			list = append(list, spoken(simplify(v)))
 		}
 		return list

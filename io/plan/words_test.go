@@ -186,7 +186,7 @@ func TestRepeatAddsAndTheRestReplace(t *testing.T) {
 			}
 		}
 		n := 1
-		if list, ok := w.value(s).([]string); ok && w.Name != "write" {
+		if list, ok := w.value(&s).([]string); ok && w.Name != "write" {
 			n = len(list)
 		}
 		if (n == 2) != w.Repeat {

@@ -9,6 +9,7 @@ import (
 	"encoding/json"
 	"io"
 	"math"
+	"strconv"
 )
 
 // Number is a number that becomes null in JSON where it is not finite.
@@ -22,10 +23,25 @@ func (n Number) MarshalJSON() ([]byte, error) {
 	return json.Marshal(float64(n))
 }
 
+// UnmarshalJSON reads a number back. Null becomes NaN, whichever it was that is not finite.
+func (n *Number) UnmarshalJSON(text []byte) error {
+	if string(text) == "null" {
+		*n = Number(math.NaN())
+		return nil
+	}
+	v, err := strconv.ParseFloat(string(text), 64)
+	if err != nil {
+		return json.Unmarshal(text, (*float64)(n)) // says what is wrong with it; too slow for the millions of a ledger
+	}
+	*n = Number(v)
+	return nil
+}
+
 // Document is what summary.json holds.
 type Document struct {
 	Version      string        `json:"version"`
 	Input        Input         `json:"input"`
+	Region       *Region       `json:"region,omitempty"` // of a batch
 	Settings     Settings      `json:"settings"`
 	Lattice      Lattice       `json:"lattice"`
 	Fit          Fit           `json:"fit"`
@@ -54,6 +70,23 @@ type Input struct {
 	DistinctPlaces int            `json:"distinct_places"`
 	MedianSpacing  Number         `json:"median_spacing_m"`
 	Coordinates    string         `json:"coordinates"` // which columns, and how they were taken
+}
+
+// Region is what a batch adds: whose rows these are, and the figures by which regions are compared.
+type Region struct {
+	Name        string `json:"name"`
+	Fingerprint string `json:"fingerprint"` // of input, settings and program
+	Response    string `json:"response"`
+	MarginRows  int    `json:"margin_rows"` // rows of neighbouring regions that helped the fit; no other figure counts them
+	Per         Number `json:"per"`         // the mean is for this many
+	Total       Number `json:"total"`       // over the map; null where nothing adds up
+	TotalCV     Number `json:"total_cv"`
+	TotalLower  Number `json:"total_lower"`
+	TotalUpper  Number `json:"total_upper"`
+	Mean        Number `json:"mean"` // over the map by area, in its unit
+	MeanCV      Number `json:"mean_cv"`
+	MeanLower   Number `json:"mean_lower"`
+	MeanUpper   Number `json:"mean_upper"`
 }
 
 // Setting is a setting in force. Chosen says why, where the program chose it.

@@ -130,6 +130,33 @@ func TestNumbers(t *testing.T) {
 	}
 }
 
+func TestNumbersReadBack(t *testing.T) {
+	for _, v := range []float64{0, 0.1, -1.0 / 3, 1e-9, 123456789.125, math.MaxFloat64, math.SmallestNonzeroFloat64, math.NaN(), math.Inf(1), math.Inf(-1)} {
+		type pair struct{ A, B summary.Number }
+		text, err := json.Marshal(pair{summary.Number(v), 7})
+		if err != nil {
+			t.Fatal(err)
+		}
+		got := pair{A: 5}
+		if err := json.Unmarshal(text, &got); err != nil {
+			t.Fatal(err)
+		}
+		want := v
+		if math.IsInf(v, 0) {
+			want = math.NaN()
+		}
+		if a := float64(got.A); a != want && !(math.IsNaN(a) && math.IsNaN(want)) || got.B != 7 {
+			t.Errorf("%v comes back as %v beside %v", v, got.A, got.B)
+		}
+	}
+	for _, text := range []string{`"5"`, `true`, `[1]`, `{}`, `1e999`, ``} {
+		n := summary.Number(3)
+		if err := json.Unmarshal([]byte(text), &n); err == nil {
+			t.Errorf("%s is taken for %v", text, n)
+		}
+	}
+}
+
 func TestNothingIsNullButWhatIsNotThere(t *testing.T) {
 	var got map[string]any
 	if err := json.Unmarshal([]byte(asJSON(t, summary.Document{})), &got); err != nil {
