@@ -21,8 +21,9 @@ var exitMeanings = []struct {
 }{
 	{exitDone, "done; what the checks find does not change it"},
 	{exitRequest, "the request or the input is wrong; nothing was written"},
+	{exitRegions, "a batch is done, with regions that failed or are not to be used"},
 	{exitFit, "a fit could not be had; nothing was written"},
-	{exitInterrupted, "interrupted; nothing was written"},
+	{exitInterrupted, "interrupted; nothing was written, and a batch can be continued"},
 }
 
 // fitFailed is an error that says the request and the input are in order and still no fit came of them.
@@ -31,11 +32,14 @@ type fitFailed interface{ FitFailed() bool }
 // exitCode maps what a command returned to the code the process ends with.
 func exitCode(err error) int {
 	var fit fitFailed
+	var regions *incomplete
 	switch {
 	case err == nil:
 		return exitDone
 	case errors.Is(err, context.Canceled):
 		return exitInterrupted
+	case errors.As(err, &regions):
+		return exitRegions
 	case errors.As(err, &fit) && fit.FitFailed():
 		return exitFit
 	}

@@ -67,6 +67,19 @@ func (p *progress) clear() {
 	p.show("")
 }
 
+// above writes a text that stays, above the line.
+func (p *progress) above(text string) {
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	if p.w == nil {
+		return
+	}
+	line := p.shown
+	p.show("")
+	fmt.Fprintln(p.w, text)
+	p.show(line)
+}
+
 // show replaces the line. What is left of a longer line is covered with blanks, which every terminal understands.
 func (p *progress) show(text string) {
 	if p.w == nil || text == p.shown {

@@ -14,12 +14,18 @@ const (
 // scored bounds how many values the choice between candidate breaks looks at; the range always comes from all of them.
 const scored = 20000
 
+// Values that differ by less, relative to the largest or at all, are taken for equal.
+const (
+	resolved  = 1e-9
+	slightest = 1e-290
+)
+
 // Breaks chooses the edges of 5 to 7 classes for value: strictly increasing round numbers that cover every finite value.
 // Equal steps are preferred; where they would put nearly everything into one class the steps grow as 1, 2, 5, 10, or
 // the outermost classes are widened. For Ratio the edges are symmetrical about 1 on a log scale; for Chance they are 0, 0.05, 0.2,
 // 0.8, 0.95, 1 whatever the values. The result is nil when none is finite, for a Ratio when none is positive, and for a Level or
 // Uncertainty when they do not differ (to nine digits, or by 1e-290).
-// Several maps that are to be compared should share the breaks chosen for all their values together.
+// Several maps that are to be compared should share their breaks: see SharedBreaks.
 func Breaks(kind Kind, value []float64) []float64 {
 	switch kind {
 	case Chance:
@@ -28,7 +34,7 @@ func Breaks(kind Kind, value []float64) []float64 {
 		return ratioBreaks(value)
 	}
 	lo, hi := span(value)
-	if !(hi-lo > 1e-9*max(math.Abs(lo), math.Abs(hi))) || hi-lo < 1e-290 {
+	if !(hi-lo > resolved*max(math.Abs(lo), math.Abs(hi))) || hi-lo < slightest {
 		return nil
 	}
 	sample := sorted(value)

@@ -30,21 +30,16 @@ func cut(m Map) classes {
 		edge = Breaks(m.Kind, value)
 	}
 	lo, hi := span(value)
-	if lo > hi {
+	if lo > hi && !m.shares() {
 		return classes{low: math.NaN(), top: math.NaN(), constant: math.NaN()}
 	}
 	if edge == nil {
 		return classes{low: math.NaN(), top: math.NaN(), constant: lo, tone: rampOf(m.Kind).tones(1), hatched: []bool{false}}
 	}
-	n := len(edge) - 1
-	c := classes{edge: edge[1:n], low: edge[0], top: edge[n], hatched: make([]bool, n), constant: math.NaN()}
-	c.plain = m.Kind == Ratio || m.Kind == Chance
-	if lo < c.low || m.Kind == Ratio {
-		c.low = math.NaN()
-	}
-	if hi > c.top || m.Kind == Ratio {
-		c.top = math.NaN()
-	}
+	c := classes{constant: math.NaN(), plain: m.Kind == Ratio || m.Kind == Chance}
+	c.low, c.edge, c.top = m.ends(edge, lo, hi)
+	n := len(c.edge) + 1
+	c.hatched = make([]bool, n)
 	switch m.Kind {
 	case Ratio:
 		place := places(c.edge)
@@ -59,6 +54,28 @@ func cut(m Map) classes {
 		c.tone = rampOf(m.Kind).tones(n)
 	}
 	return c
+}
+
+// shares reports whether the legend is that of several maps.
+func (m Map) shares() bool { return m.Shared && (m.Breaks != nil || m.Kind == Chance) }
+
+// ends returns the inner edges and the outermost ones as they are printed, NaN where a class is open; the map's values
+// run from lo to hi.
+func (m Map) ends(edge []float64, lo, hi float64) (low float64, inner []float64, top float64) {
+	n := len(edge) - 1
+	low, inner, top = edge[0], edge[1:n], edge[n]
+	switch {
+	case m.Kind == Ratio:
+		return math.NaN(), inner, math.NaN()
+	case m.shares() && m.Kind != Chance:
+		inner, top = edge[1:], math.NaN()
+	case hi > top:
+		top = math.NaN()
+	}
+	if lo < low || math.IsInf(low, -1) {
+		low = math.NaN()
+	}
+	return low, inner, top
 }
 
 func inside(m Map) []float64 {

@@ -153,6 +153,20 @@ func gallery(t testing.TB) map[string]Map {
 	all["column"] = Map{Title: "Transect along the cliff path, counted on foot", Legend: "plants per square metre", Lattice: column, Value: field(column, skewed), Foot: cautions[:2], Stamp: "NOT FOR USE: half of the rows were set aside"}
 	tiny := grids.Lattice{CRS: azimuthal, X0: 3000, Y0: -800, Cell: 2, NX: 70, NY: 50}
 	all["tiny-values"] = Map{Title: "Trace gas", Legend: "mol m⁻² s⁻¹", Lattice: tiny, Value: field(tiny, func(u, v float64) float64 { return 1e-12 * hills(u, v) }), Breaks: []float64{0, 5e-12, 1e-11, 1.5e-11, 2e-11}}
+	// Two regions of one batch: the second has neither the highest class nor values near the last edge.
+	high := Map{Title: "Stems in the Harrow valley forest", Legend: "stems per hectare", Lattice: wide, Value: field(wide, skewed), Outline: outline, Observations: scatter(wide, 80, 6), Shared: true}
+	low := Map{Title: "Stems on the Pellworm slopes", Legend: "stems per hectare", Lattice: squareBlob, Outline: blobOutline, Observations: scatter(squareBlob, 150, 7), Shared: true,
+		Value: field(square, func(u, v float64) float64 { return 0.1 * skewed(u, v) })}
+	high.Breaks = SharedBreaks(Level, []Sample{NewSample(inside(high), 500), NewSample(inside(low), 500)})
+	low.Breaks = high.Breaks
+	all["shared-high"], all["shared-low"] = high, low
+	flat := low
+	flat.Title, flat.Value = "Stems at the Merrow gap", field(square, func(u, v float64) float64 { return 45 })
+	all["shared-constant"] = flat
+	risk := all["ratio"]
+	risk.Breaks, risk.Shared = SharedBreaks(Ratio, []Sample{NewSample(inside(risk), 500)}), true
+	risk.Value = field(square, func(u, v float64) float64 { return 1 + 0.2*u })
+	all["shared-ratio"] = risk
 	all["single-dot"] = Map{Title: "One place", Legend: "ppm", Lattice: grids.Lattice{CRS: utm}, Dots: Dots{X: []float64{455000}, Y: []float64{5300000}, Value: []float64{4}}}
 	return all
 }

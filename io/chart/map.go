@@ -65,6 +65,11 @@ type Map struct {
 	// Breaks are the edges of the classes, strictly increasing, at least 2 and at most 12 of them; values beyond the first and
 	// the last fall into the outermost classes. Nil lets Breaks (the function) choose. Chance has fixed classes and ignores them.
 	Breaks []float64
+	// Shared says that Breaks are those of several maps (see SharedBreaks): the legend does not depend on this map's values,
+	// and the top class is open. So n edges of a Level or an Uncertainty, at most 11, make n classes. A first edge of minus
+	// infinity leaves the lowest class open as well; breaks that come from elsewhere should go through Reaching, for a map
+	// with values below a finite first edge shows that class as open, alone of its group. Without Breaks it says nothing.
+	Shared bool
 }
 
 // Points are places in plane metres; X and Y have the same length.
@@ -171,11 +176,19 @@ func (m Map) checkBreaks() error {
 	if m.Breaks == nil || m.Kind == Chance {
 		return nil
 	}
+	if m.Shared {
+		return CheckShared(m.Breaks)
+	}
 	if len(m.Breaks) < 2 || len(m.Breaks) > maxEdges {
 		return fmt.Errorf("%d breaks given, from 2 to %d can be drawn", len(m.Breaks), maxEdges)
 	}
-	for i, b := range m.Breaks {
-		if !finite(b) || i > 0 && b <= m.Breaks[i-1] {
+	return increase(m.Breaks, false)
+}
+
+// increase returns an error for edges that do not; the first of open ones may be minus infinity.
+func increase(edge []float64, open bool) error {
+	for i, b := range edge {
+		if !finite(b) && !(open && i == 0 && math.IsInf(b, -1)) || i > 0 && b <= edge[i-1] {
 			return fmt.Errorf("breaks must increase: number %d is %g", i+1, b)
 		}
 	}

@@ -40,6 +40,9 @@ func mapOf(t *rapid.T, systems []crs.System) Map {
 		Lattice: l, Value: field(l, func(u, v float64) float64 { return scale * shape(u, v) }),
 		Stamp: text("stamp", 12),
 	}
+	if rapid.Bool().Draw(t, "shared") {
+		m.Breaks, m.Shared = SharedBreaks(m.Kind, []Sample{NewSample(field(l, func(u, v float64) float64 { return scale * skewed(u, v) }), 50)}), true
+	}
 	for range rapid.IntRange(0, 5).Draw(t, "foot") {
 		m.Foot = append(m.Foot, text("caution", 40))
 	}
@@ -351,6 +354,10 @@ func TestValidate(t *testing.T) {
 		{"zone", func(m *Map) { m.Zones = []Zone{{"Mere", orb.MultiPolygon{{{{0, math.Inf(1)}}}}}} }, `zone 1 "Mere": vertex 1`},
 		{"one break", func(m *Map) { m.Breaks = []float64{1} }, "1 breaks given"},
 		{"breaks fall", func(m *Map) { m.Breaks = []float64{1, 3, 3} }, "number 3 is 3"},
+		{"twelve breaks shared", func(m *Map) { m.Breaks, m.Shared = []float64{1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11, 12}, true }, "12 breaks given, from 2 to 11 can be shared"},
+		{"shared breaks fall", func(m *Map) { m.Breaks, m.Shared = []float64{math.Inf(-1), 3, 2}, true }, "number 3 is 2"},
+		{"shared breaks end in infinity", func(m *Map) { m.Breaks, m.Shared = []float64{1, math.Inf(1)}, true }, "number 2 is +Inf"},
+		{"minus infinity alone", func(m *Map) { m.Breaks = []float64{math.Inf(-1), 3} }, "number 1 is -Inf"},
 		{"no words", func(m *Map) { m.Title = " " }, "title or a legend"},
 		{"a book", func(m *Map) { m.Foot = []string{strings.Repeat("word ", 5000)} }, "letters of text"},
 	} {

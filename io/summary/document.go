@@ -128,6 +128,31 @@ func (s Settings) MarshalJSON() ([]byte, error) {
 	return b.Bytes(), nil
 }
 
+// UnmarshalJSON reads what MarshalJSON writes. Numbers come back as float64, lists as []any.
+func (s *Settings) UnmarshalJSON(text []byte) error {
+	d := json.NewDecoder(bytes.NewReader(text))
+	if _, err := d.Token(); err != nil { // the opening brace
+		return err
+	}
+	*s = nil
+	for d.More() {
+		key, err := d.Token()
+		if err != nil {
+			return err
+		}
+		var entry struct {
+			Value  any    `json:"value"`
+			Chosen string `json:"chosen"`
+		}
+		if err := d.Decode(&entry); err != nil {
+			return err
+		}
+		name, _ := key.(string)
+		*s = append(*s, Setting{name, entry.Value, entry.Chosen})
+	}
+	return nil
+}
+
 // Lattice is what was predicted onto.
 type Lattice struct {
 	Kind   string `json:"kind"` // "cells" or "places" (of --at)

@@ -214,3 +214,19 @@ func TestWorst(t *testing.T) {
 		t.Errorf("no checks: %s", got)
 	}
 }
+
+// TestReadBack: what summary.json says of a run can be read back, numbers to the last digit.
+func TestReadBack(t *testing.T) {
+	of := counts()
+	of.Region = &summary.Region{Name: "North", Fingerprint: "5e", Response: "cases", MarginRows: 3, Per: 1000, Total: summary.Number(math.NaN()), Mean: 0.1}
+	for _, d := range []summary.Document{measurements(), of, stopped(), places(), regression(), chosen(), levels(), nothing()} {
+		text := asJSON(t, d)
+		var back summary.Document
+		if err := json.Unmarshal([]byte(text), &back); err != nil {
+			t.Fatal(err)
+		}
+		if again := asJSON(t, back); again != text {
+			t.Errorf("read back and written again it is\n%s\nnot\n%s", again, text)
+		}
+	}
+}

@@ -14,6 +14,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 )
@@ -49,45 +50,90 @@ func (c Column) rows() (n int, ok bool) {
 // Write writes n rows under a header. It returns an error, before anything is written, if a column has another number
 // of rows, and the errors of w.
 func Write(w io.Writer, n int, columns []Column) error {
-	for _, c := range columns {
+	names := make([]string, len(columns))
+	for j, c := range columns {
+		names[j] = c.Name
+	}
+	t := NewWriter(w, names)
+	if err := t.Append(n, columns); err != nil {
+		return err
+	}
+	return t.Flush()
+}
+
+// Writer writes a table some rows at a time, for tables that are better not held at once. It writes what Write writes.
+type Writer struct {
+	out   *bufio.Writer
+	names []string
+	row   []byte // the row being written; the header until there is a first one
+}
+
+// NewWriter returns a Writer of a table with these columns. Nothing is written before the first Append or Flush.
+func NewWriter(w io.Writer, names []string) *Writer {
+	t := &Writer{out: bufio.NewWriterSize(w, 1<<16), names: slices.Clone(names)}
+	for j, name := range t.names {
+		t.row = separate(t.row, j)
+		t.row = appendText(t.row, name)
+	}
+	t.row = append(t.row, '\n')
+	return t
+}
+
+// Append writes n more rows. It returns an error, before any of them is written, if the columns are not those of
+// NewWriter in their order or if one has another number of rows, and the errors of w. A column that stays empty here may
+// be filled in other rows.
+func (t *Writer) Append(n int, columns []Column) error {
+	if err := t.check(n, columns); err != nil {
+		return err
+	}
+	for i := 0; i < n; i++ {
+		if _, err := t.out.Write(t.row); err != nil {
+			return err
+		}
+		t.row = t.row[:0]
+		for j, c := range columns {
+			t.row = separate(t.row, j)
+			switch {
+			case c.Number != nil && c.Exact:
+				t.row = appendExact(t.row, c.Number[i])
+			case c.Number != nil:
+				t.row = AppendNumber(t.row, c.Number[i])
+			case c.Whole != nil:
+				t.row = strconv.AppendInt(t.row, c.Whole[i], 10)
+			case c.Text != nil:
+				t.row = appendText(t.row, c.Text[i])
+			}
+		}
+		if len(t.row) == 0 {
+			t.row = append(t.row, `""`...) // an empty line would be no row at all
+		}
+		t.row = append(t.row, '\n')
+	}
+	return nil
+}
+
+func (t *Writer) check(n int, columns []Column) error {
+	if len(columns) != len(t.names) {
+		return fmt.Errorf("%d columns, not %d", len(columns), len(t.names))
+	}
+	for j, c := range columns {
+		if c.Name != t.names[j] {
+			return fmt.Errorf("column %d is %q, not %q", j+1, c.Name, t.names[j])
+		}
 		if m, ok := c.rows(); ok && m != n {
 			return fmt.Errorf("column %q has %d rows, not %d", c.Name, m, n)
 		}
 	}
-	out := bufio.NewWriterSize(w, 1<<16)
-	var row []byte
-	for j, c := range columns {
-		row = separate(row, j)
-		row = appendText(row, c.Name)
-	}
-	row = append(row, '\n')
-	for i := 0; i < n; i++ {
-		if _, err := out.Write(row); err != nil {
-			return err
-		}
-		row = row[:0]
-		for j, c := range columns {
-			row = separate(row, j)
-			switch {
-			case c.Number != nil && c.Exact:
-				row = appendExact(row, c.Number[i])
-			case c.Number != nil:
-				row = AppendNumber(row, c.Number[i])
-			case c.Whole != nil:
-				row = strconv.AppendInt(row, c.Whole[i], 10)
-			case c.Text != nil:
-				row = appendText(row, c.Text[i])
-			}
-		}
-		if len(row) == 0 {
-			row = append(row, `""`...) // an empty line would be no row at all
-		}
-		row = append(row, '\n')
-	}
-	if _, err := out.Write(row); err != nil {
+	return nil
+}
+
+// Flush writes what is still held back. It comes after the last Append; without any, the table is a header.
+func (t *Writer) Flush() error {
+	if _, err := t.out.Write(t.row); err != nil {
 		return err
 	}
-	return out.Flush()
+	t.row = t.row[:0]
+	return t.out.Flush()
 }
 
 // AppendNumber appends v to dst with Digits significant digits, or nothing where v is not finite. Zero has no sign.

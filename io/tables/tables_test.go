@@ -240,3 +240,55 @@ func checkCell(t *rapid.T, c tables.Column, i int, got string) {
 		}
 	}
 }
+
+// A table written in pieces is the table written at once, wherever it is cut.
+func TestWriterPieces(t *testing.T) {
+	columns := func(from, to int) []tables.Column {
+		return []tables.Column{
+			{Name: "region", Text: []string{"a", "=b", "c,d", "", "e"}[from:to]},
+			{Name: "x", Number: []float64{1.0 / 3, math.NaN(), -2, 0, 4e6}[from:to], Exact: true},
+			{Name: "n", Whole: []int64{1, 2, 3, 4, 5}[from:to]}, {Name: "chance"},
+		}
+	}
+	want := write(t, 5, columns(0, 5))
+	for cut := 0; cut <= 5; cut++ {
+		var b bytes.Buffer
+		w := tables.NewWriter(&b, []string{"region", "x", "n", "chance"})
+		for _, piece := range [][2]int{{0, cut}, {cut, cut}, {cut, 5}} {
+			if err := w.Append(piece[1]-piece[0], columns(piece[0], piece[1])); err != nil {
+				t.Fatal(err)
+			}
+		}
+		if err := w.Flush(); err != nil {
+			t.Fatal(err)
+		}
+		if diff := cmp.Diff(want, b.String()); diff != "" {
+			t.Errorf("cut at %d: %s", cut, diff)
+		}
+	}
+	var b bytes.Buffer
+	w := tables.NewWriter(&b, []string{"a", "b"})
+	if err := w.Flush(); err != nil || b.String() != "a,b\n" {
+		t.Errorf("without rows: %q, %v", b.String(), err)
+	}
+}
+
+func TestWriterRefuses(t *testing.T) {
+	for _, test := range []struct {
+		columns []tables.Column
+		want    string
+	}{
+		{[]tables.Column{{Name: "a"}}, "1 columns, not 2"},
+		{[]tables.Column{{Name: "b"}, {Name: "a"}}, `column 1 is "b", not "a"`},
+		{[]tables.Column{{Name: "a"}, {Name: "b", Whole: []int64{1}}}, `column "b" has 1 rows, not 2`},
+	} {
+		var b bytes.Buffer
+		w := tables.NewWriter(&b, []string{"a", "b"})
+		if err := w.Append(2, test.columns); err == nil || err.Error() != test.want {
+			t.Errorf("got %v, want %s", err, test.want)
+		}
+		if w.Flush(); b.String() != "a,b\n" {
+			t.Errorf("%q was written", b.String())
+		}
+	}
+}

@@ -9,7 +9,6 @@ import (
 	"math"
 	"strconv"
 
-	"drumlin/grids"
 	"drumlin/grids/crs"
 
 	"github.com/paulmach/orb"
@@ -29,34 +28,6 @@ type Zone struct {
 }
 
 const badLength = "vector: a column has another length than the features"
-
-// WriteCells writes a polygon for each cell of l listed in index, with row k of each column as the properties of cell
-// index[k]. Corners are turned into longitude and latitude where the plane of l is tied to the globe; a local plane is
-// written in metres. It returns an error of w, or one for a corner that lies beyond the projection. It panics if a
-// column is not as long as index or if index names a cell that is not there.
-func WriteCells(w io.Writer, l grids.Lattice, index []int, columns []Column) error {
-	out, err := newWriter(w, l.CRS, len(index), columns)
-	if err != nil {
-		return err
-	}
-	ring := make(orb.Ring, 5)
-	for row, k := range index {
-		if k < 0 || k >= l.Cells() {
-			panic(fmt.Sprintf("vector: cell %d of a lattice of %d", k, l.Cells()))
-		}
-		// Neighbours compute their common corners from the same numbers, so that no gap opens between them.
-		i, j := float64(k%l.NX), float64(k/l.NX)
-		west, east := l.X0+i*l.Cell, l.X0+(i+1)*l.Cell
-		south, north := l.Y0+j*l.Cell, l.Y0+(j+1)*l.Cell
-		ring[0], ring[1] = orb.Point{west, south}, orb.Point{east, south}
-		ring[2], ring[3] = orb.Point{east, north}, orb.Point{west, north}
-		ring[4] = ring[0]
-		if err := out.polygons(row, "", orb.MultiPolygon{{ring}}); err != nil {
-			return err
-		}
-	}
-	return out.close()
-}
 
 // WritePoints writes a point for each of x and y, in metres in the plane of sys, with the columns as properties.
 // Coordinates and errors are as in WriteCells. It panics if x, y and the columns differ in length.
@@ -112,7 +83,17 @@ type writer struct {
 
 // newWriter checks the columns and writes the head. The names in reserved are taken.
 func newWriter(w io.Writer, sys crs.System, n int, columns []Column, reserved ...string) (*writer, error) {
-	out := &writer{to: bufio.NewWriterSize(w, 1<<16), sys: sys, globe: sys.Geographic(), columns: columns}
+	out := &writer{to: bufio.NewWriterSize(w, 1<<16)}
+	if err := out.describe(sys, n, columns, reserved...); err != nil {
+		return nil, err
+	}
+	_, err := out.to.WriteString(`{"type":"FeatureCollection","features":[`)
+	return out, err
+}
+
+// describe settles the plane and the properties of the n features that come next.
+func (out *writer) describe(sys crs.System, n int, columns []Column, reserved ...string) error {
+	out.sys, out.globe, out.columns, out.keys = sys, sys.Geographic(), columns, nil
 	taken := map[string]bool{}
 	for _, name := range reserved {
 		taken[name] = true
@@ -124,13 +105,12 @@ func newWriter(w io.Writer, sys crs.System, n int, columns []Column, reserved ..
 		}
 		// "The names within an object SHOULD be unique" (RFC 8259 section 4): readers differ in what they make of others.
 		if taken[c.Name] {
-			return nil, fmt.Errorf("two columns are called %q", c.Name)
+			return fmt.Errorf("two columns are called %q", c.Name)
 		}
 		taken[c.Name] = true
 		out.keys = append(out.keys, append(quote(c.Name), ':'))
 	}
-	_, err := out.to.WriteString(`{"type":"FeatureCollection","features":[`)
-	return out, err
+	return nil
 }
 
 // quote writes a string as JSON. Characters that matter only inside HTML are left as they are.

@@ -14,7 +14,7 @@ func (r *run) describe() {
 	o := r.obs
 	d := &r.document
 	d.Version = r.version
-	d.Input = summary.Input{Name: o.table.Source, SHA256: o.sha256, Rows: o.table.Rows, Used: o.table.Len(), SetAside: map[string]int{},
+	d.Input = summary.Input{Name: o.table.Source, SHA256: o.sha256, Rows: o.table.Rows, Used: o.own, SetAside: map[string]int{},
 		DistinctPlaces: len(o.placeX), Coordinates: o.said,
 		MedianSpacing: summary.Number(o.spacing)}
 	for _, a := range o.table.Aside {
@@ -32,6 +32,7 @@ func (r *run) describe() {
 	if r.zones != nil {
 		d.Zones = r.zones.describe(r.reporting.Unit)
 	}
+	d.Region = r.describeRegion()
 	d.Checks = r.checks()
 	d.Cautions = r.cautions()
 }

@@ -28,7 +28,7 @@ func (r *run) report() (reporting, error) {
 	if *s.Distribution != plan.Gaussian {
 		p.Factor = *s.Per
 	}
-	p.Unit = r.unit()
+	p.Unit = Unit(s)
 	kind, _ := s.Denominator()
 	p.ratio = kind == "expected"
 	if ref := s.Reference; ref != nil {
@@ -36,9 +36,6 @@ func (r *run) report() (reporting, error) {
 		if ref.Overall {
 			p.Reference = r.overall() * p.Factor
 		}
-	}
-	if s.UnitLabel != nil {
-		p.Unit = *s.UnitLabel
 	}
 	p.title = *s.Response
 	if s.Title != nil {
@@ -53,10 +50,10 @@ func (r *run) report() (reporting, error) {
 	return p, nil
 }
 
-// overall is the level of all observations together.
+// overall is the level of all the region's observations together.
 func (r *run) overall() float64 {
 	var y, e float64
-	for i, v := range r.obs.data.Response {
+	for i, v := range r.obs.data.Response[:r.obs.own] {
 		y += v
 		switch {
 		case r.obs.data.Exposure != nil:
@@ -70,9 +67,11 @@ func (r *run) overall() float64 {
 	return y / e
 }
 
-// unit words the reporting unit.
-func (r *run) unit() string {
-	s := r.settings
+// Unit words the reporting unit of resolved settings.
+func Unit(s plan.Settings) string {
+	if s.UnitLabel != nil {
+		return *s.UnitLabel
+	}
 	per := ""
 	if *s.Per != 1 {
 		per = strconv.FormatFloat(*s.Per, 'f', -1, 64) + " "

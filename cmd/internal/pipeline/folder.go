@@ -3,11 +3,15 @@ package pipeline
 import (
 	"context"
 	"errors"
+	"fmt"
 	"io/fs"
 	"os"
 	"path/filepath"
 	"slices"
+	"strings"
 	"syscall"
+
+	"drumlin/cmd/internal/locks"
 )
 
 // Folder makes dir whole or not at all: fill writes into a sibling dir.partial, which is renamed at the end with
@@ -48,7 +52,7 @@ func Folder(ctx context.Context, dir string, force bool, fill func(partial strin
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	if err := syncFolders(partial); err != nil {
+	if err := syncAll(partial); err != nil {
 		return err
 	}
 	return replace(partial, dir)
@@ -61,7 +65,7 @@ func checkFolder(dir string, force bool) error {
 	case errors.Is(err, fs.ErrNotExist):
 		return nil
 	case err != nil:
-		return plainly(err, dir)
+		return Plainly(err, dir)
 	case !force:
 		return refuse("name another folder, or add --force to replace it", "%s exists already", dir)
 	case !info.IsDir():
@@ -69,7 +73,7 @@ func checkFolder(dir string, force bool) error {
 	}
 	entries, err := os.ReadDir(dir)
 	if err != nil {
-		return plainly(err, dir)
+		return Plainly(err, dir)
 	}
 	if len(entries) > 0 && !isOurs(dir) {
 		return refuse("name another folder, or empty it yourself", "%s holds files that drumlin did not write, so it is not replaced", dir)
@@ -101,10 +105,19 @@ func makeParents(dir string) (made []string, err error) {
 		if err := os.Mkdir(p, 0o755); err == nil {
 			made = append(made, p)
 		} else if !errors.Is(err, fs.ErrExist) { // another process may have been quicker
-			return made, plainly(err, p)
+			return made, Plainly(err, p)
 		}
 	}
 	return made, nil
+}
+
+// MakeFolder makes an empty folder, and those it is to stand in.
+func MakeFolder(dir string) error {
+	made, err := makeParents(filepath.Join(dir, "any"))
+	if err != nil {
+		unmake(made)
+	}
+	return err
 }
 
 // unmake removes the folders again in which nothing stands.
@@ -126,7 +139,21 @@ func claim(partial string) (release func(), err error) {
 	}
 	if err != nil {
 		release()
-		return nil, plainly(err, filepath.Dir(partial))
+		return nil, Plainly(err, filepath.Dir(partial))
+	}
+	return release, nil
+}
+
+// lock takes the lock of an output that is being written, a file called as the output with .partial.lock after it.
+func lock(path string) (release func(), err error) {
+	output := strings.TrimSuffix(path, ".partial.lock")
+	release, err = locks.Take(path, "writing "+filepath.Base(output))
+	var held *locks.Held
+	switch {
+	case errors.As(err, &held):
+		return nil, refuse("wait for it, or name another output", "another drumlin is writing %s", output)
+	case err != nil:
+		return nil, Plainly(err, path)
 	}
 	return release, nil
 }
@@ -142,9 +169,9 @@ func replace(partial, dir string) error {
 		return err
 	}
 	if err := os.Rename(partial, dir); err != nil {
-		return errors.Join(plainly(err, dir), restore(old, dir))
+		return errors.Join(Plainly(err, dir), restore(old, dir))
 	}
-	if err := syncFolder(filepath.Dir(dir)); err != nil {
+	if err := sync(filepath.Dir(dir)); err != nil {
 		return err
 	}
 	return os.RemoveAll(old)
@@ -157,7 +184,7 @@ func bringBack(dir string, force bool) error {
 		return nil
 	}
 	if err := restore(dir+replacedSuffix, dir); err != nil {
-		return plainly(err, dir)
+		return Plainly(err, dir)
 	}
 	return checkFolder(dir, force)
 }
@@ -173,30 +200,31 @@ func restore(old, dir string) error {
 	return nil
 }
 
-// syncFolders brings the entries of a folder and of those in it to the disk.
-func syncFolders(dir string) error {
-	return filepath.WalkDir(dir, func(path string, d fs.DirEntry, err error) error {
-		if err != nil || !d.IsDir() {
+// syncAll brings a folder and all that is in it to the disk.
+func syncAll(dir string) error {
+	return filepath.WalkDir(dir, func(path string, _ fs.DirEntry, err error) error {
+		if err != nil {
 			return err
 		}
-		return syncFolder(path)
+		return sync(path)
 	})
 }
 
-func syncFolder(dir string) error {
-	f, err := os.Open(dir)
+// sync brings a file, or the entries of a folder, to the disk.
+func sync(path string) error {
+	f, err := os.Open(path)
 	if err != nil {
 		return err
 	}
 	defer f.Close()
 	if err := f.Sync(); err != nil && !errors.Is(err, errors.ErrUnsupported) {
-		return err
+		return Plainly(err, filepath.Base(path))
 	}
 	return nil
 }
 
-// plainly says in plain words why a file or folder cannot be written.
-func plainly(err error, path string) error {
+// Plainly says in plain words why a file or folder cannot be written.
+func Plainly(err error, path string) error {
 	switch {
 	case errors.Is(err, fs.ErrPermission):
 		return refuse("name a folder that you may write to", "%s: no right to write there", path)
@@ -207,7 +235,16 @@ func plainly(err error, path string) error {
 	case errors.Is(err, syscall.EROFS):
 		return refuse("name a folder on another disk", "%s: the disk can only be read", path)
 	case errors.Is(err, syscall.ENOSPC), errors.Is(err, syscall.EDQUOT), errors.Is(err, syscall.EFBIG):
-		return refuse("make room, name a folder on another disk, or write less with --write", "%s: there is no room left to write it", path)
+		return &noRoom{refusal{fmt.Errorf("%s: there is no room left to write it", path), "make room, name a folder on another disk, or write less with --write"}}
 	}
 	return err
+}
+
+// noRoom is a refusal because of a full disk.
+type noRoom struct{ refusal }
+
+// NoRoom reports whether err is that of a full disk: what comes next would fail as well.
+func NoRoom(err error) bool {
+	var full *noRoom
+	return errors.As(err, &full)
 }

@@ -255,7 +255,7 @@ func TestPlainWords(t *testing.T) {
 		syscall.ENOENT:  "no such folder",
 		syscall.ENOTDIR: "is a file, not a folder",
 	} {
-		err := plainly(&os.PathError{Op: "write", Path: "/secret/out.partial/map.png", Err: cause}, "map.png")
+		err := Plainly(&os.PathError{Op: "write", Path: "/secret/out.partial/map.png", Err: cause}, "map.png")
 		if !strings.HasPrefix(err.Error(), "map.png: ") || !strings.Contains(err.Error(), want) || strings.Contains(err.Error(), "partial") || hintOf(err) == "" {
 			t.Errorf("%v: %v, hint %q", cause, err, hintOf(err))
 		}
@@ -269,7 +269,7 @@ func TestReuseLeavesNothing(t *testing.T) {
 		"error": func(w io.Writer) error { _, _ = io.WriteString(w, "half"); return errors.New("no") },
 		"full":  func(w io.Writer) error { _, _ = io.WriteString(w, "half"); return syscall.ENOSPC },
 	} {
-		if err := replaceFile(t.Context(), filepath.Join(base, "a", "out.csv"), content); err == nil {
+		if err := ReplaceFile(t.Context(), filepath.Join(base, "a", "out.csv"), content); err == nil {
 			t.Errorf("%s: no error", name)
 		}
 		only(t, base)
@@ -281,8 +281,8 @@ func TestReuseLeavesNothing(t *testing.T) {
 	if err := os.WriteFile(path+".partial", []byte("left over"), 0o644); err != nil {
 		t.Fatal(err)
 	}
-	err := replaceFile(t.Context(), path, func(w io.Writer) error {
-		if again := replaceFile(t.Context(), path, func(io.Writer) error { return nil }); again == nil {
+	err := ReplaceFile(t.Context(), path, func(w io.Writer) error {
+		if again := ReplaceFile(t.Context(), path, func(io.Writer) error { return nil }); again == nil {
 			t.Error("two at a time")
 		}
 		_, err := io.WriteString(w, "new")

@@ -1,71 +1,43 @@
 package pipeline
 
 import (
-	"fmt"
 	"maps"
-	"math"
 	"slices"
 	"strings"
 
-	"drumlin/io/chart"
+	"drumlin/io/draft"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 )
 
-// picture is a map with the name of its file.
-type picture struct {
-	file string
-	chart.Map
-}
+// DraftFile is the file in the folder of a region of a batch that its pictures and its part of the mosaic come from.
+const DraftFile = "pictures.draft"
 
-// pictures returns the maps of the region: the estimate, its uncertainty, the chance where there is a threshold, and the
+// draft gathers what the pictures show: the estimate, its uncertainty, the chance where there is a threshold, and the
 // relative risk where there is a reference.
-func (r *run) pictures() []picture {
-	e, unit := r.estimates, r.reporting.Unit
-	level := r.picture("map.png", unit, chart.Level, e.estimate)
-	if r.reporting.ratio {
-		level.Kind = chart.Ratio
-	}
-	list := []picture{level}
+func (r *run) draft() draft.Draft {
+	e, rep := r.estimates, r.reporting
+	d := draft.Draft{Response: rep.Response, Unit: rep.Unit, Factor: rep.Factor, Ratio: rep.ratio, Spread: draft.Variation,
+		Threshold: rep.Threshold, Reference: rep.Reference,
+		Title: rep.title, Subtitle: r.subtitle(), Stamp: r.stamp(), Foot: r.document.Cautions,
+		Lattice: r.target.lattice, X: r.target.places.X, Y: r.target.places.Y,
+		Estimate: e.estimate, StandardError: e.standardError, Lower: e.lower, Upper: e.upper, CV: e.cv, Nearest: e.nearest,
+		Chance: e.chance, Relative: e.relative, RelativeLower: e.relativeLower, RelativeUpper: e.relativeUpper,
+		Outline: r.area.outline, PlaceX: r.obs.placeX, PlaceY: r.obs.placeY}
+	d.Lattice.Mask = nil
 	if *r.settings.Distribution == plan.Gaussian {
-		list = append(list, r.picture("uncertainty.png", "standard error of "+unit, chart.Uncertainty, e.standardError))
-	} else {
-		percent := make([]float64, len(e.cv))
-		for i, v := range e.cv {
-			percent[i] = 100 * v
-		}
-		list = append(list, r.picture("uncertainty.png", "coefficient of variation, %", chart.Uncertainty, percent))
+		d.Spread = draft.StandardError
 	}
-	if e.relative != nil {
-		list = append(list, r.picture("relative-risk.png", fmt.Sprintf("relative risk (1 = %s %s)", summary.Short(summary.Number(r.reporting.Reference)), unit), chart.Ratio, e.relative))
-	}
-	if e.chance != nil {
-		list = append(list, r.picture("chance.png", fmt.Sprintf("chance of more than %s, %s", summary.Short(summary.Number(*r.reporting.Threshold)), unit), chart.Chance, e.chance))
-	}
-	return list
-}
-
-func (r *run) picture(file, legend string, kind chart.Kind, value []float64) picture {
-	m := chart.Map{Title: r.reporting.title, Subtitle: r.subtitle(), Legend: legend, Kind: kind, Lattice: r.target.lattice,
-		Outline: r.area.outline, Stamp: r.stamp(), Foot: r.document.Cautions}
-	m.Observations.X, m.Observations.Y = r.obs.placeX, r.obs.placeY
-	if r.target.own() {
-		m.Dots = chart.Dots{X: r.target.places.X, Y: r.target.places.Y, Value: value}
-	} else {
-		m.Value = make([]float64, r.target.lattice.Cells())
-		for k := range m.Value {
-			m.Value[k] = math.NaN()
-		}
+	if !r.target.own() {
+		d.Cells = make([]int32, len(r.target.cells))
 		for k, c := range r.target.cells {
-			m.Value[c] = value[k]
+			d.Cells[k] = int32(c)
 		}
 	}
 	if r.zones != nil {
-		for _, z := range r.zones.zones {
-			m.Zones = append(m.Zones, chart.Zone{Name: z.Name, Area: z.Shape})
-		}
+		d.Zones = r.zones.drawn()
 	}
-	return picture{file, m}
+	return d
 }
 
 // subtitle says what the map is adjusted to.

@@ -9,6 +9,7 @@ import (
 
 	"drumlin/grids"
 	"drumlin/io/archive"
+	"drumlin/io/observe"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -19,9 +20,19 @@ type Events interface {
 	Stage(name string, done, total int)
 }
 
+// Region is what a batch adds to a run: whose rows these are, and what is left for later.
+type Region struct {
+	Name        string
+	Fingerprint string        // of input, settings and program; recorded
+	Rows        *observe.Part // nil: all of the settings' table of observations
+	// Beyond holds rows of neighbouring regions, which help the fit and are not reported.
+	Beyond []observe.Part
+}
+
 // run is one region on its way.
 type run struct {
 	settings plan.Settings
+	region   *Region // nil for a map of its own
 	events   Events
 	version  string
 
@@ -37,15 +48,26 @@ type run struct {
 	reporting  reporting
 	estimates  *estimates
 	zones      *zoneResults
+	sums       summary.Region // of a region of a batch
 	document   summary.Document
 }
 
 // Run fits and maps one region. s must be resolved. The folder dir appears whole or not at all; what it holds is told
 // by the document. Errors carry a hint where there is one to give; *spatial.Error is a fit that could not be had.
 func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.Document, error) {
-	r := &run{settings: s, asked: s, events: ev, version: version()}
+	return runInto(ctx, &run{settings: s, asked: s, events: ev, version: Version()}, dir)
+}
+
+// RunRegion is Run for a region of a batch. Instead of maps the folder gets DraftFile, which they are drawn from when
+// every region is in; the document lists them all the same, and has the figures by which regions are compared.
+func RunRegion(ctx context.Context, s plan.Settings, g Region, dir string, ev Events) (summary.Document, error) {
+	return runInto(ctx, &run{settings: s, asked: s, region: &g, events: ev, version: Version()}, dir)
+}
+
+func runInto(ctx context.Context, r *run, dir string) (summary.Document, error) {
+	ev := r.events
 	// The folder is claimed first, so that one that cannot be had is told before the work and not after it.
-	err := Folder(ctx, dir, *s.Force, func(partial string) error {
+	err := Folder(ctx, dir, *r.settings.Force, func(partial string) error {
 		for _, step := range []struct {
 			name string
 			do   func(context.Context) error
@@ -57,6 +79,7 @@ func Run(ctx context.Context, s plan.Settings, dir string, ev Events) (summary.D
 			{"comparing", r.compare},
 			{"predicting", r.predict},
 			{"adding up zones", r.addUp},
+			{"adding up the region", r.addUpRegion},
 		} {
 			ev.Stage(step.name, 0, 0)
 			if err := step.do(ctx); err != nil {
@@ -82,14 +105,15 @@ func (r *run) predict(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	x, y := r.obs.data.Places.X, r.obs.data.Places.Y
-	r.estimates.nearest = grids.Nearest(x, y, r.target.places.X, r.target.places.Y)
+	all := r.obs.data.Places // neighbours' rows too: where they are, the surface rests on data
+	r.estimates.nearest = grids.Nearest(all.X, all.Y, r.target.places.X, r.target.places.Y)
 	return nil
 }
 
 // saved is the fitted surface as the archive keeps it.
 func (r *run) saved() archive.Saved {
-	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: r.obs.placeX, PlaceY: r.obs.placeY}
+	x, y := distinctPlaces(r.obs.data.Places)
+	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: x, PlaceY: y}
 }
 
 // refusal is a request or an input that is wrong, with what to do about it.

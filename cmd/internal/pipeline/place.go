@@ -9,6 +9,7 @@ import (
 	"drumlin/grids"
 	"drumlin/grids/crs"
 	"drumlin/io/observe"
+	"drumlin/io/plan"
 	"drumlin/io/vector"
 	"drumlin/spatial"
 
@@ -41,15 +42,10 @@ const knotsAcross = 60
 
 // place lays the study area and what is predicted onto.
 func (r *run) place(ctx context.Context) error {
-	r.area = &studyArea{}
-	s, at := r.settings, r.obs.data.Places
-	var err error
-	if s.Within != nil {
-		if r.area.within, err = r.polygons(*s.Within); err != nil {
-			return err
-		}
+	if err := r.layArea(); err != nil {
+		return err
 	}
-	r.layKnotPlaces(at)
+	s, at := r.settings, r.obs.ownPlaces()
 	if s.At != nil {
 		return r.placeAt(ctx, *s.At)
 	}
@@ -73,16 +69,25 @@ func (r *run) place(ctx context.Context) error {
 	return r.holdAll()
 }
 
-func (r *run) layKnotPlaces(at spatial.Places) {
+// layArea finds the study area, and the places in it where knots may be wanted.
+func (r *run) layArea() (err error) {
+	r.area = &studyArea{}
+	if w := r.settings.Within; w != nil {
+		if r.area.within, err = r.polygons(*w); err != nil {
+			return err
+		}
+	}
+	at := r.obs.ownPlaces()
 	area, err := grids.NewStudyArea(at.X, at.Y, r.area.within)
 	if err != nil {
-		return // the lattice will say so
+		return nil // the lattice will say so
 	}
 	r.area.outline = area.Outline
 	l, err := grids.NewLattice(r.obs.system, grids.Spec{X: at.X, Y: at.Y, Within: r.area.within, Across: knotsAcross})
 	if err == nil {
 		_, r.area.knotPlaces.X, r.area.knotPlaces.Y = l.Centres()
 	}
+	return nil
 }
 
 // polygons reads polygons into the plane and returns them as one shape.
@@ -247,4 +252,35 @@ func planeOf(t *observe.Table, system crs.System) (x, y []float64, err error) {
 		}
 	}
 	return x, y, o.onThePlane(x, y)
+}
+
+// Places returns where the rows of a part are, as longitude and latitude if their system is tied to the globe and in
+// metres if not, with the number of each row.
+func Places(s plan.Settings, p observe.Part) (at [][2]float64, row []int32, geographic bool, err error) {
+	want := observe.Request{}
+	if s.X != nil {
+		want.X, want.Y = *s.X, *s.Y
+	}
+	if want.Axes, err = axes(s); err != nil {
+		return nil, nil, false, err
+	}
+	t, err := observe.ReadPart(p, want)
+	if err != nil {
+		return nil, nil, false, err
+	}
+	x, y := t.XY()
+	var system crs.System = crs.Local{}
+	if !t.Degrees && s.CRS != nil {
+		if system, err = crs.Parse(*s.CRS); err != nil {
+			return nil, nil, false, err
+		}
+	}
+	at = make([][2]float64, len(x))
+	for i := range x {
+		at[i] = [2]float64{x[i], y[i]}
+		if system.Geographic() {
+			at[i][0], at[i][1] = system.Inverse(x[i], y[i])
+		}
+	}
+	return at, t.Row, t.Degrees || system.Geographic(), nil
 }

@@ -4,6 +4,7 @@ import (
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -23,12 +24,13 @@ import (
 // observations are the rows that can be used, in the plane.
 type observations struct {
 	table  *observe.Table
+	own    int // the first rows, which are reported; those after them are of neighbouring regions
 	sha256 string
 	system crs.System
 	said   string // how the coordinates were taken, in words
 	data   spatial.Data
 
-	placeX, placeY []float64 // distinct places, sorted by x, then y
+	placeX, placeY []float64 // distinct places of its own, sorted by x, then y
 	spacing        float64   // median distance from one to the nearest other
 }
 
@@ -39,18 +41,22 @@ func (r *run) read(ctx context.Context) error {
 		return err
 	}
 	o := &observations{}
-	if o.table, o.sha256, err = readTable(ctx, *r.settings.Observations, want); err != nil {
+	if o.table, o.sha256, err = r.readRows(ctx, want); err != nil {
+		return err
+	}
+	if err := withinReach(o.table, *r.settings.Response, *r.settings.Distribution); err != nil {
+		return err
+	}
+	o.own = o.table.Len()
+	if err := r.readBeyond(o, want); err != nil {
 		return err
 	}
 	if err := o.project(r.settings); err != nil {
 		return err
 	}
-	o.placeX, o.placeY = distinctPlaces(o.data.Places)
+	o.placeX, o.placeY = distinctPlaces(o.ownPlaces())
 	o.spacing = grids.MedianSpacing(o.placeX, o.placeY)
 	o.data.Response = o.table.Column(*r.settings.Response).Number
-	if err := o.withinReach(*r.settings.Response, *r.settings.Distribution); err != nil {
-		return err
-	}
 	if _, column := r.settings.Denominator(); column != "" {
 		o.data.Exposure = o.table.Column(column).Number
 	}
@@ -65,10 +71,49 @@ func (r *run) read(ctx context.Context) error {
 	return nil
 }
 
+// readRows reads the region's own rows.
+func (r *run) readRows(ctx context.Context, want observe.Request) (*observe.Table, string, error) {
+	if r.region == nil || r.region.Rows == nil {
+		return readTable(ctx, *r.settings.Observations, want)
+	}
+	t, err := observe.ReadPart(*r.region.Rows, want)
+	return t, r.region.Rows.SHA256(), err
+}
+
+// readBeyond adds the rows of neighbouring regions. What is wrong with them is told where they are reported.
+func (r *run) readBeyond(o *observations, want observe.Request) error {
+	if r.region == nil {
+		return nil
+	}
+	want.Strict = false
+	for _, p := range r.region.Beyond {
+		t, err := observe.ReadPart(p, want)
+		if err == nil {
+			err = withinReach(t, *r.settings.Response, *r.settings.Distribution)
+		}
+		var unusable *observe.Error
+		if errors.As(err, &unusable) {
+			continue
+		}
+		if err == nil {
+			err = o.table.Append(t)
+		}
+		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// ownPlaces are the places of the rows that are reported.
+func (o *observations) ownPlaces() spatial.Places {
+	return spatial.Places{X: o.data.Places.X[:o.own], Y: o.data.Places.Y[:o.own]}
+}
+
 // withinReach refuses a measurement that its distribution cannot have. To set such rows aside would raise the level.
-func (o *observations) withinReach(response, distribution string) error {
-	for i, y := range o.data.Response {
-		fault := &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: response,
+func withinReach(t *observe.Table, response, distribution string) error {
+	for i, y := range t.Column(response).Number {
+		fault := &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), Column: response,
 			Value: strconv.FormatFloat(y, 'g', -1, 64)}
 		switch {
 		case distribution == plan.Gamma && y == 0:
@@ -180,7 +225,7 @@ func (o *observations) project(s plan.Settings) error {
 	x, y := o.table.XY()
 	columns := fmt.Sprintf("columns %s, %s", o.table.XName, o.table.YName)
 	if o.table.Degrees {
-		system, err := crs.AzimuthalAround(x, y)
+		system, err := crs.AzimuthalAround(x[:o.own], y[:o.own])
 		if err != nil {
 			return refuse("", "%s: %w", o.table.Source, err)
 		}
@@ -252,4 +297,51 @@ func distinctPlaces(at spatial.Places) (x, y []float64) {
 		}
 	}
 	return x, y
+}
+
+// ReadShared reads a whole table into memory, for several regions to take their rows from.
+func ReadShared(ctx context.Context, path string) (*observe.Shared, error) {
+	f, err := openFile(path)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	return observe.Whole(&stoppable{ctx: ctx, from: f}, filepath.Base(path))
+}
+
+// CheckColumns refuses settings that name columns which a table does not have, before any row of it is read.
+func CheckColumns(s plan.Settings, p observe.Part) error {
+	want, err := (&run{settings: s}).request()
+	if err != nil {
+		return err
+	}
+	return p.Check(want)
+}
+
+// ReadFile reads a small file of at most that many bytes.
+func ReadFile(path string, most int64) ([]byte, error) {
+	f, err := openFile(path)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	text, err := io.ReadAll(io.LimitReader(f, most+1))
+	if err == nil && int64(len(text)) > most {
+		err = refuse("check that this is the right file", "%s: the file is larger than %d MiB", path, most>>20)
+	}
+	return text, err
+}
+
+// FileSHA256 is the checksum of a file.
+func FileSHA256(ctx context.Context, path string) (string, error) {
+	f, err := openFile(path)
+	if err != nil {
+		return "", err
+	}
+	defer f.Close()
+	sum := sha256.New()
+	if _, err := io.Copy(sum, &stoppable{ctx: ctx, from: f}); err != nil {
+		return "", err
+	}
+	return hex.EncodeToString(sum.Sum(nil)), nil
 }

@@ -33,7 +33,7 @@ func Reuse(ctx context.Context, q ReuseRequest, ev Events) error {
 	case err == nil && !q.Force:
 		return refuse("name another file, or add --force to replace it", "%s exists already", q.Out)
 	case err != nil && !errors.Is(err, fs.ErrNotExist):
-		return plainly(err, q.Out)
+		return Plainly(err, q.Out)
 	}
 	ev.Stage("reading", 0, 0)
 	saved, surface, err := readSaved(ctx, q.Saved, q.Workers)
@@ -55,7 +55,7 @@ func Reuse(ctx context.Context, q ReuseRequest, ev Events) error {
 	}
 	e.nearest = grids.Nearest(saved.PlaceX, saved.PlaceY, at.X, at.Y)
 	ev.Stage("writing", 0, 0)
-	return replaceFile(ctx, q.Out, func(w io.Writer) error {
+	return ReplaceFile(ctx, q.Out, func(w io.Writer) error {
 		return tables.Write(w, at.Len(), surfaceTable(system, at, e))
 	})
 }
@@ -124,8 +124,8 @@ func readPlaces(ctx context.Context, q ReuseRequest, saved archive.Saved, system
 	return spatial.Places{X: x, Y: y}, z, nil
 }
 
-// replaceFile writes a file beside path and renames it when it is whole. An error leaves nothing behind.
-func replaceFile(ctx context.Context, path string, content func(w io.Writer) error) (err error) {
+// ReplaceFile writes a file beside path and renames it when it is whole. An error leaves nothing behind.
+func ReplaceFile(ctx context.Context, path string, content func(w io.Writer) error) (err error) {
 	folder, partial := filepath.Dir(path), path+".partial"
 	made, err := makeParents(path)
 	defer func() {
@@ -142,14 +142,17 @@ func replaceFile(ctx context.Context, path string, content func(w io.Writer) err
 	}
 	defer release()
 	if err := os.Remove(partial); err != nil && !errors.Is(err, fs.ErrNotExist) {
-		return plainly(err, partial)
+		return Plainly(err, partial)
 	}
 	if _, err = writeFile(ctx, folder, filepath.Base(partial), content); err == nil {
+		err = sync(partial)
+	}
+	if err == nil {
 		err = os.Rename(partial, path)
 	}
 	if err != nil {
 		os.Remove(partial)
-		return plainly(err, path)
+		return Plainly(err, path)
 	}
-	return syncFolder(folder)
+	return sync(folder)
 }

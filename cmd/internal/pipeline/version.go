@@ -2,8 +2,8 @@ package pipeline
 
 import "runtime/debug"
 
-// version names this build, from what the toolchain recorded.
-func version() string {
+// Version names this build, from what the toolchain recorded.
+func Version() string {
 	info, ok := debug.ReadBuildInfo()
 	if !ok {
 		return "unknown"

@@ -11,6 +11,7 @@ import (
 	"path/filepath"
 
 	"drumlin/io/archive"
+	"drumlin/io/draft"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/io/tables"
@@ -23,8 +24,8 @@ const geojsonCells = 1_000_000
 // artefact is one file of the folder.
 type artefact struct {
 	file    string
-	data    bool // its checksum goes into the summary
-	content func(w io.Writer) error
+	data    bool                    // its checksum goes into the summary
+	content func(w io.Writer) error // nil for a file that is written later
 }
 
 // write fills the folder; summary.json, which lists the others, comes last.
@@ -35,13 +36,15 @@ func (r *run) write(ctx context.Context, folder string) error {
 			return err
 		}
 		r.events.Stage("writing "+a.file, k, len(list))
-		sum, err := writeFile(ctx, folder, a.file, a.content)
-		if err != nil {
-			return err
-		}
 		o := summary.Output{File: a.file}
-		if a.data {
-			o.SHA256 = sum
+		if a.content != nil {
+			sum, err := writeFile(ctx, folder, a.file, a.content)
+			if err != nil {
+				return err
+			}
+			if a.data {
+				o.SHA256 = sum
+			}
 		}
 		r.document.Outputs = append(r.document.Outputs, o)
 	}
@@ -78,9 +81,17 @@ func (r *run) artefacts() []artefact {
 	if r.wants(plan.Saved) {
 		list = append(list, artefact{"saved.surface", true, func(w io.Writer) error { return archive.Write(w, r.saved()) }})
 	}
+	if r.region != nil && (r.wants(plan.Pictures) || r.wants(plan.CSV) || r.wants(plan.GeoJSON)) {
+		d := r.draft()
+		list = append(list, artefact{DraftFile, true, func(w io.Writer) error { return draft.Write(w, d) }})
+	}
 	if r.wants(plan.Pictures) {
-		for _, p := range r.pictures() {
-			list = append(list, artefact{p.file, false, p.WritePNG})
+		for _, p := range r.draft().Pictures() {
+			draw := p.WritePNG
+			if r.region != nil {
+				draw = nil // with the colours of all regions, when they are in
+			}
+			list = append(list, artefact{p.File, false, draw})
 		}
 		if len(r.surface.Effects()) > 0 {
 			list = append(list, artefact{"effects.png", false, r.effectsPicture().WritePNG})
@@ -134,7 +145,7 @@ func (r *run) writeZoneShapes(w io.Writer) error {
 
 func (r *run) writeResiduals(w io.Writer) error {
 	rows, t := r.surface.Rows(), r.obs.table
-	n := t.Len()
+	n := r.obs.own
 	row, x, y := make([]int64, n), make([]float64, n), make([]float64, n)
 	for i := range row {
 		row[i] = int64(t.Row[i])
@@ -143,9 +154,9 @@ func (r *run) writeResiduals(w io.Writer) error {
 	}
 	return tables.Write(w, n, []tables.Column{
 		{Name: "row", Whole: row}, {Name: "x", Number: x, Exact: true}, {Name: "y", Number: y, Exact: true},
-		{Name: "response", Number: r.obs.data.Response}, {Name: "fitted", Number: rows.Fitted},
-		{Name: "deviance_residual", Number: rows.Deviance}, {Name: "quantile_residual", Number: rows.Quantile},
-		{Name: "leverage", Number: rows.Leverage},
+		{Name: "response", Number: r.obs.data.Response[:n]}, {Name: "fitted", Number: rows.Fitted[:n]},
+		{Name: "deviance_residual", Number: rows.Deviance[:n]}, {Name: "quantile_residual", Number: rows.Quantile[:n]},
+		{Name: "leverage", Number: rows.Leverage[:n]},
 	})
 }
 
@@ -163,26 +174,24 @@ func (r *run) writeAside(w io.Writer) error {
 	})
 }
 
-// writeFile writes one file, brings it to the disk, and returns its checksum.
+// writeFile writes one file and returns its checksum. Whoever asked for it brings it to the disk: for many files at once
+// that takes little longer than for one.
 func writeFile(ctx context.Context, folder, name string, content func(w io.Writer) error) (string, error) {
 	path := filepath.Join(folder, name)
 	f, err := os.OpenFile(path, os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
 	if err != nil {
-		return "", plainly(err, name)
+		return "", Plainly(err, name)
 	}
 	sum := sha256.New()
 	if err := fill(ctx, f, sum, content); err != nil {
 		f.Close()
-		return "", plainly(fmt.Errorf("%s: %w", name, err), name)
+		return "", Plainly(fmt.Errorf("%s: %w", name, err), name)
 	}
 	return hex.EncodeToString(sum.Sum(nil)), nil
 }
 
 func fill(ctx context.Context, f *os.File, sum hash.Hash, content func(w io.Writer) error) error {
 	if err := content(&stoppable{ctx: ctx, to: io.MultiWriter(f, sum)}); err != nil {
-		return err
-	}
-	if err := f.Sync(); err != nil {
 		return err
 	}
 	return f.Close()

@@ -7,6 +7,7 @@ import (
 	"slices"
 
 	"drumlin/grids"
+	"drumlin/io/chart"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/io/tables"
@@ -197,6 +198,15 @@ func (z *zoneResults) names() []string {
 		names[i] = zone.Name
 	}
 	return names
+}
+
+// drawn are the zones as a map shows them.
+func (z *zoneResults) drawn() []chart.Zone {
+	var list []chart.Zone
+	for _, zone := range z.zones {
+		list = append(list, chart.Zone{Name: zone.Name, Area: zone.Shape})
+	}
+	return list
 }
 
 // describe words the zones for the summary.

@@ -1,0 +1,66 @@
+package batch
+
+import (
+	"fmt"
+	"io"
+	"path/filepath"
+	"strings"
+)
+
+// named bounds how many regions of a kind are named in the summary in words; the rest stand in regions.csv.
+const named = 12
+
+// WriteWords tells what came of a batch.
+func (r Report) WriteWords(w io.Writer, out string) error {
+	var text strings.Builder
+	t := r.Tally
+	parts := []string{fmt.Sprintf("%d done", t.Done-t.Failed)}
+	for _, p := range []struct {
+		n    int
+		what string
+	}{{t.Unchanged, "unchanged since an earlier run"}, {t.Looks, "to look at"}, {t.Stops, "with a stop"}, {t.Failed, "failed"}, {len(r.Missing), "missing"}} {
+		if p.n > 0 {
+			parts = append(parts, fmt.Sprintf("%d %s", p.n, p.what))
+		}
+	}
+	fmt.Fprintf(&text, "regions  %d: %s\n", t.Regions, strings.Join(parts, ", "))
+	r.list(&text, Failed, "failed", func(o Outcome) string { return o.Region + ": " + o.Reason })
+	r.list(&text, Stop, "stop", func(o Outcome) string {
+		return o.Region + ": " + o.Figures.WorstCheck + "; left out of mosaic and ranks"
+	})
+	r.list(&text, Look, "look", func(o Outcome) string { return o.Region + ": " + o.Figures.WorstCheck })
+	if len(r.Missing) > 0 {
+		few := r.Missing[:min(named, len(r.Missing))]
+		fmt.Fprintf(&text, "missing  %s", strings.Join(few, ", "))
+		if more := len(r.Missing) - len(few); more > 0 {
+			fmt.Fprintf(&text, " and %d more", more)
+		}
+		text.WriteString(": run the parts that have them again\n")
+	}
+	for _, n := range r.Notes {
+		fmt.Fprintf(&text, "note     %s\n", n)
+	}
+	if len(r.Written) > 0 {
+		fmt.Fprintf(&text, "written  %s: %s, and a folder for each region\n", out, strings.Join(r.Written, ", "))
+	} else {
+		fmt.Fprintf(&text, "written  %s: a folder for each region; the rest when all parts are gathered\n", filepath.Clean(out))
+	}
+	_, err := io.WriteString(w, text.String())
+	return err
+}
+
+// list names the regions of one status, with what there is to say of each.
+func (r Report) list(text *strings.Builder, s Status, title string, say func(Outcome) string) {
+	n := 0
+	for _, o := range r.Outcomes {
+		if o.Status != s {
+			continue
+		}
+		if n++; n <= named {
+			fmt.Fprintf(text, "%-8s %s\n", title, say(o))
+		}
+	}
+	if n > named {
+		fmt.Fprintf(text, "%-8s and %d more, see %s\n", title, n-named, regionsFile)
+	}
+}

@@ -1,0 +1,76 @@
+package pipeline
+
+import (
+	"context"
+	"math"
+
+	"drumlin/io/plan"
+	"drumlin/io/summary"
+	"drumlin/spatial"
+
+	"gonum.org/v1/gonum/stat/distuv"
+)
+
+// addUpRegion totals and averages over the whole map of a region of a batch. Errors are by the delta method: a region is
+// added up on every run, and draws would cost more than its fit.
+func (r *run) addUpRegion(ctx context.Context) error {
+	if r.region == nil {
+		return nil
+	}
+	none := summary.Number(notKnown)
+	g := summary.Region{Total: none, TotalCV: none, TotalLower: none, TotalUpper: none, Mean: none, MeanCV: none, MeanLower: none, MeanUpper: none}
+	if !r.target.own() {
+		z := &zoneResults{unit: plan.SquareMetres}
+		r.decideTotals(z)
+		var all spatial.Share
+		ground := 0.0
+		for k, c := range r.target.cells {
+			a := r.target.lattice.CellAreaAt(c) / squareMetres[z.unit]
+			ground += a
+			all.Index, all.Weight = append(all.Index, int32(k)), append(all.Weight, a)
+		}
+		sums, err := r.surface.Sums(ctx, r.target.places, r.target.covariates, []spatial.Share{all}, 0, *r.settings.Seed)
+		if err != nil {
+			return err
+		}
+		value, cv := sums[0].Value, sums[0].Delta/math.Abs(sums[0].Value)
+		lower, upper := r.deltaLimits(value/ground, sums[0].Delta/ground)
+		if z.totals {
+			g.Total, g.TotalCV = summary.Number(value), summary.Number(cv)
+			g.TotalLower, g.TotalUpper = summary.Number(lower*ground), summary.Number(upper*ground)
+		}
+		per := r.reporting.Factor
+		g.Mean, g.MeanCV = summary.Number(value/ground*per), summary.Number(cv)
+		g.MeanLower, g.MeanUpper = summary.Number(lower*per), summary.Number(upper*per)
+	}
+	r.sums = g
+	return nil
+}
+
+// deltaLimits returns the limits of a mean from its standard error: log-normal for a log link (Burnham et al. 1987,
+// Wildlife Monographs 99), symmetrical in the logit for a share, and in the mean itself for the identity link.
+func (r *run) deltaLimits(mean, se float64) (lower, upper float64) {
+	confidence := *r.settings.Confidence
+	q := distuv.UnitNormal.Quantile(0.5 + confidence/2)
+	switch *r.settings.Link {
+	case plan.Log:
+		f := math.Exp(q * math.Sqrt(math.Log1p(se*se/(mean*mean))))
+		return mean / f, mean * f
+	case plan.Identity:
+		q = r.surface.Quantile(confidence)
+		return mean - q*se, mean + q*se
+	}
+	eta, d := math.Log(mean/(1-mean)), q*se/(mean*(1-mean))
+	return 1 / (1 + math.Exp(d-eta)), 1 / (1 + math.Exp(-d-eta))
+}
+
+// describeRegion is nil for a map of its own.
+func (r *run) describeRegion() *summary.Region {
+	if r.region == nil {
+		return nil
+	}
+	g := r.sums
+	g.Name, g.Fingerprint, g.Response = r.region.Name, r.region.Fingerprint, *r.settings.Response
+	g.MarginRows, g.Per = r.obs.table.Len()-r.obs.own, summary.Number(r.reporting.Factor)
+	return &g
+}
