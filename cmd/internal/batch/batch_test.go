@@ -21,7 +21,7 @@ import (
 )
 
 // planted writes a plan and its tables to a folder of their own and returns the plan's path.
-func planted(t *testing.T, planText string, tables map[string]string) string {
+func planted(t testing.TB, planText string, tables map[string]string) string {
 	t.Helper()
 	dir := t.TempDir()
 	for name, text := range tables {
@@ -70,7 +70,7 @@ func fourVales() map[string]string {
 		"data/dwarf.csv": "x,y,stems,plot_ha\n1,1,3,0.5\n2,5,4,0.5\n"}
 }
 
-func loaded(t *testing.T, path string) *Batch {
+func loaded(t testing.TB, path string) *Batch {
 	t.Helper()
 	b, err := Load(t.Context(), path)
 	if err != nil {

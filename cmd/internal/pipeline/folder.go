@@ -19,6 +19,13 @@ import (
 // was made for it; what a killed process left behind is cleared by the next one. An existing dir is refused without
 // force, and with force only a folder that drumlin wrote is replaced.
 func Folder(ctx context.Context, dir string, force bool, fill func(partial string) error) (err error) {
+	return folder(ctx, dir, force, atOnce, fill)
+}
+
+func atOnce(wait func() error) error { return wait() }
+
+// folder is Folder with what waits for the disk given to waiting.
+func folder(ctx context.Context, dir string, force bool, waiting func(wait func() error) error, fill func(partial string) error) (err error) {
 	dir = filepath.Clean(dir)
 	if err := checkFolder(dir, force); err != nil {
 		return err
@@ -52,10 +59,12 @@ func Folder(ctx context.Context, dir string, force bool, fill func(partial strin
 	if err := ctx.Err(); err != nil {
 		return err
 	}
-	if err := syncAll(partial); err != nil {
-		return err
-	}
-	return replace(partial, dir)
+	return waiting(func() error {
+		if err := syncAll(partial); err != nil {
+			return err
+		}
+		return replace(partial, dir)
+	})
 }
 
 // checkFolder refuses an existing folder early, before any work.
@@ -175,6 +184,25 @@ func replace(partial, dir string) error {
 		return err
 	}
 	return os.RemoveAll(old)
+}
+
+// ClearUp removes what a killed run has left beside a folder that it had finished.
+func ClearUp(dir string) error {
+	left := false
+	for _, name := range []string{dir + ".partial", dir + ".partial.lock", dir + replacedSuffix} {
+		if _, err := os.Lstat(name); err == nil {
+			left = true
+		}
+	}
+	if !left {
+		return nil
+	}
+	release, err := lock(dir + ".partial.lock")
+	if err != nil {
+		return err
+	}
+	defer release()
+	return errors.Join(os.RemoveAll(dir+".partial"), os.RemoveAll(dir+replacedSuffix))
 }
 
 // bringBack undoes a replacement that a kill cut short between its two renames: the old folder is put back, and then

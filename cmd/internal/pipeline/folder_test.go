@@ -328,3 +328,36 @@ func TestFolderUndoesAReplacementCutShort(t *testing.T) {
 		t.Errorf("the old folder is still beside the new one: %v", err)
 	}
 }
+
+// TestClearUp: what a killed run left beside its finished folder goes, and the folder stays.
+func TestClearUp(t *testing.T) {
+	dir := filepath.Join(t.TempDir(), "out")
+	for _, name := range []string{dir, dir + ".partial", dir + ".replaced"} {
+		if err := os.Mkdir(name, 0o755); err != nil {
+			t.Fatal(err)
+		}
+		if err := os.WriteFile(filepath.Join(name, "summary.json"), nil, 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	if err := os.WriteFile(dir+".partial.lock", nil, 0o644); err != nil {
+		t.Fatal(err)
+	}
+	for range 2 { // the second time there is nothing to do
+		if err := ClearUp(dir); err != nil {
+			t.Fatal(err)
+		}
+	}
+	left, _ := filepath.Glob(dir + "*")
+	if len(left) != 1 || left[0] != dir {
+		t.Errorf("left are %v", left)
+	}
+	release, err := lock(dir + ".partial.lock")
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer release()
+	if err := ClearUp(dir); err == nil {
+		t.Error("it was cleared up while another run writes it")
+	}
+}

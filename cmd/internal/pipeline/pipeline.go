@@ -27,6 +27,8 @@ type Region struct {
 	Rows        *observe.Part // nil: all of the settings' table of observations
 	// Beyond holds rows of neighbouring regions, which help the fit and are not reported.
 	Beyond []observe.Part
+	// Waiting, if not nil, is given what only waits for the disk, and carries it out: others can compute meanwhile.
+	Waiting func(wait func() error) error
 }
 
 // run is one region on its way.
@@ -67,7 +69,11 @@ func RunRegion(ctx context.Context, s plan.Settings, g Region, dir string, ev Ev
 func runInto(ctx context.Context, r *run, dir string) (summary.Document, error) {
 	ev := r.events
 	// The folder is claimed first, so that one that cannot be had is told before the work and not after it.
-	err := Folder(ctx, dir, *r.settings.Force, func(partial string) error {
+	waiting := atOnce
+	if r.region != nil && r.region.Waiting != nil {
+		waiting = r.region.Waiting
+	}
+	err := folder(ctx, dir, *r.settings.Force, waiting, func(partial string) error {
 		for _, step := range []struct {
 			name string
 			do   func(context.Context) error
