@@ -1,9 +1,11 @@
 package chart
 
 import (
+	"cmp"
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 
 	"github.com/paulmach/orb"
 )
@@ -486,11 +488,9 @@ func (t *setter) keyTexts() (kinds []keyKind, texts []string) {
 		add(keyOutline, "edge of the study area")
 	}
 	if len(t.m.Zones) > 0 {
-		text := "zone"
-		for _, z := range t.m.Zones {
-			if z.Name != "" {
-				text = "zone, named where there is room"
-			}
+		text := cmp.Or(t.m.ZoneWord, "zone")
+		if slices.ContainsFunc(t.m.Zones, func(z Zone) bool { return z.Name != "" }) {
+			text += ", named where there is room"
 		}
 		add(keyZone, text)
 	}

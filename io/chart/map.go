@@ -55,6 +55,8 @@ type Map struct {
 	Outline orb.MultiPolygon
 	// Zones are drawn as thin outlines with their names where there is room.
 	Zones []Zone
+	// ZoneWord is what the key calls one of Zones; "zone" if empty.
+	ZoneWord string
 	// Observations are drawn as small open marks. Those outside the frame are not shown.
 	Observations Points
 

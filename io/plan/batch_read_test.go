@@ -263,6 +263,10 @@ func TestReadBatchRefuses(t *testing.T) {
 			"line 6, column 1: surface: is none, and smoothness is pooled: there is no surface to pool it with", pool},
 		{"pooled and each its own", source + "[defaults]\nsurface_smoothness = \"own\"\nsmoothness = \"pooled\"",
 			"line 4, column 1: surface_smoothness: is own, and smoothness is pooled: one smoothness is for all surfaces", pool},
+		{"pooled and uncertain", source + "[defaults]\nsmoothness_uncertainty = \"on\"\nsmoothness = \"pooled\"",
+			"line 4, column 1: smoothness_uncertainty: is on, and smoothness is pooled: what all regions together have chosen is taken as known", pool},
+		{"pooled and scaled", source + "[defaults]\nsmoothness = \"pooled\"\n[region.A]\nextra_variation = \"scale\"",
+			"line 6, column 1: extra_variation: is scale, and smoothness is pooled: there is no restricted likelihood to pool where the variation is scaled", pool},
 
 		{"column in letters", "[defaults]\n\t\"größe\"\t=\t3", `line 2, column 2: "größe": is no word of [defaults]`, "drumlin map --help lists the words; in a plan they have underscores"},
 		{"column behind letters", "[defaults]\r\nlinear = ['größe', '木', '\t', 7]", `line 2, column 30: linear: is a list of texts in quotes, and one is a number`, `write "7"`},

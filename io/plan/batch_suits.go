@@ -84,6 +84,10 @@ func (b *Batch) pools(s Settings, said section) error {
 		key, message = "surface", "is none, and smoothness is pooled: there is no surface to pool it with"
 	case s.SurfaceSmoothness != nil && *s.SurfaceSmoothness == OwnSmoothness:
 		key, message = "surface_smoothness", "is own, and smoothness is pooled: one smoothness is for all surfaces"
+	case s.SmoothnessUncertainty != nil && *s.SmoothnessUncertainty == On:
+		key, message = "smoothness_uncertainty", "is on, and smoothness is pooled: what all regions together have chosen is taken as known"
+	case s.ExtraVariation != nil && *s.ExtraVariation == ScaleVariation:
+		key, message = "extra_variation", "is scale, and smoothness is pooled: there is no restricted likelihood to pool where the variation is scaled"
 	default:
 		return nil
 	}

@@ -9,7 +9,6 @@ import (
 	"encoding/json"
 	"fmt"
 	"io"
-	"math"
 	"os"
 	"path/filepath"
 	"slices"
@@ -333,8 +332,7 @@ func (r *runner) writeLedger(report *Report) error {
 func (r *runner) notes() []string {
 	var list []string
 	if r.pooled != nil {
-		list = append(list, fmt.Sprintf("smoothness pooled over %d regions: %.6g (their own lay between %.3g and %.3g; together the regions lose %.3g of restricted likelihood by it)",
-			r.pooled.Regions, r.pooled.Lambda, r.pooled.Least, r.pooled.Most, math.Max(0, float64(r.pooled.Loss))))
+		list = append(list, r.pooled.told())
 	}
 	if n := r.unnamed.Rows; n > 0 {
 		list = append(list, fmt.Sprintf("%d rows of %s name no region in %s (the first is row %d, line %d): they are in none",

@@ -58,7 +58,7 @@ func (m *Mosaic) Picture(ctx context.Context, title string, margin float64, left
 	}
 	p.lattice.Mask = p.mask()
 	picture := chart.Map{Title: title, Subtitle: m.subtitle(), Legend: m.Unit, Kind: chart.Level,
-		Lattice: p.lattice, Value: p.value, Zones: zones, Foot: m.foot(margin, leftOut)}
+		Lattice: p.lattice, Value: p.value, Zones: zones, ZoneWord: "region", Foot: m.foot(margin, leftOut)}
 	if m.ratio {
 		picture.Kind = chart.Ratio
 	}

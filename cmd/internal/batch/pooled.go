@@ -26,9 +26,10 @@ type pooled struct {
 	Of      string  `json:"of"`
 	Lambda  float64 `json:"lambda"`
 	Regions int     `json:"regions"` // that it was estimated from
-	// Least and Most are the range of the regions' own; a region whose own surface is a plane has no upper end.
-	Least float64 `json:"least"`
-	Most  float64 `json:"most"`
+	// Least and Most are the range of the regions' own, but for Planes whose own surface is a plane, of no lambda.
+	Least  float64 `json:"least"`
+	Most   float64 `json:"most"`
+	Planes int     `json:"planes"`
 	// Loss is by how much the restricted likelihood of the regions together is worse than with a smoothness each.
 	Loss summary.Number `json:"loss"`
 }
@@ -37,6 +38,16 @@ type pooled struct {
 func (p *pooled) settle(s *plan.Settings) {
 	s.Choose("smoothness", strconv.FormatFloat(p.Lambda, 'g', -1, 64),
 		fmt.Sprintf("pooled: the restricted likelihood of %d regions together is best there", p.Regions))
+}
+
+// told words it.
+func (p *pooled) told() string {
+	planes := ""
+	if p.Planes > 0 {
+		planes = fmt.Sprintf(", but for %d that would be tilted planes", p.Planes)
+	}
+	return fmt.Sprintf("smoothness pooled over %d regions: %.6g (their own lie between %.3g and %.3g%s; by sharing one the regions together lose %.3g of log likelihood)",
+		p.Regions, p.Lambda, p.Least, p.Most, planes, math.Max(0, float64(p.Loss)))
 }
 
 const pooledFile = "pooled.json"
@@ -126,7 +137,9 @@ func (r *runner) pool(ctx context.Context) (*pooled, error) {
 		}
 		p.Regions++
 		best += f.Criterion
-		if !f.AtUpper {
+		if f.AtUpper {
+			p.Planes++
+		} else {
 			p.Least, p.Most = math.Min(p.Least, f.Lambda), math.Max(p.Most, f.Lambda)
 		}
 	}

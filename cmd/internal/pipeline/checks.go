@@ -240,6 +240,9 @@ func (r *run) cautions() []string {
 	if s.Reference != nil {
 		list = append(list, "The reference level is taken as known: its own error is not in the limits.")
 	}
+	if n := r.obs.table.Len() - r.obs.own; n > 0 {
+		list = append(list, fmt.Sprintf("Near its edge the map rests on %d observations of neighbouring regions as well, which are not shown.", n))
+	}
 	if len(r.target.held) > 0 {
 		list = append(list, "The map is adjusted to held covariates: it shows what would be found there at those values.")
 	}
