@@ -15,13 +15,15 @@ import (
 // ask puts together what a region is run with, and its fingerprint.
 func (r *runner) ask(ctx context.Context, i int) (pipeline.Region, plan.Settings, error) {
 	g := r.regions[i]
-	s := g.settings
+	s, err := r.settings(g)
+	if err != nil {
+		return pipeline.Region{}, s, err
+	}
 	s.Workers, s.Force, s.Quiet = &r.inner, new(true), new(true)
 	if r.pooled != nil {
 		r.pooled.settle(&s)
 	}
 	asked := pipeline.Region{Name: g.name, Rows: g.rows}
-	var err error
 	if asked.Beyond, err = r.beyond(ctx, i); err != nil {
 		return asked, s, err
 	}

@@ -54,3 +54,20 @@ func BenchmarkRegions(b *testing.B) {
 		}
 	}
 }
+
+// BenchmarkLoad checks a plan of 100 000 regions that each have a table and a word of their own.
+func BenchmarkLoad(b *testing.B) {
+	const n = 100_000
+	var text strings.Builder
+	text.WriteString("[defaults]\nresponse = \"count\"\narea = \"plot_ha\"\n")
+	for i := range n {
+		fmt.Fprintf(&text, "[region.vale-%06d]\nobservations = \"data/vale.csv\"\nmax_knots = %d\n", i, 20+i%50)
+	}
+	path := planted(b, text.String(), map[string]string{"data/vale.csv": "x,y,count,plot_ha\n1,2,3,1\n"})
+	b.ReportAllocs()
+	for b.Loop() {
+		if loaded(b, path).Len() != n {
+			b.Fatal("regions are missing")
+		}
+	}
+}

@@ -88,19 +88,8 @@ func (r *runner) openDraft(folder string) (draft.Draft, error) {
 
 // writes reports whether the region of an outcome was asked for a kind of file.
 func (r *runner) writes(name string, kinds ...string) bool {
-	s := r.regions[r.index(name)].settings
-	return slices.ContainsFunc(kinds, func(kind string) bool { return slices.Contains(s.Write, kind) })
-}
-
-// index finds a region by its name.
-func (r *runner) index(name string) int {
-	if r.at == nil {
-		r.at = make(map[string]int, len(r.regions))
-		for i, g := range r.regions {
-			r.at[g.name] = i
-		}
-	}
-	return r.at[name]
+	s, err := r.settings(r.regions[r.at[name]])
+	return err == nil && slices.ContainsFunc(kinds, func(kind string) bool { return slices.Contains(s.Write, kind) })
 }
 
 // samples bounds how many values of all regions together the common breaks are chosen from, and how many of one.
@@ -303,7 +292,7 @@ func (r *runner) mosaicTitle() string {
 	if t := r.plan.Defaults.Title; t != nil {
 		return *t
 	}
-	return *r.regions[0].settings.Response
+	return r.regions[0].group.response
 }
 
 // writeLedger brings the ledger into a table: the last word on each region of the plan, in the plan's order. Parts leave

@@ -22,8 +22,9 @@ import (
 // Batch is a plan with its regions found and their settings resolved: all that can be checked before any work is.
 type Batch struct {
 	plan    *plan.Batch
-	path    string   // of the plan
-	regions []region // in the order of the plan
+	path    string          // of the plan
+	regions []region        // in the order of the plan
+	there   map[string]bool // files that are known to be there, while the plan is loaded
 	unnamed observe.Unnamed
 	pinned  []draft.Breaks // breaks that the plan names
 
@@ -31,13 +32,22 @@ type Batch struct {
 	fit func(context.Context, plan.Settings, pipeline.Region, string, pipeline.Events) (summary.Document, error)
 }
 
-// region is one unit of the batch.
+// region is one unit of the batch. Its settings are resolved when they are wanted: a plan may have very many.
 type region struct {
-	name     string
-	folder   string // in the folder of the batch
-	settings plan.Settings
-	rows     *observe.Part // of a table that all regions share; nil where it has a file of its own
-	size     int64         // bytes of its rows: what its work is judged by
+	name         string
+	folder       string        // in the folder of the batch
+	observations string        // path of its table, as seen from the plan
+	rows         *observe.Part // of a table that all regions share; nil where it has a file of its own
+	size         int64         // bytes of its rows: what its work is judged by
+	group        group
+}
+
+// group is what regions must have in common to be held against one another.
+type group struct{ response, unit string }
+
+// settings resolves a region's.
+func (b *Batch) settings(g region) (plan.Settings, error) {
+	return b.plan.Region(g.name, g.observations, b.dir())
 }
 
 // Load reads a plan, finds its regions, and refuses what can be seen to be wrong before any work.
@@ -50,7 +60,7 @@ func Load(ctx context.Context, file string) (*Batch, error) {
 	if err != nil {
 		return nil, err
 	}
-	b := &Batch{plan: p, path: file, fit: pipeline.RunRegion}
+	b := &Batch{plan: p, path: file, fit: pipeline.RunRegion, there: map[string]bool{}}
 	for _, find := range []func(context.Context) error{b.findShared, b.findFiles, b.findNamed} {
 		if err := find(ctx); err != nil {
 			return nil, err
@@ -60,7 +70,8 @@ func Load(ctx context.Context, file string) (*Batch, error) {
 		return nil, err
 	}
 	b.nameFolders()
-	for _, check := range []func() error{b.checkFiles, b.checkColumns, b.readBreaks} {
+	b.there = nil
+	for _, check := range []func() error{b.checkColumns, b.readBreaks} {
 		if err := check(); err != nil {
 			return nil, err
 		}
@@ -78,13 +89,24 @@ func (b *Batch) in(path string) string {
 	return filepath.Join(b.dir(), path)
 }
 
-// add resolves a region's settings and appends it.
+// add appends a region if its settings are in order and the files that they name are there.
 func (b *Batch) add(name, observations string, rows *observe.Part, size int64) error {
-	s, err := b.plan.Region(name, observations, b.dir())
+	g := region{name: name, observations: observations, rows: rows, size: size}
+	s, err := b.settings(g)
 	if err != nil {
 		return err
 	}
-	b.regions = append(b.regions, region{name: name, settings: s, rows: rows, size: size})
+	for _, file := range s.Files() {
+		if b.there[file] {
+			continue
+		}
+		if err := b.checkFile(g, file); err != nil {
+			return err
+		}
+		b.there[file] = true
+	}
+	g.group = group{*s.Response, pipeline.Unit(s)}
+	b.regions = append(b.regions, g)
 	return nil
 }
 
@@ -243,23 +265,7 @@ func (b *Batch) nameFolders() {
 	}
 }
 
-// checkFiles refuses a plan that names files which are not there.
-func (b *Batch) checkFiles() error {
-	checked := map[string]bool{}
-	for _, r := range b.regions {
-		for _, file := range r.settings.Files() {
-			if checked[file] {
-				continue
-			}
-			checked[file] = true
-			if err := b.checkFile(r, file); err != nil {
-				return err
-			}
-		}
-	}
-	return nil
-}
-
+// checkFile refuses a plan that names a file which is not there.
 func (b *Batch) checkFile(r region, file string) error {
 	info, err := os.Stat(file)
 	fault := func(message, hint string) error {
@@ -286,7 +292,11 @@ func (b *Batch) checkColumns() error {
 		if r.rows == nil || b.plan.Names(r.name) {
 			continue
 		}
-		return pipeline.CheckColumns(r.settings, *r.rows) // the others ask for the same
+		s, err := b.settings(r)
+		if err != nil {
+			return err
+		}
+		return pipeline.CheckColumns(s, *r.rows) // the others ask for the same
 	}
 	return nil
 }
@@ -296,18 +306,14 @@ func (b *Batch) groups() []group {
 	seen := map[group]bool{}
 	var list []group
 	for _, r := range b.regions {
-		g := group{*r.settings.Response, pipeline.Unit(r.settings)}
-		if !seen[g] {
-			seen[g] = true
-			list = append(list, g)
+		if !seen[r.group] {
+			seen[r.group] = true
+			list = append(list, r.group)
 		}
 	}
 	slices.SortFunc(list, func(a, b group) int { return cmp.Or(cmp.Compare(a.response, b.response), cmp.Compare(a.unit, b.unit)) })
 	return list
 }
-
-// group is what regions must have in common to be held against one another.
-type group struct{ response, unit string }
 
 // readBreaks takes the breaks that the plan names, as a list or as the file of an earlier batch.
 func (b *Batch) readBreaks() error {

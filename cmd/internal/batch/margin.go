@@ -62,12 +62,15 @@ func (r *runner) layMargin(ctx context.Context) error {
 
 // placesOf returns the rows of a region in space: on the globe, or on a plane of local metres.
 func (r *runner) placesOf(ctx context.Context, i int) (spots []spot, onGlobe int, err error) {
-	g := r.regions[i]
+	s, err := r.settings(r.regions[i])
+	if err != nil {
+		return nil, 0, err
+	}
 	p, err := r.rowsOf(ctx, i)
 	if err != nil {
 		return nil, 0, err
 	}
-	lonLat, row, geographic, err := pipeline.Places(g.settings, p)
+	lonLat, row, geographic, err := pipeline.Places(s, p)
 	if err != nil {
 		return nil, 0, err
 	}
@@ -91,7 +94,7 @@ func (r *runner) rowsOf(ctx context.Context, i int) (observe.Part, error) {
 	if g.rows != nil {
 		return *g.rows, nil
 	}
-	shared, err := pipeline.ReadShared(ctx, *g.settings.Observations)
+	shared, err := pipeline.ReadShared(ctx, r.in(g.observations))
 	if err != nil {
 		return observe.Part{}, err
 	}

@@ -75,7 +75,9 @@ func TestMargin(t *testing.T) {
 			}
 			want := 0
 			for _, p := range list {
-				near := slices.ContainsFunc(list, func(q post) bool { return q.district == g.name && geo.DistanceHaversine(p.at, q.at)*earth/orb.EarthRadius <= 9000 })
+				near := slices.ContainsFunc(list, func(q post) bool {
+					return q.district == g.name && geo.DistanceHaversine(p.at, q.at)*earth/orb.EarthRadius <= 9000
+				})
 				if p.district != g.name && near {
 					want++
 				}

@@ -75,7 +75,7 @@ type runner struct {
 	host   string
 	inner  int            // threads in one region
 	slots  chan struct{}  // taken by regions that compute
-	at     map[string]int // regions by their name, once asked for
+	at     map[string]int // regions by their name
 
 	mu    sync.Mutex
 	tally Tally
@@ -92,6 +92,10 @@ func (b *Batch) Run(ctx context.Context, out string, o Options, ev Events) (Repo
 	defer runtime.KeepAlive(quiet)
 	r := &runner{Batch: b, Options: o, out: out, events: ev, sums: &fileSums{}, cpu: CPUKind()}
 	r.host, _ = os.Hostname()
+	r.at = make(map[string]int, len(r.regions))
+	for i, g := range r.regions {
+		r.at[g.name] = i
+	}
 	if err := r.checkRedo(); err != nil {
 		return Report{}, err
 	}
