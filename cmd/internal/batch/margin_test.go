@@ -139,7 +139,7 @@ func TestMarginIsNotReported(t *testing.T) {
 // TestMarginFollowsNeighbours: a changed row near the border redoes the neighbour too, one far from it does not.
 func TestMarginFollowsNeighbours(t *testing.T) {
 	tables := map[string]string{"data/ash.csv": vale(1, 60, 0), "data/birch.csv": vale(2, 60, 2000), "data/cedar.csv": vale(3, 60, 4000)}
-	path := planted(t, valesPlan+"margin = \"300 m\"\n", tables)
+	path := planted(t, strings.Replace(valesPlan, `["csv", "pictures"]`, `"csv"`, 1)+"margin = \"300 m\"\n", tables)
 	out := filepath.Join(t.TempDir(), "maps")
 	ran(t, path, out, Options{})
 	ash := filepath.Join(filepath.Dir(path), "data", "ash.csv")
