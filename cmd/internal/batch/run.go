@@ -136,14 +136,37 @@ func (r *runner) run(ctx context.Context) (Report, error) {
 			report.Missing = append(report.Missing, r.regions[i].name)
 		}
 	}
-	report.Notes = r.notes()
+	report.Notes = append(r.notes(), r.outdated(report)...)
 	if err == nil && r.Part.Of == 0 {
 		report.Written, err = r.draw(ctx, &report)
 	}
-	if ctx.Err() == nil && !pipeline.NoRoom(err) {
+	if !pipeline.NoRoom(err) {
 		err = errors.Join(err, r.writeLedger(&report))
 	}
 	return report, err
+}
+
+// outdated tells of folders that earlier runs made of regions which this one has no result for.
+func (r *runner) outdated(report Report) []string {
+	var list []string
+	look := func(name, folder string) {
+		if _, err := os.Stat(filepath.Join(r.out, folder, "summary.json")); err == nil {
+			list = append(list, Shown(name))
+		}
+	}
+	for _, o := range report.Outcomes {
+		if o.Status == Failed {
+			look(o.Region, o.Folder)
+		}
+	}
+	for _, name := range report.Missing {
+		look(name, r.regions[r.at[name]].folder)
+	}
+	if list == nil {
+		return nil
+	}
+	return []string{fmt.Sprintf("of %s without a result there is a folder of an earlier run, such as that of %s: it shows other input or settings",
+		Counted(len(list), "region"), list[0])}
 }
 
 // share lists the regions to do, ascending.
@@ -339,7 +362,7 @@ func outcome(line Line, d summary.Document) Outcome {
 
 // reason words an error with its advice, on one line.
 func reason(err error) string {
-	text := err.Error()
+	text := strings.ReplaceAll(err.Error(), "\n", "; ")
 	var panicked *blocks.PanicError
 	if errors.As(err, &panicked) {
 		text += where(panicked.Stack)

@@ -270,7 +270,7 @@ func TestTruthIsSmooth(t *testing.T) {
 }
 
 func TestScript(t *testing.T) {
-	script := Script()
+	script := Script(Commands())
 	if strings.Count(script, "\ndrumlin map ") != len(Commands()) || strings.ContainsAny(script, "\r\t") {
 		t.Error(script)
 	}

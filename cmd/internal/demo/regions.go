@@ -4,10 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
-	"os"
-	"path/filepath"
 	"strconv"
-	"strings"
 
 	"gonum.org/v1/gonum/stat/distuv"
 )
@@ -287,36 +284,15 @@ func BatchCommands() []Command {
 	}
 }
 
-// BatchScript is the text of commands.txt beside a plan: the commands with what they are for. A shell can run it.
-func BatchScript() string {
-	var b strings.Builder
-	b.WriteString("# The commands that made this folder, to be run from within it. All places and numbers are invented.\n")
-	for _, c := range BatchCommands() {
-		b.WriteString("\n# " + c.Aim + "\n" + c.Line() + "\n")
-	}
-	return b.String()
-}
-
 // WriteBatch writes the data of 24 invented regions, plan.toml and commands.txt to the folder dir, which must exist.
 func WriteBatch(dir string) error {
-	if err := os.Mkdir(filepath.Join(dir, "data"), 0o777); err != nil {
-		return err
-	}
 	posts, err := table(postTable(Posts(seed)))
 	if err != nil {
 		return err
 	}
-	for _, f := range []struct {
-		name    string
-		content []byte
-	}{
+	return files{
 		{"data/posts.csv", posts},
 		{"plan.toml", []byte(batchPlan)},
-		{"commands.txt", []byte(BatchScript())},
-	} {
-		if err := os.WriteFile(filepath.Join(dir, filepath.FromSlash(f.name)), f.content, 0o666); err != nil {
-			return err
-		}
-	}
-	return nil
+		{"commands.txt", []byte(Script(BatchCommands()))},
+	}.write(dir)
 }

@@ -324,7 +324,7 @@ func TestBatchScript(t *testing.T) {
 	var got [][]string
 	for _, c := range BatchCommands() {
 		got = append(got, c.Args)
-		if !strings.Contains(BatchScript(), "\n# "+c.Aim+"\n"+c.Line()+"\n") {
+		if !strings.Contains(Script(BatchCommands()), "\n# "+c.Aim+"\n"+c.Line()+"\n") {
 			t.Errorf("%q is not in the script", c.Aim)
 		}
 	}

@@ -6,6 +6,7 @@ import (
 	"encoding/json"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 )
 
@@ -51,11 +52,13 @@ func Commands() []Command {
 }
 
 // Script is the text of commands.txt: the commands with what they are for. A shell can run it.
-func Script() string {
+func Script(commands []Command) string {
 	var b strings.Builder
-	b.WriteString("# The commands that made this folder, to be run from within it. All places and numbers are invented.\n" +
-		"# --force replaces the folders that are already here.\n")
-	for _, c := range Commands() {
+	b.WriteString("# The commands that made this folder, to be run from within it. All places and numbers are invented.\n")
+	if slices.ContainsFunc(commands, func(c Command) bool { return slices.Contains(c.Args, "--force") }) {
+		b.WriteString("# --force replaces the folders that are already here.\n")
+	}
+	for _, c := range commands {
 		b.WriteString("\n# " + c.Aim + "\n" + c.Line() + "\n")
 	}
 	return b.String()
@@ -63,9 +66,6 @@ func Script() string {
 
 // Write writes the data sets and commands.txt to the folder dir, which must exist.
 func Write(dir string) error {
-	if err := os.Mkdir(filepath.Join(dir, "data"), 0o777); err != nil {
-		return err
-	}
 	plots, err := table(plotTable(Plots(seed, plotCount)))
 	if err != nil {
 		return err
@@ -78,16 +78,26 @@ func Write(dir string) error {
 	if err != nil {
 		return err
 	}
-	for _, f := range []struct {
-		name    string
-		content []byte
-	}{
+	return files{
 		{"data/plots.csv", plots},
 		{"data/zones.geojson", append(polygons, '\n')},
 		{"data/villages.csv", villages},
-		{"commands.txt", []byte(Script())},
-	} {
-		if err := os.WriteFile(filepath.Join(dir, filepath.FromSlash(f.name)), f.content, 0o666); err != nil {
+		{"commands.txt", []byte(Script(Commands()))},
+	}.write(dir)
+}
+
+// files are what a demonstration begins with.
+type files []struct {
+	name    string
+	content []byte
+}
+
+func (f files) write(dir string) error {
+	if err := os.Mkdir(filepath.Join(dir, "data"), 0o777); err != nil {
+		return err
+	}
+	for _, file := range f {
+		if err := os.WriteFile(filepath.Join(dir, filepath.FromSlash(file.name)), file.content, 0o666); err != nil {
 			return err
 		}
 	}
