@@ -118,7 +118,7 @@ func (b *Batch) Fault(section, key, value, message, hint string) error {
 	if value != "" {
 		message = strconv.Quote(value) + " " + message
 	}
-	return b.fault(at, key, inPlan(message), inPlan(hint))
+	return b.fault(at, key, InPlan(message), InPlan(hint))
 }
 
 // bracketed is a section, named as for Position, as it is written in a plan.

@@ -36,15 +36,15 @@ func (e *PlanError) Hint() string { return e.hint }
 
 // keyed returns what an Error says as it is said of a plan.
 func keyed(e *Error) (key, message, hint string) {
-	return Word{Name: e.Word}.Key(), inPlan(strings.TrimPrefix(e.Error(), e.Word+": ")), inPlan(e.hint)
+	return Word{Name: e.Word}.Key(), InPlan(strings.TrimPrefix(e.Error(), e.Word+": ")), InPlan(e.hint)
 }
 
 // phrase is a part of a message that is taken as one: what stands in quotes, or what stands between signs.
 var phrase = regexp.MustCompile(`"(?:[^"\\]|\\.)*"|[^\s,;:?()"]+`)
 
-// inPlan turns the flags in a message, and words with hyphens, into keys of a plan. What stands in quotes is somebody's
+// InPlan turns the flags in a message, and words with hyphens, into keys of a plan. What stands in quotes is somebody's
 // own and stays, as do words that a plan does not take.
-func inPlan(text string) string {
+func InPlan(text string) string {
 	return phrase.ReplaceAllStringFunc(text, func(part string) string {
 		if w, ok := Lookup(strings.TrimPrefix(part, "--")); ok && !w.RunOnly {
 			return w.Key()

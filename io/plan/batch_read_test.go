@@ -241,8 +241,8 @@ func TestReadBatchRefuses(t *testing.T) {
 		{"margin or not", "[regions]\nmargin = true", "line 2, column 10: margin: takes a number or text in quotes, not true or false", ""},
 		{"scale", "[pictures]\nscale = \"shred\"", `line 2, column 9: scale: "shred" is not one of shared, own`, "did you mean shared?"},
 		{"number of a scale", "[pictures]\nscale = 3", "line 2, column 9: scale: takes text in quotes, not a number", `write scale = "3"`},
-		{"one break", "[pictures]\nbreaks = [1]", "line 2, column 10: breaks: takes from 2 to 12 numbers", ""},
-		{"13 breaks", "[pictures]\nbreaks = [1,2,3,4,5,6,7,8,9,10,11,12,13]", "line 2, column 10: breaks: takes from 2 to 12 numbers", ""},
+		{"one break", "[pictures]\nbreaks = [1]", "line 2, column 10: breaks: takes from 2 to 11 numbers", ""},
+		{"12 breaks", "[pictures]\nbreaks = [1,2,3,4,5,6,7,8,9,10,11,12]", "line 2, column 10: breaks: takes from 2 to 11 numbers", ""},
 		{"breaks that stay", "[pictures]\nbreaks = [1, 2.5, 2.5]", `line 2, column 19: breaks: "2.5" is not above 2.5, the one before it`, "let them rise"},
 		{"breaks of text", "[pictures]\nbreaks = [1, \"2\"]", "line 2, column 14: breaks: takes numbers, not text", ""},
 		{"breaks without end", "[pictures]\nbreaks = [1, inf]", `line 2, column 14: breaks: "inf" is not a finite number`, ""},
@@ -324,7 +324,7 @@ func TestInPlan(t *testing.T) {
 		"(--per)":                                                                      "(per)",
 		"":                                                                             "",
 	} {
-		if got := inPlan(text); got != want {
+		if got := InPlan(text); got != want {
 			t.Errorf("%s\ngot  %s\nwant %s", text, got, want)
 		}
 	}

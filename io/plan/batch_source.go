@@ -120,7 +120,7 @@ func (r *planReader) scale(e statement) (own bool, err error) {
 	return said == "own", nil
 }
 
-const leastBreaks, mostBreaks = 2, 12
+const leastBreaks, mostBreaks = 2, 11
 
 // breaks reads either numbers or the path of a file that has them.
 func (r *planReader) breaks(e statement) (list []float64, file string, err error) {

@@ -396,6 +396,21 @@ func TestBreaks(t *testing.T) {
 	if listed := tree(t, out); !strings.Contains(listed["breaks.toml"], "[0.0, 10.0, 20.0, 40.0]") || listed["ash/map.png"] == first["ash/map.png"] {
 		t.Errorf("with a list of breaks breaks.toml is\n%s", listed["breaks.toml"])
 	}
+	if err := os.Remove(filepath.Join(out, "ash", "map.png")); err != nil {
+		t.Fatal(err)
+	}
+	rewrite(t, path, valesPlan+"[pictures]\nbreaks = [2, 10, 20, 40]\n")
+	ran(t, path, out, Options{})
+	if raised := tree(t, out); !strings.Contains(raised["breaks.toml"], "[-inf, 10.0, 20.0, 40.0]") || raised["ash/map.png"] == "" {
+		t.Errorf("with breaks above the least values breaks.toml is\n%s", raised["breaks.toml"])
+	}
+	if err := os.Remove(filepath.Join(out, "ash", "map.png")); err != nil {
+		t.Fatal(err)
+	}
+	ran(t, path, out, Options{})
+	if again := tree(t, out); again["ash/map.png"] == "" {
+		t.Error("a picture that was taken away is not drawn again")
+	}
 	rewrite(t, path, valesPlan+"[pictures]\nscale = \"own\"\n")
 	ran(t, path, out, Options{})
 	if own := tree(t, out); own["breaks.toml"] != "" || own["ash/map.png"] == first["ash/map.png"] {

@@ -129,9 +129,10 @@ func (b *Batch) WriteProspects(w io.Writer, list []Prospect) error {
 		}
 	}
 	var text strings.Builder
-	fmt.Fprintf(&text, "plan     %s: %d regions, %s; nothing was run\n", filepath.Base(b.path), len(list), strings.Join(parts, ", "))
+	fmt.Fprintf(&text, "plan     %s: %s, %s; nothing was run\n", filepath.Base(b.path), Counted(len(list), "region"), strings.Join(parts, ", "))
 	if n := b.unnamed.Rows; n > 0 {
-		fmt.Fprintf(&text, "note     %d rows of %s name no region in %s\n", n, b.plan.File, b.plan.SplitBy)
+		fmt.Fprintf(&text, "note     %d rows of %s name no region in %s (the first is row %d, line %d)\n",
+			n, b.plan.File, b.plan.SplitBy, b.unnamed.Row, b.unnamed.Line)
 	}
 	text.WriteString("\nlargest first: folder, size, state, and the region's name where the folder has another\n")
 	for k, p := range list {

@@ -1,17 +1,16 @@
 package batch
 
 import (
-	"bytes"
 	"cmp"
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
-	"encoding/json"
 	"fmt"
 	"io"
 	"os"
 	"path/filepath"
 	"slices"
+	"strings"
 
 	"drumlin/basis2d/blocks"
 	"drumlin/cmd/internal/pipeline"
@@ -147,7 +146,9 @@ func (r *runner) breaks(ctx context.Context, fitted []Outcome) ([]draft.Breaks, 
 			continue // its classes are fixed
 		}
 		edges, pinned := edgesOf(r.pinned, p.file, p.group)
-		if !pinned {
+		if pinned {
+			edges = chart.Reaching(edges, s)
+		} else {
 			edges = chart.SharedBreaks(p.kind, s)
 		}
 		if edges != nil {
@@ -160,7 +161,7 @@ func (r *runner) breaks(ctx context.Context, fitted []Outcome) ([]draft.Breaks, 
 	return list, nil
 }
 
-// drawnFile says which draft and which breaks the pictures in a folder were drawn from, so that a picture is not drawn
+// drawnFile has the mark of what the pictures in a folder were drawn from, and their names, so that no picture is drawn
 // twice.
 const drawnFile = "pictures.drawn"
 
@@ -191,13 +192,14 @@ func (r *runner) drawRegion(ctx context.Context, o Outcome, list []draft.Breaks)
 	if err != nil {
 		return err
 	}
-	if before, err := os.ReadFile(filepath.Join(dir, drawnFile)); err == nil && bytes.Equal(before, mark) {
+	if isDrawn(dir, mark) {
 		return nil
 	}
 	d, err := r.openDraft(o.Folder)
 	if err != nil {
 		return err
 	}
+	drawn := []string{mark}
 	for _, p := range d.Pictures() {
 		if edges, ok := edgesOf(list, p.File, g); ok {
 			p.Breaks, p.Shared = edges, true
@@ -205,30 +207,35 @@ func (r *runner) drawRegion(ctx context.Context, o Outcome, list []draft.Breaks)
 		if err := pipeline.ReplaceFile(ctx, filepath.Join(dir, p.File), p.WritePNG); err != nil {
 			return err
 		}
+		drawn = append(drawn, p.File)
 	}
 	return pipeline.ReplaceFile(ctx, filepath.Join(dir, drawnFile), func(w io.Writer) error {
-		_, err := w.Write(mark)
+		_, err := io.WriteString(w, strings.Join(drawn, "\n")+"\n")
 		return err
 	})
 }
 
-// drawnMark stands for all that a region's pictures follow from.
-func drawnMark(draftSum string, g group, list []draft.Breaks) ([]byte, error) {
-	var own []draft.Breaks
-	for _, b := range list {
-		if b.Response == g.response && b.Unit == g.unit {
-			own = append(own, b)
-		}
-	}
-	text, err := json.Marshal(struct {
-		Version, Draft string
-		Breaks         []draft.Breaks
-	}{pipeline.Version(), draftSum, own})
+// isDrawn reports whether the pictures in a folder bear the mark and are all there.
+func isDrawn(dir, mark string) bool {
+	text, err := os.ReadFile(filepath.Join(dir, drawnFile))
 	if err != nil {
-		return nil, err
+		return false
 	}
-	sum := sha256.Sum256(text)
-	return []byte(hex.EncodeToString(sum[:]) + "\n"), nil
+	drawn := strings.Fields(string(text))
+	gone := func(file string) bool {
+		_, err := os.Stat(filepath.Join(dir, file))
+		return err != nil
+	}
+	return len(drawn) > 0 && drawn[0] == mark && !slices.ContainsFunc(drawn[1:], gone)
+}
+
+// drawnMark stands for all that a region's pictures follow from.
+func drawnMark(draftSum string, g group, list []draft.Breaks) (string, error) {
+	own := slices.DeleteFunc(slices.Clone(list), func(b draft.Breaks) bool { return b.Response != g.response || b.Unit != g.unit })
+	sum := sha256.New()
+	fmt.Fprintf(sum, "%s\n%s\n", pipeline.Version(), draftSum)
+	err := draft.WriteBreaks(sum, own)
+	return hex.EncodeToString(sum.Sum(nil)), err
 }
 
 // drawMosaic writes the map of all regions together, or notes why there is none.

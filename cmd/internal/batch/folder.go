@@ -5,8 +5,10 @@ import (
 	"errors"
 	"fmt"
 	"io/fs"
+	"maps"
 	"os"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"drumlin/cmd/internal/locks"
@@ -16,30 +18,72 @@ import (
 
 // prepareFolder makes the folder of the batch, and refuses one that holds something else.
 func (r *runner) prepareFolder() error {
-	entries, err := os.ReadDir(r.out)
-	if errors.Is(err, fs.ErrNotExist) {
-		if r.Gather {
-			return &fault{fmt.Sprintf("%s: there is no such folder, so there is nothing to gather", r.out), "name the folder that the parts wrote to"}
-		}
-		return pipeline.MakeFolder(r.out)
+	if _, err := os.Stat(r.out); r.Gather && errors.Is(err, fs.ErrNotExist) {
+		return &fault{fmt.Sprintf("%s: there is no such folder, so there is nothing to gather", r.out), "name the folder that the parts wrote to"}
 	}
+	if err := r.holdsNoInput(r.out); err != nil {
+		return err
+	}
+	return MakeFolder(r.out)
+}
+
+// MakeFolder makes the folder of a batch. One that is there already must be empty or a batch's.
+func MakeFolder(out string) error {
+	info, err := os.Stat(out)
+	switch {
+	case errors.Is(err, fs.ErrNotExist):
+		return pipeline.MakeFolder(out)
+	case err == nil && !info.IsDir():
+		return &fault{out + " is a file, not a folder", "name a folder for the batch"}
+	}
+	entries, err := os.ReadDir(out)
 	if err != nil {
-		return pipeline.Plainly(err, r.out)
+		return pipeline.Plainly(err, out)
 	}
-	if len(entries) > 0 && !hasOurs(entries) {
-		return &fault{fmt.Sprintf("%s holds files that no batch wrote", r.out), "name another folder, or empty it yourself"}
+	if len(entries) > 0 && !slices.ContainsFunc(entries, ours) {
+		return &fault{out + " holds files that no batch wrote", "name another folder, or empty it yourself"}
 	}
 	return nil
 }
 
-// hasOurs reports whether a folder is that of a batch.
-func hasOurs(entries []os.DirEntry) bool {
-	for _, e := range entries {
-		if strings.HasPrefix(e.Name(), "ledger.") || strings.HasPrefix(e.Name(), "batch.") {
-			return true
+// ours reports whether a file is one that a batch has in its folder and nobody else.
+func ours(e os.DirEntry) bool {
+	name := e.Name()
+	return name == ledgerName || name == "ledger.csv" || partLedger.MatchString(name) || name == "batch.lock" ||
+		strings.HasPrefix(name, "batch.part-") || slices.ContainsFunc(jobFiles, func(f jobFile) bool { return f.file == name })
+}
+
+// holdsNoInput refuses a folder that the plan takes files from: what one run writes would be input to the next.
+func (b *Batch) holdsNoInput(out string) error {
+	for _, dir := range slices.Sorted(maps.Keys(b.inputs)) {
+		if within(dir, out) {
+			return &fault{fmt.Sprintf("--out %s holds the input %s", out, b.inputs[dir]), "choose another folder, or have the plan name other files"}
 		}
 	}
-	return false
+	return nil
+}
+
+// within reports whether a folder is another or below it, links followed. One that is not there holds nothing.
+func within(dir, other string) bool {
+	from, err := realPath(other)
+	if err != nil {
+		return false
+	}
+	to, err := realPath(dir)
+	if err != nil {
+		return false
+	}
+	rel, err := filepath.Rel(from, to)
+	return err == nil && rel != ".." && !strings.HasPrefix(rel, ".."+string(filepath.Separator))
+}
+
+// realPath is the absolute path of a folder, without symbolic links.
+func realPath(dir string) (string, error) {
+	real, err := filepath.EvalSymlinks(dir)
+	if err != nil {
+		return "", err
+	}
+	return filepath.Abs(real)
 }
 
 // lock takes what keeps two runs out of each other's way: parts share batch.lock and have a lock each, and a whole run or
@@ -77,7 +121,7 @@ func partLock(p Part) string { return fmt.Sprintf("batch.part-%d-of-%d.lock", p.
 func (r *runner) taken(err error) error {
 	var held *locks.Held
 	if !errors.As(err, &held) {
-		return err
+		return pipeline.Plainly(err, r.out)
 	}
 	holder := held.Holder
 	if holder.PID == 0 {

@@ -11,6 +11,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"drumlin/cmd/internal/pipeline"
 	"drumlin/io/draft"
@@ -22,9 +23,10 @@ import (
 // Batch is a plan with its regions found and their settings resolved: all that can be checked before any work is.
 type Batch struct {
 	plan    *plan.Batch
-	path    string          // of the plan
-	regions []region        // in the order of the plan
-	there   map[string]bool // files that are known to be there, while the plan is loaded
+	path    string            // of the plan
+	regions []region          // in the order of the plan
+	there   map[string]bool   // files that are known to be there, while the plan is loaded
+	inputs  map[string]string // by each folder that regions take files from, one of these
 	unnamed observe.Unnamed
 	pinned  []draft.Breaks // breaks that the plan names
 
@@ -60,7 +62,7 @@ func Load(ctx context.Context, file string) (*Batch, error) {
 	if err != nil {
 		return nil, err
 	}
-	b := &Batch{plan: p, path: file, fit: pipeline.RunRegion, there: map[string]bool{}}
+	b := &Batch{plan: p, path: file, fit: pipeline.RunRegion, there: map[string]bool{}, inputs: map[string]string{}}
 	for _, find := range []func(context.Context) error{b.findShared, b.findFiles, b.findNamed} {
 		if err := find(ctx); err != nil {
 			return nil, err
@@ -100,10 +102,14 @@ func (b *Batch) add(name, observations string, rows *observe.Part, size int64) e
 		if b.there[file] {
 			continue
 		}
-		if err := b.checkFile(g, file); err != nil {
+		section, key := b.plan.Origin(name, file, b.dir())
+		if err := b.checkFile(section, key, file); err != nil {
 			return err
 		}
 		b.there[file] = true
+		if dir := filepath.Dir(file); b.inputs[dir] == "" {
+			b.inputs[dir] = file
+		}
 	}
 	g.group = group{*s.Response, pipeline.Unit(s)}
 	b.regions = append(b.regions, g)
@@ -114,6 +120,9 @@ func (b *Batch) add(name, observations string, rows *observe.Part, size int64) e
 func (b *Batch) findShared(ctx context.Context) error {
 	if b.plan.File == "" {
 		return nil
+	}
+	if err := b.checkFile("regions", "file", b.in(b.plan.File)); err != nil {
+		return err
 	}
 	shared, err := pipeline.ReadShared(ctx, b.in(b.plan.File))
 	if err != nil {
@@ -139,7 +148,8 @@ func (b *Batch) findShared(ctx context.Context) error {
 func (b *Batch) findFiles(context.Context) error {
 	taken := map[string]string{} // path by name
 	for _, pattern := range b.plan.Patterns {
-		base, rest := fixedPart(b.in(pattern))
+		base, rest := fixedPart(pattern)
+		base = b.in(base)
 		found, err := fs.Glob(os.DirFS(base), rest)
 		if err != nil {
 			return b.plan.Fault("regions", "files", pattern, "is no pattern of file names", "* stands for any letters, ? for one, [a-z] for one of those")
@@ -148,12 +158,14 @@ func (b *Batch) findFiles(context.Context) error {
 		for _, match := range found {
 			file := filepath.Join(base, filepath.FromSlash(match))
 			info, err := os.Stat(file)
-			if err == nil && info.IsDir() {
+			if err == nil && info.IsDir() || hidden(match, rest) {
 				continue
 			}
 			n++
 			name := strings.TrimSuffix(match, path.Ext(match))
 			switch other, twice := taken[name]; {
+			case !utf8.ValidString(name):
+				return b.plan.Fault("regions", "files", pattern, fmt.Sprintf("finds %q, a name that is not in UTF-8", match), "rename the file")
 			case twice && other == file:
 				continue
 			case twice:
@@ -169,10 +181,43 @@ func (b *Batch) findFiles(context.Context) error {
 			}
 		}
 		if n == 0 {
-			return b.plan.Fault("regions", "files", pattern, "finds no file in "+b.dir(), "paths are taken from the folder of the plan")
+			return b.noFile(pattern, base)
 		}
 	}
 	return nil
+}
+
+// hidden reports whether a file, or a folder on the way to it, is one that systems put beside others and do not show, and
+// that the pattern does not ask for.
+func hidden(match, pattern string) bool {
+	asked := strings.Split(pattern, "/")
+	for k, name := range strings.Split(match, "/") {
+		if strings.HasPrefix(name, ".") && k < len(asked) && !strings.HasPrefix(asked[k], ".") {
+			return true
+		}
+	}
+	return false
+}
+
+// noFile says that a pattern finds nothing, and why if its folder is the reason.
+func (b *Batch) noFile(pattern, folder string) error {
+	message, hint := "finds no file", b.whence()
+	switch _, err := os.ReadDir(folder); {
+	case errors.Is(err, fs.ErrPermission):
+		message, hint = "finds no file, as its folder may not be read", "ask for the right to read it"
+	case err != nil:
+		message = "finds no file: there is no folder " + b.fromPlan(folder)
+	}
+	return b.plan.Fault("regions", "files", pattern, message, hint)
+}
+
+// whence is the advice on a path of the plan that leads nowhere.
+func (b *Batch) whence() string {
+	advice := "check the path: it is taken from the folder of the plan"
+	if b.dir() != "." {
+		advice += ", " + b.dir()
+	}
+	return advice
 }
 
 // fromPlan is the path of a file as seen from the plan's folder, where it can be had.
@@ -265,18 +310,17 @@ func (b *Batch) nameFolders() {
 	}
 }
 
-// checkFile refuses a plan that names a file which is not there.
-func (b *Batch) checkFile(r region, file string) error {
+// checkFile refuses a file that is not there; section and key are where the plan names it.
+func (b *Batch) checkFile(section, key, file string) error {
 	info, err := os.Stat(file)
 	fault := func(message, hint string) error {
-		section, key := b.plan.Origin(r.name, file, b.dir())
 		return b.plan.Fault(section, key, b.fromPlan(file), message, hint)
 	}
 	switch {
-	case errors.Is(err, fs.ErrNotExist):
-		return fault("there is no such file", "paths are taken from the folder of the plan, "+b.dir())
+	case errors.Is(err, fs.ErrPermission):
+		return fault("may not be read", "ask for the right to read it")
 	case err != nil:
-		return fault("cannot be read: "+err.Error(), "ask for the right to read it")
+		return fault("is not there", b.whence())
 	case info.IsDir():
 		return fault("is a folder", "name a file in it")
 	}
@@ -326,9 +370,12 @@ func (b *Batch) readBreaks() error {
 		b.pinned = []draft.Breaks{{Picture: levelPicture, Response: groups[0].response, Unit: groups[0].unit, Edges: b.plan.Breaks}}
 	case b.plan.BreaksFile != "":
 		file := b.in(b.plan.BreaksFile)
+		if err := b.checkFile("pictures", "breaks", file); err != nil {
+			return err
+		}
 		text, err := pipeline.ReadFile(file, 1<<20)
 		if err != nil {
-			return b.plan.Fault("pictures", "breaks", b.plan.BreaksFile, err.Error(), "name the breaks.toml of an earlier batch, or a list of numbers")
+			return err
 		}
 		if b.pinned, err = draft.ReadBreaks(text, filepath.Base(file)); err != nil {
 			return err

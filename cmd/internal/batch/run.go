@@ -17,6 +17,7 @@ import (
 
 	"drumlin/basis2d/blocks"
 	"drumlin/cmd/internal/pipeline"
+	"drumlin/io/plan"
 	"drumlin/io/summary"
 )
 
@@ -165,7 +166,7 @@ func (r *runner) outdated(report Report) []string {
 	if list == nil {
 		return nil
 	}
-	return []string{fmt.Sprintf("of %s without a result there is a folder of an earlier run, such as that of %s: it shows other input or settings",
+	return []string{fmt.Sprintf("folders of earlier runs are still there for %s without a result, such as %s: they show other input or settings",
 		Counted(len(list), "region"), list[0])}
 }
 
@@ -360,7 +361,7 @@ func outcome(line Line, d summary.Document) Outcome {
 	return Outcome{Region: line.Region, Folder: line.Folder, Status: verdict(d), Figures: figures(d)}
 }
 
-// reason words an error with its advice, on one line.
+// reason words an error with its advice, on one line and in the keys of a plan.
 func reason(err error) string {
 	text := strings.ReplaceAll(err.Error(), "\n", "; ")
 	var panicked *blocks.PanicError
@@ -374,7 +375,7 @@ func reason(err error) string {
 	if errors.As(err, &advisor) && advisor.Hint() != "" {
 		text += " (" + advisor.Hint() + ")"
 	}
-	return text
+	return plan.InPlan(text)
 }
 
 // where finds the line of our own code in which a panic began: for whoever is to mend it.

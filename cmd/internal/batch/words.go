@@ -4,7 +4,9 @@ import (
 	"fmt"
 	"io"
 	"path/filepath"
+	"strconv"
 	"strings"
+	"unicode"
 )
 
 // named bounds how many regions of a kind are named in the summary in words; the rest stand in regions.csv.
@@ -24,13 +26,14 @@ func (r Report) WriteWords(w io.Writer, out string) error {
 		}
 	}
 	fmt.Fprintf(&text, "regions  %d: %s\n", t.Regions, strings.Join(parts, ", "))
-	r.list(&text, Failed, "failed", func(o Outcome) string { return o.Region + ": " + o.Reason })
-	r.list(&text, Stop, "stop", func(o Outcome) string {
-		return o.Region + ": " + o.Figures.WorstCheck + "; left out of mosaic and ranks"
-	})
-	r.list(&text, Look, "look", func(o Outcome) string { return o.Region + ": " + o.Figures.WorstCheck })
+	r.list(&text, Failed, "failed", func(o Outcome) string { return o.Reason })
+	r.list(&text, Stop, "stop", func(o Outcome) string { return o.Figures.WorstCheck + "; left out of mosaic and ranks" })
+	r.list(&text, Look, "look", func(o Outcome) string { return o.Figures.WorstCheck })
 	if len(r.Missing) > 0 {
-		few := r.Missing[:min(named, len(r.Missing))]
+		var few []string
+		for _, name := range r.Missing[:min(named, len(r.Missing))] {
+			few = append(few, Shown(name))
+		}
 		fmt.Fprintf(&text, "missing  %s", strings.Join(few, ", "))
 		if more := len(r.Missing) - len(few); more > 0 {
 			fmt.Fprintf(&text, " and %d more", more)
@@ -57,10 +60,31 @@ func (r Report) list(text *strings.Builder, s Status, title string, say func(Out
 			continue
 		}
 		if n++; n <= named {
-			fmt.Fprintf(text, "%-8s %s\n", title, say(o))
+			fmt.Fprintf(text, "%-8s %s: %s\n", title, Shown(o.Region), say(o))
 		}
 	}
 	if n > named {
-		fmt.Fprintf(text, "%-8s and %d more, see %s\n", title, n-named, regionsFile)
+		fmt.Fprintf(text, "%-8s and %d more", title, n-named)
+		if len(r.Written) > 0 {
+			fmt.Fprintf(text, ", see %s", regionsFile)
+		}
+		text.WriteByte('\n')
 	}
+}
+
+// Shown is a region's name as it can be written on a line: in quotes where a letter of it would not show, or would act
+// on the terminal.
+func Shown(name string) string {
+	if strings.ContainsFunc(name, func(c rune) bool { return !unicode.IsPrint(c) }) {
+		return strconv.Quote(name)
+	}
+	return name
+}
+
+// Counted is a number of things: 1 region, 2 regions.
+func Counted(n int, what string) string {
+	if n == 1 {
+		return "1 " + what
+	}
+	return fmt.Sprintf("%d %ss", n, what)
 }
