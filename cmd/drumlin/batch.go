@@ -145,7 +145,7 @@ func (p program) runBatch(ctx context.Context, r *batchRequest, file, out, shown
 		}
 		return toStdout(p.stdout, func(w io.Writer) error { return b.WriteProspects(w, prospects) })
 	}
-	report, err := b.Run(ctx, out, o, line)
+	report, err := p.work.batch(ctx, b, out, o, line)
 	line.clear()
 	if err != nil {
 		return err
@@ -156,13 +156,16 @@ func (p program) runBatch(ctx context.Context, r *batchRequest, file, out, shown
 		}
 	}
 	if report.Incomplete() {
-		return &incomplete{report}
+		return &incomplete{report, o.Part.String()}
 	}
 	return nil
 }
 
 // incomplete ends a batch that is done, but for regions that failed, are missing or carry a stop.
-type incomplete struct{ report batch.Report }
+type incomplete struct {
+	report batch.Report
+	part   string // empty for the whole batch
+}
 
 func (e *incomplete) Error() string {
 	t := e.report.Tally
@@ -175,11 +178,19 @@ func (e *incomplete) Error() string {
 			parts = append(parts, fmt.Sprintf("%d %s", c.n, c.what))
 		}
 	}
-	return fmt.Sprintf("of %d regions, %s", t.Regions, strings.Join(parts, ", "))
+	return fmt.Sprintf("of %s, %s", batch.Counted(t.Regions, "region"), strings.Join(parts, ", "))
 }
 
-// Hint says where to look.
-func (e *incomplete) Hint() string { return "ledger.csv says why, region by region" }
+// Hint says where to look. A part writes no tables; its ledger is for programs, but a person can read it.
+func (e *incomplete) Hint() string {
+	switch t := e.report.Tally; {
+	case t.Failed+t.Stops == 0:
+		return "run the parts that have the missing regions again, and then gather"
+	case e.part != "":
+		return "the lines of part " + e.part + " in the folder's ledger say why; so does ledger.csv once all parts are gathered"
+	}
+	return "ledger.csv says why, region by region"
+}
 
 // emitJob writes a job file for an engine.
 func (p program) emitJob(b *batch.Batch, r *batchRequest, file string, s plan.Settings) error {
@@ -206,6 +217,9 @@ func (p program) emitJob(b *batch.Batch, r *batchRequest, file string, s plan.Se
 	job.Name = strings.TrimSuffix(filepath.Base(file), filepath.Ext(file))
 	text, err := batch.Emit(r.emit, job)
 	if err != nil {
+		return err
+	}
+	if err := batch.MakeFolder(r.out); err != nil {
 		return err
 	}
 	if err := pipeline.MakeFolder(filepath.Join(r.out, "logs")); err != nil {

@@ -48,9 +48,9 @@ func (b *batchLine) Region(l batch.Line, t batch.Tally) {
 	}
 	switch {
 	case l.Status == batch.Failed:
-		b.Note(l.Region + " failed: " + l.Reason)
+		b.Note(batch.Shown(l.Region) + " failed: " + l.Reason)
 	case l.Status == batch.Stop:
-		b.Note(l.Region + " is not to be used: " + l.WorstCheck)
+		b.Note(batch.Shown(l.Region) + " is not to be used: " + l.WorstCheck)
 	}
 	b.line.Stage(text, 0, 0)
 	b.mu.Lock()

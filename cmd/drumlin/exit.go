@@ -20,7 +20,7 @@ var exitMeanings = []struct {
 	meaning string
 }{
 	{exitDone, "done; what the checks find does not change it"},
-	{exitRequest, "the request or the input is wrong; nothing was written"},
+	{exitRequest, "the request or the input is wrong, or a file cannot be written; nothing was written, and a batch keeps what it had done"},
 	{exitRegions, "a batch is done, with regions that failed or are not to be used"},
 	{exitFit, "a fit could not be had; nothing was written"},
 	{exitInterrupted, "interrupted; nothing was written, and a batch can be continued"},

@@ -2,6 +2,7 @@ package main
 
 import (
 	"bytes"
+	"os"
 	"strings"
 	"testing"
 	"unicode/utf8"
@@ -62,6 +63,7 @@ func TestExamplesRun(t *testing.T) {
 			}
 			typed++
 			t.Chdir(t.TempDir())
+			smallPlan(t)
 			p, _, _, stderr := faked(nil)
 			if code := p.run(t.Context(), words); code != exitDone {
 				t.Errorf("%s: exit %d, %s", text, code, stderr)
@@ -73,12 +75,25 @@ func TestExamplesRun(t *testing.T) {
 	}
 }
 
+// smallPlan writes the plan that the examples speak of to the folder at hand.
+func smallPlan(t *testing.T) {
+	t.Helper()
+	for name, text := range map[string]string{
+		"plan.toml": "[defaults]\nresponse = \"stems\"\n[regions]\nfiles = \"vale.csv\"\n",
+		"vale.csv":  "x,y,stems\n1,2,3\n",
+	} {
+		if err := os.WriteFile(name, []byte(text), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+}
+
 // TestExitCodesAreListed holds the help together with what the design promises about exit codes.
 func TestExitCodesAreListed(t *testing.T) {
 	p, _, stdout, _ := faked(nil)
 	p.run(t.Context(), line("--help"))
 	_, codes, _ := strings.Cut(stdout.String(), "Exit codes\n")
-	for _, code := range []string{"0", "2", "4", "130"} {
+	for _, code := range []string{"0", "2", "3", "4", "130"} {
 		if !strings.Contains(codes, "\n  "+code+" ") && !strings.HasPrefix(codes, "  "+code+" ") {
 			t.Errorf("%s is missing from %q", code, codes)
 		}

@@ -41,7 +41,7 @@ func TestScripts(t *testing.T) {
 			return false, fmt.Errorf("unknown condition %q", name)
 		},
 		Cmds: map[string]func(*testscript.TestScript, bool, []string){
-			"exitcode": exitcode, "refuses": refuses, "same": same, "absent": absent,
+			"exitcode": exitcode, "refuses": refuses, "declines": declines, "same": same, "absent": absent,
 		},
 	})
 }
@@ -96,8 +96,20 @@ func refuses(ts *testscript.TestScript, neg bool, args []string) {
 	if neg || len(args) < 3 {
 		ts.Fatalf("usage: refuses CODE PATTERN ARGUMENT...")
 	}
+	refused(ts, args[0], args[1], append([]string{"map", "--out", "deep/refused"}, args[2:]...))
+}
+
+// declines is refuses for a batch command, whose arguments are all given: declines CODE PATTERN ARGUMENT...
+func declines(ts *testscript.TestScript, neg bool, args []string) {
+	if neg || len(args) < 3 {
+		ts.Fatalf("usage: declines CODE PATTERN ARGUMENT...")
+	}
+	refused(ts, args[0], args[1], append([]string{"batch"}, args[2:]...))
+}
+
+func refused(ts *testscript.TestScript, code, pattern string, command []string) {
 	before := listing(ts)
-	exitcode(ts, false, append([]string{args[0], "map", "--out", "deep/refused"}, args[2:]...))
+	exitcode(ts, false, append([]string{code}, command...))
 	said := ts.ReadFile("stderr")
 	switch {
 	case ts.ReadFile("stdout") != "":
@@ -106,8 +118,8 @@ func refuses(ts *testscript.TestScript, neg bool, args []string) {
 		ts.Fatalf("this is not a line of message and one of advice")
 	case insides.MatchString(said):
 		ts.Fatalf("the message speaks of %q", insides.FindString(said))
-	case !regexp.MustCompile(args[1]).MatchString(said):
-		ts.Fatalf("the message does not match %q", args[1])
+	case !regexp.MustCompile(pattern).MatchString(said):
+		ts.Fatalf("the message does not match %q", pattern)
 	}
 	if after := listing(ts); after != before {
 		ts.Fatalf("something was written:\n%s", after)

@@ -130,9 +130,8 @@ func (b *Batch) WriteProspects(w io.Writer, list []Prospect) error {
 	}
 	var text strings.Builder
 	fmt.Fprintf(&text, "plan     %s: %s, %s; nothing was run\n", filepath.Base(b.path), Counted(len(list), "region"), strings.Join(parts, ", "))
-	if n := b.unnamed.Rows; n > 0 {
-		fmt.Fprintf(&text, "note     %d rows of %s name no region in %s (the first is row %d, line %d)\n",
-			n, b.plan.File, b.plan.SplitBy, b.unnamed.Row, b.unnamed.Line)
+	if b.unnamed.Rows > 0 {
+		fmt.Fprintf(&text, "note     %s\n", b.nameless())
 	}
 	text.WriteString("\nlargest first: folder, size, state, and the region's name where the folder has another\n")
 	for k, p := range list {
@@ -148,6 +147,12 @@ func (b *Batch) WriteProspects(w io.Writer, list []Prospect) error {
 	}
 	_, err := io.WriteString(w, text.String())
 	return err
+}
+
+// nameless tells of rows that are in no region.
+func (b *Batch) nameless() string {
+	return fmt.Sprintf("%s of %s without a region in %s (the first is row %d, line %d): in no map",
+		Counted(b.unnamed.Rows, "row"), b.plan.File, b.plan.SplitBy, b.unnamed.Row, b.unnamed.Line)
 }
 
 // size writes a number of bytes for people.

@@ -330,12 +330,11 @@ func (r *runner) notes() []string {
 	if r.pooled != nil {
 		list = append(list, r.pooled.told())
 	}
-	if n := r.unnamed.Rows; n > 0 {
-		list = append(list, fmt.Sprintf("%d rows of %s name no region in %s (the first is row %d, line %d): they are in none",
-			n, r.plan.File, r.plan.SplitBy, r.unnamed.Row, r.unnamed.Line))
+	if r.unnamed.Rows > 0 {
+		list = append(list, r.nameless())
 	}
 	if stale := r.strangers(); len(stale) > 0 {
-		list = append(list, fmt.Sprintf("%d folders of earlier runs belong to no region of the plan, such as %s: they are left alone", len(stale), stale[0]))
+		list = append(list, fmt.Sprintf("%s of an earlier run left alone, of no region in the plan, such as %s", Counted(len(stale), "folder"), stale[0]))
 	}
 	return list
 }

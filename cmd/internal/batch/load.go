@@ -102,8 +102,7 @@ func (b *Batch) add(name, observations string, rows *observe.Part, size int64) e
 		if b.there[file] {
 			continue
 		}
-		section, key := b.plan.Origin(name, file, b.dir())
-		if err := b.checkFile(section, key, file); err != nil {
+		if err := b.checkFile(file, func() (section, key string) { return b.plan.Origin(name, file, b.dir()) }); err != nil {
 			return err
 		}
 		b.there[file] = true
@@ -121,7 +120,7 @@ func (b *Batch) findShared(ctx context.Context) error {
 	if b.plan.File == "" {
 		return nil
 	}
-	if err := b.checkFile("regions", "file", b.in(b.plan.File)); err != nil {
+	if err := b.checkFile(b.in(b.plan.File), func() (section, key string) { return "regions", "file" }); err != nil {
 		return err
 	}
 	shared, err := pipeline.ReadShared(ctx, b.in(b.plan.File))
@@ -310,10 +309,11 @@ func (b *Batch) nameFolders() {
 	}
 }
 
-// checkFile refuses a file that is not there; section and key are where the plan names it.
-func (b *Batch) checkFile(section, key, file string) error {
+// checkFile refuses a file that is not there; named tells where the plan names it.
+func (b *Batch) checkFile(file string, named func() (section, key string)) error {
 	info, err := os.Stat(file)
 	fault := func(message, hint string) error {
+		section, key := named()
 		return b.plan.Fault(section, key, b.fromPlan(file), message, hint)
 	}
 	switch {
@@ -370,7 +370,7 @@ func (b *Batch) readBreaks() error {
 		b.pinned = []draft.Breaks{{Picture: levelPicture, Response: groups[0].response, Unit: groups[0].unit, Edges: b.plan.Breaks}}
 	case b.plan.BreaksFile != "":
 		file := b.in(b.plan.BreaksFile)
-		if err := b.checkFile("pictures", "breaks", file); err != nil {
+		if err := b.checkFile(file, func() (section, key string) { return "pictures", "breaks" }); err != nil {
 			return err
 		}
 		text, err := pipeline.ReadFile(file, 1<<20)

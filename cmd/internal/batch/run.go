@@ -278,6 +278,7 @@ func (r *runner) keep(i int, line Line, d summary.Document) (*Outcome, error) {
 	}
 	_, _, line.Figures = judge(d, nil)
 	line.Status, line.Ended = Unchanged, time.Now().UTC()
+	line.Seconds, line.CPU, line.Host = known.Seconds, known.CPU, known.Host // of the run that made the folder
 	if !ok || known.Fingerprint != line.Fingerprint || known.Status == Failed {
 		// The folder was finished and the run ended before it could say so: that word is made up for.
 		line.Status, line.Reason = verdict(d), "adopted: its folder was finished and the ledger had no line for it"

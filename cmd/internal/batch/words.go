@@ -44,9 +44,9 @@ func (r Report) WriteWords(w io.Writer, out string) error {
 		fmt.Fprintf(&text, "note     %s\n", n)
 	}
 	if len(r.Written) > 0 {
-		fmt.Fprintf(&text, "written  %s: %s, and a folder for each region\n", out, strings.Join(r.Written, ", "))
+		fmt.Fprintf(&text, "written  %s: %s, and a folder for each region that was fitted\n", out, strings.Join(r.Written, ", "))
 	} else {
-		fmt.Fprintf(&text, "written  %s: a folder for each region; the rest when all parts are gathered\n", filepath.Clean(out))
+		fmt.Fprintf(&text, "written  %s: a folder for each region that was fitted; the rest when all parts are gathered\n", filepath.Clean(out))
 	}
 	_, err := io.WriteString(w, text.String())
 	return err

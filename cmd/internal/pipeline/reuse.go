@@ -144,7 +144,7 @@ func ReplaceFile(ctx context.Context, path string, content func(w io.Writer) err
 	if err := os.Remove(partial); err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return Plainly(err, partial)
 	}
-	if _, err = writeFile(ctx, folder, filepath.Base(partial), content); err == nil {
+	if _, err = writeFileAs(ctx, partial, filepath.Base(path), content); err == nil {
 		err = sync(partial)
 	}
 	if err == nil {

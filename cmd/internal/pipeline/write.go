@@ -177,7 +177,11 @@ func (r *run) writeAside(w io.Writer) error {
 // writeFile writes one file and returns its checksum. Whoever asked for it brings it to the disk: for many files at once
 // that takes little longer than for one.
 func writeFile(ctx context.Context, folder, name string, content func(w io.Writer) error) (string, error) {
-	path := filepath.Join(folder, name)
+	return writeFileAs(ctx, filepath.Join(folder, name), name, content)
+}
+
+// writeFileAs writes a file at path that messages know by the name it is going to have.
+func writeFileAs(ctx context.Context, path, name string, content func(w io.Writer) error) (string, error) {
 	f, err := os.OpenFile(path, os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
 	if err != nil {
 		return "", Plainly(err, name)
