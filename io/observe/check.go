@@ -49,17 +49,18 @@ const (
 )
 
 // firstFault fills the row at hand from a record and returns the first fault it has, if any.
-func (r *rows) firstFault(record []string) (Aside, bool) {
+func (r *rows) firstFault(record []string, here Error) (Aside, bool) {
+	r.limits = r.limits[:0]
 	for i, f := range r.fields {
 		s := strings.TrimSpace(record[f.at])
 		if f.part.isText() {
-			if f.part == category && missing(s) {
+			if f.part == category && r.format.isMissing(s) {
 				return fault(f, s, faultMissing), true
 			}
 			r.text[i] = s
 			continue
 		}
-		v, bad := parseNumber(s)
+		v, bad := r.number(i, s, here)
 		if bad != "" {
 			return fault(f, s, bad), true
 		}
@@ -75,6 +76,41 @@ func (r *rows) firstFault(record []string) (Aside, bool) {
 	return Aside{}, false
 }
 
+// number reads a trimmed field of the row at hand, by the rule for values below a limit where the part may have them.
+func (r *rows) number(i int, s string, here Error) (float64, string) {
+	v, bad := r.format.number(s)
+	switch bad {
+	case "":
+		r.commas[i].numbers++
+	case faultNumber, faultGrouped, faultPoint:
+		if r.format.BelowLimit != Refuse && r.fields[i].mayBeBelow(r.want.Kind) {
+			if limit, is := r.format.limit(s); is {
+				return r.belowLimit(i, limit)
+			}
+		}
+		bad = r.notNumber(i, s, bad, here)
+	}
+	return v, bad
+}
+
+// mayBeBelow reports whether a part may have values below a detection limit.
+func (f field) mayBeBelow(kind Kind) bool {
+	return f.part == linear || f.part == response && kind == Measure
+}
+
+// belowLimit returns what stands for a value below a limit. A value that is kept counts with its row.
+func (r *rows) belowLimit(i int, limit float64) (float64, string) {
+	switch r.format.BelowLimit {
+	case AsideLimit:
+		r.below[i]++
+		return notANumber, faultLimit
+	case HalfLimit:
+		limit /= 2
+	}
+	r.limits = append(r.limits, i)
+	return limit, ""
+}
+
 // fault describes a value that is missing or no number.
 func fault(f field, value, code string) Aside {
 	a := Aside{Column: f.name, Value: shorten(value), Code: code, Reason: f.part.subject()}
@@ -84,6 +120,8 @@ func fault(f field, value, code string) Aside {
 		a.Reason += " is missing"
 	case faultInfinite:
 		a.Reason += " is not finite"
+	case faultLimit:
+		a.Reason += " is below a detection limit"
 	default:
 		a.Reason += " is not a number"
 	}

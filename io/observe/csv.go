@@ -1,7 +1,6 @@
 package observe
 
 import (
-	"encoding/csv"
 	"fmt"
 	"io"
 	"math"
@@ -11,19 +10,24 @@ import (
 	"github.com/paulmach/orb"
 )
 
-// ReadCSV reads a table with one line of names and commas between the columns, in UTF-8 (a byte order mark is
-// dropped), with quotes as in RFC 4180. The source is the name of the file in messages. Numbers are decimal with a
-// point; empty fields and NA, NaN and null in any capitals are missing.
+// ReadCSV reads a table with one line of names, with quotes as in RFC 4180. The source is the name of the file in
+// messages. The columns are separated as Request.Format says or the header shows; numbers are decimal with a point
+// unless the format has a comma; empty fields and NA, NaN and null in any capitals are missing.
+//
+// The text is UTF-8, UTF-16 (told by its byte order mark, or by the zeros in every other byte) or Windows-1252 (told
+// by the first character beyond ASCII, which is no UTF-8). A byte order mark is dropped. The file may be compressed
+// with gzip. Lines and rows are those of the text, and it is never held as a whole.
 //
 // Rows that cannot be used are set aside, see Request for the order of the checks. An *Error is returned for a table
 // that cannot be used as a whole: one that is not such a file, has no such column or two of a name, rows of the wrong
-// length, a latitude beyond 90 degrees anywhere (coordinates were probably swapped, or are not degrees), more than
-// half of its rows to set aside, or any such row if the request is strict.
+// length, a latitude beyond 90 degrees anywhere (coordinates were probably swapped, or are not degrees), digits in
+// groups of three in a number, decimal commas or points against the format, more than half of its rows to set aside,
+// or any such row if the request is strict.
 func ReadCSV(r io.Reader, source string, want Request) (*Table, error) {
 	if err := want.Validate(); err != nil {
 		return nil, inFile(err, source)
 	}
-	in, err := openText(r, source)
+	in, err := openTextAs(r, source, want.Format)
 	if err != nil {
 		return nil, err
 	}
@@ -43,7 +47,7 @@ func readTable(h header, want Request, from records) (*Table, error) {
 	if err := rows.readAll(from); err != nil {
 		return nil, err
 	}
-	rows.table.sortLevels()
+	rows.finish()
 	return rows.table, nil
 }
 
@@ -55,7 +59,7 @@ type records interface {
 
 // stream gives the records of a file as it is read.
 type stream struct {
-	in     *csv.Reader // below the header
+	in     *text // below the header
 	source string
 	row    int
 }
@@ -83,14 +87,30 @@ func inFile(err error, source string) error {
 // rows turns records into rows of the table. The slices value and text are the row at hand, by field.
 type rows struct {
 	header header
+	format *Format
 	want   Request
 	fields []field // in the order of the checks
 	x, y   int     // the fields of the coordinates
 	table  *Table
 	known  []map[string]int32 // for each column of the table, the code of each level so far
 
-	value []float64
-	text  []string
+	value  []float64
+	text   []string
+	limits []int // fields of the row at hand in which a rule stands for a value below a limit
+
+	lines, numbers pile[int32] // of the kept rows, as Line and Row of the table
+	places         pile[orb.Geometry]
+	columns        []filling
+
+	below  []int    // for each field, the values below a limit that were kept or set aside as such
+	commas []commas // for each field
+	held   error    // the first refusal that decimal commas may explain better
+}
+
+// filling is what a column of the table has of the kept rows.
+type filling struct {
+	number pile[float64]
+	code   pile[int32]
 }
 
 // field is one part that one column of the file plays.
@@ -108,8 +128,8 @@ func newRows(h header, want Request) (*rows, error) {
 	if err != nil {
 		return nil, err
 	}
-	r := &rows{header: h, want: want, table: &Table{
-		Source: h.source, XName: c.x, YName: c.y, Degrees: c.degrees, Recognised: c.recognised, PassedOver: c.passedOver,
+	r := &rows{header: h, format: &h.origin.format, want: want, table: &Table{
+		Source: h.source, Separator: h.origin.separator, XName: c.x, YName: c.y, Degrees: c.degrees, Recognised: c.recognised, PassedOver: c.passedOver,
 	}}
 	var lists = []struct {
 		part  part
@@ -127,6 +147,8 @@ func newRows(h header, want Request) (*rows, error) {
 		}
 	}
 	r.value, r.text = make([]float64, len(r.fields)), make([]string, len(r.fields))
+	r.columns = make([]filling, len(r.table.Columns))
+	r.below, r.commas = make([]int, len(r.fields)), make([]commas, len(r.fields))
 	return r, nil
 }
 
@@ -166,10 +188,24 @@ func (r *rows) add(p part, name string) error {
 
 // readAll reads the records to the end and refuses a table that is mostly unusable.
 func (r *rows) readAll(from records) error {
+	if err := r.explain(r.readRows(from)); err != nil {
+		return err
+	}
+	switch {
+	case r.table.Rows == 0:
+		return r.header.noRows()
+	case len(r.table.Aside) > r.table.Rows/2:
+		return r.mostlyAside()
+	}
+	return nil
+}
+
+// readRows reads the records to the end.
+func (r *rows) readRows(from records) error {
 	for {
 		record, line, row, err := from.next()
 		if err == io.EOF {
-			break
+			return nil
 		}
 		if err != nil {
 			return err
@@ -179,13 +215,6 @@ func (r *rows) readAll(from records) error {
 			return err
 		}
 	}
-	switch {
-	case r.table.Rows == 0:
-		return r.header.noRows()
-	case len(r.table.Aside) > r.table.Rows/2:
-		return r.mostlyAside()
-	}
-	return nil
 }
 
 // readRow keeps one record or sets it aside. An error refuses the whole table.
@@ -197,9 +226,11 @@ func (r *rows) readRow(record []string, line, row int) error {
 	if err := r.checkLatitude(record, here); err != nil {
 		return err
 	}
-	if a, bad := r.firstFault(record); bad {
+	if a, bad := r.firstFault(record, here); bad {
 		a.Line, a.Row = int32(line), int32(row)
-		if r.want.Strict {
+		if r.want.Strict && a.Code == faultNumber && hasDecimalComma(a.Value) {
+			r.hold(r.refuse(a))
+		} else if r.want.Strict {
 			return r.refuse(a)
 		}
 		r.table.Aside = append(r.table.Aside, a)
@@ -215,7 +246,7 @@ func (r *rows) checkLatitude(record []string, here Error) error {
 		return nil
 	}
 	s := strings.TrimSpace(record[r.fields[r.y].at])
-	if v, fault := parseNumber(s); fault != "" || math.Abs(v) <= 90 {
+	if v, fault := r.format.number(s); fault != "" || math.Abs(v) <= 90 {
 		return nil
 	}
 	here.Column, here.Value = r.table.YName, shorten(s)
@@ -223,28 +254,28 @@ func (r *rows) checkLatitude(record []string, here Error) error {
 	return &here
 }
 
-// keepRow appends the row at hand to the table.
+// keepRow keeps the row at hand for the table.
 func (r *rows) keepRow(line, row int) {
-	t := r.table
-	t.Line = append(t.Line, int32(line))
-	t.Row = append(t.Row, int32(row))
-	t.Geometry = append(t.Geometry, orb.Point{r.value[r.x], r.value[r.y]})
+	r.lines.add(int32(line))
+	r.numbers.add(int32(row))
+	r.places.add(orb.Point{r.value[r.x], r.value[r.y]})
+	for _, i := range r.limits {
+		r.below[i]++
+	}
 	for i, f := range r.fields {
 		switch {
 		case f.column < 0 || f.again:
 		case f.part.isText():
-			c := &t.Columns[f.column]
-			c.Code = append(c.Code, r.code(f.column, r.text[i]))
+			r.columns[f.column].code.add(r.code(f.column, r.text[i]))
 		default:
-			c := &t.Columns[f.column]
-			c.Number = append(c.Number, r.value[i])
+			r.columns[f.column].number.add(r.value[i])
 		}
 	}
 }
 
 // code returns the code of a level, a new one if need be; -1 for a missing one.
 func (r *rows) code(column int, level string) int32 {
-	if missing(level) {
+	if r.format.isMissing(level) {
 		return -1
 	}
 	code, seen := r.known[column][level]
@@ -256,6 +287,22 @@ func (r *rows) code(column int, level string) int32 {
 		r.known[column][level] = code
 	}
 	return code
+}
+
+// finish fills the table after the last row.
+func (r *rows) finish() {
+	t := r.table
+	t.Encoding = r.header.origin.encoding()
+	t.Line, t.Row, t.Geometry = r.lines.join(), r.numbers.join(), r.places.join()
+	for i := range r.columns {
+		t.Columns[i].Number, t.Columns[i].Code = r.columns[i].number.join(), r.columns[i].code.join()
+	}
+	for i, n := range r.below {
+		if n > 0 {
+			t.BelowLimit = append(t.BelowLimit, BelowCount{Column: r.fields[i].name, Rows: n, Rule: r.format.BelowLimit})
+		}
+	}
+	t.sortLevels()
 }
 
 // refuse turns a row to be set aside into an error.
@@ -288,12 +335,16 @@ func (r *rows) mostlyAside() error {
 	return &Error{File: r.header.source, Value: a.Value,
 		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; for example row %d (line %d), where %s",
 			len(r.table.Aside), r.table.Rows, strings.Join(reasons, "; "), a.Row, a.Line, a.sentence()),
-		Advice: adviceFor(counts[0].Code)}
+		Advice: r.adviceFor(a)}
 }
 
 // adviceFor says what to do about rows that are mostly unusable for one reason.
-func adviceFor(code string) string {
-	if code == "fractional-count" {
+func (r *rows) adviceFor(a Aside) string {
+	below := func(f field) bool { return f.name == a.Column && f.mayBeBelow(r.want.Kind) }
+	if a.Code == faultLimit || a.Code == faultNumber && strings.HasPrefix(a.Value, "<") && slices.ContainsFunc(r.fields, below) {
+		return "say with --below-limit half or limit what stands for values below a detection limit"
+	}
+	if a.Code == "fractional-count" {
 		return "amounts that are not whole numbers are no counts: use --distribution tweedie for them"
 	}
 	return "check that the right columns are named, and that missing values are written as empty fields or NA"

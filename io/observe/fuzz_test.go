@@ -7,6 +7,7 @@ import (
 	"testing"
 	"unicode/utf8"
 
+	"github.com/google/go-cmp/cmp"
 	"github.com/paulmach/orb"
 )
 
@@ -35,6 +36,46 @@ func FuzzReadCSV(f *testing.F) {
 			return
 		}
 		checkTable(t, table, want)
+	})
+}
+
+// FuzzFormats holds tables of every format, in any encoding and packed or not, to the same, and ReadPart to ReadCSV.
+func FuzzFormats(f *testing.F) {
+	f.Add([]byte("x;y;n\n1,5;2;<0,5\n1;2;3\n"), uint8(1), uint8(1), "n.d.", false)
+	f.Add([]byte("x\ty\tn\n1\t\t3\n"), uint8(0), uint8(3), "", true)
+	f.Add([]byte("x,y,n\n1,2,\"1,234\"\n1,2,\xe9\n"), uint8(0), uint8(0), "-", false)
+	f.Add([]byte("\xff\xfex\x00,\x00y\x00,\x00n\x00\n\x001\x00,\x002\x00,\x003\x00"), uint8(0), uint8(2), "1", true)
+	f.Add([]byte("\x1f\x8b\x08\x00\x00"), uint8(4), uint8(2), "1", false)
+	f.Fuzz(func(t *testing.T, text []byte, separator, rules uint8, mark string, packed bool) {
+		format := Format{Separator: []rune{0, ',', ';', '\t', '|', '¦'}[separator%6], DecimalComma: rules&4 > 0,
+			BelowLimit: BelowLimit(rules % 4), Missing: []string{mark}}
+		file := string(text)
+		if packed {
+			file = zipped(t, file)
+		}
+		for _, kind := range []Kind{Measure, Count} {
+			want := Request{Response: "n", Kind: kind, Category: []string{"soil"}, Keep: []string{"x"}, Linear: []string{"y"}, Format: format}
+			if rules&8 > 0 {
+				want.Category = nil
+			}
+			table, err := ReadCSV(strings.NewReader(file), "f.csv", want)
+			if err == nil {
+				checkTable(t, table, want)
+			} else if s := err.Error() + hint(err); table != nil || !utf8.ValidString(s) || strings.ContainsAny(s, "\n\r\x00") {
+				t.Fatalf("refused with %q and table %v", s, table)
+			}
+			shared, wholeErr := WholeAs(strings.NewReader(file), "f.csv", format)
+			if wholeErr != nil {
+				if err == nil {
+					t.Fatalf("ReadCSV took what WholeAs refuses: %v", wholeErr)
+				}
+				continue
+			}
+			part, partErr := ReadPart(shared.All(), want)
+			if diff := cmp.Diff(message(err), message(partErr)) + cmp.Diff(table, part); diff != "" {
+				t.Fatalf("(-ReadCSV +ReadPart):\n%s", diff)
+			}
+		}
 	})
 }
 

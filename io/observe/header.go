@@ -1,7 +1,6 @@
 package observe
 
 import (
-	"encoding/csv"
 	"fmt"
 	"io"
 	"math"
@@ -14,10 +13,11 @@ type header struct {
 	source string
 	line   int
 	names  []string
+	origin *origin
 }
 
 // readHeader reads the names.
-func readHeader(in *csv.Reader, source string) (header, error) {
+func readHeader(in *text, source string) (header, error) {
 	record, err := in.Read()
 	if err == io.EOF {
 		return header{}, emptyFile(source)
@@ -26,7 +26,7 @@ func readHeader(in *csv.Reader, source string) (header, error) {
 		return header{}, readError(source, err)
 	}
 	line, _ := in.FieldPos(0)
-	return newHeader(record, line, source)
+	return newHeader(record, line, in.origin)
 }
 
 func emptyFile(source string) error {
@@ -40,21 +40,22 @@ func (h header) noRows() error {
 
 // newHeader takes the names from the first record, which starts on the given line. Blank names are let pass:
 // spreadsheets leave them, and nobody can ask for one.
-func newHeader(record []string, line int, source string) (header, error) {
-	h := header{source: source, line: line, names: make([]string, len(record))}
+func newHeader(record []string, line int, from *origin) (header, error) {
+	source := from.source
+	h := header{source: source, line: line, names: make([]string, len(record)), origin: from}
 	first := map[string]int{}
 	numbers := 0
 	for i, field := range record {
 		name := strings.TrimSpace(field)
 		if !clean(name) {
-			return header{}, &Error{File: source, Line: line, What: fmt.Sprintf("the name of column %d is not UTF-8 text", i+1), Advice: adviceText}
+			return header{}, &Error{File: source, Line: line, What: fmt.Sprintf("the name of column %d is %s", i+1, from.notText(name)), Advice: adviceText}
 		}
 		if at, seen := first[name]; seen && name != "" {
 			return header{}, &Error{File: source, Line: line, Column: name, Advice: "give each column a name of its own",
 				What: fmt.Sprintf("the name appears twice, as columns %d and %d", at+1, i+1)}
 		}
 		first[name] = i
-		if _, fault := parseNumber(name); fault == "" {
+		if _, fault := parseNumber(name); fault == "" || hasDecimalComma(name) {
 			numbers++
 		}
 		h.names[i] = strings.Clone(name)
@@ -70,7 +71,7 @@ func newHeader(record []string, line int, source string) (header, error) {
 func (h header) checkRecord(record []string, here Error) error {
 	if len(record) != len(h.names) {
 		here.What = fmt.Sprintf("%d fields where the header has %d", len(record), len(h.names))
-		here.Advice = "check the line for a missing comma, or for one that belongs inside quotes"
+		here.Advice = fmt.Sprintf("check the line for a missing %s, or for one that belongs inside quotes", separatorWord(h.origin.separator))
 		return &here
 	}
 	if here.Line > math.MaxInt32 {
@@ -80,7 +81,7 @@ func (h header) checkRecord(record []string, here Error) error {
 	for i, s := range record {
 		if !clean(s) {
 			here.Column, here.Value = h.names[i], shorten(s)
-			here.What, here.Advice = fmt.Sprintf("%q is not UTF-8 text", here.Value), adviceText
+			here.What, here.Advice = fmt.Sprintf("%q is %s", here.Value, h.origin.notText(s)), adviceText
 			return &here
 		}
 	}

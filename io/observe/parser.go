@@ -8,13 +8,14 @@ import (
 
 // parser reads single records out of memory, by the rules of every table.
 type parser struct {
-	lines lines
-	in    *csv.Reader // over lines
+	lines     lines
+	in        *csv.Reader // over lines
+	separator []byte
 }
 
-func newParser() *parser {
-	p := &parser{}
-	p.in = newCSV(&p.lines)
+func newParser(separator rune) *parser {
+	p := &parser{separator: []byte(string(separator))}
+	p.in = newCSV(&p.lines, separator)
 	return p
 }
 
@@ -31,9 +32,9 @@ func (p *parser) parse(text []byte, after error) (fields []string, size int, err
 func (p *parser) field(record []byte, at int) ([]byte, error) {
 	rest := record
 	for i := 0; ; i++ {
-		field, behind, _ := bytes.Cut(rest, comma)
+		field, behind, _ := bytes.Cut(rest, p.separator)
 		if bytes.IndexByte(field, '"') >= 0 {
-			break // commas may stand within quotes
+			break // separators may stand within quotes
 		}
 		if i == at {
 			return bytes.TrimSpace(field), nil
@@ -46,8 +47,6 @@ func (p *parser) field(record []byte, at int) ([]byte, error) {
 	}
 	return bytes.TrimSpace([]byte(fields[at])), nil
 }
-
-var comma = []byte(",")
 
 // lines gives text line by line. A buffer above it asks for more only when it has no whole line, so it never holds
 // anything beyond the line at hand, and the text can be exchanged between records.

@@ -65,8 +65,8 @@ func (p Part) row(i int) int {
 }
 
 // SHA256 returns the checksum, in hexadecimal, of a file that holds the header and the rows of the part as they stand
-// in the table, without its byte order mark and blank lines and with a line feed at the end of each record. It does
-// not depend on where the rows stand or on the rows of other parts.
+// in the table, in UTF-8 without a byte order mark and blank lines and with a line feed at the end of each record. It
+// does not depend on where the rows stand or on the rows of other parts.
 func (p Part) SHA256() string {
 	sum := sha256.New()
 	sum.Write(p.shared.head)
@@ -91,7 +91,7 @@ func (p Part) Check(want Request) error {
 
 // ReadPart reads the rows of a part as ReadCSV would read a file that held nothing else below the header, but every
 // line and row in the table, its rows set aside and errors is that of the whole file. Table.Rows is the number of
-// rows in the part. A part without rows is refused.
+// rows in the part. The format is that of the table, whatever the request says. A part without rows is refused.
 func ReadPart(p Part, want Request) (*Table, error) {
 	if err := p.Check(want); err != nil {
 		return nil, err
@@ -99,7 +99,7 @@ func ReadPart(p Part, want Request) (*Table, error) {
 	if p.Rows == 0 {
 		return nil, &Error{File: p.shared.header.source, What: "none of its rows are left to read"}
 	}
-	return readTable(p.shared.header, want, &scattered{part: p, parser: newParser()})
+	return readTable(p.shared.header, want, &scattered{part: p, parser: newParser(p.shared.header.origin.separator)})
 }
 
 // scattered gives the records of a part, wherever they stand.

@@ -42,6 +42,7 @@ type Request struct {
 	Optional    []string // categories that the table need not have: where it has the column, it is one of Category
 	Keep        []string // text to carry along; may be missing, is never a reason to set a row aside
 	Strict      bool     // refuse the first row that cannot be used instead of setting it aside
+	Format      Format   // how the table is written; ReadPart goes by the format that WholeAs was given
 }
 
 // Validate reports the first thing about a request that no table could satisfy. ReadCSV calls it.
@@ -59,6 +60,9 @@ func (q Request) Validate() error {
 		return &Error{Column: q.Denominator, What: "a number positive has trials and takes no other denominator"}
 	case (q.X == "") != (q.Y == ""):
 		return &Error{Column: q.X + q.Y, What: "one coordinate column is named without the other", Advice: adviceXY}
+	}
+	if err := q.Format.Validate(); err != nil {
+		return err
 	}
 	return q.overlap()
 }

@@ -18,8 +18,8 @@ type scanner struct {
 	parser *parser
 }
 
-func newScanner(source string) *scanner {
-	return &scanner{shared: &Shared{header: header{source: source}}, line: 1, parser: newParser()}
+func newScanner(from *origin) *scanner {
+	return &scanner{shared: &Shared{header: header{source: from.source, origin: from}}, line: 1, parser: newParser(from.separator)}
 }
 
 // block takes the next block and what comes after it, as blocks.next gives them.
@@ -80,7 +80,7 @@ func (s *scanner) readHeader(text []byte, after error) (int, error) {
 		return 0, err
 	}
 	s.shared.head = content(text[:size])
-	s.shared.header, err = newHeader(fields, s.line, s.shared.header.source)
+	s.shared.header, err = newHeader(fields, s.line, s.shared.header.origin)
 	return size, err
 }
 
@@ -101,7 +101,7 @@ func (s *scanner) checkRow(text, line []byte, after error) (int, error) {
 // isPlain reports whether a line is a whole record without quotes that checkRecord has nothing against.
 func (s *scanner) isPlain(line []byte, after error) bool {
 	whole := line[len(line)-1] == '\n' || after == io.EOF
-	return whole && bytes.IndexByte(line, '"') < 0 && bytes.Count(line, comma)+1 == len(s.shared.header.names) &&
+	return whole && bytes.IndexByte(line, '"') < 0 && bytes.Count(line, s.parser.separator)+1 == len(s.shared.header.names) &&
 		utf8.Valid(line) && bytes.IndexByte(line, 0) < 0 && s.line <= math.MaxInt32
 }
 

@@ -7,7 +7,7 @@ import (
 )
 
 // Shared is a table held in memory as it stands in its file, for parts of it to be read one by one or at the same
-// time: it does not change. It takes the bytes of the file once and 12 bytes a row.
+// time: it does not change. It takes the bytes of the text in UTF-8 once and 12 bytes a row.
 type Shared struct {
 	header header
 	head   []byte // the header as it stands in the file, without the end of its line
@@ -32,15 +32,23 @@ type span struct {
 // Whole reads a table to its end. It takes the same files as ReadCSV, and refuses with the same *Error what ReadCSV
 // refuses whatever the request is: a file that is no such text, quotes out of place, a name that appears twice, a row
 // of the wrong length, no rows at all. What a row holds is looked at by ReadPart.
-func Whole(r io.Reader, source string) (*Shared, error) {
-	from := &blocks{from: newBounded(r, source), size: headSize}
-	text, after := from.next()
-	mark, err := checkHead(text[:min(len(text), headSize)], after, source)
+func Whole(r io.Reader, source string) (*Shared, error) { return WholeAs(r, source, Format{}) }
+
+// WholeAs is Whole for a table that is written in the given format.
+func WholeAs(r io.Reader, source string, format Format) (*Shared, error) {
+	if err := format.Validate(); err != nil {
+		return nil, inFile(err, source)
+	}
+	decoded, origin, err := openOrigin(r, source, format)
 	if err != nil {
 		return nil, err
 	}
-	text = text[mark:]
-	scan := newScanner(source)
+	from := &blocks{from: newBounded(decoded, origin), size: headSize}
+	text, after := from.next()
+	if err := origin.look(text[:min(len(text), headSize)], after); err != nil {
+		return nil, err
+	}
+	scan := newScanner(origin)
 	for {
 		if err := scan.block(text, after); err != nil {
 			return nil, err

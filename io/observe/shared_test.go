@@ -82,7 +82,7 @@ func checkAgainst(t *testing.T, shared *Shared, err error, want plainRead) {
 	}
 	var got plainRead
 	got.names = shared.Columns()
-	p := newParser()
+	p := newParser(shared.header.origin.separator)
 	for i := range shared.rows {
 		text, line := shared.row(i)
 		var fields []string

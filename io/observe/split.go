@@ -10,7 +10,7 @@ type Unnamed struct {
 }
 
 // Split returns one part for each value of a column, in the order in which the values first appear. Blanks around a
-// value do not count, capitals do. Rows in which the value is missing (nothing, NA, NaN, null) belong to no part and
+// value do not count, capitals do. Rows in which the value is missing (nothing, NA, NaN, null, a mark of the format) belong to no part and
 // are reported; if none has a value, there are no parts. An *Error is returned for a column that is absent.
 func (s *Shared) Split(column string) ([]Part, Unnamed, error) {
 	if column == "" {
@@ -21,7 +21,7 @@ func (s *Shared) Split(column string) ([]Part, Unnamed, error) {
 	if err != nil {
 		return nil, Unnamed{}, err
 	}
-	d := deal{shared: s, numbers: map[string]int32{}, of: make([]int32, 0, s.rows), parser: newParser()}
+	d := deal{shared: s, numbers: map[string]int32{}, of: make([]int32, 0, s.rows), parser: newParser(s.header.origin.separator)}
 	for i := range s.blocks {
 		if err := d.block(&s.blocks[i], at); err != nil {
 			return nil, Unnamed{}, err
@@ -67,7 +67,7 @@ func (d *deal) block(b *block, at int) error {
 // add starts the part of a value not met before, unless it is missing.
 func (d *deal) add(value string) int32 {
 	number := int32(-1)
-	if !missing(value) {
+	if !d.shared.header.origin.format.isMissing(value) {
 		number = int32(len(d.parts))
 		d.parts = append(d.parts, Part{Name: value, shared: d.shared})
 	}

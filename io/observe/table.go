@@ -22,6 +22,11 @@ type Table struct {
 	Recognised   bool     // the coordinate columns were found by their names, not named by the user
 	PassedOver   []string // recognised pairs that were present but not used, such as "x/y"
 
+	Separator rune   // what stands between the columns, named or found
+	Encoding  string // of the text: "UTF-8", "UTF-16 LE", "UTF-16 BE" or "Windows-1252"
+
+	BelowLimit []BelowCount // columns with values below a detection limit that a rule took care of, in the order of the checks
+
 	Rows  int     // rows in the source, kept or not
 	Aside []Aside // rows left out, in the order of the source
 }
@@ -33,6 +38,13 @@ type Column struct {
 	Number []float64 // finite values
 	Code   []int32   // index into Level; -1 where a column that is only kept (Request.Keep) has no value
 	Level  []string  // distinct values of the kept rows, sorted by their bytes
+}
+
+// BelowCount says how many values of a column are below a detection limit, and what became of them.
+type BelowCount struct {
+	Column string
+	Rows   int        // kept rows in which the rule stands for the value; with AsideLimit rows set aside for it
+	Rule   BelowLimit // HalfLimit, AtLimit or AsideLimit
 }
 
 // Aside is a row that was left out.
@@ -116,7 +128,7 @@ func (t *Table) sortLevels() {
 }
 
 // Append adds the kept rows of another table that was read with the same request, such as those of a neighbouring
-// region. Levels are merged and sorted. Rows and Aside stay those of t, and Line and Row of the added rows are those
+// region. Levels are merged and sorted. Rows, Aside, BelowLimit and how the source is written stay those of t, and Line and Row of the added rows are those
 // of the source of other. It is an error, and t stays as it is, if only one of the two is in degrees or their columns
 // differ. Append does not change other and shares nothing with it.
 func (t *Table) Append(other *Table) error {

@@ -2,16 +2,20 @@ package observe
 
 import (
 	"bufio"
-	"bytes"
 	"encoding/csv"
 	"errors"
 	"fmt"
 	"io"
+	"unicode"
+	"unicode/utf8"
 )
 
 // maxRecord bounds one record, and with it the memory that a quote left open can take: everything up to the next
 // quote belongs to one field.
 const maxRecord = 1 << 20
+
+// maxColumns bounds the columns of one record: each takes some 200 bytes while the record is read, however empty it is.
+const maxColumns = 1 << 16
 
 const (
 	adviceText  = "save the table as CSV in UTF-8, with commas between the columns"
@@ -22,103 +26,79 @@ const (
 // headSize is how much of a file is looked at to tell what it is.
 const headSize = 1 << 16
 
-// openText looks at the start of r, refuses what is not comma-separated UTF-8 text, and returns a reader of records
-// standing at the header.
-func openText(r io.Reader, source string) (*csv.Reader, error) {
-	buffered := bufio.NewReaderSize(newBounded(r, source), headSize)
-	head, err := buffered.Peek(headSize)
-	mark, err := checkHead(head, err, source)
+// text gives the records of a file, the header first.
+type text struct {
+	*csv.Reader
+	origin *origin
+}
+
+// openText opens a table that is written in a way to be found out.
+func openText(r io.Reader, source string) (*text, error) { return openTextAs(r, source, Format{}) }
+
+// openTextAs looks at the start of r and refuses what is not a text in columns.
+func openTextAs(r io.Reader, source string, format Format) (*text, error) {
+	decoded, from, err := openOrigin(r, source, format)
 	if err != nil {
 		return nil, err
 	}
-	buffered.Discard(mark) // cannot fail: the bytes are in the buffer
-	return newCSV(buffered), nil
+	buffered := bufio.NewReaderSize(newBounded(decoded, from), headSize)
+	head, err := buffered.Peek(headSize)
+	if err := from.look(head, err); err != nil {
+		return nil, err
+	}
+	return &text{newCSV(buffered, from.separator), from}, nil
 }
 
-// checkHead looks at the first headSize bytes of a file, or at those that came before err, and refuses what is not
-// comma-separated UTF-8 text. It returns the length of the byte order mark, which may be 0.
-func checkHead(head []byte, err error, source string) (int, error) {
+// look finds the separator by the first headSize bytes of the text, or by those that came before err.
+func (o *origin) look(head []byte, err error) error {
 	if err != nil && err != io.EOF && len(head) == 0 {
-		return 0, readError(source, err)
+		return readError(o.source, err)
 	}
-	if what, advice := notText(head); what != "" {
-		return 0, &Error{File: source, What: what, Advice: advice}
+	if outsideQuotes(headerLine(head))['\r'] > 0 {
+		return &Error{File: o.source, What: "the lines end in carriage returns alone, which are not read", Advice: adviceText}
 	}
-	text := bytes.TrimPrefix(head, []byte("\xef\xbb\xbf"))
-	if what := notCommas(text); what != "" {
-		return 0, &Error{File: source, What: what, Advice: adviceText}
-	}
-	return len(head) - len(text), nil
+	o.separator, err = o.format.separator(head, o.source)
+	return err
 }
 
 // newCSV returns a reader of records by the rules of the package: those of every table, however it is read.
-func newCSV(r io.Reader) *csv.Reader {
+func newCSV(r io.Reader, separator rune) *csv.Reader {
 	in := csv.NewReader(r)
+	in.Comma = separator
 	in.FieldsPerRecord = -1 // counted by checkRecord, which can say how many there should be
 	in.ReuseRecord = true
-	in.TrimLeadingSpace = true // or a quote after ", " would be an error; values are trimmed in any case
+	// Or a quote after ", " would be an error; values are trimmed in any case. The reader takes leading tabs for blanks
+	// even where they separate columns.
+	in.TrimLeadingSpace = !unicode.IsSpace(separator)
 	return in
 }
 
-// notText names a file that is something other than text, by its first bytes.
-func notText(head []byte) (what, advice string) {
-	starts := func(mark string) bool { return bytes.HasPrefix(head, []byte(mark)) }
-	switch {
-	case len(head) == 0:
-		return "the file is empty", adviceWhole
-	case starts("\xff\xfe") || starts("\xfe\xff"), len(head) > 1 && (head[0] == 0) != (head[1] == 0):
-		return "the file is UTF-16 text, and only UTF-8 is read", adviceText
-	case starts("PK\x03\x04"):
-		return "the file is a spreadsheet or a zip archive, not a CSV table", adviceText
-	case starts("\x1f\x8b"):
-		return "the file is compressed with gzip", "unpack it first"
-	case bytes.IndexByte(head, 0) >= 0:
-		return "the file holds NUL bytes, so it is not text", adviceText
-	}
-	return "", ""
-}
-
-// notCommas looks at the first line that is not blank and names a separator or a line end that is not read.
-func notCommas(head []byte) string {
-	head = bytes.TrimLeft(head, " \r\n")
-	end := bytes.IndexByte(head, '\n')
-	if end < 0 {
-		end = len(head)
-	}
-	line := bytes.TrimRight(head[:end], "\r")
-	count := map[byte]int{}
-	quoted := false
-	for _, c := range line {
-		if c == '"' {
-			quoted = !quoted
-		} else if !quoted {
-			count[c]++
-		}
-	}
-	switch {
-	case count['\r'] > 0:
-		return "the lines end in carriage returns alone, which are not read"
-	case count[';'] > count[',']:
-		return "the columns are separated by semicolons, and only commas are read"
-	case count['\t'] > count[',']:
-		return "the columns are separated by tabs, and only commas are read"
-	}
-	return ""
-}
-
-// bounded passes bytes on until one record grows beyond maxRecord. It counts quotes as the CSV reader does for a
+// bounded passes bytes on until one record grows beyond maxRecord or maxColumns. It counts quotes as the CSV reader does for a
 // file it accepts; where a stray quote makes the two differ, the CSV reader has an error of its own.
 type bounded struct {
 	from        io.Reader
 	source      string
 	line, start int // line being read, and line on which the record started
 	size        int // bytes of the record so far
+	columns     int // of the record so far, behind the first
+	separates   [256]bool
 	quoted      bool
 	err         error // kept: a buffer above may ask again
 }
 
-func newBounded(r io.Reader, source string) *bounded {
-	return &bounded{from: r, source: source, line: 1, start: 1}
+// newBounded returns the bounded text of a table. Where the separator is still to be found, all that it may be count.
+func newBounded(r io.Reader, from *origin) *bounded {
+	b := &bounded{from: r, source: from.source, line: 1, start: 1}
+	separators := []rune{from.format.Separator}
+	if from.format.Separator == 0 {
+		separators = found
+	}
+	for _, c := range separators {
+		if c < utf8.RuneSelf { // others take more bytes a column
+			b.separates[c] = true
+		}
+	}
+	return b
 }
 
 // Read passes on what from gives.
@@ -135,11 +115,15 @@ func (b *bounded) Read(p []byte) (int, error) {
 		case '\n':
 			b.line++
 			if !b.quoted {
-				b.size, b.start = 0, b.line
+				b.size, b.columns, b.start = 0, 0, b.line
 				continue
 			}
+		default:
+			if b.separates[c] && !b.quoted {
+				b.columns++
+			}
 		}
-		if b.size++; b.size > maxRecord {
+		if b.size++; b.size > maxRecord || b.columns >= maxColumns {
 			b.err = b.tooLong()
 			return i, b.err
 		}
@@ -150,7 +134,10 @@ func (b *bounded) Read(p []byte) (int, error) {
 func (b *bounded) tooLong() error {
 	e := &Error{File: b.source, Line: b.start, Advice: adviceWhole,
 		What: fmt.Sprintf("the line is longer than %d bytes, the most that is read", maxRecord)}
-	if b.quoted {
+	switch {
+	case b.columns >= maxColumns:
+		e.What = fmt.Sprintf("the line has more than %d columns, the most that is read", maxColumns)
+	case b.quoted:
 		e.What = fmt.Sprintf("a quoted field is not closed within %d bytes", maxRecord)
 		e.Advice = adviceQuote
 	}

@@ -1,6 +1,7 @@
 package plan
 
 import (
+	"slices"
 	"strconv"
 	"strings"
 	"unicode"
@@ -73,19 +74,39 @@ func (b *Batch) alike(how laying) (Settings, error) {
 	return laid.settings, laid.err
 }
 
-// resolve lays the words of one region over the defaults.
+// mayGiveWay are the words that shape a lattice or a surface: a region that has none of the kind has no use for them.
+var mayGiveWay = []string{"cell-size", "cells-across", "within", "zones", "zone-name", "max-knots", "surface-per", "surface-smoothness", "shrink"}
+
+// resolve lays the words of one region over the defaults. A default that shapes what its own words rule out, such as
+// cells_across beside at, gives way; one that other defaults rule out does not.
 func (b *Batch) resolve(n *Named, name, observations, dir string) (Settings, error) {
-	s := n.Settings.Over(b.Defaults)
-	s.Observations = &observations
-	s, err := s.RelativeTo(dir).Resolve()
-	if err != nil {
-		return Settings{}, b.impossible(n, err.(*Error))
+	defaults := b.Defaults
+	for {
+		s := n.Settings.Over(defaults)
+		s.Observations = &observations
+		s, err := s.RelativeTo(dir).Resolve()
+		if err == nil {
+			if n.Settings.Title == nil {
+				s.Choose("title", b.title(s, name), titleWhy)
+			}
+			return s, nil
+		}
+		blamed, _ := Lookup(err.(*Error).Word)
+		if !n.differs() || !slices.Contains(mayGiveWay, blamed.Name) || !blamed.saidIn(&defaults) || blamed.saidIn(&n.Settings) || !b.suitTogether(dir) {
+			return Settings{}, b.impossible(n, err.(*Error))
+		}
+		blamed.copy(&defaults, &Settings{})
 	}
-	if n.Settings.Title == nil {
-		s.Choose("title", b.title(s, name), titleWhy)
-	}
-	return s, nil
 }
+
+// suitTogether reports whether the defaults can be meant without a region's own words.
+func (b *Batch) suitTogether(dir string) bool {
+	_, err := b.alike(laying{dir: dir})
+	return err == nil
+}
+
+// saidIn reports whether settings have the word; a word that there is not is in none.
+func (w Word) saidIn(s *Settings) bool { return w.filled != nil && w.filled(s) }
 
 // title is that of a region which says none itself.
 func (b *Batch) title(s Settings, name string) string {

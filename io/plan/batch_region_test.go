@@ -289,3 +289,29 @@ func BenchmarkRegion(b *testing.B) {
 		})
 	}
 }
+
+// TestDefaultsGiveWay: a region's own words win over the defaults that they rule out. What is ruled out by another
+// default, or by the region's own words among themselves, is refused as ever.
+func TestDefaultsGiveWay(t *testing.T) {
+	const plan = source + "[defaults]\nresponse = 'cases'\npeople = 'n'\nper = 1000\ncells_across = 50\nmax_knots = 40\nzones = 'z.geojson'\nzone_name = 'zone'\n"
+	b := read(t, plan+"[region.A]\nat = 'posts.csv'\n[region.B]\nsurface = 'none'\n[region.C]\nat = 'posts.csv'\ncell_size = 5\n[region.D]\ntitle = 'D'\nmax_knots = 30")
+	a, err := b.Region("A", "a.csv", ".")
+	if err != nil || *a.At != "posts.csv" || a.Said("cells-across") || a.Zones != nil || a.ZoneName != nil || !a.Said("max-knots") {
+		t.Errorf("with places of its own: %v, %+v", err, a)
+	}
+	without, err := b.Region("B", "b.csv", ".")
+	if err != nil || *without.Surface != NoSurface || without.Said("max-knots") || !without.Said("cells-across") || without.Zones == nil {
+		t.Errorf("without a surface: %v, %+v", err, without)
+	}
+	if _, err := b.Region("C", "c.csv", "."); err == nil || !strings.Contains(err.Error(), "cell_size") {
+		t.Errorf("its own words against each other: %v", err)
+	}
+	other, err := b.Region("D", "d.csv", ".")
+	if err != nil || other.Zones == nil || other.MaxKnots.N != 30 || *other.CellsAcross != 50 {
+		t.Errorf("nothing is ruled out: %v, %+v", err, other)
+	}
+	b = read(t, source+"[defaults]\nresponse = 'cases'\nper = 1000\n[region.A]\nmax_knots = 9")
+	if _, err := b.Region("A", "a.csv", "."); err == nil || !strings.Contains(err.Error(), "per") {
+		t.Errorf("defaults that cannot be meant: %v", err)
+	}
+}

@@ -90,13 +90,13 @@ func TestFormsOfWords(t *testing.T) {
 	for _, w := range Words() {
 		want := asText
 		switch w.Name {
-		case "strict", "shrink", "test-variation", "force", "quiet":
+		case "strict", "decimal-comma", "shrink", "test-variation", "force", "quiet":
 			want = asTruth
 		case "shape", "cell-size", "cells-across", "threshold", "per", "confidence", "seed", "workers":
 			want = asNumber
 		case "max-knots", "smoothness", "reference":
 			want = asNumber | asText
-		case "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
+		case "missing", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
 			want = asList | asText
 		}
 		if w.takes != want {

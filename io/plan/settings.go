@@ -13,6 +13,10 @@ type Settings struct {
 	Response     *string // column
 	X, Y         *string // columns with the coordinates
 	CRS          *string // what the coordinates are in
+	Separator    *string // Comma, Semicolon, Tab or Pipe
+	DecimalComma *bool
+	Missing      []string // marks beside the usual ones
+	BelowLimit   *string  // HalfLimit, AtLimit or AsideLimit
 
 	People   *string // column
 	Area     *string // column

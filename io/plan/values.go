@@ -14,6 +14,15 @@ const (
 	Hectares         = "ha"
 	SquareKilometres = "km2"
 
+	Comma     = "comma"
+	Semicolon = "semicolon"
+	Tab       = "tab"
+	Pipe      = "pipe"
+
+	HalfLimit  = "half"
+	AtLimit    = "limit"
+	AsideLimit = "aside"
+
 	Gaussian         = "gaussian"
 	Poisson          = "poisson"
 	NegativeBinomial = "negative-binomial"

@@ -20,7 +20,7 @@ var sample = map[string]string{
 	"at": "places.csv", "within": "edge.geojson", "zones": "zones.geojson", "zone-name": "name",
 	"hold": "depth, in cm=-3.5", "threshold": "-3", "per": "100000", "unit-label": "stems per ha",
 	"confidence": "0.9", "reference": "overall", "title": "Stems", "seed": "42", "workers": "3",
-	"write": "csv,saved", "strict": "true", "force": "true", "quiet": "true",
+	"write": "csv,saved", "strict": "true", "separator": "pipe", "decimal-comma": "true", "missing": "-99", "below-limit": "half", "force": "true", "quiet": "true",
 }
 
 // snake turns the name of a field into a key: MaxKnots to max_knots, CRS to crs.
@@ -80,7 +80,7 @@ func TestWordsAreComplete(t *testing.T) {
 		if _, ok := sample[w.Name]; !ok {
 			t.Errorf("%s has no sample", w.Name)
 		}
-		if w.Flag() != (w.Name == "strict" || w.Name == "shrink" || w.Name == "test-variation" || w.Name == "force" || w.Name == "quiet") {
+		if w.Flag() != (w.Name == "strict" || w.Name == "decimal-comma" || w.Name == "shrink" || w.Name == "test-variation" || w.Name == "force" || w.Name == "quiet") {
 			t.Errorf("%s: stands alone: %v", w.Name, w.Flag())
 		}
 	}

@@ -69,7 +69,16 @@ type Input struct {
 	SetAside       map[string]int `json:"set_aside"` // rows by reason
 	DistinctPlaces int            `json:"distinct_places"`
 	MedianSpacing  Number         `json:"median_spacing_m"`
-	Coordinates    string         `json:"coordinates"` // which columns, and how they were taken
+	Coordinates    string         `json:"coordinates"`      // which columns, and how they were taken
+	Format         string         `json:"format,omitempty"` // how the table is written, where that is not with commas in UTF-8
+	BelowLimit     []BelowLimit   `json:"below_limit,omitempty"`
+}
+
+// BelowLimit counts the values of a column that are below a detection limit.
+type BelowLimit struct {
+	Column string `json:"column"`
+	Rows   int    `json:"rows"`
+	Rule   string `json:"rule"` // what became of them: half, limit or aside
 }
 
 // Region is what a batch adds: whose rows these are, and the figures by which regions are compared.

@@ -123,7 +123,7 @@ func (b *Batch) findShared(ctx context.Context) error {
 	if err := b.checkFile(b.in(b.plan.File), func() (section, key string) { return "regions", "file" }); err != nil {
 		return err
 	}
-	shared, err := pipeline.ReadShared(ctx, b.in(b.plan.File))
+	shared, err := pipeline.ReadShared(ctx, b.plan.Defaults, b.in(b.plan.File))
 	if err != nil {
 		return err
 	}

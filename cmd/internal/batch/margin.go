@@ -94,7 +94,11 @@ func (r *runner) rowsOf(ctx context.Context, i int) (observe.Part, error) {
 	if g.rows != nil {
 		return *g.rows, nil
 	}
-	shared, err := pipeline.ReadShared(ctx, r.in(g.observations))
+	s, err := r.settings(g)
+	if err != nil {
+		return observe.Part{}, err
+	}
+	shared, err := pipeline.ReadShared(ctx, s, r.in(g.observations))
 	if err != nil {
 		return observe.Part{}, err
 	}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"drumlin/io/observe"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -220,6 +221,9 @@ func (z *zoneResults) covering() summary.Check {
 	return c
 }
 
+// standsIn says what stands for a value below a detection limit.
+var standsIn = map[observe.BelowLimit]string{observe.HalfLimit: "half of it", observe.AtLimit: "the limit"}
+
 // cautions tell what the reader of the map must know.
 func (r *run) cautions() []string {
 	s := r.settings
@@ -236,6 +240,11 @@ func (r *run) cautions() []string {
 			"Where people or protected species depend on it, follow local rules and have the survey design checked by a qualified person.")
 	default:
 		list = append(list, "Not for decisions on safety or health without the checks that local rules and licensed practice ask for.")
+	}
+	for _, b := range r.obs.table.BelowLimit {
+		if stands, ok := standsIn[b.Rule]; ok {
+			list = append(list, fmt.Sprintf("Of %s, %d values are below a detection limit; %s stands for them, which narrows the limits.", b.Column, b.Rows, stands))
+		}
 	}
 	if s.Reference != nil {
 		list = append(list, "The reference level is taken as known: its own error is not in the limits.")

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -20,6 +21,10 @@ func (r *run) describe() {
 	for _, a := range o.table.Aside {
 		d.Input.SetAside[a.Code]++
 	}
+	d.Input.Format = o.written()
+	for _, b := range o.table.BelowLimit {
+		d.Input.BelowLimit = append(d.Input.BelowLimit, summary.BelowLimit{Column: b.Column, Rows: b.Rows, Rule: b.Rule.String()})
+	}
 	for _, e := range r.settings.Effective() {
 		d.Settings = append(d.Settings, summary.Setting{Key: e.Key, Value: e.Value, Chosen: e.Why})
 	}
@@ -35,6 +40,19 @@ func (r *run) describe() {
 	d.Region = r.describeRegion()
 	d.Checks = r.checks()
 	d.Cautions = r.cautions()
+}
+
+// written says how the table is written, where it is not as it usually is.
+func (o *observations) written() string {
+	var parts []string
+	between := map[rune]string{';': "semicolons", '\t': "tabs", '|': "bars"}[o.table.Separator]
+	if between != "" {
+		parts = append(parts, between+" between the columns")
+	}
+	if o.table.Encoding != "UTF-8" {
+		parts = append(parts, o.table.Encoding+" text")
+	}
+	return strings.Join(parts, ", ")
 }
 
 func (r *run) describeTarget() summary.Lattice {

@@ -133,7 +133,7 @@ func withinReach(t *observe.Table, response, distribution string) error {
 func (r *run) request() (observe.Request, error) {
 	s := r.settings
 	want := observe.Request{Response: *s.Response, Kind: observe.Measure, Linear: allCovariates(s, plan.Settings.Numbers),
-		Category: allCovariates(s, everyCategory), Strict: *s.Strict}
+		Category: allCovariates(s, everyCategory), Strict: *s.Strict, Format: format(s)}
 	switch *s.Distribution {
 	case plan.Poisson, plan.NegativeBinomial:
 		want.Kind = observe.Count
@@ -151,6 +151,18 @@ func (r *run) request() (observe.Request, error) {
 	var err error
 	want.Axes, err = axes(s)
 	return want, err
+}
+
+// format says how the tables are written, as far as the settings do.
+func format(s plan.Settings) observe.Format {
+	f := observe.Format{Missing: s.Missing, DecimalComma: s.DecimalComma != nil && *s.DecimalComma}
+	if s.Separator != nil {
+		f.Separator = map[string]rune{plan.Comma: ',', plan.Semicolon: ';', plan.Tab: '\t', plan.Pipe: '|'}[*s.Separator]
+	}
+	if s.BelowLimit != nil {
+		f.BelowLimit = map[string]observe.BelowLimit{plan.HalfLimit: observe.HalfLimit, plan.AtLimit: observe.AtLimit, plan.AsideLimit: observe.AsideLimit}[*s.BelowLimit]
+	}
+	return f
 }
 
 // axes says what the coordinates are, as far as --crs does.
@@ -299,14 +311,15 @@ func distinctPlaces(at spatial.Places) (x, y []float64) {
 	return x, y
 }
 
-// ReadShared reads a whole table into memory, for several regions to take their rows from.
-func ReadShared(ctx context.Context, path string) (*observe.Shared, error) {
+// ReadShared reads a whole table into memory, for several regions to take their rows from. The settings say how it is
+// written; nothing else in them is looked at.
+func ReadShared(ctx context.Context, s plan.Settings, path string) (*observe.Shared, error) {
 	f, err := openFile(path)
 	if err != nil {
 		return nil, err
 	}
 	defer f.Close()
-	return observe.Whole(&stoppable{ctx: ctx, from: f}, filepath.Base(path))
+	return observe.WholeAs(&stoppable{ctx: ctx, from: f}, filepath.Base(path), format(s))
 }
 
 // CheckColumns refuses settings that name columns which a table does not have, before any row of it is read.
