@@ -45,7 +45,7 @@ type command struct {
 }
 
 func (p program) commands() []command {
-	return []command{p.mapCommand(), p.batchCommand(), p.reuseCommand(), p.demoCommand()}
+	return []command{p.mapCommand(), p.batchCommand(), p.inspectCommand(), p.reuseCommand(), p.demoCommand()}
 }
 
 // dispatch finds the command and has it carried out. Called with nothing, the program

@@ -237,7 +237,7 @@ func TestUsage(t *testing.T) {
 		{"out is where we are", "map ../w.csv --response zn --out . --force", "--out . is the current folder or one above it\nhint: name a folder of its own for the output"},
 		{"demo where we are", "demo --out .. --force", "--out .. is the current folder or one above it\nhint: name a folder of its own for the output"},
 		{"unknown command", "mpa w.csv", "unknown command \"mpa\"\nhint: did you mean drumlin map?"},
-		{"command like none", "kriging w.csv", "unknown command \"kriging\"\nhint: the commands are map, batch, reuse, demo"},
+		{"command like none", "kriging w.csv", "unknown command \"kriging\"\nhint: the commands are map, batch, inspect, reuse, demo"},
 		{"flag before the command", "--quiet map w.csv", "unknown flag --quiet before a command\nhint: flags stand after the command; drumlin --help lists the commands"},
 		{"help for nothing there is", "help maps", "unknown command \"maps\"\nhint: did you mean drumlin map?"},
 		{"help for two", "help map reuse", "help takes one command, not 2\nhint: for example drumlin help map"},

@@ -22,7 +22,7 @@ type plainRead struct {
 }
 
 func readPlainly(r io.Reader) (p plainRead) {
-	in, err := openText(r, "wells.csv")
+	in, err := openTextAs(r, "wells.csv", Format{})
 	if err != nil {
 		return plainRead{err: err}
 	}

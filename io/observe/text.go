@@ -32,9 +32,6 @@ type text struct {
 	origin *origin
 }
 
-// openText opens a table that is written in a way to be found out.
-func openText(r io.Reader, source string) (*text, error) { return openTextAs(r, source, Format{}) }
-
 // openTextAs looks at the start of r and refuses what is not a text in columns.
 func openTextAs(r io.Reader, source string, format Format) (*text, error) {
 	decoded, from, err := openOrigin(r, source, format)

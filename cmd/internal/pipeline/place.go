@@ -177,7 +177,7 @@ func sameSystem(code string, system crs.System) bool {
 func (r *run) placeAt(ctx context.Context, path string) error {
 	s := r.settings
 	want := placesRequest(r.obs.table.Degrees)
-	want.Format = format(s)
+	want.Format = Format(s)
 	if s.X != nil {
 		want.X, want.Y = *s.X, *s.Y
 	}
@@ -258,11 +258,11 @@ func planeOf(t *observe.Table, system crs.System) (x, y []float64, err error) {
 // Places returns where the rows of a part are, as longitude and latitude if their system is tied to the globe and in
 // metres if not, with the number of each row.
 func Places(s plan.Settings, p observe.Part) (at [][2]float64, row []int32, geographic bool, err error) {
-	want := observe.Request{Format: format(s)}
+	want := observe.Request{Format: Format(s)}
 	if s.X != nil {
 		want.X, want.Y = *s.X, *s.Y
 	}
-	if want.Axes, err = axes(s); err != nil {
+	if want.Axes, err = Axes(s); err != nil {
 		return nil, nil, false, err
 	}
 	t, err := observe.ReadPart(p, want)

@@ -133,7 +133,7 @@ func withinReach(t *observe.Table, response, distribution string) error {
 func (r *run) request() (observe.Request, error) {
 	s := r.settings
 	want := observe.Request{Response: *s.Response, Kind: observe.Measure, Linear: allCovariates(s, plan.Settings.Numbers),
-		Category: allCovariates(s, everyCategory), Strict: *s.Strict, Format: format(s)}
+		Category: allCovariates(s, everyCategory), Strict: *s.Strict, Format: Format(s)}
 	switch *s.Distribution {
 	case plan.Poisson, plan.NegativeBinomial:
 		want.Kind = observe.Count
@@ -149,12 +149,12 @@ func (r *run) request() (observe.Request, error) {
 		want.X, want.Y = *s.X, *s.Y
 	}
 	var err error
-	want.Axes, err = axes(s)
+	want.Axes, err = Axes(s)
 	return want, err
 }
 
-// format says how the tables are written, as far as the settings do.
-func format(s plan.Settings) observe.Format {
+// Format says how the tables are written, as far as the settings do.
+func Format(s plan.Settings) observe.Format {
 	f := observe.Format{Missing: s.Missing, DecimalComma: s.DecimalComma != nil && *s.DecimalComma}
 	if s.Separator != nil {
 		f.Separator = map[string]rune{plan.Comma: ',', plan.Semicolon: ';', plan.Tab: '\t', plan.Pipe: '|'}[*s.Separator]
@@ -165,8 +165,8 @@ func format(s plan.Settings) observe.Format {
 	return f
 }
 
-// axes says what the coordinates are, as far as --crs does.
-func axes(s plan.Settings) (observe.Axes, error) {
+// Axes says what the coordinates are, as far as --crs does.
+func Axes(s plan.Settings) (observe.Axes, error) {
 	switch {
 	case s.CRS == nil:
 		return observe.AxesByName, nil
@@ -311,6 +311,18 @@ func distinctPlaces(at spatial.Places) (x, y []float64) {
 	return x, y
 }
 
+// Open opens a file for reading until ctx is cancelled.
+func Open(ctx context.Context, path string) (io.ReadCloser, error) {
+	f, err := openFile(path)
+	if err != nil {
+		return nil, err
+	}
+	return struct {
+		io.Reader
+		io.Closer
+	}{&stoppable{ctx: ctx, from: f}, f}, nil
+}
+
 // ReadShared reads a whole table into memory, for several regions to take their rows from. The settings say how it is
 // written; nothing else in them is looked at.
 func ReadShared(ctx context.Context, s plan.Settings, path string) (*observe.Shared, error) {
@@ -319,7 +331,7 @@ func ReadShared(ctx context.Context, s plan.Settings, path string) (*observe.Sha
 		return nil, err
 	}
 	defer f.Close()
-	return observe.WholeAs(&stoppable{ctx: ctx, from: f}, filepath.Base(path), format(s))
+	return observe.WholeAs(&stoppable{ctx: ctx, from: f}, filepath.Base(path), Format(s))
 }
 
 // CheckColumns refuses settings that name columns which a table does not have, before any row of it is read.

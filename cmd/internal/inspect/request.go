@@ -1,0 +1,19 @@
+package inspect
+
+import (
+	"drumlin/cmd/internal/pipeline"
+	"drumlin/io/observe"
+	"drumlin/io/plan"
+)
+
+// Request is how a table is to be surveyed by what was said of its format and its coordinates.
+func Request(said plan.Settings) (observe.SurveyRequest, error) {
+	want := observe.SurveyRequest{Guess: GuessCoordinates}
+	if said.X != nil && said.Y != nil {
+		want.X, want.Y = *said.X, *said.Y
+	}
+	want.Format = pipeline.Format(said)
+	var err error
+	want.Axes, err = pipeline.Axes(said)
+	return want, err
+}
