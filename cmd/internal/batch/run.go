@@ -199,11 +199,15 @@ func (r *runner) each(ctx context.Context, chosen []int) ([]*Outcome, error) {
 		r.tally.Work += r.work(i)
 	}
 	outcomes := make([]*Outcome, len(r.regions))
-	// One more is under way than compute, as some always wait for the disk. A thread that waits there keeps a processor of the
-	// scheduler's for a while, so there are more of these as well.
-	before := runtime.GOMAXPROCS(2 * workers)
-	defer runtime.GOMAXPROCS(before)
-	err := blocks.Do(ctx, workers+1, len(order), func(_, k int) error {
+	under := workers // regions under way at a time: with one worker it is one
+	if workers > 1 {
+		// One more is under way than compute, as some always wait for the disk. A thread that waits there keeps a
+		// processor of the scheduler's for a while, so there are more of these as well.
+		under = workers + 1
+		before := runtime.GOMAXPROCS(2 * workers)
+		defer runtime.GOMAXPROCS(before)
+	}
+	err := blocks.Do(ctx, under, len(order), func(_, k int) error {
 		var err error
 		outcomes[order[k]], err = r.one(ctx, order[k])
 		return err
