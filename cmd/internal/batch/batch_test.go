@@ -216,21 +216,31 @@ func TestChanges(t *testing.T) {
 	path := planted(t, valesPlan, tables)
 	out := filepath.Join(t.TempDir(), "maps")
 	ran(t, path, out, Options{})
+	var last Tally
 	fresh := func(what, want string, o Options) {
 		t.Helper()
 		b := loaded(t, path)
 		heard := &listener{}
-		if _, err := b.Run(t.Context(), out, o, heard); err != nil {
+		r, err := b.Run(t.Context(), out, o, heard)
+		if err != nil {
 			t.Fatalf("%s: %v", what, err)
 		}
+		last = r.Tally
 		slices.Sort(heard.fresh)
 		if got := strings.Join(heard.fresh, " "); got != want {
 			t.Errorf("%s: done again are %q, want %q", what, got, want)
 		}
 	}
+	again := func(what string, want, got int) {
+		t.Helper()
+		if got != want {
+			t.Errorf("%s: %d regions are counted, want %d", what, got, want)
+		}
+	}
 	fresh("nothing", "", Options{})
 	rewrite(t, filepath.Join(filepath.Dir(path), "data/birch.csv"), vale(9, 91, 2000))
 	fresh("a table", "birch", Options{})
+	again("a table", 1, last.Changed)
 	rewrite(t, path, valesPlan+"[region.ash]\ncells_across = 25\n")
 	fresh("a region's own word", "ash", Options{})
 	rewrite(t, path, strings.Replace(valesPlan, "max_knots = 30", "max_knots = 31", 1))
@@ -239,7 +249,9 @@ func TestChanges(t *testing.T) {
 		t.Fatal(err)
 	}
 	fresh("a file that is gone", "cedar", Options{})
+	again("a file that is gone", 1, last.Changed)
 	fresh("on request", "birch", Options{Redo: []string{"birch"}})
+	again("on request", 1, last.Redone)
 
 	ledger := filepath.Join(out, "ledger.jsonl")
 	text, err := os.ReadFile(ledger)
@@ -252,6 +264,7 @@ func TestChanges(t *testing.T) {
 		t.Fatal(err)
 	}
 	fresh("no ledger", "", Options{})
+	again("no ledger", 3, last.Adopted)
 	for _, row := range records(t, filepath.Join(out, "ledger.csv")) {
 		if !strings.HasPrefix(row["reason"], "adopted") || row["observations"] == "" {
 			t.Errorf("without a ledger: %v", row)

@@ -43,6 +43,9 @@ type Events interface {
 type Tally struct {
 	Regions, Done                          int // of those to be done, and how many are
 	Unchanged, Failed, Looks, Stops, Fresh int // Fresh: fitted in this run. Looks and Stops count unchanged ones too
+	// Of those, what an earlier run had to do with them: Adopted ones are among the unchanged; the others were fitted
+	// again, since something of them changed or was gone, since they had failed, or on request.
+	Adopted, Changed, Retried, Redone int
 	// Work is in bytes of input and a little for each region; WorkFresh was done in this run.
 	WorkDone, WorkFresh, Work int64
 	Since                     time.Time
@@ -252,6 +255,7 @@ func (r *runner) one(ctx context.Context, i int) (*Outcome, error) {
 		if r.Gather {
 			return r.recall(i, line), nil
 		}
+		r.tellWhy(g)
 		var d summary.Document
 		asked.Waiting = r.waiting
 		if d, err = r.compute(func() (summary.Document, error) {
@@ -269,6 +273,26 @@ func (r *runner) one(ctx context.Context, i int) (*Outcome, error) {
 	return finish(summary.Document{}, err)
 }
 
+// tellWhy counts what a region that was done before is done again for.
+func (r *runner) tellWhy(g region) {
+	known, ok := r.past[g.name]
+	_, err := os.Stat(filepath.Join(r.out, g.folder))
+	switch {
+	case r.redo[g.name]:
+		r.tell(&r.tally.Redone)
+	case ok && known.Status == Failed:
+		r.tell(&r.tally.Retried)
+	case ok || err == nil:
+		r.tell(&r.tally.Changed)
+	}
+}
+
+func (r *runner) tell(count *int) {
+	r.mu.Lock()
+	defer r.mu.Unlock()
+	*count++
+}
+
 // keep takes over a folder that is there already. A ledger without a line for it gets the line it lacks.
 func (r *runner) keep(i int, line Line, d summary.Document) (*Outcome, error) {
 	if err := pipeline.ClearUp(filepath.Join(r.out, line.Folder)); err != nil {
@@ -282,10 +306,12 @@ func (r *runner) keep(i int, line Line, d summary.Document) (*Outcome, error) {
 	}
 	_, _, line.Figures = judge(d, nil)
 	line.Status, line.Ended = Unchanged, time.Now().UTC()
-	line.Seconds, line.CPU, line.Host = known.Seconds, known.CPU, known.Host // of the run that made the folder
-	if !ok || known.Fingerprint != line.Fingerprint || known.Status == Failed {
+	if ok && known.Fingerprint == line.Fingerprint && known.Status != Failed {
+		line.Seconds, line.CPU, line.Host = known.Seconds, known.CPU, known.Host // of the run that made the folder
+	} else {
 		// The folder was finished and the run ended before it could say so: that word is made up for.
 		line.Status, line.Reason = verdict(d), "adopted: its folder was finished and the ledger had no line for it"
+		r.tell(&r.tally.Adopted)
 	}
 	if err := r.ledger.Append(line); err != nil {
 		return nil, err

@@ -20,7 +20,8 @@ func (r Report) WriteWords(w io.Writer, out string) error {
 	for _, p := range []struct {
 		n    int
 		what string
-	}{{t.Unchanged, "unchanged since an earlier run"}, {t.Looks, "to look at"}, {t.Stops, "with a stop"}, {t.Failed, "failed"}, {len(r.Missing), "missing"}} {
+	}{{t.Unchanged, "unchanged since an earlier run"}, {t.Adopted, "of these without a line in the ledger until now"},
+		{t.Changed, "redone after a change"}, {t.Retried, "tried again after failing"}, {t.Redone, "redone on request"}, {t.Looks, "to look at"}, {t.Stops, "with a stop"}, {t.Failed, "failed"}, {len(r.Missing), "missing"}} {
 		if p.n > 0 {
 			parts = append(parts, fmt.Sprintf("%d %s", p.n, p.what))
 		}
