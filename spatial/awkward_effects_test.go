@@ -489,7 +489,7 @@ func TestFractionsAreNoCounts(t *testing.T) {
 		"negative-binomial": "row 1: 2.5 is not a whole number, and negative-binomial needs one",
 		"beta-binomial":     "row 1: 2.5 is not a whole number, and beta-binomial needs one",
 	} {
-		if dist == "beta-binomial" {
+		if d.Trials = nil; dist == "beta-binomial" {
 			d.Trials = trials
 		}
 		_, err := Fit(context.Background(), Model{Distribution: dist, MaxKnots: 20}, d, Options{})
