@@ -70,7 +70,7 @@ func (r *batchRequest) options() []option {
 	alone := func(name, help string, to *bool) option {
 		return option{name: name, group: group, help: help, take: func(string) error { *to = true; return nil }}
 	}
-	options := []option{
+	return append([]option{
 		ofText("out", group, "DIR", "the folder of the batch; one that an earlier run made is continued", &r.out),
 		alone("check", "check all of the plan, print what would be run, and stop", &r.check),
 		{name: "redo", group: group, arg: "NAME", repeat: true, help: "do this region again though nothing has changed",
@@ -80,14 +80,7 @@ func (r *batchRequest) options() []option {
 		alone("gather", "fit nothing: bring together what the parts have done, draw, and list what is missing", &r.gather),
 		ofText("emit", group, "KIND", "write a job file for an engine, slurm or kubernetes, that runs the batch in parts, and stop; "+
 			"--part auto/N says how many", &r.emit),
-	}
-	for _, name := range []string{"workers", "quiet"} {
-		w, _ := plan.Lookup(name)
-		o := ofWord(w, &r.settings)
-		o.group = group
-		options = append(options, o)
-	}
-	return options
+	}, ofNamed(&r.settings, group, "workers", "quiet")...)
 }
 
 // checkFlags refuses flags that exclude each other.

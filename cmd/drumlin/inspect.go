@@ -54,18 +54,11 @@ func (p program) inspectCommand() command {
 
 func (r *inspectRequest) options() []option {
 	const group = "Flags"
-	options := []option{
+	return append([]option{
 		{name: "json", group: group, help: "write all that was found as JSON", take: func(string) error { r.json = true; return nil }},
 		{name: "plan", group: group, help: "write a plan to start a batch from, in which every word is explained",
 			take: func(string) error { r.plan = true; return nil }},
-	}
-	for _, name := range []string{"x", "y", "crs", "separator", "decimal-comma", "missing"} {
-		w, _ := plan.Lookup(name)
-		o := ofWord(w, &r.settings)
-		o.group = group
-		options = append(options, o)
-	}
-	return options
+	}, ofNamed(&r.settings, group, "x", "y", "crs", "separator", "decimal-comma", "missing")...)
 }
 
 // examine reads the table and looks at it.

@@ -69,6 +69,18 @@ func ofWords(s *plan.Settings, except ...string) []option {
 	return list
 }
 
+// ofNamed makes the flags of the words with these names, under a heading of the command's own.
+func ofNamed(s *plan.Settings, group string, names ...string) []option {
+	var list []option
+	for _, name := range names {
+		w, _ := plan.Lookup(name)
+		o := ofWord(w, s)
+		o.group = group
+		list = append(list, o)
+	}
+	return list
+}
+
 // ofText makes a flag with a text that must not be empty.
 func ofText(name, group, arg, help string, to *string) option {
 	return option{name: name, group: group, arg: arg, help: help, take: func(value string) error {

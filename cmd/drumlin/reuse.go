@@ -45,16 +45,8 @@ func (p program) reuseCommand() command {
 
 func reuseOptions(s *plan.Settings, out *string) []option {
 	const group = "Flags"
-	at, _ := plan.Lookup("at")
-	places := ofWord(at, s)
-	places.group, places.help = group, "the table of places to predict at"
-	options := []option{places}
-	for _, name := range []string{"x", "y"} {
-		w, _ := plan.Lookup(name)
-		o := ofWord(w, s)
-		o.group = group
-		options = append(options, o)
-	}
+	options := ofNamed(s, group, "at", "x", "y")
+	options[0].help = "the table of places to predict at"
 	options = append(options, ofText("out", group, "FILE", "the table to write; it appears whole or not at all", out))
 	return append(options, runOptions(s, group)...)
 }

@@ -29,8 +29,8 @@ const (
 
 // Check tells what Run would do, the largest region first as there, and does nothing. out may be empty or not there yet.
 func (b *Batch) Check(ctx context.Context, out string, o Options) ([]Prospect, error) {
-	r := &runner{Batch: b, Options: o, out: out, events: silent{}, sums: &fileSums{}, past: map[string]Line{}}
-	if err := r.checkRedo(); err != nil {
+	r, err := b.newRun(out, o, silent{})
+	if err != nil {
 		return nil, err
 	}
 	if out != "" {
@@ -165,9 +165,3 @@ func size(n int64) string {
 	}
 	return fmt.Sprintf("%d bytes", n)
 }
-
-type silent struct{}
-
-func (silent) Stage(string, int, int) {}
-func (silent) Region(Line, Tally)     {}
-func (silent) Note(string)            {}

@@ -87,8 +87,8 @@ func (r *runner) openDraft(folder string) (draft.Draft, error) {
 
 // writes reports whether the region of an outcome was asked for a kind of file.
 func (r *runner) writes(name string, kinds ...string) bool {
-	s, err := r.settings(r.regions[r.at[name]])
-	return err == nil && slices.ContainsFunc(kinds, func(kind string) bool { return slices.Contains(s.Write, kind) })
+	write := r.regions[r.at[name]].write
+	return slices.ContainsFunc(kinds, func(kind string) bool { return slices.Contains(write, kind) })
 }
 
 // samples bounds how many values of all regions together the common breaks are chosen from, and how many of one.
@@ -283,7 +283,7 @@ func (r *runner) drawMosaic(ctx context.Context, report *Report, list []draft.Br
 		if err != nil {
 			return err
 		}
-		if edges, ok := edgesOf(list, levelPicture, group{m.Response, m.Unit}); ok {
+		if edges, ok := edgesOf(list, draft.MapFile, group{m.Response, m.Unit}); ok {
 			p.Breaks, p.Shared = edges, true
 		}
 		return p.WritePNG(w)
@@ -314,14 +314,15 @@ func (r *runner) writeLedger(report *Report) error {
 	}
 	latest := Latest(lines)
 	var list []Line
-	for _, i := range r.share() {
-		if line, ok := latest[r.regions[i].name]; ok {
+	for _, g := range r.regions {
+		if line, ok := latest[g.name]; ok {
 			list = append(list, line)
 		}
 	}
 	const name = "ledger.csv"
 	report.Written = append([]string{name}, report.Written...)
-	return pipeline.ReplaceFile(context.Background(), filepath.Join(r.out, name), func(w io.Writer) error { return WriteLedgerCSV(w, list) })
+	// The ledger is to be true after an interrupt too.
+	return r.writeFile(context.Background(), name, func(w io.Writer) error { return WriteLedgerCSV(w, list) })
 }
 
 // notes tells what a person should know that stands in no region's summary.

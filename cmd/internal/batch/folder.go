@@ -169,16 +169,12 @@ func told(h locks.Holder) string {
 
 // openLedger opens the ledger of the run or part and reads what is known of each region.
 func (r *runner) openLedger() error {
-	part := ""
-	if r.Part.Of > 0 {
-		part = r.Part.String()
-	}
 	if r.Part.Of == 0 {
 		if err := MergeLedgers(r.out); err != nil {
 			return err
 		}
 	}
-	ledger, dropped, err := OpenLedger(r.out, part)
+	ledger, dropped, err := OpenLedger(r.out, r.Part.String())
 	if err != nil {
 		return err
 	}

@@ -42,6 +42,7 @@ type region struct {
 	rows         *observe.Part // of a table that all regions share; nil where it has a file of its own
 	size         int64         // bytes of its rows: what its work is judged by
 	group        group
+	write        []string // the kinds of files asked for
 }
 
 // group is what regions must have in common to be held against one another.
@@ -110,7 +111,7 @@ func (b *Batch) add(name, observations string, rows *observe.Part, size int64) e
 			b.inputs[dir] = file
 		}
 	}
-	g.group = group{*s.Response, pipeline.Unit(s)}
+	g.group, g.write = group{*s.Response, pipeline.Unit(s)}, s.Write
 	b.regions = append(b.regions, g)
 	return nil
 }
@@ -367,7 +368,7 @@ func (b *Batch) readBreaks() error {
 		return b.plan.Fault("pictures", "breaks", "", fmt.Sprintf("are one list, and the regions have %d responses or units, such as %s and %s", len(groups), groups[0].unit, groups[1].unit),
 			"leave breaks out, or name a breaks file that has them by unit")
 	case b.plan.Breaks != nil:
-		b.pinned = []draft.Breaks{{Picture: levelPicture, Response: groups[0].response, Unit: groups[0].unit, Edges: b.plan.Breaks}}
+		b.pinned = []draft.Breaks{{Picture: draft.MapFile, Response: groups[0].response, Unit: groups[0].unit, Edges: b.plan.Breaks}}
 	case b.plan.BreaksFile != "":
 		file := b.in(b.plan.BreaksFile)
 		if err := b.checkFile(file, func() (section, key string) { return "pictures", "breaks" }); err != nil {
@@ -381,7 +382,7 @@ func (b *Batch) readBreaks() error {
 			return err
 		}
 		for _, g := range groups {
-			if _, ok := edgesOf(b.pinned, levelPicture, g); ok {
+			if _, ok := edgesOf(b.pinned, draft.MapFile, g); ok {
 				return nil
 			}
 		}
@@ -389,9 +390,6 @@ func (b *Batch) readBreaks() error {
 	}
 	return nil
 }
-
-// levelPicture is the map of the estimate, the one that a list of breaks is for.
-const levelPicture = "map.png"
 
 func edgesOf(list []draft.Breaks, picture string, g group) ([]float64, bool) {
 	for _, b := range list {

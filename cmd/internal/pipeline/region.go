@@ -34,7 +34,7 @@ func (r *run) addUpRegion(ctx context.Context) error {
 			return err
 		}
 		value, cv := sums[0].Value, sums[0].Delta/math.Abs(sums[0].Value)
-		lower, upper := r.deltaLimits(value/ground, sums[0].Delta/ground)
+		lower, upper := r.limitsFrom(value/ground, sums[0].Delta/ground)
 		if z.totals {
 			g.Total, g.TotalCV = summary.Number(value), summary.Number(cv)
 			g.TotalLower, g.TotalUpper = summary.Number(lower*ground), summary.Number(upper*ground)
@@ -47,14 +47,15 @@ func (r *run) addUpRegion(ctx context.Context) error {
 	return nil
 }
 
-// deltaLimits returns the limits of a mean from its standard error: log-normal for a log link (Burnham et al. 1987,
+// limitsFrom returns the limits of a mean or a sum of means from its standard error: log-normal for a log link (Burnham et al. 1987,
 // Wildlife Monographs 99), symmetrical in the logit for a share, and in the mean itself for the identity link.
-func (r *run) deltaLimits(mean, se float64) (lower, upper float64) {
+func (r *run) limitsFrom(mean, se float64) (lower, upper float64) {
 	confidence := *r.settings.Confidence
 	q := distuv.UnitNormal.Quantile(0.5 + confidence/2)
 	switch *r.settings.Link {
 	case plan.Log:
-		f := math.Exp(q * math.Sqrt(math.Log1p(se*se/(mean*mean))))
+		cv := se / mean
+		f := math.Exp(q * math.Sqrt(math.Log1p(cv*cv)))
 		return mean / f, mean * f
 	case plan.Identity:
 		q = r.surface.Quantile(confidence)

@@ -12,8 +12,6 @@ import (
 	"drumlin/io/summary"
 	"drumlin/io/tables"
 	"drumlin/spatial"
-
-	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // zoneDraws is the number of joint posterior draws behind a zone's errors: a standard error good to 2 %.
@@ -164,12 +162,11 @@ func (r *run) limits(sum spatial.Sum) [2]float64 {
 	}
 	switch *r.settings.Link {
 	case plan.Log:
-		cv := sum.DrawSD() / sum.Value
-		f := math.Exp(distuv.UnitNormal.Quantile(0.5+confidence/2) * math.Sqrt(math.Log1p(cv*cv)))
-		return [2]float64{sum.Value / f, sum.Value * f}
+		lower, upper := r.limitsFrom(sum.Value, sum.DrawSD())
+		return [2]float64{lower, upper}
 	case plan.Identity:
-		d := r.surface.Quantile(confidence) * sum.Delta
-		return [2]float64{sum.Value - d, sum.Value + d}
+		lower, upper := r.limitsFrom(sum.Value, sum.Delta)
+		return [2]float64{lower, upper}
 	}
 	sorted := slices.Sorted(slices.Values(sum.Draws))
 	at := func(p float64) float64 { // linear between order statistics
