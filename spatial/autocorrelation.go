@@ -19,12 +19,13 @@ func (a Autocorrelation) Z() float64 { return (a.I - a.Expected) / a.SD }
 
 // Moran returns Moran's I of values v at places with each place's k nearest others as its neighbours, all of equal weight
 // 1/k, and its moments under normality (Cliff & Ord 1981, Spatial Processes, ch. 1 and 2). Of neighbours at the same
-// distance those of lower row come first. Fewer than k + 2 values give NaN. It panics if lengths differ.
+// distance those of lower row come first. A row that is a set of points lies at their mean place. Fewer than k + 2 values give NaN. It panics if lengths differ.
 func Moran(at Places, v []float64, k int) Autocorrelation {
 	n := len(v)
 	if at.Len() != n {
 		panic(lengths)
 	}
+	at = at.centres()
 	a := Autocorrelation{I: math.NaN(), Expected: math.NaN(), SD: math.NaN(), Neighbours: k}
 	if n < k+2 {
 		return a
@@ -180,6 +181,7 @@ func (s *Surface) ResidualAutocorrelation(at Places) Autocorrelation {
 	if s.rows == nil {
 		return Autocorrelation{}
 	}
+	at = at.centres()
 	type place struct{ x, y float64 }
 	index := map[place]int{}
 	var p Places

@@ -4,6 +4,8 @@ import (
 	"context"
 	"fmt"
 	"testing"
+
+	"drumlin/spatial/response"
 )
 
 func BenchmarkFit(b *testing.B) {
@@ -24,6 +26,24 @@ func BenchmarkFit(b *testing.B) {
 				r = s.Report()
 			}
 			b.ReportMetric(float64(r.Passes), "passes")
+		})
+	}
+}
+
+func BenchmarkFitSets(b *testing.B) {
+	dist, err := response.New("poisson", "")
+	if err != nil {
+		b.Fatal(err)
+	}
+	for _, c := range []struct{ rows, most, knots int }{{300, 8, 50}, {3000, 31, 200}} {
+		d := strips(c.rows, c.most, 7, dist)
+		b.Run(fmt.Sprintf("poisson/n=%d/points=%d/knots=%d", c.rows, len(d.Places.X), c.knots), func(b *testing.B) {
+			b.ReportAllocs()
+			for b.Loop() {
+				if _, err := Fit(context.Background(), Model{Distribution: "poisson", MaxKnots: c.knots}, d, Options{}); err != nil {
+					b.Fatal(err)
+				}
+			}
 		})
 	}
 }

@@ -263,6 +263,23 @@ func (b *border) orthogonalise(null, raw [][]float64, least float64, c *core) er
 	return nil
 }
 
+// columnsTo turns raw columns into those that the fit sees, in place; null are the surface's free ones.
+func (b *border) columnsTo(raw, null [][]float64) {
+	t, row, fit := make([]float64, len(null)), make([]float64, len(raw)), make([]float64, len(raw))
+	for i := 0; len(raw) > 0 && i < len(raw[0]); i++ {
+		for k := range null {
+			t[k] = null[k][i]
+		}
+		for j := range raw {
+			row[j] = raw[j][i]
+		}
+		b.rowTo(fit, t, row)
+		for j := range raw {
+			raw[j][i] = fit[j]
+		}
+	}
+}
+
 // nullNames names t free columns of surfaces, keep of each.
 func nullNames(t, keep int) []string {
 	names := make([]string, t)

@@ -25,7 +25,7 @@ const (
 	leastMost = 100
 )
 
-// MostKnotsFor returns where FitKnots stops for a number of rows.
+// MostKnotsFor returns where FitKnots stops for a number of rows, or of points where rows are sets of them.
 func MostKnotsFor(rows int) int {
 	k := MostKnots
 	for k > leastMost && float64(rows)*float64(k)*float64(k) > mostVisit {
@@ -45,7 +45,7 @@ type KnotStep struct {
 // (0 means MostKnotsFor the rows). Each search starts where the last one ended. It returns the last fit and the way to it.
 func FitKnots(ctx context.Context, m Model, d Data, o Options, most int) (*Surface, []KnotStep, error) {
 	if most == 0 {
-		most = MostKnotsFor(d.Places.Len())
+		most = MostKnotsFor(len(d.Places.X))
 		if m.SurfacePer != "" { // every level has as many
 			most = max(firstKnots, most/levelsOf(d, m.SurfacePer))
 		}
@@ -118,24 +118,15 @@ func some(at Places, z []Covariate, most int) (Places, []Covariate) {
 	if n <= most {
 		return at, z
 	}
-	var p Places
+	rows := make([]int, most)
+	for j := range rows {
+		rows[j] = j * n / most
+	}
 	few := make([]Covariate, len(z))
 	for k, c := range z {
-		few[k] = Covariate{Name: c.Name, Level: c.Level}
+		few[k] = c.only(rows)
 	}
-	for j := 0; j < most; j++ {
-		i := j * n / most
-		p.X, p.Y = append(p.X, at.X[i]), append(p.Y, at.Y[i])
-		for k, c := range z {
-			if c.Number != nil {
-				few[k].Number = append(few[k].Number, c.Number[i])
-			}
-			if c.Code != nil {
-				few[k].Code = append(few[k].Code, c.Code[i])
-			}
-		}
-	}
-	return p, few
+	return at.only(rows), few
 }
 
 // Variation is the outcome of comparing a distribution of counts or positives with the one that has extra variation.

@@ -360,27 +360,13 @@ func (c *comparison) score(ctx context.Context, k int, dst []float64, o Options,
 
 // only returns the rows of the given indices.
 func (d Data) only(rows []int) Data {
-	pick := func(v []float64) []float64 {
-		if v == nil {
-			return nil
-		}
-		p := make([]float64, len(rows))
-		for j, i := range rows {
-			p[j] = v[i]
-		}
-		return p
+	part := Data{Response: pick(d.Response, rows), Exposure: pick(d.Exposure, rows), Trials: pick(d.Trials, rows),
+		Weight: pick(d.Weight, rows), Places: d.Places.only(rows)}
+	if d.Factor != nil {
+		part.Factor = &Factor{Of: pick(d.Factor.Of, rows), CV: d.Factor.CV}
 	}
-	part := Data{Response: pick(d.Response), Exposure: pick(d.Exposure), Trials: pick(d.Trials), Weight: pick(d.Weight),
-		Places: Places{X: pick(d.Places.X), Y: pick(d.Places.Y)}}
 	for _, z := range d.Covariates {
-		p := Covariate{Name: z.Name, Number: pick(z.Number), Level: z.Level}
-		if z.Code != nil {
-			p.Code = make([]int32, len(rows))
-			for j, i := range rows {
-				p.Code[j] = z.Code[i]
-			}
-		}
-		part.Covariates = append(part.Covariates, p)
+		part.Covariates = append(part.Covariates, z.only(rows))
 	}
 	return part
 }
@@ -462,8 +448,10 @@ func overBlocks(v []float64, out []bool, block []int, count int) (mean, se float
 
 // spatialBlocks cuts the rows into at most want blocks of neighbouring places with about equally many rows, and returns
 // the block of each row. Places are cut in two across their longer side, the parts again, and so on; rows of one place
-// stay together. The cut depends neither on the order of rows nor on the unit of the places.
+// stay together, and a row that is a set of points counts as their mean place. The cut depends neither on the order of
+// rows nor on the unit of the places.
 func spatialBlocks(at Places, want int) (block []int, count int) {
+	at = at.centres()
 	row := make([]int, at.Len())
 	for i := range row {
 		row[i] = i

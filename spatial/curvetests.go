@@ -28,7 +28,7 @@ type CurveTest struct {
 // TestCurves tests each of the model's curves. z holds the covariates at the rows the model was fitted to. It returns an
 // error for covariates that do not fit, and panics if they differ in length. It is safe for concurrent use.
 //
-// Not knowing the smoothness is not part of the covariance, whatever the model asks for.
+// Not knowing the smoothness, or a shared factor, is not part of the covariance, whatever the model asks for.
 func (s *Surface) TestCurves(z []Covariate) (list []CurveTest, err error) {
 	q := s.border.size()
 	free, bound := 0, s.core.columns()+q

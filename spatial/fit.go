@@ -32,6 +32,9 @@ func fitAlone(ctx context.Context, m Model, d Data, o Options) (s *Surface, fini
 	if err := d.check(m, dist); err != nil {
 		return nil, nil, err
 	}
+	if d.Places, err = d.Places.settled(); err != nil {
+		return nil, nil, err
+	}
 	if err := fittable(dist, d); err != nil {
 		return nil, nil, err
 	}
@@ -47,8 +50,11 @@ func fitAlone(ctx context.Context, m Model, d Data, o Options) (s *Surface, fini
 		return nil, nil, err
 	}
 	list := s.smooths()
-	engine, err := penfit.NewDense(ctx, dg, ridges(list), o.Workers)
+	engine, err := s.engine(ctx, d.Places, dg, list, o.Workers)
 	if err != nil {
+		return nil, nil, err
+	}
+	if s.mean, err = meanRow(ctx, engine); err != nil {
 		return nil, nil, err
 	}
 	problem := penfit.Problem{Engine: engine, Dist: dist, Obs: observations(d), Offset: offsets(d), EstimateShape: m.Shape == nil, Workers: o.Workers}
@@ -63,17 +69,15 @@ func fitAlone(ctx context.Context, m Model, d Data, o Options) (s *Surface, fini
 	}
 	s.dist, s.beta, s.factor, s.phi = r.Dist, r.Beta, engine.Factored(), r.Phi
 	s.border.setUnseen(list, r.Lambda)
-	mean, err := meanRow(ctx, engine)
-	if err != nil {
-		return nil, nil, err
-	}
-	s.mean = mean
 	spreadDF := 0.0
 	if m.SmoothnessUncertainty {
 		if s.spread.Data, s.spread.Cols, spreadDF, err = penfit.Uncertainty(ctx, problem, r); err != nil {
 			return nil, nil, explain(err, dist)
 		}
 		s.spread.Rows, s.spread.Stride = len(s.beta), s.spread.Cols
+	}
+	if err := s.addFactor(ctx, d.Factor, problem, r); err != nil {
+		return nil, nil, err
 	}
 	s.report = s.describe(r, d, list, spreadDF)
 	return s, func() error {
@@ -284,7 +288,7 @@ func (s *Surface) columns(ctx context.Context, d Data, o Options) (*design, erro
 	if free := s.border.null + q; n < free {
 		return nil, unfit(fewer(s.model), "%d observations cannot settle %d unpenalised coefficients", n, free)
 	}
-	dg := &design{x: d.Places.X, y: d.Places.Y, core: s.core, bound: bound, scratch: make([]designScratch, blocks.Workers(o.Workers))}
+	dg := &design{x: d.Places.X, y: d.Places.Y, owner: d.Places.owners(), core: s.core, bound: bound, scratch: make([]designScratch, blocks.Workers(o.Workers))}
 	if dg.of, err = s.core.levels(d.Covariates); err != nil {
 		return nil, err
 	}
@@ -300,10 +304,26 @@ func (s *Surface) columns(ctx context.Context, d Data, o Options) (*design, erro
 		least = leastBesideSurface
 	}
 	dg.free = raw
-	return dg, s.border.orthogonalise(null, raw, least, s.core)
+	if d.Places.Start == nil {
+		return dg, s.border.orthogonalise(null, raw, least, s.core)
+	}
+	// What rows that are sets of points can tell apart is told by their means, at least to first order.
+	if err := s.border.orthogonalise(d.Places.means(null), d.Places.means(raw), least, s.core); err != nil {
+		return nil, err
+	}
+	s.border.columnsTo(raw, null)
+	return dg, nil
 }
 
-// freeColumns returns the surface's free columns and the raw ones beside it, one value a row.
+// engine returns the core's engine for rows at given places, points the model matrix of their points.
+func (s *Surface) engine(ctx context.Context, at Places, points penfit.Design, list []smooth, workers int) (penfit.Engine, error) {
+	if at.Start == nil {
+		return penfit.NewDense(ctx, points, ridges(list), workers)
+	}
+	return penfit.NewComposite(ctx, points, at.Start, at.Share, response.MixerOf(s.dist.Link()), ridges(list), workers)
+}
+
+// freeColumns returns the surface's free columns and the raw ones beside it, one value a point.
 func (s *Surface) freeColumns(ctx context.Context, dg *design, q int) (null, raw [][]float64, err error) {
 	n, p, t := dg.Rows(), dg.core.columns(), s.border.null
 	all := make([][]float64, t+q)
@@ -321,10 +341,10 @@ func (s *Surface) freeColumns(ctx context.Context, dg *design, q int) (null, raw
 			w.rows, w.free, w.bend = make([]float64, blocks.Size*p), make([]float64, t+q), make([]float64, dg.bound)
 		}
 		from, to := blocks.Range(b, n)
-		dg.core.rowsTo(w.rows, p, dg.x[from:to], dg.y[from:to], func(r int) int { return dg.of(from + r) }, &w.core)
+		dg.core.rowsTo(w.rows, p, dg.x[from:to], dg.y[from:to], func(r int) int { return dg.of(dg.row(from + r)) }, &w.core)
 		for i := from; i < to; i++ {
 			dg.core.nullTo(w.free[:t], w.rows[(i-from)*p:], s.border.keep)
-			dg.fill(w.free[t:], w.bend, i)
+			dg.fill(w.free[t:], w.bend, dg.row(i))
 			for j, v := range w.free {
 				all[j][i] = v
 			}

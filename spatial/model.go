@@ -7,22 +7,6 @@ import (
 	"drumlin/spatial/response"
 )
 
-// Places are where rows lie, in metres. With Start nil row i is the point (X[i], Y[i]). Else row i is the set of points
-// Start[i] to Start[i+1], point q counting with Share[q].
-type Places struct {
-	X, Y  []float64
-	Start []int32
-	Share []float64
-}
-
-// Len returns the number of rows.
-func (p Places) Len() int {
-	if p.Start != nil {
-		return len(p.Start) - 1
-	}
-	return len(p.X)
-}
-
 // Covariate holds the values of one covariate, one a row: numbers, or codes into Level for a category.
 type Covariate struct {
 	Name   string
@@ -110,6 +94,8 @@ type Data struct {
 	Weight     []float64 // prior weight: the variance is phi/weight; nil means 1
 	Places     Places
 	Covariates []Covariate // at least those the model's effects name
+	// Factor multiplies the exposures of many rows by factors that are known with an error only. May be nil.
+	Factor *Factor
 }
 
 // Options are how to fit, rather than what. The zero value is usable.
@@ -178,11 +164,8 @@ func (d Data) check(m Model, dist response.Distribution) error {
 	}
 	d.Places.check()
 	checkLengths(d.Covariates, n)
-	if d.Places.Start != nil {
-		return unfit("give each row one point", "rows that are sets of points cannot be fitted by this version")
-	}
 	for i := 0; i < n; i++ {
-		if bad(d.Response[i]) || bad(d.Places.X[i]) || bad(d.Places.Y[i]) {
+		if bad(d.Response[i]) || d.Places.Start == nil && (bad(d.Places.X[i]) || bad(d.Places.Y[i])) {
 			return unfit("leave the row out", "row %d: a response or place that is not a finite number", i+1)
 		}
 		if d.Exposure != nil && !positive(d.Exposure[i]) || d.Weight != nil && !positive(d.Weight[i]) {
@@ -191,6 +174,9 @@ func (d Data) check(m Model, dist response.Distribution) error {
 	}
 	if k := kindOf(dist); d.Exposure != nil && k != counts && k != amounts {
 		return unfit("name trials for positives, or leave the denominator out", "a denominator goes with counts, not with the %s distribution", m.Distribution)
+	}
+	if err := d.Factor.check(n, d.Exposure); err != nil {
+		return err
 	}
 	if d.Trials != nil && kindOf(dist) != shares {
 		return unfit("leave the trials out", "trials go with positives, not with the %s distribution", m.Distribution)
@@ -215,13 +201,6 @@ func (d Data) check(m Model, dist response.Distribution) error {
 
 // lengths is the panic of calls whose slices do not belong together.
 const lengths = "spatial: slices differ in length"
-
-// check panics if coordinates do not come in pairs.
-func (p Places) check() {
-	if len(p.X) != len(p.Y) {
-		panic(lengths)
-	}
-}
 
 // checkLengths panics if a covariate does not have n values.
 func checkLengths(z []Covariate, n int) {

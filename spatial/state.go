@@ -22,7 +22,7 @@ type State struct {
 	Beta   []float64
 	Factor []float64
 	Phi    float64
-	Spread []float64 // root of what the smoothness' uncertainty adds, row-major, as many rows as Beta; may be empty
+	Spread []float64 // root of what the smoothness' uncertainty and shared factors add, row-major, as many rows as Beta; may be empty
 	Report Report
 }
 

@@ -39,9 +39,12 @@ func (s Sum) DrawSD() float64 {
 
 // Sums returns sum_j Weight_j mu_j over each of the sets, mu the mean for one unit of exposure at place j, with its
 // uncertainty from joint draws of all coefficients: neighbouring places err together, so their errors do not average
-// out. The draws are the same for every set, so sums over different sets may be compared draw by draw. It panics if
-// slices of at and z differ in length.
+// out. The draws are the same for every set, so sums over different sets may be compared draw by draw. Places are points: it
+// panics if they are sets of points, or if slices of at and z differ in length.
 func (s *Surface) Sums(ctx context.Context, at Places, z []Covariate, sets []Share, draws int, seed uint64) ([]Sum, error) {
+	if at.Start != nil {
+		panic("spatial: sums are over points")
+	}
 	rows, err := s.rowMaker(at, z)
 	if err != nil {
 		return nil, err

@@ -25,7 +25,7 @@ type Surface struct {
 	mean    []float64 // of the model matrix's columns over the rows
 	factor  []float64 // R with R'R = X'WX + S, p x p row-major, upper triangular
 	phi     float64
-	spread  blas64.General // p x k root of what the smoothness' uncertainty adds to the covariance; k may be 0
+	spread  blas64.General // p x k root of what the smoothness' uncertainty and shared factors add to the covariance; k may be 0
 	report  Report
 	rows    *Rows
 	effects []EffectFigure
@@ -187,10 +187,11 @@ func (s *Surface) coefficients() []Coefficient {
 	return list
 }
 
-// meanRow returns the mean of the model matrix's columns over its rows.
+// meanRow returns the mean of the model matrix's columns over its rows, the mean of a row's points by their shares being the
+// row's: what linear predictors move by where the coefficients are zero.
 func meanRow(ctx context.Context, e penfit.Engine) ([]float64, error) {
-	one := func(int, float64) (weight, value float64) { return 0, 1 }
-	if err := e.Pass(ctx, make([]float64, e.Coefs()), one, false); err != nil {
+	one := func(int, float64, float64) (weight, value float64) { return 0, 1 }
+	if err := e.Pass(ctx, make([]float64, e.Coefs()), one, penfit.NoGram); err != nil {
 		return nil, err
 	}
 	mean := append([]float64(nil), e.Score()...)
@@ -211,7 +212,7 @@ func (s *Surface) errorOf(g []float64) float64 {
 	return math.Sqrt(s.phi*l*l + s.spreadOf(g))
 }
 
-// spreadOf returns what the smoothness' uncertainty adds to the variance of g'beta.
+// spreadOf returns what the smoothness' uncertainty and shared factors add to the variance of g'beta.
 func (s *Surface) spreadOf(g []float64) (v float64) {
 	for c := 0; c < s.spread.Cols; c++ {
 		sum := 0.0
@@ -275,7 +276,7 @@ type Rows struct {
 	Fitted   []float64 // mean of the response, exposure or trials included
 	Deviance []float64 // signed root of the deviance contribution
 	Quantile []float64 // quantile residual, randomised for counts (Dunn & Smyth 1996, J. Comput. Graph. Stat. 5:236)
-	Leverage []float64 // diagonal of the influence matrix; nil above a million rows
+	Leverage []float64 // diagonal of the influence matrix of the linearised model; nil above a million rows
 }
 
 // leverageRows is the number of rows up to which leverages are kept.

@@ -174,7 +174,7 @@ func TestUnfittable(t *testing.T) {
 			d: Data{Response: poisson.Response, Places: poisson.Places, Exposure: make([]float64, 120)}},
 		{name: "infinite weight", dist: "gaussian", want: "row 1: a denominator or weight that is not a positive number",
 			d: Data{Response: gaussian.Response[:3], Places: Places{X: []float64{0, 1, 0}, Y: []float64{0, 0, 1}}, Weight: []float64{math.Inf(1), 1, 1}}},
-		{name: "rows that are sets of points", dist: "poisson", want: "rows that are sets of points cannot be fitted by this version",
+		{name: "two rows that are sets of points", dist: "poisson", want: "2 observations cannot settle 3 unpenalised coefficients",
 			d: Data{Response: []float64{1, 2}, Places: Places{X: []float64{0, 1, 2}, Y: []float64{0, 1, 3}, Start: []int32{0, 2, 3}, Share: []float64{1, 1, 1}}}},
 		{name: "as many coefficients as rows", dist: "gaussian", want: "5 observations cannot settle 5 unpenalised coefficients and a variance",
 			d: head(with(gaussian, u2("u", 5, noise), u2("v", 5, noise)), 5), m: Model{Effects: linear("u", "v")}},

@@ -44,28 +44,32 @@ const (
 )
 
 // TooLargeToTest says in words why a model of that size is not fitted to every one of DefaultDraws draws of a bootstrap
-// test, whatever its distribution; empty if it may be. Where there are several surfaces the knots of all count. A fit that
-// needs many passes over its rows may be too large all the same: then the test's Skipped says so.
+// test, whatever its distribution; empty if it may be. Where there are several surfaces the knots of all count, and where
+// rows are sets of points it is these that count as rows. A fit that needs many passes over its rows may be too large all
+// the same: then the test's Skipped says so.
 func TooLargeToTest(rows, knots int) string {
-	return tooLarge(rows, knots, fewPasses, DefaultDraws, 0)
+	return tooLarge("rows", rows, knots, fewPasses, DefaultDraws, 0)
 }
 
-func tooLarge(rows, columns, passes, draws int, rowWork float64) string {
+func tooLarge(what string, rows, columns, passes, draws int, rowWork float64) string {
 	work := float64(draws+1) * float64(passes) * float64(rows) * (float64(columns)*float64(columns) + rowWork)
 	if work <= mostTestWork {
 		return ""
 	}
-	return fmt.Sprintf("%d draws of %d rows, each fitted again with %d coefficients in %d passes, would take some %.0f minutes of one processor's time; up to %.0f are spent",
-		draws, rows, columns, passes, math.Ceil(work/testWorkMinute), mostTestWork/testWorkMinute)
+	return fmt.Sprintf("%d draws of %d %s, each fitted again with %d coefficients in %d passes, would take some %.0f minutes of one processor's time; up to %.0f are spent",
+		draws, rows, what, columns, passes, math.Ceil(work/testWorkMinute), mostTestWork/testWorkMinute)
 }
 
-// tooLargeToTest is TooLargeToTest for what the fit turned out to need.
-func (s *Surface) tooLargeToTest(draws int) string {
-	rowWork := 0.0
+// tooLargeToTest is TooLargeToTest for what the fit turned out to need. Where rows are sets of points it is these that cost.
+func (s *Surface) tooLargeToTest(at Places, draws int) string {
+	rowWork, what := 0.0, "rows"
+	if at.Start != nil {
+		what = "points"
+	}
 	if s.dist.Name() == "tweedie" {
 		rowWork = tweedieRowsWork
 	}
-	return tooLarge(s.report.Rows, len(s.beta), max(fewPasses, s.report.Passes), draws, rowWork)
+	return tooLarge(what, len(at.X), len(s.beta), max(fewPasses, s.report.Passes), draws, rowWork)
 }
 
 // TestVariation asks whether there is any spatial variation. The model without it has no surface at all, not even a plane:
@@ -122,7 +126,7 @@ func (s *Surface) testAgainst(ctx context.Context, m Model, of string, d Data, d
 	if draws <= 0 {
 		draws = DefaultDraws
 	}
-	if why := s.tooLargeToTest(draws); why != "" {
+	if why := s.tooLargeToTest(d.Places, draws); why != "" {
 		return skip(why)
 	}
 	if why := s.undrawable(d); why != "" {
@@ -134,6 +138,11 @@ func (s *Surface) testAgainst(ctx context.Context, m Model, of string, d Data, d
 	if _, err := s.rowMaker(d.Places, d.Covariates); err != nil {
 		return BootstrapTest{}, err
 	}
+	var err error
+	if d.Places, err = d.Places.settled(); err != nil {
+		return BootstrapTest{}, err
+	}
+	d.Factor = nil // a level that is off all over tells nothing of a part of the model
 	m.SmoothnessUncertainty = false
 	var cannot *Error
 	null, err := Fit(ctx, m, d, Options{Workers: s.workers, Knots: Places{X: s.knots.X, Y: s.knots.Y}})
@@ -305,7 +314,7 @@ func newRefitter(ctx context.Context, s *Surface, d Data) (*refitter, error) {
 		return nil, err
 	}
 	list := s.smooths()
-	engine, err := penfit.NewDense(ctx, &madeRows{at: d.Places, cols: len(s.beta), rows: rows}, ridges(list), 1)
+	engine, err := s.engine(ctx, d.Places, &madeRows{at: d.Places, owner: d.Places.owners(), cols: len(s.beta), rows: rows}, list, 1)
 	if err != nil {
 		return nil, err
 	}
@@ -323,16 +332,22 @@ func (r *refitter) fit(ctx context.Context, obs []response.Obs) (*penfit.Result,
 // madeRows is the model matrix of a fit, made from what the fit remembers, for one goroutine.
 type madeRows struct {
 	at      Places
+	owner   []int32 // as design has it
 	cols    int
 	rows    rows
 	scratch rowScratch
 }
 
-func (m *madeRows) Rows() int { return m.at.Len() }
+func (m *madeRows) Rows() int { return len(m.at.X) }
 
 func (m *madeRows) Cols() int { return m.cols }
 
 func (m *madeRows) BlockTo(dst []float64, from, to, _ int) {
 	m.scratch.rows = dst
-	m.rows(&m.scratch, m.at.X[from:to], m.at.Y[from:to], func(k int) int { return from + k })
+	m.rows(&m.scratch, m.at.X[from:to], m.at.Y[from:to], func(k int) int {
+		if m.owner == nil {
+			return from + k
+		}
+		return int(m.owner[from+k])
+	})
 }

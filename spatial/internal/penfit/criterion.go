@@ -45,14 +45,14 @@ func (f *fitter) score(c Criterion, at []float64) (value float64, gradient []flo
 	if err != nil {
 		return 0, nil, err
 	}
-	weights, err := f.curvature(lambda, db)
+	moves, err := f.curvature(c, lambda, db)
 	if err != nil {
 		return 0, nil, err
 	}
 	if c == GCV {
-		value, gradient, err = f.gcv(lambda, sb, db, weights)
+		value, gradient, err = f.gcv(lambda, sb, moves)
 	} else {
-		value, gradient, err = f.reml(lambda, sb, weights)
+		value, gradient, err = f.reml(lambda, sb, moves)
 	}
 	if err == nil {
 		f.last = evaluation{c, slices.Clone(at), value, slices.Clone(gradient), db}
@@ -77,48 +77,52 @@ func (f *fitter) modeSlopes(lambda []float64) (sb, db [][]float64, err error) {
 	if f.shaped == nil {
 		return sb, db, nil
 	}
-	err = f.Engine.Pass(f.ctx, f.beta, func(i int, _ float64) (weight, value float64) {
+	err = f.Engine.Pass(f.ctx, f.beta, func(i int, _, _ float64) (weight, value float64) {
 		f.shape[i] = f.shaped.ShapeAt(f.Obs[i], f.eta[i])
 		return 0, f.shape[i].Score
-	}, false)
+	}, NoGram)
 	d := slices.Clone(f.Engine.Score())
 	f.Engine.Solve(d)
 	return sb, append(db, d), err
 }
 
-// curvature leaves H factored with the weights that count for the determinant, and returns how the rows' weights move
-// with each point of the search; nil where they do not.
-func (f *fitter) curvature(lambda []float64, db [][]float64) ([][]float64, error) {
+// curvature leaves H factored with the weights that count for the determinant, and returns how the fit moves with each
+// point of the search. Cross-validation of curved predictors counts degrees of freedom of the linearised model: the true G
+// need not be positive, and would count them below zero where the penalty is weak.
+func (f *fitter) curvature(c Criterion, lambda []float64, db [][]float64) ([]Motion, error) {
+	moves := make([]Motion, len(db))
+	for j := range db {
+		moves[j].Beta = db[j]
+	}
 	if f.Dist.ConstantWeight() {
-		return nil, nil
+		return moves, nil
 	}
 	expected := f.Dist.Curvature() == response.Expected
-	if expected {
-		if _, err := f.evaluate(f.beta, response.Expected, true); err != nil {
+	if expected || c == GCV && f.Engine.Curved() {
+		if _, err := f.evaluate(f.beta, f.Dist.Curvature(), Working); err != nil {
 			return nil, err
 		}
 		if !f.Engine.Factor(lambda) {
 			return nil, ErrSingular
 		}
 	}
-	moves := make([][]float64, len(db))
-	for j := range db {
-		moves[j] = make([]float64, len(f.Obs))
-		if err := f.Engine.LinearTo(f.ctx, moves[j], db[j]); err != nil {
+	for j := range moves {
+		along := make([]float64, len(f.Obs))
+		if err := f.Engine.TangentTo(f.ctx, along, db[j]); err != nil {
 			return nil, err
 		}
-		for i := range moves[j] {
-			slope, own := f.point[i].Slope, 0.0
+		moves[j].Weight, moves[j].Score = along, make([]float64, len(f.Obs))
+		for i, d := range along {
+			pt, own := f.point[i], response.ShapePoint{}
+			if j == len(lambda) { // the shape moves weights and scores by itself as well
+				own = f.shape[i]
+			}
+			moves[j].Score[i] = own.Score - pt.Weight*d
 			if expected {
-				slope = f.point[i].ExpectedSlope
+				moves[j].Weight[i] = d*pt.ExpectedSlope + own.Expected
+			} else {
+				moves[j].Weight[i] = d*pt.Slope + own.Weight
 			}
-			if j == len(lambda) { // the shape moves weights by itself as well
-				own = f.shape[i].Weight
-				if expected {
-					own = f.shape[i].Expected
-				}
-			}
-			moves[j][i] = moves[j][i]*slope + own
 		}
 	}
 	return moves, nil
@@ -126,7 +130,7 @@ func (f *fitter) curvature(lambda []float64, db [][]float64) ([][]float64, error
 
 // reml returns the restricted likelihood criterion with phi, where unknown, at its own minimum; by the envelope
 // theorem the gradient is the partial one.
-func (f *fitter) reml(lambda []float64, sb, weights [][]float64) (float64, []float64, error) {
+func (f *fitter) reml(lambda []float64, sb [][]float64, moves []Motion) (float64, []float64, error) {
 	phi, err := f.remlScale()
 	if err != nil {
 		return 0, nil, err
@@ -149,17 +153,14 @@ func (f *fitter) reml(lambda []float64, sb, weights [][]float64) (float64, []flo
 		}
 		g = append(g, own-sums.shape)
 	}
-	if weights == nil || len(g) == 0 {
+	if f.Dist.ConstantWeight() || len(g) == 0 {
 		return v, g, nil
 	}
-	h := make([]float64, len(f.Obs))
-	if err := f.Engine.LeveragesTo(f.ctx, h); err != nil {
-		return 0, nil, err
+	traces, err := f.Engine.GramTraces(f.ctx, moves)
+	for j, t := range traces {
+		g[j] += t / 2
 	}
-	for j := range g {
-		g[j] += dot(weights[j], h) / 2
-	}
-	return v, g, nil
+	return v, g, err
 }
 
 // remlScale returns phi: 1 where known, else where V is least for the mode at hand,
@@ -276,9 +277,13 @@ func (f *fitter) saturatedRow() func(o response.Obs, phi float64) (value, scale,
 }
 
 // gcv returns n D/(n - edf)^2, or D/n - 1 + 2 edf/n where phi is known to be 1.
-func (f *fitter) gcv(lambda []float64, sb, db, weights [][]float64) (float64, []float64, error) {
+func (f *fitter) gcv(lambda []float64, sb [][]float64, moves []Motion) (float64, []float64, error) {
 	n, edf := float64(len(f.Obs)), f.edf(lambda)
-	dEdf, err := f.Engine.EdfSlopes(f.ctx, lambda, weights)
+	along := moves
+	if f.Dist.ConstantWeight() {
+		along = nil
+	}
+	dEdf, err := f.Engine.EdfSlopes(f.ctx, lambda, along)
 	if err != nil {
 		return 0, nil, err
 	}
@@ -291,18 +296,18 @@ func (f *fitter) gcv(lambda []float64, sb, db, weights [][]float64) (float64, []
 	g := make([]float64, len(lambda))
 	if f.Dist.KnownDispersion() {
 		for j := range g {
-			g[j] = (-2*dot(sum, db[j]) + 2*dEdf[j]) / n
+			g[j] = (-2*dot(sum, moves[j].Beta) + 2*dEdf[j]) / n
 		}
 		return f.deviance/n - 1 + 2*edf/n, g, nil
 	}
 	free := n - edf
 	for j := range g {
-		g[j] = n/(free*free)*-2*dot(sum, db[j]) + 2*n*f.deviance/(free*free*free)*dEdf[j]
+		g[j] = n/(free*free)*-2*dot(sum, moves[j].Beta) + 2*n*f.deviance/(free*free*free)*dEdf[j]
 	}
 	return n * f.deviance / (free * free), g, nil
 }
 
-// edf returns tr(H^-1 X'WX) for the H at hand.
+// edf returns tr(H^-1 G) for the H at hand.
 func (f *fitter) edf(lambda []float64) float64 {
 	edf := float64(f.Engine.Coefs())
 	for j, t := range f.Engine.Traces() {

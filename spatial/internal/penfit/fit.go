@@ -17,7 +17,7 @@ type Result struct {
 	Constant          float64   // deviance with one mean a unit of exposure
 	Phi               float64   // dispersion: 1 if known, else estimated; NaN where nothing is left to estimate it from
 	Pearson           float64   // sum of squared Pearson residuals over n - edf
-	Edf               float64   // tr(H^-1 X'WX)
+	Edf               float64   // tr(H^-1 G)
 	TermEdf           []float64 // the part of it that is each penalty's: rank - lambda_j tr(H^-1 S_j)
 	Value             float64   // of the criterion, in the engine's own coefficients; NaN if lambda was given as 0
 	Gradient          float64   // projected gradient at the end of the search

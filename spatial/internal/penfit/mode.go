@@ -77,12 +77,14 @@ func (f *fitter) offset(i int) float64 {
 	return f.Offset[i]
 }
 
-// evaluate visits the rows at beta; with gram set it leaves the Gram matrix of the given weights. Where weights are
-// constant the matrix is made once.
-func (f *fitter) evaluate(beta []float64, c response.Curvature, gram bool) (deviance float64, err error) {
+// evaluate visits the rows at beta and leaves the Gram matrix asked for, with the given weights. Where weights are constant
+// the matrix is made once.
+func (f *fitter) evaluate(beta []float64, c response.Curvature, gram Gram) (deviance float64, err error) {
 	f.current = false
-	gram = gram && !f.haveGram
-	err = f.Engine.Pass(f.ctx, beta, func(i int, linear float64) (weight, value float64) {
+	if f.haveGram {
+		gram = NoGram
+	}
+	err = f.Engine.Pass(f.ctx, beta, func(i int, linear, _ float64) (weight, value float64) {
 		eta := linear + f.offset(i)
 		f.eta[i] = eta
 		pt := f.Dist.At(f.Obs[i], eta)
@@ -99,7 +101,7 @@ func (f *fitter) evaluate(beta []float64, c response.Curvature, gram bool) (devi
 		return 0, err
 	}
 	f.passes++
-	if gram {
+	if gram != NoGram {
 		f.haveGram = f.Dist.ConstantWeight()
 	}
 	for i := range f.point {
@@ -132,7 +134,7 @@ func (f *fitter) mode(lambda []float64) error {
 	sb, step, trial := make([]float64, k), make([]float64, k), make([]float64, k)
 	if !f.current {
 		var err error
-		if f.deviance, err = f.evaluate(f.beta, response.Observed, true); err != nil {
+		if f.deviance, err = f.evaluate(f.beta, response.Observed, Newton); err != nil {
 			return err
 		}
 		f.current = true
@@ -179,7 +181,7 @@ func (f *fitter) factor(lambda []float64) error {
 	if f.Dist.ConstantWeight() {
 		return ErrSingular
 	}
-	if _, err := f.evaluate(f.beta, response.Expected, true); err != nil {
+	if _, err := f.evaluate(f.beta, response.Expected, Working); err != nil {
 		return err
 	}
 	if !f.Engine.Factor(lambda) {
@@ -208,12 +210,12 @@ func (f *fitter) foresee(at, lambda []float64) error {
 	sb := make([]float64, len(trial))
 	if !f.current {
 		var err error
-		if f.deviance, err = f.evaluate(f.beta, response.Observed, false); err != nil {
+		if f.deviance, err = f.evaluate(f.beta, response.Observed, NoGram); err != nil {
 			return err
 		}
 	}
 	before := f.deviance + f.penaltyAt(sb, lambda, f.beta)
-	d, err := f.evaluate(trial, response.Observed, true)
+	d, err := f.evaluate(trial, response.Observed, Newton)
 	if err != nil {
 		return err
 	}
@@ -238,7 +240,7 @@ func (f *fitter) advance(lambda, step, trial, sb []float64, sure bool) error {
 		for i := range trial {
 			trial[i] = f.beta[i] + t*step[i]
 		}
-		d, err := f.evaluate(trial, response.Observed, true)
+		d, err := f.evaluate(trial, response.Observed, Newton)
 		if err != nil {
 			return err
 		}
@@ -268,9 +270,9 @@ func (f *fitter) start(given []float64) (rho []float64, err error) {
 		f.size += f.weight()
 	}
 	zwz := make([]float64, len(f.Obs))
-	working := func(i int, eta float64) (float64, float64) {
+	working := func(i int, eta, curved float64) (float64, float64) { // curved: linear predictor less its tangent
 		pt := f.Dist.At(f.Obs[i], eta)
-		z := eta - f.offset(i)
+		z := eta - f.offset(i) - curved
 		if pt.Expected > 0 {
 			z += pt.Score / pt.Expected
 		}
@@ -278,14 +280,16 @@ func (f *fitter) start(given []float64) (rho []float64, err error) {
 		return pt.Expected, pt.Expected * z
 	}
 	for round := 0; round < 2; round++ {
-		at := func(i int, linear float64) (float64, float64) { return working(i, linear+f.offset(i)) }
+		at := func(i int, linear, tangent float64) (float64, float64) {
+			return working(i, linear+f.offset(i), linear-tangent)
+		}
 		if round == 0 {
-			at = func(i int, _ float64) (float64, float64) {
+			at = func(i int, _, _ float64) (float64, float64) {
 				o := f.Obs[i]
-				return working(i, f.Dist.Linear(f.Dist.Start(o, overall*f.exposure(i))))
+				return working(i, f.Dist.Linear(f.Dist.Start(o, overall*f.exposure(i))), 0)
 			}
 		}
-		if err := f.Engine.Pass(f.ctx, f.beta, at, true); err != nil {
+		if err := f.Engine.Pass(f.ctx, f.beta, at, Working); err != nil {
 			return nil, err
 		}
 		f.haveGram = f.Dist.ConstantWeight()

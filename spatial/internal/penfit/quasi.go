@@ -53,23 +53,23 @@ type workingModel struct {
 	size  float64   // z'Wz
 }
 
-// workingModel linearises at the current coefficients; the engine is left with X'WX.
+// workingModel linearises at the current coefficients; the engine is left with its X'WX.
 func (f *fitter) workingModel() (workingModel, error) {
 	var err error
-	if f.deviance, err = f.evaluate(f.beta, response.Expected, true); err != nil {
+	if f.deviance, err = f.evaluate(f.beta, response.Expected, Working); err != nil {
 		return workingModel{}, err
 	}
 	part := make([]float64, len(f.Obs))
-	err = f.Engine.Pass(f.ctx, f.beta, func(i int, linear float64) (weight, value float64) {
+	err = f.Engine.Pass(f.ctx, f.beta, func(i int, _, tangent float64) (weight, value float64) {
 		pt := f.point[i]
 		if !(pt.Expected > 0) {
 			part[i] = 0
 			return 0, pt.Score
 		}
-		z := linear + pt.Score/pt.Expected
+		z := tangent + pt.Score/pt.Expected
 		part[i] = pt.Expected * z * z
 		return 0, pt.Expected * z
-	}, false)
+	}, NoGram)
 	w := workingModel{right: append([]float64(nil), f.Engine.Score()...)}
 	for _, v := range part {
 		w.size += v

@@ -4,8 +4,6 @@ import (
 	"context"
 	"math"
 
-	"drumlin/spatial/response"
-
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -17,7 +15,7 @@ const uncertaintyStep = 1e-2
 // Steffey 1989, J. Am. Stat. Assoc. 84:717-726; Wood, Pya & Saefken 2016, same journal 111:1548-1563). It comes as a
 // root E, Coefs x k row-major, with J V J' = E E'. Parameters that were given or ended at a bound are left out; where the
 // criterion is flat its curvature is floored, so that the step stays inside what the data can tell. extra is
-// tr(E E' X'WX)/phi, the degrees of freedom it adds. The engine is left factored at the fit.
+// tr(E'G E)/phi, the degrees of freedom it adds. The engine is left factored at the fit.
 func Uncertainty(ctx context.Context, p Problem, r *Result) (root []float64, k int, extra float64, err error) {
 	p.Dist = r.Dist
 	f := newFitter(ctx, p)
@@ -48,8 +46,7 @@ func Uncertainty(ctx context.Context, p Problem, r *Result) (root []float64, k i
 		return nil, 0, 0, err
 	}
 	root = f.rootOfSpread(hessian, index)
-	extra, err = f.information(root, k)
-	return root, k, extra / r.Phi, err
+	return root, k, f.information(root, k) / r.Phi, nil
 }
 
 // hessian differences the exact gradient in the given components.
@@ -104,23 +101,16 @@ func (f *fitter) rootOfSpread(h *mat.SymDense, index []int) []float64 {
 	return root
 }
 
-// information returns tr(E'X'WX E) with the weights at the fit.
-func (f *fitter) information(root []float64, k int) (sum float64, err error) {
-	column, linear := make([]float64, len(f.beta)), make([]float64, len(f.Obs))
-	for c := 0; c < k; c++ {
-		for i := range column {
-			column[i] = root[i*k+c]
-		}
-		if err := f.Engine.LinearTo(f.ctx, linear, column); err != nil {
-			return 0, err
-		}
-		for i, v := range linear {
-			w := f.point[i].Weight
-			if f.Dist.Curvature() == response.Expected {
-				w = f.point[i].Expected
-			}
-			sum += w * v * v
+// information returns tr(E'G E) with the Gram matrix at the fit.
+func (f *fitter) information(root []float64, k int) float64 {
+	e := mat.NewDense(len(f.beta), k, root)
+	var half mat.Dense
+	half.Mul(f.Engine.Gram(), e)
+	sum := 0.0
+	for i := range f.beta {
+		for c := 0; c < k; c++ {
+			sum += e.At(i, c) * half.At(i, c)
 		}
 	}
-	return sum, nil
+	return sum
 }
