@@ -17,10 +17,12 @@ const DefaultAcross = 100
 
 // Spec says what lattice is wanted.
 type Spec struct {
-	X, Y   []float64        // the observations, in the plane; the same place may come often
-	Within orb.MultiPolygon // study area in the plane; nil means the observations' own (see NewStudyArea)
-	Cell   float64          // side of a cell in metres; 0 means that Across decides
-	Across int              // cells along the longer side of the study area's bounding box; 0 means DefaultAcross
+	X, Y []float64 // the observations, in the plane; the same place may come often
+	// Spacing is how far apart observations lie, where X and Y are many points of each; 0 means their median spacing.
+	Spacing float64
+	Within  orb.MultiPolygon // study area in the plane; nil means the observations' own (see NewStudyArea)
+	Cell    float64          // side of a cell in metres; 0 means that Across decides
+	Across  int              // cells along the longer side of the study area's bounding box; 0 means DefaultAcross
 }
 
 // TooManyCellsError is the error of a lattice with more than MostCells cells.
@@ -65,6 +67,9 @@ func NewLattice(sys crs.System, spec Spec) (Lattice, error) {
 	area, err := NewStudyArea(spec.X, spec.Y, spec.Within)
 	if err != nil {
 		return Lattice{}, err
+	}
+	if spec.Spacing > 0 && len(spec.Within) == 0 {
+		area.Reach = spacingsAway * spec.Spacing
 	}
 	if err := onPlane(sys, area.Outline); err != nil {
 		return Lattice{}, err
