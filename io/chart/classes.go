@@ -19,12 +19,7 @@ type classes struct {
 
 // cut decides the classes for a map.
 func cut(m Map) classes {
-	value := m.Value
-	if value == nil {
-		value = m.Dots.Value
-	} else if m.Lattice.Mask != nil {
-		value = inside(m)
-	}
+	value := m.Values()
 	edge := m.Breaks
 	if edge == nil || m.Kind == Chance {
 		edge = Breaks(m.Kind, value)

@@ -1,4 +1,4 @@
-// Package chart draws a map that can be handed over: the field in classes with round breaks, a legend, a scale bar,
+// Package chart draws a map that can be handed over: the field, or places, in classes with round breaks, a legend, a scale bar,
 // a north arrow, ticks on the frame, the study area, the observations, and whatever the reader has to be warned of.
 //
 // A Map says what to show; WritePNG decides how. The page is first laid out as data (boxes in pixels, see layout.go)

@@ -167,22 +167,24 @@ func gallery(t testing.TB) map[string]Map {
 	risk.Breaks, risk.Shared = SharedBreaks(Ratio, []Sample{NewSample(inside(risk), 500)}), true
 	risk.Value = field(square, func(u, v float64) float64 { return 1 + 0.2*u })
 	all["shared-ratio"] = risk
+	shapePictures(t, all)
 	all["single-dot"] = Map{Title: "One place", Legend: "ppm", Lattice: grids.Lattice{CRS: utm}, Dots: Dots{X: []float64{455000}, Y: []float64{5300000}, Value: []float64{4}}}
 	return all
 }
 
-// TestGallery draws every variant once; with -pictures it leaves them to be looked at.
+// TestGallery leaves every variant to be looked at; that each can be drawn is seen by TestSameMapSameBytes.
 func TestGallery(t *testing.T) {
+	if *pictures == "" {
+		t.Skip("no folder named with -pictures")
+	}
 	for name, m := range gallery(t) {
 		var b bytes.Buffer
 		if err := m.WritePNG(&b); err != nil {
 			t.Errorf("%s: %v", name, err)
 			continue
 		}
-		if *pictures != "" {
-			if err := os.WriteFile(filepath.Join(*pictures, name+".png"), b.Bytes(), 0o644); err != nil {
-				t.Fatal(err)
-			}
+		if err := os.WriteFile(filepath.Join(*pictures, name+".png"), b.Bytes(), 0o644); err != nil {
+			t.Fatal(err)
 		}
 	}
 }

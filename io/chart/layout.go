@@ -60,7 +60,7 @@ type label struct {
 	colour color.RGBA
 }
 
-// A swatch shows a class; class -1 is a blank cell.
+// A swatch shows a class; class -1 is no value.
 type swatch struct {
 	box
 	class int
@@ -175,6 +175,9 @@ var sheets = []sheet{{1600, 1240, true}, {1600, 1240, false}, {1240, 1600, true}
 // newPage lays m out on the sheet that shows the map largest. A legend beside the map is preferred: its classes stand in
 // order of height, and their labels need no abbreviating.
 func newPage(m Map) page {
+	if m.Shapes.given() {
+		m.Observations = Points{}
+	}
 	t := &setter{m: m, classes: cut(m), letters: newLetters(), extent: extent(m)}
 	t.shown = m.Observations.count(t.extent)
 	t.blanks = hasBlanks(m, t.classes)
@@ -215,16 +218,7 @@ func (t *setter) filled(s sheet) page {
 }
 
 func hasBlanks(m Map, c classes) bool {
-	value := m.Value
-	if value == nil {
-		value = m.Dots.Value
-	}
-	for k, v := range value {
-		if c.of(v) < 0 && (m.Value == nil || m.Lattice.In(k)) {
-			return true
-		}
-	}
-	return false
+	return slices.ContainsFunc(m.Values(), func(v float64) bool { return c.of(v) < 0 })
 }
 
 // A setter builds the blocks of a page.
@@ -234,7 +228,7 @@ type setter struct {
 	letters *letters
 	extent  orb.Bound
 	shown   int  // observations within the extent
-	blanks  bool // cells of the study area without a value
+	blanks  bool // cells of the study area, dots or shapes without a value
 }
 
 // compose lays the page out on one sheet.

@@ -29,7 +29,8 @@ const (
 	Ratio
 )
 
-// Map is what one picture shows. The zero value is not a map: it needs a Title or a Legend, and either Value or Dots.
+// Map is what one picture shows. The zero value is not a map: it needs a Title or a Legend, and exactly one of Value, Dots
+// and Shapes.
 // WritePNG reads a Map and never changes it.
 type Map struct {
 	// Title heads the picture; it is wrapped, never cut.
@@ -46,10 +47,12 @@ type Map struct {
 	// any other one (a plane laid around data in longitude and latitude) gets degrees.
 	Lattice grids.Lattice
 	// Value is the number in each cell of Lattice. NaN, infinities and magnitudes of 1e300 and over are left blank,
-	// as are cells outside the mask. Nil when the map is made of Dots.
+	// as are cells outside the mask. Nil when the map is made of Dots or of Shapes.
 	Value []float64
 	// Dots are single places with a number each, drawn instead of cells.
 	Dots Dots
+	// Shapes are areas, lines and points with a number each, drawn instead of cells.
+	Shapes Shapes
 
 	// Outline is the edge of the study area in plane metres. May be nil.
 	Outline orb.MultiPolygon
@@ -57,7 +60,8 @@ type Map struct {
 	Zones []Zone
 	// ZoneWord is what the key calls one of Zones; "zone" if empty.
 	ZoneWord string
-	// Observations are drawn as small open marks. Those outside the frame are not shown.
+	// Observations are drawn as small open marks. Those outside the frame are not shown, and none are over Shapes, which
+	// are themselves what was observed.
 	Observations Points
 
 	// Stamp is written large across the map, such as "NOT FOR USE: the fit did not converge". Empty for none.
@@ -80,6 +84,20 @@ type Points struct{ X, Y []float64 }
 // Dots are places in plane metres with a number each; the three slices have the same length.
 type Dots struct{ X, Y, Value []float64 }
 
+// Values returns the numbers that m shows: those of its cells within the mask, of its dots, or of its shapes. It may be
+// the slice that m holds.
+func (m Map) Values() []float64 {
+	switch {
+	case m.Shapes.given():
+		return m.Shapes.Value
+	case m.Value == nil:
+		return m.Dots.Value
+	case m.Lattice.Mask != nil:
+		return inside(m)
+	}
+	return m.Value
+}
+
 // Zone is a named part of the study area, in plane metres.
 type Zone struct {
 	Name string // may be empty
@@ -95,7 +113,7 @@ const (
 // Validate reports the first thing in m that cannot be drawn: slices of unequal length, a lattice without extent,
 // coordinates that are not finite, breaks out of order, more text than a page holds.
 func (m Map) Validate() error {
-	for _, check := range []func() error{m.checkCells, m.checkPoints, m.checkBreaks, m.checkText} {
+	for _, check := range []func() error{m.checkOne, m.checkCells, m.checkPoints, m.Shapes.check, m.checkBreaks, m.checkText} {
 		if err := check(); err != nil {
 			return fmt.Errorf("chart: %w", err)
 		}
@@ -103,17 +121,29 @@ func (m Map) Validate() error {
 	return nil
 }
 
-func (m Map) checkCells() error {
-	l := m.Lattice
+// checkOne returns an error unless the values come in one of the three ways.
+func (m Map) checkOne() error {
+	cells, dots, shapes := m.Value != nil, m.Dots.X != nil, m.Shapes.given()
 	switch {
 	case m.Kind < Level || m.Kind > Ratio:
 		return fmt.Errorf("unknown kind of map %d", m.Kind)
-	case m.Value == nil && m.Dots.X == nil:
-		return errors.New("neither cells nor dots to draw")
+	case !cells && !dots && !shapes:
+		return errors.New("neither cells nor dots nor shapes to draw")
+	case cells && dots:
+		return errors.New("both cells and dots given")
+	case cells && shapes:
+		return errors.New("both cells and shapes given")
+	case dots && shapes:
+		return errors.New("both dots and shapes given")
+	}
+	return nil
+}
+
+func (m Map) checkCells() error {
+	l := m.Lattice
+	switch {
 	case m.Value == nil:
 		return nil
-	case m.Dots.X != nil:
-		return errors.New("both cells and dots given")
 	case l.NX <= 0 || l.NY <= 0 || l.NX > len(m.Value) || l.NX*l.NY != len(m.Value):
 		return fmt.Errorf("%d values for %d x %d cells", len(m.Value), l.NX, l.NY)
 	case l.Mask != nil && len(l.Mask) != len(m.Value):
@@ -132,7 +162,7 @@ func (m Map) checkPoints() error {
 	if len(o.X) != len(o.Y) {
 		return fmt.Errorf("observations have %d x and %d y", len(o.X), len(o.Y))
 	}
-	if m.Value == nil && len(d.X) == 0 {
+	if m.Dots.X != nil && len(d.X) == 0 {
 		return errors.New("no dots to draw")
 	}
 	if err := checkPlaces("dot", d.X, d.Y); err != nil {

@@ -1,19 +1,29 @@
 package chart
 
 import (
+	"cmp"
 	"slices"
 
 	"github.com/paulmach/orb"
 )
 
-// placeNames sets the zones' names inside their zones, the larger zones first. A name that would leave the frame or touch another
-// is left out.
+// A nameplate is a name where it would stand, and how much room there is.
+type nameplate struct {
+	label
+	room  float64
+	clear box // what no line or point may be in
+}
+
+// placeNames sets the names of zones and then those of shapes, the larger ones first. A name that would leave the frame or touch
+// another is left out.
 func (p page) placeNames() []label {
-	type named struct {
-		label
-		room float64
-	}
-	var all []named
+	placed := p.free(nil, p.zoneNames())
+	return p.free(placed, p.shapeNames())
+}
+
+// zoneNames are the zones' names inside their zones.
+func (p page) zoneNames() []nameplate {
+	var all []nameplate
 	for _, z := range p.m.Zones {
 		lines := p.letters.wrap(z.Name, nameStyle, 1e9)
 		if len(lines) == 0 {
@@ -24,19 +34,15 @@ func (p page) placeNames() []label {
 			continue
 		}
 		w, h := p.letters.width(lines[0], nameStyle), nameStyle.line()
-		all = append(all, named{label{box{x - w/2, y - h/2, x + w/2, y + h/2}, lines[0], nameStyle, ink}, room})
+		all = append(all, nameplate{label: label{box{x - w/2, y - h/2, x + w/2, y + h/2}, lines[0], nameStyle, ink}, room: room})
 	}
-	slices.SortStableFunc(all, func(a, b named) int {
-		switch {
-		case a.room > b.room:
-			return -1
-		case a.room < b.room:
-			return 1
-		}
-		return 0
-	})
+	return all
+}
+
+// free adds those names to placed that stay within the frame and clear of one another, the ones with more room first.
+func (p page) free(placed []label, all []nameplate) []label {
+	slices.SortStableFunc(all, func(a, b nameplate) int { return cmp.Compare(b.room, a.room) })
 	paper := box{4, 4, float64(p.view.w) - 4, float64(p.view.h) - 4}
-	var placed []label
 	for _, n := range all {
 		free := n.within(paper)
 		for _, o := range placed {

@@ -53,7 +53,29 @@ func mapOf(t *rapid.T, systems []crs.System) Map {
 	if rapid.Bool().Draw(t, "zones") {
 		m.Zones = bands(l, "North of the dyke", "", "South", text("zone", 5))
 	}
+	if rapid.Bool().Draw(t, "shapes") {
+		m.Value, m.Shapes = nil, shapesOf(t, l, func(u, v float64) float64 { return scale * shape(u, v) })
+	}
 	return m
+}
+
+// shapesOf draws areas, lines and points that fill a lattice, some of them with names.
+func shapesOf(t *rapid.T, l grids.Lattice, f func(u, v float64) float64) Shapes {
+	nx, ny := rapid.IntRange(1, 5).Draw(t, "shapes across"), rapid.IntRange(1, 5).Draw(t, "shapes up")
+	var s Shapes
+	for k := range nx * ny {
+		u, v := float64(k%nx)/float64(nx), float64(k/nx)/float64(ny)
+		at := func(du, dv float64) orb.Point {
+			return orb.Point{l.X0 + (u+du/float64(nx))*l.Cell*float64(l.NX), l.Y0 + (v+dv/float64(ny))*l.Cell*float64(l.NY)}
+		}
+		s.Geometry = append(s.Geometry, rapid.SampledFrom([]orb.Geometry{
+			orb.Polygon{{at(0, 0), at(1, 0), at(1, 1), at(0, 1), at(0, 0)}, {at(0.2, 0.2), at(0.4, 0.2), at(0.2, 0.4), at(0.2, 0.2)}},
+			orb.LineString{at(0, 0), at(0.5, 0.7), at(1, 1)}, orb.MultiPoint{at(0.1, 0.9), at(0.5, 0.5)}, orb.LineString{at(0.5, 0.5)}, orb.Polygon{{at(0, 1)}},
+		}).Draw(t, "geometry"))
+		s.Value = append(s.Value, f(u, v))
+		s.Name = append(s.Name, rapid.SampledFrom([]string{"", "Mere", "Upper Tavish on the Marsh"}).Draw(t, "name"))
+	}
+	return s
 }
 
 func systems(t testing.TB) []crs.System {
@@ -81,11 +103,11 @@ func checkPage(t interface{ Errorf(string, ...any) }, p page) {
 	inner := box{0, 0, float64(p.view.w), float64(p.view.h)}
 	for i, n := range p.names {
 		if !n.within(inner) {
-			t.Errorf("zone name %q %v leaves the frame", n.text, n.box)
+			t.Errorf("name %q %v leaves the frame", n.text, n.box)
 		}
 		for _, o := range p.names[:i] {
 			if n.overlaps(o.box) {
-				t.Errorf("zone names %q and %q overlap", n.text, o.text)
+				t.Errorf("names %q and %q overlap", n.text, o.text)
 			}
 		}
 	}
@@ -137,6 +159,7 @@ func (n *named) Errorf(format string, args ...any) {
 
 // Independent of the boxes' own arithmetic: on the painted page there is no ink outside the boxes.
 func TestInkStaysInItsBoxes(t *testing.T) {
+	t.Parallel()
 	for name, m := range gallery(t) {
 		p := newPage(m)
 		img := paint(p)
@@ -253,6 +276,7 @@ func TestNeverStretched(t *testing.T) {
 }
 
 func TestSameMapSameBytes(t *testing.T) {
+	t.Parallel()
 	for name, m := range gallery(t) {
 		var a, b bytes.Buffer
 		if err := errors.Join(m.WritePNG(&a), m.WritePNG(&b)); err != nil {

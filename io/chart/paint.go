@@ -32,12 +32,17 @@ func paint(p page) *image.RGBA {
 }
 
 func (p page) paintMap(d pen) {
-	if p.m.Value != nil {
+	switch {
+	case p.m.Shapes.given():
+		p.paintShapes(d)
+	case p.m.Value == nil:
+		p.paintZones(d)
+		p.paintOutline(d)
+		p.paintDots(d.img, p.m.Dots)
+	default:
 		p.paintCells(d.img)
-	}
-	p.paintZones(d)
-	if p.m.Value == nil {
-		p.paintDots(d.img)
+		p.paintZones(d)
+		p.paintOutline(d)
 	}
 	p.paintObservations(d.img)
 	for _, l := range p.names {
@@ -100,31 +105,42 @@ func cellAt(v, origin, cell float64, n int) int {
 	return -1
 }
 
-func (p page) paintDots(img *image.RGBA) {
-	d := p.m.Dots
+// colouring returns the colour of a class at a pixel; class -1 is no value.
+func (p page) colouring() func(class, px, py int) color.RGBA {
+	fill, hatch := p.classes.colours()
+	blank := func(int, int) color.RGBA { return paper }
+	if p.m.Shapes.given() {
+		blank = blankShape
+	}
+	return func(class, px, py int) color.RGBA {
+		switch {
+		case class < 0:
+			return blank(px, py)
+		case p.classes.hatched[class] && hatchedAt(px, py):
+			return hatch[class]
+		}
+		return fill[class]
+	}
+}
+
+func (p page) paintDots(img *image.RGBA, d Dots) {
 	r := dotRadius(len(d.X), float64(p.view.w)*float64(p.view.h))
 	ring, full := discs(0, r+1.6), discs(0, r)
-	fill, hatch := p.classes.colours()
+	colour := p.colouring()
 	for i := range d.X {
 		x, y := p.view.toPixel(d.X[i], d.Y[i])
 		stamp(img, &ring, x, y, func(int, int) color.RGBA { return ink })
 		k := p.classes.of(d.Value[i])
-		stamp(img, &full, x, y, func(px, py int) color.RGBA {
-			switch {
-			case k < 0:
-				return paper
-			case p.classes.hatched[k] && hatchedAt(px, py):
-				return hatch[k]
-			}
-			return fill[k]
-		})
+		stamp(img, &full, x, y, func(px, py int) color.RGBA { return colour(k, px, py) })
 	}
 }
 
 // dotRadius shrinks the dots as they crowd, so that they cover about a third of the map at most.
 func dotRadius(n int, area float64) float64 {
-	return min(max(0.33*math.Sqrt(area/float64(n)), 3), 13)
+	return min(max(0.33*math.Sqrt(area/float64(n)), 3), dotLargest)
 }
+
+const dotLargest = 13
 
 // crowd is the number of observations from which marks are thinned.
 const crowd = 600
@@ -191,6 +207,9 @@ func (p page) paintZones(d pen) {
 	}
 	d.stroke(zones, zoneHalo, halo)
 	d.stroke(zones, zoneWidth, ink)
+}
+
+func (p page) paintOutline(d pen) {
 	outline := p.rings(d, p.m.Outline)
 	d.stroke(outline, outlineHalo, halo)
 	d.stroke(outline, outlineWidth, ink)
@@ -255,13 +274,9 @@ func (p page) paintFrame(d pen) {
 }
 
 func (p page) paintLegend(d pen) {
-	fill, hatch := p.classes.colours()
+	colour := p.colouring()
 	for _, s := range p.swatches {
-		c, h := paper, paper
-		if s.class >= 0 {
-			c, h = fill[s.class], hatch[s.class]
-		}
-		paintSwatch(d.img, s.box, c, h)
+		paintSwatch(d.img, s.box, func(px, py int) color.RGBA { return colour(s.class, px, py) })
 		d.stroke(d.rect(s.box), 1.6, ink)
 	}
 	for _, k := range p.keys {
@@ -269,14 +284,10 @@ func (p page) paintLegend(d pen) {
 	}
 }
 
-func paintSwatch(img *image.RGBA, b box, fill, hatch color.RGBA) {
+func paintSwatch(img *image.RGBA, b box, colour func(px, py int) color.RGBA) {
 	for py := int(b.y0 + 0.5); py < int(b.y1+0.5); py++ {
 		for px := int(b.x0 + 0.5); px < int(b.x1+0.5); px++ {
-			c := fill
-			if hatchedAt(px, py) {
-				c = hatch
-			}
-			img.SetRGBA(px, py, c)
+			img.SetRGBA(px, py, colour(px, py))
 		}
 	}
 }

@@ -122,11 +122,6 @@ func stamp(img *image.RGBA, masks *[quarters * quarters]disc, x, y float64, colo
 		if a == 0 || px < b.Min.X || py < b.Min.Y || px >= b.Max.X || py >= b.Max.Y {
 			continue
 		}
-		c := colour(px, py)
-		at := img.PixOffset(px, py)
-		for ch, v := range [3]uint8{c.R, c.G, c.B} {
-			old := float64(img.Pix[at+ch])
-			img.Pix[at+ch] = uint8(old + a*(float64(v)-old) + 0.5)
-		}
+		blend(img, px, py, colour(px, py), a)
 	}
 }

@@ -34,18 +34,25 @@ func (v view) bound() orb.Bound {
 	return orb.Bound{Min: orb.Point{x0, y0}, Max: orb.Point{x1, y1}}
 }
 
-// extent is the part of the plane a map has to show: the cells within the mask, or the dots, and the study area, with a margin.
+// extent is the part of the plane a map has to show: the cells within the mask, or the dots or shapes, and the study area,
+// with a margin.
 func extent(m Map) orb.Bound {
-	b := cellBound(m)
-	if m.Value == nil {
+	var b orb.Bound
+	switch {
+	case m.Shapes.given():
+		b = m.Shapes.bound()
+	case m.Value == nil:
 		b = pointBound(m.Dots.X, m.Dots.Y)
+	default:
+		b = cellBound(m)
 	}
 	if o, ok := areaBound(m.Outline); ok {
 		b = b.Union(o)
 	}
 	w, h := b.Max[0]-b.Min[0], b.Max[1]-b.Min[1]
-	if side := max(w, h); side == 0 {
-		w, h = 1, 1 // a single dot: one metre around it, or what its coordinates still resolve
+	const nothing = 1e-9 // metres
+	if side := max(w, h); side < nothing {
+		w, h = 1, 1 // a single point: one metre around it, or what its coordinates still resolve
 		if least := 1e-6 * max(math.Abs(b.Min[0]), math.Abs(b.Min[1])); least > 1 {
 			w, h = least, least
 		}
@@ -53,8 +60,8 @@ func extent(m Map) orb.Bound {
 		w, h = max(w, side/slimmest), max(h, side/slimmest)
 	}
 	margin := max(0.03*min(w, h), 0.01*max(w, h))
-	if m.Value == nil {
-		margin *= 2
+	if m.Value == nil && !m.Shapes.areasOnly() {
+		margin *= 2 // marks are wider than the places they stand for
 	}
 	cx, cy := b.Min[0]/2+b.Max[0]/2, b.Min[1]/2+b.Max[1]/2
 	return orb.Bound{Min: orb.Point{cx - w/2 - margin, cy - h/2 - margin}, Max: orb.Point{cx + w/2 + margin, cy + h/2 + margin}}

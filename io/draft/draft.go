@@ -31,6 +31,13 @@ type Draft struct {
 	Chance                                             []float64 // nil without a threshold
 	Relative, RelativeLower, RelativeUpper             []float64 // nil without a reference
 
+	// The places that observations belong to, where they are areas, lines or points with rows of their own: each an
+	// orb.Polygon, MultiPolygon, LineString, MultiLineString, Point or MultiPoint in plane metres, with the smoothed value
+	// in the unit. All nil without such places; ShapeName may be nil beside them, and ShapeRelative is without a reference.
+	ShapeOf                      []orb.Geometry
+	ShapeName                    []string
+	ShapeEstimate, ShapeRelative []float64
+
 	Outline        orb.MultiPolygon // of the study area, in plane metres; may be nil
 	Zones          []chart.Zone
 	PlaceX, PlaceY []float64 // distinct places of the observations, in plane metres

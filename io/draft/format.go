@@ -5,6 +5,9 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
+
+	"github.com/paulmach/orb"
 
 	"drumlin/grids"
 	"drumlin/grids/crs"
@@ -14,7 +17,7 @@ import (
 
 // Version is the layout this program writes, and the newest it reads. A change of the layout, of a field of the head, or
 // of what a number means is a new version.
-const Version = 1
+const Version = 2
 
 // The limits leave room for the largest lattice with all its columns, and for a hundred thousand zones with long names.
 const (
@@ -47,6 +50,7 @@ type head struct {
 	X0, Y0, Cell           float64
 	NX, NY                 int
 	ZoneNames              []string
+	ShapeNames             []string
 	ColumnNames            []string
 	Lengths                []int // of the columns; absent for none
 	Cells, Counts          int   // lengths; absent for none
@@ -61,6 +65,7 @@ type column struct {
 	value *[]float64
 	may   bool // be nil
 	apart bool // not a value a place
+	shape bool // a value a shape; not in layout 1
 }
 
 // columns lists the slices of d in the order in which they are stored; vertices are those of the shapes.
@@ -74,6 +79,8 @@ func (d *Draft) columns(vertices *[]float64) []column {
 		{name: "relative_lower", value: &d.RelativeLower, may: true}, {name: "relative_upper", value: &d.RelativeUpper, may: true},
 		{name: "place_x", value: &d.PlaceX, apart: true}, {name: "place_y", value: &d.PlaceY, apart: true},
 		{name: "vertices", value: vertices, apart: true},
+		{name: "shape_estimate", value: &d.ShapeEstimate, apart: true, shape: true},
+		{name: "shape_relative", value: &d.ShapeRelative, apart: true, shape: true},
 	}
 }
 
@@ -91,7 +98,7 @@ func Write(w io.Writer, d Draft) error {
 	h := head{Response: d.Response, Unit: d.Unit, Factor: d.Factor, Ratio: d.Ratio, Spread: d.Spread, Threshold: d.Threshold, Reference: d.Reference,
 		Title: d.Title, Subtitle: d.Subtitle, Stamp: d.Stamp, Foot: d.Foot,
 		X0: d.Lattice.X0, Y0: d.Lattice.Y0, Cell: d.Lattice.Cell, NX: d.Lattice.NX, NY: d.Lattice.NY,
-		Cells: length(d.Cells), Counts: length(shapes.count)}
+		Cells: length(d.Cells), Counts: length(shapes.count), ShapeNames: d.ShapeName}
 	if d.Lattice.CRS != nil {
 		h.CRS = d.Lattice.CRS.Code()
 	}
@@ -170,7 +177,7 @@ func (h head) assemble(data []byte) (Draft, error) {
 		d.Lattice.CRS = system
 	}
 	var shapes flat
-	list := d.columns(&shapes.vertex)
+	list := h.known(d.columns(&shapes.vertex))
 	if len(h.Lengths) != len(list) || len(h.ColumnNames) != len(list) {
 		return Draft{}, kind.Damaged("it has %d columns, not %d", len(h.Lengths), len(list))
 	}
@@ -190,7 +197,25 @@ func (h head) assemble(data []byte) (Draft, error) {
 	if h.NX >= 1 && h.Lengths[0] == absent && h.Lengths[1] == absent {
 		d.X, d.Y = centres(d.Lattice, d.Cells)
 	}
-	return d, shapes.give(&d, h.ZoneNames)
+	if err := shapes.give(&d, h.ZoneNames); err != nil {
+		return Draft{}, err
+	}
+	if err := shapes.giveShapes(&d, h.ShapeNames); err != nil {
+		return Draft{}, err
+	}
+	if len(shapes.count) != 0 || len(shapes.vertex) != 0 {
+		return Draft{}, kind.Damaged("its shapes have parts too many")
+	}
+	return d, nil
+}
+
+// known is list as the layout of the file has it: layout 1 ends before the columns of the shapes.
+func (h *head) known(list []column) []column {
+	first := slices.IndexFunc(list, func(c column) bool { return c.shape })
+	if len(h.ColumnNames) == first {
+		return list[:first]
+	}
+	return list
 }
 
 // cut takes n elements of some bytes each off data; it reports whether they are there.
@@ -244,8 +269,25 @@ func (f *flat) give(d *Draft, names []string) error {
 		}
 		d.Zones[i] = chart.Zone{Name: name, Area: area}
 	}
-	if len(f.count) != 0 || len(f.vertex) != 0 {
-		return kind.Damaged("its shapes have parts too many")
+	return nil
+}
+
+// giveShapes sets the places of d that are shapes, one for each of their estimates.
+func (f *flat) giveShapes(d *Draft, names []string) error {
+	n := len(d.ShapeEstimate)
+	if n > len(f.count) {
+		return kind.Damaged("it has %d places with an estimate and shapes for fewer", n)
+	}
+	d.ShapeName = names
+	if d.ShapeEstimate == nil {
+		return nil
+	}
+	d.ShapeOf = make([]orb.Geometry, n)
+	for i := range d.ShapeOf {
+		var ok bool
+		if d.ShapeOf[i], ok = f.takeShape(); !ok {
+			return kind.Damaged("its place %d does not fit the file", i+1)
+		}
 	}
 	return nil
 }

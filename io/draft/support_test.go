@@ -2,6 +2,7 @@ package draft_test
 
 import (
 	"bytes"
+	"fmt"
 	"math"
 	"reflect"
 	"testing"
@@ -65,12 +66,34 @@ func full(t testing.TB) draft.Draft {
 		Outline:       orb.MultiPolygon{{{{0, 0}, {1.0 / 3, 0}, {0, 5e-324}, {0, 0}}, {}}, nil},
 		Zones: []chart.Zone{{Name: "Pellworm", Area: orb.MultiPolygon{{{{-1234, 99}, {-1233, 99}, {-1233, 100}, {-1234, 99}}}}},
 			{Name: ""}, {Name: "Mere", Area: orb.MultiPolygon{}}, {Name: "Tavish", Area: orb.MultiPolygon{{nil}}}},
-		PlaceX: []float64{-1234, -1233.5, -1233.25}, PlaceY: []float64{99, 99.5, math.Copysign(0, -1)}}
+		PlaceX: []float64{-1234, -1233.5, -1233.25}, PlaceY: []float64{99, 99.5, math.Copysign(0, -1)},
+		ShapeOf: shapes(), ShapeName: []string{"Mere", "", "Path", "Paths", "Well", "Wells <é>"},
+		ShapeEstimate: []float64{1.0 / 3, 2, math.NaN(), 5e-324, math.Copysign(0, -1), 7}, ShapeRelative: []float64{0.1, 0.5, 1, math.Inf(1), 2, 3}}
 	for _, c := range cells {
 		d.Cells = append(d.Cells, int32(c))
 	}
 	d.CV[2], d.Lower[0] = math.Float64frombits(0x7ff8_0000_0000_0123), math.Inf(-1)
 	return d
+}
+
+// shapes are places of every kind, some of them in parts; the last ends with a ring.
+func shapes() []orb.Geometry {
+	ring := orb.Ring{{-1234, 99}, {-1233, 99}, {-1233, 1.0 / 3}, {-1234, 99}}
+	return []orb.Geometry{
+		orb.Polygon{ring, {{-1233.5, 98}, {-1233.25, 98}, {-1233.5, 97}, {-1233.5, 98}}},
+		orb.LineString{{-1234, 99}, {-1233, math.Copysign(0, -1)}},
+		orb.MultiLineString{{{-1234, 99}, {-1233, 100}}, {{5e-324, 1}}},
+		orb.Point{-1233.1, 99.9},
+		orb.MultiPoint{{-1233.2, 99.1}, {1.0 / 7, 2}},
+		orb.MultiPolygon{{ring}, {ring[1:]}},
+	}
+}
+
+// hollow are shapes without vertices, which are stored like any other.
+func hollow() []orb.Geometry {
+	return []orb.Geometry{orb.Polygon(nil), orb.Polygon{}, orb.Polygon{nil, {}}, orb.MultiPolygon(nil), orb.MultiPolygon{}, orb.MultiPolygon{nil, {}, {nil}},
+		orb.LineString(nil), orb.LineString{}, orb.MultiLineString(nil), orb.MultiLineString{}, orb.MultiLineString{nil, {}}, orb.MultiPoint(nil), orb.MultiPoint{},
+		orb.Point{math.NaN(), math.Inf(-1)}}
 }
 
 // own is a draft at places of the user's own, without anything that may be left out.
@@ -90,7 +113,11 @@ func drafts(t testing.TB) map[string]draft.Draft {
 	moved.Outline[0][0][1] = orb.Point{math.NaN(), math.Copysign(0, -1)}
 	local := full(t)
 	local.Lattice.CRS = system(t, "local")
-	return map[string]draft.Draft{"full": full(t), "own places": own(t), "no cells and no system": bare, "a place off its centre": moved, "local": local}
+	odd := own(t)
+	odd.ShapeOf, odd.ShapeEstimate = hollow(), make([]float64, len(hollow()))
+	none := own(t)
+	none.ShapeOf, none.ShapeEstimate, none.ShapeRelative, none.ShapeName = []orb.Geometry{}, []float64{}, []float64{}, []string{}
+	return map[string]draft.Draft{"shapes without vertices": odd, "no shapes": none, "full": full(t), "own places": own(t), "no cells and no system": bare, "a place off its centre": moved, "local": local}
 }
 
 // exactly compares to the bit: NaN equals itself, 0 is not -0, and nil is not the same as empty.
@@ -100,24 +127,47 @@ var exactly = []cmp.Option{
 	cmp.Exporter(func(reflect.Type) bool { return true }),
 }
 
-func plain(area orb.MultiPolygon) (shapes [][][][2]float64) {
-	if area != nil {
-		shapes = make([][][][2]float64, len(area))
+// A plainShape is a geometry without methods.
+type plainShape struct {
+	Kind  string
+	Parts [][][][2]float64
+}
+
+func plain(g orb.Geometry) plainShape {
+	s := plainShape{Kind: fmt.Sprintf("%T", g)}
+	switch g := g.(type) {
+	case orb.Point:
+		s.Parts = [][][][2]float64{{{g}}}
+	case orb.MultiPoint:
+		s.Parts = [][][][2]float64{{plainly(g)}}
+	case orb.LineString:
+		s.Parts = [][][][2]float64{{plainly(g)}}
+	case orb.Ring:
+		s.Parts = [][][][2]float64{{plainly(g)}}
+	case orb.MultiLineString:
+		s.Parts = [][][][2]float64{each(g, plainly[orb.LineString])}
+	case orb.Polygon:
+		s.Parts = [][][][2]float64{each(g, plainly[orb.Ring])}
+	case orb.MultiPolygon:
+		s.Parts = each(g, func(p orb.Polygon) [][][2]float64 { return each(p, plainly[orb.Ring]) })
 	}
-	for i, polygon := range area {
-		if polygon != nil {
-			shapes[i] = make([][][2]float64, len(polygon))
-		}
-		for j, ring := range polygon {
-			if ring != nil {
-				shapes[i][j] = make([][2]float64, len(ring))
-			}
-			for k, p := range ring {
-				shapes[i][j][k] = p
-			}
-		}
+	return s
+}
+
+func plainly[S ~[]orb.Point](points S) [][2]float64 {
+	return each(points, func(p orb.Point) [2]float64 { return p })
+}
+
+// each is the slice of what f makes of each element; nil for nil.
+func each[S ~[]T, T, U any](all S, f func(T) U) []U {
+	if all == nil {
+		return nil
 	}
-	return shapes
+	out := make([]U, len(all))
+	for i, v := range all {
+		out[i] = f(v)
+	}
+	return out
 }
 
 func write(t testing.TB, d draft.Draft) []byte {

@@ -5,6 +5,8 @@ import (
 	"fmt"
 	"math"
 
+	"github.com/paulmach/orb"
+
 	"drumlin/grids"
 )
 
@@ -19,7 +21,7 @@ func (d Draft) Validate() error {
 }
 
 func (d Draft) check() error {
-	for _, check := range []func() error{d.checkLattice, d.checkCells, d.checkColumns, d.checkNumbers} {
+	for _, check := range []func() error{d.checkLattice, d.checkCells, d.checkColumns, d.checkShapes, d.checkNumbers} {
 		if err := check(); err != nil {
 			return err
 		}
@@ -73,6 +75,28 @@ func (d Draft) checkColumns() error {
 	}
 	if (d.Chance != nil) != (d.Threshold != nil) {
 		return errors.New("a chance and a threshold go together")
+	}
+	return nil
+}
+
+func (d Draft) checkShapes() error {
+	n := len(d.ShapeOf)
+	switch {
+	case len(d.ShapeEstimate) != n || (d.ShapeEstimate == nil) != (d.ShapeOf == nil):
+		return fmt.Errorf("%d shapes of places have %d estimates", n, len(d.ShapeEstimate))
+	case d.ShapeName != nil && (len(d.ShapeName) != n || d.ShapeOf == nil):
+		return fmt.Errorf("%d shapes of places have %d names", n, len(d.ShapeName))
+	case d.ShapeRelative != nil && (len(d.ShapeRelative) != n || d.ShapeOf == nil):
+		return fmt.Errorf("%d shapes of places have %d relative risks", n, len(d.ShapeRelative))
+	}
+	for i, g := range d.ShapeOf {
+		switch g.(type) {
+		case orb.Point, orb.MultiPoint, orb.LineString, orb.MultiLineString, orb.Polygon, orb.MultiPolygon:
+		case nil:
+			return fmt.Errorf("place %d has no shape", i+1)
+		default:
+			return fmt.Errorf("place %d is a %s, which cannot be drawn", i+1, g.GeoJSONType())
+		}
 	}
 	return nil
 }

@@ -29,6 +29,11 @@ type Zone struct {
 
 const badLength = "vector: a column has another length than the features"
 
+const (
+	faultKind   = "other-kind"
+	adviceKinds = "give points, lines or polygons, one kind a place"
+)
+
 // WritePoints writes a point for each of x and y, in metres in the plane of sys, with the columns as properties.
 // Coordinates and errors are as in WriteCells. It panics if x, y and the columns differ in length.
 func WritePoints(w io.Writer, sys crs.System, x, y []float64, columns []Column) error {
@@ -40,14 +45,7 @@ func WritePoints(w io.Writer, sys crs.System, x, y []float64, columns []Column) 
 		return err
 	}
 	for row := range x {
-		p, err := out.outward(orb.Point{x[row], y[row]})
-		if err != nil {
-			return err
-		}
-		out.begin(row, "")
-		out.line = append(out.line, `"geometry":{"type":"Point","coordinates":`...)
-		out.position(p)
-		if err := out.end(); err != nil {
+		if err := out.feature(row, "", orb.Point{x[row], y[row]}); err != nil {
 			return err
 		}
 	}
@@ -69,6 +67,35 @@ func WriteZones(w io.Writer, sys crs.System, zones []Zone, columns []Column) err
 	return out.close()
 }
 
+// WritePlaces writes the places with their names as the property "place" and the columns after it. A shape is in metres
+// in the plane of sys: a Point, MultiPoint, LineString, MultiLineString, Polygon or MultiPolygon, written as the kind it
+// is; one that is nil or has no positions is written as null, which is a feature without a location (RFC 7946 section
+// 3.2). Coordinates are as in WriteCells; where a line crosses the antimeridian its longitudes run on past 180 or -180,
+// as an outline's do, and its middle lies between them. Errors are those of WriteCells, with the name of the place, and
+// one for a shape of another kind. It panics if names, shapes and the columns differ in length.
+func WritePlaces(w io.Writer, sys crs.System, names []string, shapes []orb.Geometry, columns []Column) error {
+	if len(names) != len(shapes) {
+		panic(badLength)
+	}
+	out, err := newWriter(w, sys, len(shapes), columns, "place")
+	if err != nil {
+		return err
+	}
+	for row, shape := range shapes {
+		if shape != nil && shape.Bound().IsEmpty() {
+			shape = nil
+		}
+		written, err := out.turned(shape)
+		if err != nil {
+			return fmt.Errorf("place %q: %w", names[row], err)
+		}
+		if err := out.put(row, names[row], written); err != nil {
+			return err
+		}
+	}
+	return out.close()
+}
+
 // writer writes a FeatureCollection, one feature a line.
 type writer struct {
 	to      *bufio.Writer
@@ -76,7 +103,7 @@ type writer struct {
 	globe   bool // coordinates are turned into longitude and latitude
 	columns []Column
 	keys    [][]byte // the names of the columns as JSON, with the colon
-	zone    []byte   // the key of the zone's name; nil without one
+	naming  []byte   // the key of the features' names; nil without one
 	line    []byte   // the feature being written
 	started bool
 }
@@ -97,7 +124,7 @@ func (out *writer) describe(sys crs.System, n int, columns []Column, reserved ..
 	taken := map[string]bool{}
 	for _, name := range reserved {
 		taken[name] = true
-		out.zone = append(quote(name), ':')
+		out.naming = append(quote(name), ':')
 	}
 	for _, c := range columns {
 		if c.Value != nil && len(c.Value) != n || c.Value == nil && len(c.Text) != n {
@@ -123,43 +150,85 @@ func quote(s string) []byte {
 }
 
 // polygons writes one feature: a Polygon if the shape is a single one, a MultiPolygon otherwise.
-func (out *writer) polygons(row int, zone string, shape orb.MultiPolygon) error {
-	parts := make(orb.MultiPolygon, len(shape))
-	for i, p := range shape {
+func (out *writer) polygons(row int, name string, shape orb.MultiPolygon) error {
+	if len(shape) == 1 {
+		return out.feature(row, name, shape[0])
+	}
+	return out.feature(row, name, shape)
+}
+
+// feature writes one feature with points or areas of the plane.
+func (out *writer) feature(row int, name string, shape orb.Geometry) error {
+	written, err := out.turned(shape)
+	if err != nil {
+		return err
+	}
+	return out.put(row, name, written)
+}
+
+// put writes one feature with a geometry as turned gives it.
+func (out *writer) put(row int, name string, written orb.Geometry) error {
+	out.begin(row, name)
+	out.geometry(written)
+	return out.end()
+}
+
+// turned returns a shape of the plane as it is written, each part on its own side of the antimeridian.
+func (out *writer) turned(shape orb.Geometry) (orb.Geometry, error) {
+	switch shape := shape.(type) {
+	case nil:
+		return nil, nil
+	case orb.Point:
+		return out.outward(shape)
+	case orb.MultiPoint:
+		return each(shape, out.outward)
+	case orb.LineString:
+		return out.path(shape)
+	case orb.MultiLineString:
+		return each(shape, out.path)
+	case orb.Polygon:
+		return out.polygon(shape)
+	case orb.MultiPolygon:
+		return each(shape, out.polygon)
+	}
+	return nil, &Fault{faultKind, &Error{What: fmt.Sprintf("a %s is not written", shape.GeoJSONType()), Advice: adviceKinds}}
+}
+
+// each turns the parts of a shape, and returns the first error.
+func each[S ~[]P, P any](parts S, turn func(P) (P, error)) (S, error) {
+	written := make(S, len(parts))
+	for i, part := range parts {
 		var err error
-		if parts[i], err = out.polygon(p); err != nil {
-			return err
+		if written[i], err = turn(part); err != nil {
+			return nil, err
 		}
 	}
-	out.begin(row, zone)
-	if len(parts) == 1 {
-		out.line = append(out.line, `"geometry":{"type":"Polygon","coordinates":`...)
-		out.rings(parts[0])
-		return out.end()
+	return written, nil
+}
+
+// path returns a line as it is written. It is not cut at the antimeridian either, for the reasons polygon has.
+func (out *writer) path(line orb.LineString) (orb.LineString, error) {
+	written, err := each(line, out.outward)
+	if err == nil && out.globe {
+		shift(unroll(orb.Ring(written)), 0) // both in place
 	}
-	out.line = append(out.line, `"geometry":{"type":"MultiPolygon","coordinates":[`...)
-	for i, p := range parts {
-		out.comma(i)
-		out.rings(p)
-	}
-	out.line = append(out.line, ']')
-	return out.end()
+	return written, err
 }
 
 // begin starts a feature with its properties. They come before the geometry so that a person paging through the file
 // sees them.
-func (out *writer) begin(row int, zone string) {
+func (out *writer) begin(row int, name string) {
 	if out.started {
 		out.line = append(out.line, ',')
 	}
 	out.started = true
 	out.line = append(out.line, "\n"+`{"type":"Feature","properties":{`...)
-	if out.zone != nil {
-		out.line = append(out.line, out.zone...)
-		out.line = append(out.line, quote(zone)...)
+	if out.naming != nil {
+		out.line = append(out.line, out.naming...)
+		out.line = append(out.line, quote(name)...)
 	}
 	for i, c := range out.columns {
-		if i > 0 || out.zone != nil {
+		if i > 0 || out.naming != nil {
 			out.line = append(out.line, ',')
 		}
 		out.line = append(out.line, out.keys[i]...)
@@ -175,9 +244,9 @@ func (out *writer) begin(row int, zone string) {
 	out.line = append(out.line, `},`...)
 }
 
-// end closes the geometry and the feature and hands the line on.
+// end closes the feature and hands the line on.
 func (out *writer) end() error {
-	out.line = append(out.line, `}}`...)
+	out.line = append(out.line, '}')
 	_, err := out.to.Write(out.line)
 	out.line = out.line[:0]
 	return err
@@ -188,16 +257,40 @@ func (out *writer) close() error {
 	return out.to.Flush()
 }
 
-func (out *writer) rings(p orb.Polygon) {
+// geometry writes what turned gave, null for nil.
+func (out *writer) geometry(g orb.Geometry) {
+	out.line = append(out.line, `"geometry":`...)
+	if g == nil {
+		out.line = append(out.line, "null"...)
+		return
+	}
+	out.line = append(append(append(out.line, `{"type":"`...), g.GeoJSONType()...), `","coordinates":`...)
+	switch g := g.(type) {
+	case orb.Point:
+		out.position(g)
+	case orb.MultiPoint:
+		positions(out, g)
+	case orb.LineString:
+		positions(out, g)
+	case orb.MultiLineString:
+		list(out, g, positions)
+	case orb.Polygon:
+		rings(out, g)
+	case orb.MultiPolygon:
+		list(out, g, rings)
+	}
+	out.line = append(out.line, '}')
+}
+
+func rings(out *writer, p orb.Polygon)              { list(out, p, positions) }
+func positions[L ~[]orb.Point](out *writer, line L) { list(out, line, (*writer).position) }
+
+// list writes parts between brackets.
+func list[P any](out *writer, parts []P, write func(*writer, P)) {
 	out.line = append(out.line, '[')
-	for i, ring := range p {
+	for i, part := range parts {
 		out.comma(i)
-		out.line = append(out.line, '[')
-		for j, point := range ring {
-			out.comma(j)
-			out.position(point)
-		}
-		out.line = append(out.line, ']')
+		write(out, part)
 	}
 	out.line = append(out.line, ']')
 }

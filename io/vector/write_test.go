@@ -344,6 +344,144 @@ func TestZonesRoundTrip(t *testing.T) {
 	}
 }
 
+func TestWriteZonesText(t *testing.T) {
+	square := func(x float64) orb.Polygon {
+		return orb.Polygon{{{x, 0}, {x, 1}, {x + 1, 1}, {x + 1, 0}, {x, 0}}}
+	}
+	zones := []Zone{{"one", orb.MultiPolygon{square(0)}}, {"two", orb.MultiPolygon{square(2), square(4.5)}}, {"none", nil}}
+	var b bytes.Buffer
+	if err := WriteZones(&b, flat{}, zones, []Column{{Name: "total", Value: []float64{1, 2, math.NaN()}}}); err != nil {
+		t.Fatal(err)
+	}
+	want := `{"type":"FeatureCollection","features":[
+{"type":"Feature","properties":{"zone":"one","total":1},"geometry":{"type":"Polygon","coordinates":[[[0,0],[1,0],[1,1],[0,1],[0,0]]]}},
+{"type":"Feature","properties":{"zone":"two","total":2},"geometry":{"type":"MultiPolygon","coordinates":[[[[2,0],[3,0],[3,1],[2,1],[2,0]]],[[[4.5,0],[5.5,0],[5.5,1],[4.5,1],[4.5,0]]]]}},
+{"type":"Feature","properties":{"zone":"none","total":null},"geometry":{"type":"MultiPolygon","coordinates":[]}}
+]}
+`
+	if diff := cmp.Diff(want, b.String()); diff != "" {
+		t.Errorf("(-want +got):\n%s", diff)
+	}
+}
+
+// kinds has a shape of every kind with the coordinates that are to be written in a local plane.
+var kinds = []struct {
+	name string
+	in   orb.Geometry
+	kind string // "" for null
+	want string
+}{
+	{"point", orb.Point{1, 2.5}, "Point", `[1,2.5]`},
+	{"points", orb.MultiPoint{{1, 2}, {3, 4}}, "MultiPoint", `[[1,2],[3,4]]`},
+	{"line", orb.LineString{{1, 2}, {3, 4}, {3, 9}}, "LineString", `[[1,2],[3,4],[3,9]]`},
+	{"lines", orb.MultiLineString{{{1, 2}, {3, 4}}, {{5, 6}, {7, 8}}}, "MultiLineString", `[[[1,2],[3,4]],[[5,6],[7,8]]]`},
+	{"area", orb.Polygon{{{0, 0}, {0, 1}, {1, 1}, {0, 0}}}, "Polygon", `[[[0,0],[1,1],[0,1],[0,0]]]`},
+	{"areas", orb.MultiPolygon{{{{0, 0}, {1, 1}, {0, 1}, {0, 0}}}}, "MultiPolygon", `[[[[0,0],[1,1],[0,1],[0,0]]]]`},
+	{"nothing", nil, "", ""},
+	{"no polygons", orb.MultiPolygon{}, "", ""},
+	{"no positions", orb.LineString(nil), "", ""},
+}
+
+func TestWritePlaces(t *testing.T) {
+	var names []string
+	var shapes []orb.Geometry
+	var value []float64
+	for i, k := range kinds {
+		names, shapes, value = append(names, k.name), append(shapes, k.in), append(value, float64(i))
+	}
+	var b bytes.Buffer
+	if err := WritePlaces(&b, flat{}, names, shapes, []Column{{Name: "observed", Value: value}}); err != nil {
+		t.Fatal(err)
+	}
+	features := readBack(t, b.Bytes())
+	if len(features) != len(kinds) {
+		t.Fatalf("%d features, want %d", len(features), len(kinds))
+	}
+	for i, f := range features {
+		k := kinds[i]
+		if f.Properties["place"] != k.name || f.Properties["observed"] != float64(i) || len(f.Properties) != 2 {
+			t.Errorf("%s: properties %v", k.name, f.Properties)
+		}
+		if f.Geometry.Type != k.kind || string(f.Geometry.Coordinates) != k.want {
+			t.Errorf("%s: %s %s, want %s %s", k.name, f.Geometry.Type, f.Geometry.Coordinates, k.kind, k.want)
+		}
+	}
+	if n := strings.Count(b.String(), `"geometry":null}`); n != 3 {
+		t.Errorf("%d features without a location, want 3", n)
+	}
+}
+
+// A line across the antimeridian runs on, parts lie each on their own side, and what was given stays as it was.
+func TestWritePlacesOnTheGlobe(t *testing.T) {
+	scaled := func(degrees ...orb.Point) []orb.Point { // from 180 east on the equator
+		for i, p := range degrees {
+			degrees[i] = orb.Point{p[0] * perDegree, p[1] * perDegree}
+		}
+		return degrees
+	}
+	shapes := []orb.Geometry{
+		orb.MultiPoint(scaled(orb.Point{-2, 1}, orb.Point{2, 1})),
+		orb.LineString(scaled(orb.Point{-3, 1}, orb.Point{1, 2}, orb.Point{-3, 3})),
+		orb.LineString(scaled(orb.Point{-1, 1}, orb.Point{3, 2})),
+		orb.MultiLineString{scaled(orb.Point{-2, 1}, orb.Point{-1, 1}), scaled(orb.Point{1, 1}, orb.Point{2, 1})},
+		orb.Polygon{scaled(orb.Point{-1, 1}, orb.Point{-1, 4}, orb.Point{3, 4}, orb.Point{3, 1}, orb.Point{-1, 1})},
+	}
+	want := []string{
+		`[[178,1],[-178,1]]`,
+		`[[177,1],[181,2],[177,3]]`,
+		`[[-181,1],[-177,2]]`,
+		`[[[178,1],[179,1]],[[-179,1],[-178,1]]]`,
+		`[[[-181,1],[-177,1],[-177,4],[-181,4],[-181,1]]]`,
+	}
+	kept := make([]orb.Geometry, len(shapes))
+	for i, s := range shapes {
+		kept[i] = orb.Clone(s)
+	}
+	var b bytes.Buffer
+	if err := WritePlaces(&b, plate{180}, make([]string, len(shapes)), shapes, nil); err != nil {
+		t.Fatal(err)
+	}
+	for i, f := range readBack(t, b.Bytes()) {
+		if string(f.Geometry.Coordinates) != want[i] {
+			t.Errorf("%s %d: %s, want %s", f.Geometry.Type, i, f.Geometry.Coordinates, want[i])
+		}
+		if !orb.Equal(shapes[i], kept[i]) {
+			t.Errorf("writing changed shape %d", i)
+		}
+	}
+}
+
+func TestWritePlacesErrors(t *testing.T) {
+	line := orb.LineString{{0, 0}, {1, 95 * perDegree}}
+	for name, test := range map[string]struct {
+		shape orb.Geometry
+		want  string
+	}{
+		"beyond the plane": {line, `place "b": the place (1, 9.5e+06) lies beyond the plane of plate around 0`},
+		"in a part":        {orb.MultiLineString{line}, `place "b": the place (1, 9.5e+06) lies beyond the plane of plate around 0`},
+		"not finite":       {orb.MultiPoint{{math.Inf(1), 0}}, `place "b": the place (+Inf, 0) is not finite`},
+		"other kind":       {orb.Collection{orb.Point{}}, `place "b": a GeometryCollection is not written`},
+	} {
+		err := WritePlaces(io.Discard, plate{}, []string{"a", "b"}, []orb.Geometry{nil, test.shape}, nil)
+		if err == nil || err.Error() != test.want {
+			t.Errorf("%s: got %v, want %s", name, err, test.want)
+		}
+	}
+	var advice interface{ Hint() string }
+	err := WritePlaces(io.Discard, flat{}, []string{"a"}, []orb.Geometry{orb.Collection{orb.Point{}}}, nil)
+	if !errors.As(err, &advice) || advice.Hint() != adviceKinds {
+		t.Errorf("another kind: no advice in %v", err)
+	}
+	err = WritePlaces(io.Discard, flat{}, nil, nil, []Column{{Name: "place"}})
+	if err == nil || err.Error() != `two columns are called "place"` {
+		t.Errorf("a column called place: got %v", err)
+	}
+	many := make([]orb.Geometry, 10000)
+	if err := WritePlaces(&fullDisk{1 << 17}, flat{}, make([]string, len(many)), many, nil); !errors.Is(err, errFull) {
+		t.Errorf("a full disk: got %v", err)
+	}
+}
+
 type fullDisk struct{ room int }
 
 var errFull = errors.New("no space left")
@@ -383,6 +521,7 @@ func TestWritePanics(t *testing.T) {
 		"short column": func() { WriteCells(io.Discard, l, []int{0, 1}, []Column{{Name: "a", Value: []float64{1}}}) },
 		"no text":      func() { WriteCells(io.Discard, l, []int{0}, []Column{{Name: "a"}}) },
 		"no such cell": func() { WriteCells(io.Discard, l, []int{4}, nil) },
+		"no name":      func() { WritePlaces(io.Discard, flat{}, nil, []orb.Geometry{nil}, nil) },
 		"y too short":  func() { WritePoints(io.Discard, flat{}, []float64{1}, nil, nil) },
 	} {
 		func() {
