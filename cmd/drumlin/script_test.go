@@ -46,8 +46,13 @@ func TestScripts(t *testing.T) {
 	})
 }
 
-// bringData copies the open data sets into the script's folder.
+// bringData copies the open data sets into the script's folder, and tells where the awkward files are.
 func bringData(env *testscript.Env) error {
+	awkward, err := filepath.Abs("../../testdata/awkward")
+	if err != nil {
+		return err
+	}
+	env.Setenv("AWKWARD", awkward)
 	folder := filepath.Join(env.WorkDir, "observed")
 	env.Setenv("DATA", folder)
 	if err := os.Mkdir(folder, 0o755); err != nil {

@@ -2,8 +2,7 @@ package observe
 
 import "slices"
 
-// largestBlock is the size of the pieces in which a large file is held. A record is shorter than maxRecord, so many
-// fit into one.
+// largestBlock is the size of the pieces in which a large file is held, where no record takes more.
 const largestBlock = 4 << 20
 
 // blocks cuts a file into pieces that end where a record ends. A file of unknown size is thus held once, where one

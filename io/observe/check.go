@@ -2,7 +2,6 @@ package observe
 
 import (
 	"math"
-	"strings"
 )
 
 // part is what a column is asked for.
@@ -12,9 +11,11 @@ const (
 	response part = iota
 	trials
 	denominator
+	factor
 	weight
 	coordinateX
 	coordinateY
+	geometry
 	linear
 	category
 	keep
@@ -22,13 +23,13 @@ const (
 
 // String names the part in messages about the header.
 func (p part) String() string {
-	return [...]string{"the response", "the trials", "the denominator", "the weight", "the x coordinate", "the y coordinate",
+	return [...]string{"the response", "the trials", "the denominator", "a factor of the denominator", "the weight", "the x coordinate", "the y coordinate", "the geometry",
 		"a linear covariate", "a category", "text to keep"}[p]
 }
 
 // word names the part in codes.
 func (p part) word() string {
-	return [...]string{"response", "trials", "denominator", "weight", "coordinate", "coordinate", "covariate", "covariate", "text"}[p]
+	return [...]string{"response", "trials", "denominator", "factor", "weight", "coordinate", "coordinate", "geometry", "covariate", "covariate", "text"}[p]
 }
 
 // subject names the part in reasons.
@@ -52,7 +53,13 @@ const (
 func (r *rows) firstFault(record []string, here Error) (Aside, bool) {
 	r.limits = r.limits[:0]
 	for i, f := range r.fields {
-		s := strings.TrimSpace(record[f.at])
+		s := r.cell(record, f)
+		if f.part == geometry {
+			if a, bad := r.shapeFault(f, s); bad {
+				return a, true
+			}
+			continue
+		}
 		if f.part.isText() {
 			if f.part == category && r.format.isMissing(s) {
 				return fault(f, s, faultMissing), true
@@ -68,7 +75,7 @@ func (r *rows) firstFault(record []string, here Error) (Aside, bool) {
 		if code, reason := r.outOfRange(f.part, v); code != "" {
 			if code == "positives-above-trials" {
 				f = r.fields[0]
-				s = strings.TrimSpace(record[f.at])
+				s = r.cell(record, f)
 			}
 			return Aside{Column: f.name, Value: shorten(s), Code: code, Reason: reason}, true
 		}
@@ -78,6 +85,9 @@ func (r *rows) firstFault(record []string, here Error) (Aside, bool) {
 
 // number reads a trimmed field of the row at hand, by the rule for values below a limit where the part may have them.
 func (r *rows) number(i int, s string, here Error) (float64, string) {
+	if r.fields[i].at == atHeight {
+		return r.height()
+	}
 	v, bad := r.format.number(s)
 	switch bad {
 	case "":
@@ -91,6 +101,14 @@ func (r *rows) number(i int, s string, here Error) (float64, string) {
 		bad = r.notNumber(i, s, bad, here)
 	}
 	return v, bad
+}
+
+// height returns the third coordinate of the row at hand.
+func (r *rows) height() (float64, string) {
+	if math.IsNaN(r.site.z) {
+		return notANumber, faultMissing
+	}
+	return r.site.z, ""
 }
 
 // mayBeBelow reports whether a part may have values below a detection limit.
@@ -145,11 +163,21 @@ func (r *rows) outOfRange(p part, v float64) (code, reason string) {
 		return "positives-above-trials", "response is above the number of trials"
 	case p == denominator && v <= 0:
 		return "denominator-not-positive", "denominator is not above 0"
+	case p == factor && v <= 0:
+		return "factor-not-positive", "factor of the denominator is not above 0"
 	case p == weight && v <= 0:
 		return "weight-not-positive", "weight is not above 0"
 	case p == coordinateX && r.table.Degrees && math.Abs(v) > longestLongitude:
 		return "coordinates-out-of-range", "longitude is beyond -360 to 360"
-	case (p == coordinateX || p == coordinateY) && math.Abs(v) > farthestPlane:
+	case p == coordinateX || p == coordinateY:
+		return beyondPlane(math.Abs(v))
+	}
+	return "", ""
+}
+
+// beyondPlane returns the code and reason of a coordinate that no plane has.
+func beyondPlane(size float64) (code, reason string) {
+	if size > farthestPlane {
 		return "coordinates-out-of-range", "coordinate is beyond -1e9 to 1e9 metres"
 	}
 	return "", ""

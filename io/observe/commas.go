@@ -29,13 +29,11 @@ func (r *rows) notNumber(i int, s, fault string, here Error) string {
 	}
 	switch fault {
 	case faultGrouped:
-		here.What = fmt.Sprintf("%q has a mark between thousands, which is not read", here.Value)
-		here.Advice = "write the number without it" + r.orDecimalComma(s)
-		r.hold(&here)
+		r.hold(here.because(fmt.Sprintf("%q has a mark between thousands, which is not read", here.Value),
+			"write the number without it"+r.orDecimalComma(s)))
 	case faultPoint:
-		here.What = fmt.Sprintf("%q has a decimal point, where numbers are said to have a decimal comma", here.Value)
-		here.Advice = "write the numbers in one way, or leave out --decimal-comma"
-		r.hold(&here)
+		r.hold(here.because(fmt.Sprintf("%q has a decimal point, where numbers are said to have a decimal comma", here.Value),
+			"write the numbers in one way, or leave out --decimal-comma"))
 	}
 	return faultNumber
 }
@@ -43,6 +41,7 @@ func (r *rows) notNumber(i int, s, fault string, here Error) string {
 // orDecimalComma adds to the advice about a number that has one mark only, which may be decimal.
 func (r *rows) orDecimalComma(s string) string {
 	switch {
+	case r.header.origin.features:
 	case r.format.DecimalComma:
 		if _, fault := parseDecimal(s); fault == "" {
 			return ", or leave out --decimal-comma if the point is decimal"
@@ -52,6 +51,8 @@ func (r *rows) orDecimalComma(s string) string {
 	}
 	return ""
 }
+
+const adviceJSONNumber = "write the numbers with a point, as GeoJSON has them"
 
 // hold keeps the first refusal that decimal commas in the rows to come may explain better.
 func (r *rows) hold(err error) {
@@ -72,6 +73,9 @@ func (r *rows) explain(err error) error {
 			e := c.first
 			e.What = fmt.Sprintf("%q has a decimal comma, like most values of the column", e.Value)
 			e.Advice = "say so with --decimal-comma"
+			if r.header.origin.features {
+				e.Advice = adviceJSONNumber
+			}
 			return &e
 		}
 	}

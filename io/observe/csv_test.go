@@ -17,7 +17,7 @@ import (
 var measure = Request{Response: "z", Kind: Measure}
 
 func read(text string, want Request) (*Table, error) {
-	return ReadCSV(strings.NewReader(text), "wells.csv", want)
+	return Read(strings.NewReader(text), "wells.csv", want)
 }
 
 func hint(err error) string {
@@ -89,9 +89,9 @@ func TestReadCSVRefusals(t *testing.T) {
 		{"text after a quote", "x,y,z\n1,2,\"3\"4\n", measure, `wells.csv: line 2: a quoted field is not closed properly at character 7`, adviceQuote},
 		{"open quote", "x,y,z\n1,2,3\n1,\"2,3\n4,5,6\n", measure, `wells.csv: line 3: a quoted field is not closed properly by line 4`, adviceQuote},
 		{"endless quote", "x,y,z\n1,2,\"" + strings.Repeat("1,2,3\n", maxRecord/6), measure,
-			`wells.csv: line 2: a quoted field is not closed within 1048576 bytes`, adviceQuote},
+			`wells.csv: line 2: a quoted field is not closed within 8388608 bytes`, adviceQuote + `, and give outlines as long as that in GeoJSON`},
 		{"endless line", "x,y,z\n1,2," + strings.Repeat("3", maxRecord), measure,
-			`wells.csv: line 2: the line is longer than 1048576 bytes, the most that is read`, adviceWhole},
+			`wells.csv: line 2: the line is longer than 8388608 bytes, the most that is read`, adviceWhole},
 
 		{"too many columns", "x,y,z\n1,2,3" + strings.Repeat(",", maxColumns-2), measure,
 			`wells.csv: line 2: the line has more than 65536 columns, the most that is read`, adviceWhole},
@@ -351,7 +351,7 @@ func TestReaderFails(t *testing.T) {
 	broken := errors.New("the disk went away")
 	for _, text := range []string{"", "x,y,z\n1,2,3\n", "x,y,z\n1,2,\"3"} {
 		r := io.MultiReader(strings.NewReader(text), iotest.ErrReader(broken))
-		_, err := ReadCSV(r, "wells.csv", measure)
+		_, err := Read(r, "wells.csv", measure)
 		if !errors.Is(err, broken) || err.Error() != "wells.csv: cannot be read: the disk went away" {
 			t.Errorf("after %q: got %v", text, err)
 		}
@@ -370,7 +370,7 @@ func TestOneByteAtATime(t *testing.T) {
 		t.Fatal(err)
 	}
 	crlf := strings.ReplaceAll(string(data), "\n", "\r\n")
-	dripped, err := ReadCSV(iotest.OneByteReader(strings.NewReader(crlf)), "wells.csv", want)
+	dripped, err := Read(iotest.OneByteReader(strings.NewReader(crlf)), "wells.csv", want)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -401,7 +401,7 @@ func open(t *testing.T, name string, want Request) *Table {
 		t.Fatal(err)
 	}
 	defer f.Close()
-	table, err := ReadCSV(f, name, want)
+	table, err := Read(f, name, want)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -477,9 +477,9 @@ func TestBurkina(t *testing.T) {
 	}
 }
 
-func ExampleReadCSV() {
+func ExampleRead() {
 	plots := "x,y,stems,ha\n120,40,31,0.04\n180,40,,0.04\n150,90,17,0.04\n"
-	table, err := ReadCSV(strings.NewReader(plots), "plots.csv", Request{Response: "stems", Kind: Count, Denominator: "ha"})
+	table, err := Read(strings.NewReader(plots), "plots.csv", Request{Response: "stems", Kind: Count, Denominator: "ha"})
 	if err != nil {
 		fmt.Println(err)
 		return

@@ -249,7 +249,7 @@ func TestGzipSize(t *testing.T) {
 // A reader that fails is told before what is wrong with the rows above, which may not be all.
 func TestReaderFailsBelowThousands(t *testing.T) {
 	broken := errors.New("the disk went away")
-	_, err := ReadCSV(io.MultiReader(strings.NewReader("x,y,z\n1,2,\"1,234\"\n"), iotest.ErrReader(broken)), "wells.csv", measure)
+	_, err := Read(io.MultiReader(strings.NewReader("x,y,z\n1,2,\"1,234\"\n"), iotest.ErrReader(broken)), "wells.csv", measure)
 	if !errors.Is(err, broken) {
 		t.Error(err)
 	}
@@ -260,7 +260,7 @@ func TestGzipReaderFails(t *testing.T) {
 	broken := errors.New("the disk went away")
 	packed := zipped(t, "x,y,z\n1,2,3\n")
 	for cut := range len(packed) {
-		_, err := ReadCSV(io.MultiReader(strings.NewReader(packed[:cut]), iotest.ErrReader(broken)), "wells.csv", measure)
+		_, err := Read(io.MultiReader(strings.NewReader(packed[:cut]), iotest.ErrReader(broken)), "wells.csv", measure)
 		if cut > 1 && (!errors.Is(err, broken) || err.Error() != "wells.csv: cannot be read: the disk went away") {
 			t.Errorf("cut at %d: %v", cut, err)
 		}

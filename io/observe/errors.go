@@ -12,7 +12,7 @@ import (
 type Error struct {
 	File   string // name of the source
 	Line   int    // line of the file; the header stands on line 1
-	Row    int    // row below the header, from 1
+	Row    int    // row below the header, or feature, from 1
 	Column string // name of the column
 	Value  string // what stands there, cut short after 60 characters
 	What   string // what is wrong, in words
@@ -39,6 +39,12 @@ func (e *Error) Error() string {
 		parts = append(parts, strings.Join(where, ", "))
 	}
 	return strings.Join(append(parts, e.What), ": ")
+}
+
+// because returns the error with what is wrong at its place. The place itself, made for every row, stays off the heap.
+func (e Error) because(what, advice string) error {
+	e.What, e.Advice = what, advice
+	return &e
 }
 
 // Hint says what to do; it is empty where there is nothing to add.

@@ -38,7 +38,7 @@ func (b BelowLimit) String() string {
 	return [...]string{"refuse", "half", "limit", "aside"}[b]
 }
 
-// Validate reports a format that no table can have. ReadCSV and WholeAs call it.
+// Validate reports a format that no table can have. Read and WholeAs call it.
 func (f Format) Validate() error {
 	if f.Separator != 0 && !canSeparate(f.Separator) {
 		return &Error{What: fmt.Sprintf("%q cannot stand between columns", string(f.Separator)),

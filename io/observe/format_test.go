@@ -8,7 +8,7 @@ import (
 	"github.com/google/go-cmp/cmp"
 )
 
-// readBoth reads a text by ReadCSV and by WholeAs and ReadPart, which must agree.
+// readBoth reads a text by Read and by WholeAs and ReadPart, which must agree.
 func readBoth(t *testing.T, text string, want Request) (*Table, error) {
 	t.Helper()
 	table, err := read(text, want)
@@ -20,10 +20,10 @@ func readBoth(t *testing.T, text string, want Request) (*Table, error) {
 		part, partErr = ReadPart(shared.All(), other)
 	}
 	if diff := cmp.Diff(message(err), message(partErr)); diff != "" {
-		t.Fatalf("error (-ReadCSV +ReadPart):\n%s", diff)
+		t.Fatalf("error (-Read +ReadPart):\n%s", diff)
 	}
 	if diff := cmp.Diff(table, part); diff != "" {
-		t.Fatalf("table (-ReadCSV +ReadPart):\n%s", diff)
+		t.Fatalf("table (-Read +ReadPart):\n%s", diff)
 	}
 	return table, err
 }

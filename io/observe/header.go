@@ -6,6 +6,8 @@ import (
 	"math"
 	"slices"
 	"strings"
+
+	"drumlin/grids/crs"
 )
 
 // header is the line of names and where the request found its columns in it.
@@ -14,6 +16,15 @@ type header struct {
 	line   int
 	names  []string
 	origin *origin
+
+	shapes  *shapes // of the features that are the rows; nil for a table in columns
+	ids     bool    // a column "id" that is not there is the identifier of features
+	heights bool    // a column "z" that is not there is the third coordinate of points
+}
+
+// shapes is what a source says of the geometries that its rows have by themselves.
+type shapes struct {
+	crs string // authority and code; empty where it says nothing
 }
 
 // readHeader reads the names.
@@ -70,38 +81,69 @@ func newHeader(record []string, line int, from *origin) (header, error) {
 // checkRecord refuses records of the wrong length and fields that are not text, whether or not they are asked for.
 func (h header) checkRecord(record []string, here Error) error {
 	if len(record) != len(h.names) {
-		here.What = fmt.Sprintf("%d fields where the header has %d", len(record), len(h.names))
-		here.Advice = fmt.Sprintf("check the line for a missing %s, or for one that belongs inside quotes", separatorWord(h.origin.separator))
-		return &here
+		return here.because(fmt.Sprintf("%d fields where the header has %d", len(record), len(h.names)),
+			fmt.Sprintf("check the line for a missing %s, or for one that belongs inside quotes", separatorWord(h.origin.separator)))
 	}
 	if here.Line > math.MaxInt32 {
-		here.What = "the file has more lines than can be counted"
-		return &here
+		return here.because("the file has more lines than can be counted", "")
 	}
 	for i, s := range record {
 		if !clean(s) {
-			here.Column, here.Value = h.names[i], shorten(s)
-			here.What, here.Advice = fmt.Sprintf("%q is %s", here.Value, h.origin.notText(s)), adviceText
-			return &here
+			return h.notClean(h.names[i], s, here)
 		}
 	}
 	return nil
 }
 
-// find returns the position of a column, which must exist.
+// notClean refuses a field that is not text.
+func (h header) notClean(name, s string, here Error) error {
+	here.Column, here.Value = name, shorten(s)
+	advice := adviceText
+	if h.origin.features {
+		advice = "correct the property, or leave it out"
+	}
+	return here.because(fmt.Sprintf("%q is %s", here.Value, h.origin.notText(s)), advice)
+}
+
+// The columns that features have beside their properties, and heightName that of points in a column of geometries, where
+// no other is called so.
+const (
+	idName     = "id" // their identifier
+	heightName = "z"  // the third coordinate
+)
+
+// columns returns the names that a user is told of.
+func (h header) columns() []string {
+	names := slices.Clone(h.names)
+	if h.ids && !slices.Contains(names, idName) {
+		names = append(names, idName)
+	}
+	if h.shapes != nil && h.heights && !slices.Contains(names, heightName) {
+		names = append(names, heightName)
+	}
+	return names
+}
+
+// find returns the position of a column, which must exist, or atID or atHeight.
 func (h header) find(name, part string) (int, error) {
 	for i, n := range h.names {
 		if n == name {
 			return i, nil
 		}
 	}
-	return 0, absent(h.source, h.line, name, part, h.names)
+	switch {
+	case h.ids && name == idName:
+		return atID, nil
+	case h.heights && name == heightName:
+		return atHeight, nil
+	}
+	return 0, absent(h.source, h.line, name, part, h.columns())
 }
 
-// among returns those of names that the header has.
+// among returns those of names that are columns.
 func (h header) among(names []string) (there []string) {
 	for _, name := range names {
-		if slices.Contains(h.names, name) {
+		if slices.Contains(h.columns(), name) {
 			there = append(there, name)
 		}
 	}
@@ -125,9 +167,42 @@ func (p pair) String() string { return p.x + "/" + p.y }
 // coordinates says which columns hold the coordinates and what they are.
 type coordinates struct {
 	x, y       string
+	geometry   string // the column of geometries, or "geometry" of features
+	crs        string // what the source says that its geometries are in
 	degrees    bool
 	recognised bool
 	passedOver []string
+}
+
+// places says where the rows are.
+func (h header) places(want Request) (coordinates, error) {
+	switch {
+	case h.shapes != nil:
+		return h.ofFeatures(want)
+	case want.NoPlaces:
+		return coordinates{}, nil
+	case want.Geometry != "":
+		return coordinates{geometry: want.Geometry, degrees: want.Axes == AxesDegrees}, nil
+	}
+	return h.coordinates(want)
+}
+
+// ofFeatures decides what the coordinates of features are.
+func (h header) ofFeatures(want Request) (coordinates, error) {
+	const own = "the file is GeoJSON, whose features have geometries of their own, but "
+	crsOf := h.shapes.crs
+	switch {
+	case want.X != "":
+		return coordinates{}, &Error{File: h.source, What: own + "coordinate columns are named", Advice: "leave out --x and --y"}
+	case want.Geometry != "":
+		return coordinates{}, &Error{File: h.source, What: own + "a column of geometries is named", Advice: "leave out --geometry"}
+	case want.NoPlaces:
+		return coordinates{}, nil
+	case want.Axes == AxesByName && crsOf != "" && !crs.IsGeographic(crsOf):
+		return coordinates{}, &Error{File: h.source, Advice: "say with --crs what the coordinates are in",
+			What: fmt.Sprintf("the file says that its coordinates are in %q, and GeoJSON is in longitude and latitude (RFC 7946)", shorten(crsOf))}
+	}
+	return coordinates{geometry: geometry.word(), crs: crsOf, degrees: want.Axes != AxesPlane}, nil
 }
 
 // coordinates takes the columns the user named, or recognises them. A file with longitude and latitude beside an

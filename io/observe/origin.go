@@ -12,6 +12,7 @@ type origin struct {
 	source    string
 	format    Format
 	separator rune
+	features  bool     // it is GeoJSON, not a table in columns
 	text      *decoder // knows the encoding as far as it has been read
 }
 
@@ -20,6 +21,8 @@ func (o *origin) encoding() string { return o.text.encoding() }
 // notText says what a field that is not clean is not.
 func (o *origin) notText(field string) string {
 	switch encoding := o.encoding(); {
+	case o.features:
+		return "not text: it holds a NUL character"
 	case encoding == windows1252 && strings.IndexByte(field, 0) < 0:
 		return "neither UTF-8 nor Windows-1252 text"
 	case encoding == utf16Little || encoding == utf16Big:
@@ -46,7 +49,10 @@ func openOrigin(r io.Reader, source string, format Format) (io.Reader, *origin, 
 	if what, advice := notText(head); what != "" {
 		return nil, nil, &Error{File: source, What: what, Advice: advice}
 	}
-	o := &origin{source: source, format: format}
+	o := &origin{source: source, format: format, features: startsFeatures(head)}
+	if o.features {
+		o.format.Separator, o.format.DecimalComma = 0, false
+	}
 	text := decode(from, head)
 	o.text = text
 	return text, o, nil

@@ -3,7 +3,6 @@ package observe
 import (
 	"crypto/sha256"
 	"encoding/hex"
-	"io"
 	"slices"
 )
 
@@ -13,7 +12,7 @@ import (
 type Part struct {
 	Name  string // the value of the column that was split by, without the blanks around it; empty for All
 	Rows  int    // rows in the part, usable or not
-	Bytes int    // of the rows as they stand in the file, each with one byte for the end of its line
+	Bytes int    // of the rows as SHA256 takes them
 
 	shared *Shared
 	rows   []int32 // the rows, counted from 0 and ascending; nil for every row
@@ -37,8 +36,7 @@ func (p Part) Only(numbers []int32) Part {
 			continue
 		}
 		only.rows = append(only.rows, number-1)
-		text, _ := p.shared.row(int(number) - 1)
-		only.Bytes += len(content(text)) + 1
+		only.Bytes += p.shared.text.size(int(number) - 1)
 	}
 	only.Rows = len(only.rows)
 	return only
@@ -64,17 +62,17 @@ func (p Part) row(i int) int {
 	return int(p.rows[i])
 }
 
-// SHA256 returns the checksum, in hexadecimal, of a file that holds the header and the rows of the part as they stand
-// in the table, in UTF-8 without a byte order mark and blank lines and with a line feed at the end of each record. It
-// does not depend on where the rows stand or on the rows of other parts.
+// SHA256 returns a checksum in hexadecimal. It does not depend on where the rows stand or on the rows of other parts.
+// Of a CSV table it is that of a file that holds the header and the rows of the part as they stand in the table, in
+// UTF-8 without a byte order mark and blank lines and with a line feed at the end of each record. Of features it is that
+// of their reference system, identifiers, properties and geometries, however they are written.
 func (p Part) SHA256() string {
 	sum := sha256.New()
-	sum.Write(p.shared.head)
-	sum.Write(newline)
+	text := p.shared.text.appendHead(nil)
+	sum.Write(text)
 	for i := range p.Rows {
-		text, _ := p.shared.row(p.row(i))
-		sum.Write(content(text))
-		sum.Write(newline)
+		text = p.shared.text.appendRow(text[:0], p.row(i))
+		sum.Write(text)
 	}
 	return hex.EncodeToString(sum.Sum(nil))
 }
@@ -89,9 +87,10 @@ func (p Part) Check(want Request) error {
 	return err
 }
 
-// ReadPart reads the rows of a part as ReadCSV would read a file that held nothing else below the header, but every
-// line and row in the table, its rows set aside and errors is that of the whole file. Table.Rows is the number of
-// rows in the part. The format is that of the table, whatever the request says. A part without rows is refused.
+// ReadPart reads the rows of a part as Read would read a file that held nothing else, but every line and row in the
+// table, its rows set aside and errors is that of the whole file, and the columns are those of the whole file. Table.Rows
+// is the number of rows in the part. The format is that of the table, whatever the request says. A part without rows is
+// refused.
 func ReadPart(p Part, want Request) (*Table, error) {
 	if err := p.Check(want); err != nil {
 		return nil, err
@@ -99,26 +98,11 @@ func ReadPart(p Part, want Request) (*Table, error) {
 	if p.Rows == 0 {
 		return nil, &Error{File: p.shared.header.source, What: "none of its rows are left to read"}
 	}
-	return readTable(p.shared.header, want, &scattered{part: p, parser: newParser(p.shared.header.origin.separator)})
+	return readTable(p.shared.header, want, p.shared.text.records(p))
 }
 
-// scattered gives the records of a part, wherever they stand.
-type scattered struct {
-	part   Part
-	at     int // rows given so far
-	parser *parser
-}
+// Source returns the name of the table that the part is of.
+func (p Part) Source() string { return p.shared.header.source }
 
-func (s *scattered) next() (record []string, line, row int, err error) {
-	if s.at == s.part.Rows {
-		return nil, 0, 0, io.EOF
-	}
-	row = s.part.row(s.at)
-	text, line := s.part.shared.row(row)
-	s.at++
-	record, _, err = s.parser.parse(text, io.EOF)
-	if err != nil {
-		return nil, 0, 0, readError(s.part.shared.header.source, err) // never met: Whole has parsed the same bytes
-	}
-	return record, line, row + 1, nil
-}
+// Columns returns the names of the table's columns, as Shared.Columns does.
+func (p Part) Columns() []string { return p.shared.Columns() }

@@ -163,7 +163,7 @@ func TestPartsAreTheFilteredTable(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		full, fullErr := ReadCSV(strings.NewReader(d.text), "all.csv", want)
+		full, fullErr := Read(strings.NewReader(d.text), "all.csv", want)
 		rowsLeft := len(d.district) - unnamed.Rows
 		for _, p := range parts {
 			rows := map[int32]bool{}
@@ -179,7 +179,7 @@ func TestPartsAreTheFilteredTable(t *testing.T) {
 				t.Fatalf("part %q of %d rows and %d bytes, sum %s; its own file is %q", p.Name, p.Rows, p.Bytes, p.SHA256(), alone)
 			}
 			table, err := ReadPart(p, want)
-			single, singleErr := ReadCSV(strings.NewReader(alone), "all.csv", want)
+			single, singleErr := Read(strings.NewReader(alone), "all.csv", want)
 			if err != nil {
 				refused++
 				checkPlacedError(t, d, p.Name, err, singleErr)
@@ -292,7 +292,7 @@ func TestPartErrors(t *testing.T) {
 	}
 }
 
-// checkParts reads a text by way of Whole and expects the refusal of ReadCSV, except where the request and the file
+// checkParts reads a text by way of Whole and expects the refusal of Read, except where the request and the file
 // are both at fault: the file comes first here.
 func checkParts(t *testing.T, text string, want Request, refused error) {
 	t.Helper()

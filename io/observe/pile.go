@@ -1,5 +1,7 @@
 package observe
 
+import "iter"
+
 // largestPiece is the most values of one piece of a pile.
 const largestPiece = 1 << 15
 
@@ -20,6 +22,27 @@ func (p *pile[T]) add(v T) {
 	p.last = append(p.last, v)
 }
 
+func (p *pile[T]) len() int {
+	n := len(p.last)
+	for _, piece := range p.full {
+		n += len(piece)
+	}
+	return n
+}
+
+// all gives the values in the order in which they came.
+func (p *pile[T]) all() iter.Seq[T] {
+	return func(yield func(T) bool) {
+		for _, piece := range append(p.full[:len(p.full):len(p.full)], p.last) {
+			for _, v := range piece {
+				if !yield(v) {
+					return
+				}
+			}
+		}
+	}
+}
+
 // join returns all values in one slice, nil for none, and leaves the pile empty.
 func (p *pile[T]) join() []T {
 	if len(p.full) == 0 {
@@ -27,11 +50,7 @@ func (p *pile[T]) join() []T {
 		p.last = nil
 		return all
 	}
-	n := len(p.last)
-	for _, piece := range p.full {
-		n += len(piece)
-	}
-	all := make([]T, 0, n)
+	all := make([]T, 0, p.len())
 	for _, piece := range p.full {
 		all = append(all, piece...)
 	}

@@ -19,7 +19,7 @@ const (
 type Axes int
 
 const (
-	AxesByName  Axes = iota // longitude and latitude where the columns are called so, otherwise a plane
+	AxesByName  Axes = iota // longitude and latitude where the columns are called so or geometries say so, otherwise a plane
 	AxesDegrees             // longitude and latitude in degrees, whatever the columns are called
 	AxesPlane               // easting and northing in metres; columns called longitude and latitude are not taken for them
 )
@@ -27,15 +27,20 @@ const (
 // Request says which columns of a table play which part. Names are matched exactly, after blanks around the header's
 // names are dropped. Empty names are parts nobody plays.
 //
-// A row is checked part by part in the order of the fields: response, trials, denominator, weight, coordinates (x,
-// then y), linear covariates, categories. The first check it fails is the reason it is set aside for.
+// A row is checked part by part in the order of the fields: response, trials, denominator, its factors, weight,
+// coordinates (x, then y) or geometry, linear covariates, categories. The first check it fails is the reason it is set aside for.
+//
+// The features of GeoJSON have geometries of their own: a request that names columns for places is refused for them.
 type Request struct {
 	Response    string   // column of the response; empty with Kind None
 	Kind        Kind     // what the response is
 	Trials      string   // number examined, whole and above 0: with Positives, and only then
 	Denominator string   // people, area, effort or expected: finite and above 0
+	Factor      []string // what the denominator is multiplied by: finite and above 0
 	Weight      string   // finite and above 0
 	X, Y        string   // coordinate columns; both empty to recognise them by their names
+	Geometry    string   // column of geometries in WKT or hexadecimal EWKB, in place of X and Y
+	NoPlaces    bool     // rows have no places of their own: none are looked for
 	Axes        Axes     // what the coordinates are
 	Linear      []string // covariates that are finite numbers
 	Category    []string // covariates that are text, not missing
@@ -45,7 +50,7 @@ type Request struct {
 	Format      Format   // how the table is written; ReadPart goes by the format that WholeAs was given
 }
 
-// Validate reports the first thing about a request that no table could satisfy. ReadCSV calls it.
+// Validate reports the first thing about a request that no table could satisfy. Read calls it.
 func (q Request) Validate() error {
 	switch {
 	case q.Kind != None && q.Response == "":
@@ -58,6 +63,10 @@ func (q Request) Validate() error {
 		return &Error{Column: q.Trials, What: "trials are named, but the response is not a number positive"}
 	case q.Trials != "" && q.Denominator != "":
 		return &Error{Column: q.Denominator, What: "a number positive has trials and takes no other denominator"}
+	case q.NoPlaces && q.X+q.Y+q.Geometry != "":
+		return &Error{What: "rows have no places of their own, but columns are named for them", Advice: "leave out --x and --y, and --geometry"}
+	case q.Geometry != "" && q.X+q.Y != "":
+		return &Error{Column: q.Geometry, What: "a column of geometries is named beside coordinate columns", Advice: "name either --geometry or --x and --y"}
 	case (q.X == "") != (q.Y == ""):
 		return &Error{Column: q.X + q.Y, What: "one coordinate column is named without the other", Advice: adviceXY}
 	}
@@ -67,13 +76,19 @@ func (q Request) Validate() error {
 	return q.overlap()
 }
 
+// asks reports whether the request names a column, whatever for.
+func (q Request) asks(name string) bool {
+	return slices.Contains([]string{q.Response, q.Trials, q.Denominator, q.Weight, q.X, q.Y, q.Geometry}, name) ||
+		slices.Contains(slices.Concat(q.Factor, q.Linear, q.Category, q.Optional, q.Keep), name)
+}
+
 // overlap refuses a column asked to play two parts that exclude each other. The response is nothing else, a
 // coordinate is no denominator, trials or weight, and a covariate is named once and as one kind. A coordinate or a
 // denominator may also be a linear covariate.
 func (q Request) overlap() error {
 	main := []struct{ name, part string }{
 		{q.Response, "the response"}, {q.Trials, "the number of trials"}, {q.Denominator, "the denominator"},
-		{q.Weight, "the weight"}, {q.X, "the x coordinate"}, {q.Y, "the y coordinate"},
+		{q.Weight, "the weight"}, {q.X, "the x coordinate"}, {q.Y, "the y coordinate"}, {q.Geometry, "the geometry"},
 	}
 	for i, a := range main {
 		for _, b := range main[i+1:] {
@@ -82,6 +97,11 @@ func (q Request) overlap() error {
 			if a.name != "" && a.name == b.name && !weighs {
 				return twice(a.name, a.part, b.part)
 			}
+		}
+	}
+	for _, a := range main {
+		if slices.Contains(q.Factor, a.name) {
+			return twice(a.name, a.part, "a factor of the denominator")
 		}
 	}
 	covariate := map[string]string{}

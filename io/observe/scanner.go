@@ -13,13 +13,17 @@ import (
 // scanner finds the rows of a file, block by block.
 type scanner struct {
 	shared *Shared
+	held   *heldCSV
 	line   int    // the line of the file at which the scanner stands
 	spans  []span // the rows of the block at hand
 	parser *parser
 }
 
 func newScanner(from *origin) *scanner {
-	return &scanner{shared: &Shared{header: header{source: from.source, origin: from}}, line: 1, parser: newParser(from.separator)}
+	shared := &Shared{header: header{source: from.source, origin: from}}
+	held := &heldCSV{header: &shared.header}
+	shared.text = held
+	return &scanner{shared: shared, held: held, line: 1, parser: newParser(from.separator)}
 }
 
 // block takes the next block and what comes after it, as blocks.next gives them.
@@ -36,7 +40,7 @@ func (s *scanner) block(text []byte, after error) error {
 	}
 	if len(s.spans) > 0 {
 		b.spans = slices.Clone(s.spans)
-		s.shared.blocks = append(s.shared.blocks, b)
+		s.held.blocks = append(s.held.blocks, b)
 	}
 	return nil
 }
@@ -79,7 +83,7 @@ func (s *scanner) readHeader(text []byte, after error) (int, error) {
 	if err != nil {
 		return 0, err
 	}
-	s.shared.head = content(text[:size])
+	s.held.head = content(text[:size])
 	s.shared.header, err = newHeader(fields, s.line, s.shared.header.origin)
 	return size, err
 }

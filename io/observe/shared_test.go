@@ -22,7 +22,11 @@ type plainRead struct {
 }
 
 func readPlainly(r io.Reader) (p plainRead) {
-	in, err := openTextAs(r, "wells.csv", Format{})
+	decoded, from, err := openOrigin(r, "wells.csv", Format{})
+	if err != nil {
+		return plainRead{err: err}
+	}
+	in, err := openText(decoded, from)
 	if err != nil {
 		return plainRead{err: err}
 	}
@@ -84,7 +88,7 @@ func checkAgainst(t *testing.T, shared *Shared, err error, want plainRead) {
 	got.names = shared.Columns()
 	p := newParser(shared.header.origin.separator)
 	for i := range shared.rows {
-		text, line := shared.row(i)
+		text, line := shared.text.(*heldCSV).row(i)
 		var fields []string
 		for k := range got.names {
 			field, err := p.field(text, k)
@@ -142,8 +146,8 @@ func TestWholeAtTheEndOfABlock(t *testing.T) {
 			t.Fatalf("the record stands at %d, want %d", at, headSize-before)
 		}
 		shared := checkWhole(t, text)
-		if len(shared.blocks) != 2 || shared.rows != 5 {
-			t.Errorf("%d before the end: %d blocks, %d rows", before, len(shared.blocks), shared.rows)
+		if len(shared.text.(*heldCSV).blocks) != 2 || shared.rows != 5 {
+			t.Errorf("%d before the end: %d blocks, %d rows", before, len(shared.text.(*heldCSV).blocks), shared.rows)
 		}
 		for _, wrong := range []string{"\"", "1\n", "1,\x00", "1,\"2\" 3\n"} { // errors in the second block
 			checkWhole(t, text+wrong)
@@ -151,7 +155,7 @@ func TestWholeAtTheEndOfABlock(t *testing.T) {
 	}
 }
 
-// A reader that fails is reported as ReadCSV reports it, wherever it stops, and the rows do not depend on how the
+// A reader that fails is reported as Read reports it, wherever it stops, and the rows do not depend on how the
 // bytes arrive.
 func TestWholeReader(t *testing.T) {
 	const text = "\xef\xbb\xbf\"x\",y\r\n1,2\n\r\n\"a\nb\", \"c \"\"d\"\"\"\n5,6\r\n"
@@ -189,7 +193,7 @@ func TestSharedIsSmall(t *testing.T) {
 		t.Fatal(err)
 	}
 	held, rows := 0, 0
-	for i, b := range shared.blocks {
+	for i, b := range shared.text.(*heldCSV).blocks {
 		held += cap(b.text)
 		rows += len(b.spans)
 		if cap(b.text) > largestBlock || cap(b.spans) > len(b.spans)+len(b.spans)/8+8 {
@@ -202,7 +206,7 @@ func TestSharedIsSmall(t *testing.T) {
 	}
 }
 
-// FuzzWhole holds Whole and Split to the CSV reader, and ReadPart of everything to ReadCSV.
+// FuzzWhole holds Whole and Split to the CSV reader, and ReadPart of everything to Read.
 func FuzzWhole(f *testing.F) {
 	f.Add("x,y,n,soil\n1,2,3,clay\n5,6,NA,loam\n9,9,1,\n", uint8(3))
 	f.Add("\xef\xbb\xbfLon,Lat,n,soil\r\n1,2,3,\"a \"\"b\"\"\"\r\n\r\n4,97,6,\" a\r\n\"", uint8(3))
@@ -211,6 +215,7 @@ func FuzzWhole(f *testing.F) {
 	f.Add("x,y\n1,2\"\n", uint8(1))
 	f.Add("x;y\n1;2\n", uint8(1))
 	f.Fuzz(func(t *testing.T, text string, column uint8) {
+		skipFeatures(t, text)
 		shared := checkWhole(t, text)
 		if shared == nil {
 			return
@@ -218,13 +223,13 @@ func FuzzWhole(f *testing.F) {
 		checkSplit(t, shared, int(column)%len(shared.header.names), readPlainly(strings.NewReader(text)))
 		want := Request{Response: "n", Kind: Count, Category: []string{"soil"}, Keep: []string{"x"}}
 		for _, want := range []Request{want, {}} {
-			table, err := ReadCSV(strings.NewReader(text), "wells.csv", want)
+			table, err := Read(strings.NewReader(text), "wells.csv", want)
 			part, partErr := ReadPart(shared.All(), want)
 			if diff := cmp.Diff(message(err), message(partErr)); diff != "" {
-				t.Fatalf("error (-ReadCSV +ReadPart):\n%s", diff)
+				t.Fatalf("error (-Read +ReadPart):\n%s", diff)
 			}
 			if diff := cmp.Diff(table, part); diff != "" {
-				t.Fatalf("table (-ReadCSV +ReadPart):\n%s", diff)
+				t.Fatalf("table (-Read +ReadPart):\n%s", diff)
 			}
 		}
 	})

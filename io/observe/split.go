@@ -14,18 +14,16 @@ type Unnamed struct {
 // are reported; if none has a value, there are no parts. An *Error is returned for a column that is absent.
 func (s *Shared) Split(column string) ([]Part, Unnamed, error) {
 	if column == "" {
-		return nil, Unnamed{}, &Error{File: s.header.source, Line: s.header.line, Advice: columnList(s.header.names),
+		return nil, Unnamed{}, &Error{File: s.header.source, Line: s.header.line, Advice: columnList(s.header.columns()),
 			What: "no column is named for the names of the regions"}
 	}
 	at, err := s.header.find(column, "the names of the regions")
 	if err != nil {
 		return nil, Unnamed{}, err
 	}
-	d := deal{shared: s, numbers: map[string]int32{}, of: make([]int32, 0, s.rows), parser: newParser(s.header.origin.separator)}
-	for i := range s.blocks {
-		if err := d.block(&s.blocks[i], at); err != nil {
-			return nil, Unnamed{}, err
-		}
+	d := deal{shared: s, numbers: map[string]int32{}, of: make([]int32, 0, s.rows)}
+	if err := s.text.values(at, d.take); err != nil {
+		return nil, Unnamed{}, err
 	}
 	d.hand()
 	return d.parts, d.unnamed, nil
@@ -38,30 +36,21 @@ type deal struct {
 	unnamed Unnamed
 	numbers map[string]int32 // the part of each value so far; -1 for marks of a missing one
 	of      []int32          // the part of each row so far
-	parser  *parser
 }
 
-// block deals the rows of one block.
-func (d *deal) block(b *block, at int) error {
-	for i := range b.spans {
-		text, line := b.row(i)
-		value, err := d.parser.field(text, at)
-		if err != nil {
-			return readError(d.shared.header.source, err) // never met: Whole has parsed the same bytes
-		}
-		number, seen := d.numbers[string(value)]
-		if !seen {
-			number = d.add(string(value))
-		}
-		d.of = append(d.of, number)
-		if number < 0 {
-			d.leave(line, string(value))
-			continue
-		}
-		d.parts[number].Rows++
-		d.parts[number].Bytes += len(content(text)) + 1
+// take deals one row.
+func (d *deal) take(value []byte, row, line int) {
+	number, seen := d.numbers[string(value)]
+	if !seen {
+		number = d.add(string(value))
 	}
-	return nil
+	d.of = append(d.of, number)
+	if number < 0 {
+		d.leave(line, string(value))
+		return
+	}
+	d.parts[number].Rows++
+	d.parts[number].Bytes += d.shared.text.size(row)
 }
 
 // add starts the part of a value not met before, unless it is missing.

@@ -2,9 +2,10 @@ package observe
 
 import (
 	"io"
-	"math"
 	"math/rand/v2"
 	"strings"
+
+	"drumlin/grids/crs"
 )
 
 // The bounds of what a survey keeps in memory, whatever the length of the table.
@@ -18,8 +19,9 @@ const (
 
 // SurveyRequest says how a table is to be looked at. The zero value is a table of which nothing is known.
 type SurveyRequest struct {
-	X, Y string // coordinate columns; both empty to recognise them by their names, as ReadCSV does
-	Axes Axes   // what the coordinates are
+	X, Y     string // coordinate columns; both empty to recognise them by their names, as Read does
+	Geometry string // column of geometries, in place of X and Y
+	Axes     Axes   // what the coordinates are
 
 	Format Format // how the table is written; BelowLimit has no bearing
 
@@ -32,30 +34,24 @@ type SurveyRequest struct {
 type Survey struct {
 	Source    string
 	Rows      int
-	Columns   []SurveyColumn // in the order of the file
-	Separator string         // between the columns: "comma", "semicolon", "tab" or a quoted character
+	Columns   []SurveyColumn // in the order of the file, or of Columns
+	Features  bool           // it is GeoJSON: the columns are properties, and the rows have geometries of their own
+	Separator string         // between the columns: "comma", "semicolon", "tab" or a quoted character; empty for features
 	Encoding  string         // of the file, such as "UTF-8"
 
-	XName, YName string   // the coordinate columns; empty where there are none
-	Degrees      bool     // they are longitude and latitude, by their names or as the request says
-	Recognised   bool     // they were found by the rules of ReadCSV
-	Guessed      bool     // they were found by SurveyRequest.Guess alone
-	PassedOver   []string // recognised pairs that were present but not used, such as "x/y"
-	Unrecognised error    // why ReadCSV would find no coordinate columns; nil where it does
+	XName, YName string        // the coordinate columns; empty where there are none
+	GeometryName string        // the column of geometries, named or guessed, or "geometry" of features; empty with coordinate columns
+	Shapes       *SurveyShapes // the geometries; nil without GeometryName
+	CRS          string        // what the source says that they are in, as in Table
+	Degrees      bool          // the coordinates are longitude and latitude, by what the source says or as the request does
+	Recognised   bool          // the coordinate columns were found by the rules of Read
+	Guessed      bool          // they were found by SurveyRequest.Guess alone, or the geometries by their looks
+	PassedOver   []string      // recognised pairs that were present but not used, such as "x/y"
+	Unrecognised error         // why Read would not know where the rows are; nil where it does
 
 	Places   SurveyPlaces
 	Repeated RepeatedRows
 	Sampled  int // rows behind SurveyColumn.Number and Code: all of them, or some drawn at random
-}
-
-// SurveyPlaces are the distinct places of a table, in the order in which they first appear.
-type SurveyPlaces struct {
-	X, Y []float64 // as they stand in the file
-	Rows []int     // rows at each place
-
-	Beyond  int // rows at further places, where there are too many to tell apart
-	Without int // rows in which a coordinate is missing or no number
-	Row     int // the first of these, from 1; 0 where there is none
 }
 
 // RepeatedRows are rows of which every value was met before, in one row.
@@ -75,20 +71,20 @@ func (s *Survey) Column(name string) *SurveyColumn {
 	return nil
 }
 
-// ReadSurvey reads a table to its end, once, and describes its columns and places. It takes the same files as ReadCSV,
-// and returns the same *Error for what ReadCSV refuses whatever the request is, and for coordinate columns that are
-// named and absent; values of any kind are described, not refused. Memory is bounded but for the length of one row.
-// Where a table is too long to be kept, quantiles and comparisons of columns are made from rows drawn at random with a
-// fixed seed.
+// ReadSurvey reads a table to its end, once, and describes its columns and places. It takes the same files as Read,
+// and returns the same *Error for what Read refuses whatever the request is, and for columns of places that are named
+// and absent, or named for features; values of any kind are described, not refused. Memory is bounded but for the length
+// of one row, and for features, which are held as vector.Observations. Where a table is too long to be kept, quantiles
+// and comparisons of columns are made from rows drawn at random with a fixed seed.
 func ReadSurvey(r io.Reader, source string, want SurveyRequest) (*Survey, error) {
-	if err := (Request{X: want.X, Y: want.Y, Format: want.Format}).Validate(); err != nil {
+	if err := want.request().Validate(); err != nil {
 		return nil, inFile(err, source)
 	}
-	in, err := openTextAs(r, source, want.Format)
+	decoded, from, err := openOrigin(r, source, want.Format)
 	if err != nil {
 		return nil, err
 	}
-	h, err := readHeader(in, source)
+	h, rows, err := openRecords(decoded, from)
 	if err != nil {
 		return nil, err
 	}
@@ -96,56 +92,95 @@ func ReadSurvey(r io.Reader, source string, want SurveyRequest) (*Survey, error)
 	if err != nil {
 		return nil, err
 	}
-	if err := s.readAll(&stream{in: in, source: source}); err != nil {
+	if err := s.readAll(rows); err != nil {
 		return nil, err
 	}
 	out := s.finish()
-	out.Separator, out.Encoding = separatorWord(h.origin.separator), h.origin.encoding()
+	out.Encoding = from.encoding()
 	return out, nil
+}
+
+// request is the part of a request for a table that a survey has too.
+func (q SurveyRequest) request() Request {
+	return Request{X: q.X, Y: q.Y, Geometry: q.Geometry, Axes: q.Axes, Format: q.Format}
+}
+
+// openRecords reads what stands above the records of a decoded text of either sort.
+func openRecords(decoded io.Reader, from *origin) (header, records, error) {
+	if from.features {
+		o, err := openFeatures(decoded, from, nil)
+		if err != nil {
+			return header{}, nil, err
+		}
+		return featureHeader(o, from), &featureRecords{from: o, part: Part{Rows: o.Len()}}, nil
+	}
+	in, err := openText(decoded, from)
+	if err != nil {
+		return header{}, nil, err
+	}
+	h, err := readHeader(in, from.source)
+	return h, &stream{in: in, source: from.source}, err
 }
 
 // surveyor makes a survey row by row.
 type surveyor struct {
 	header  header
+	axes    Axes
 	survey  *Survey
 	columns []*columnSurvey
-	x, y    int // positions of the coordinates; -1 for none
-	places  map[[2]float64]int
+	x, y    int            // positions of the coordinates; -1 for none
+	shapes  *shapeSurvey   // of the features or of the column that is named; nil for none
+	places  placeCounter   // by coordinates
 	rows    map[uint64]int // first row, by the hash of its values
 	sample  int            // rows of the sample
 	random  *rand.Rand
 }
 
 func newSurveyor(h header, want SurveyRequest) (*surveyor, error) {
-	most := min(max(mostCells/len(h.names), fewestKept), mostDistinct)
-	s := &surveyor{header: h, survey: &Survey{Source: h.source}, x: -1, y: -1, places: map[[2]float64]int{}, rows: map[uint64]int{},
+	names := h.columns()
+	most := min(max(mostCells/max(1, len(names)), fewestKept), mostDistinct)
+	s := &surveyor{header: h, axes: want.Axes, survey: &Survey{Source: h.source, Features: h.shapes != nil}, x: -1, y: -1, rows: map[uint64]int{},
 		sample: most, random: seeded(0)}
-	for i, name := range h.names {
+	if h.shapes == nil {
+		s.survey.Separator = separatorWord(h.origin.separator)
+	}
+	for i, name := range names {
 		s.columns = append(s.columns, newColumnSurvey(name, &h.origin.format, most, seeded(uint64(i)+1)))
 	}
-	return s, s.findCoordinates(want)
+	return s, s.findPlaces(want)
 }
 
 // seeded is a source of random numbers that is the same at every run.
 func seeded(stream uint64) *rand.Rand { return rand.New(rand.NewPCG(1, stream)) }
 
-// findCoordinates finds the coordinate columns as ReadCSV does, or by the guess.
-func (s *surveyor) findCoordinates(want SurveyRequest) error {
-	t := s.survey
-	c, err := s.header.coordinates(Request{X: want.X, Y: want.Y, Axes: want.Axes})
-	if err != nil {
-		t.Unrecognised = err
-		if want.Guess == nil {
+// findPlaces finds out what tells the places, as Read does or by the guess.
+func (s *surveyor) findPlaces(want SurveyRequest) error {
+	c, err := s.header.places(want.request())
+	switch {
+	case err == nil:
+	case s.header.shapes != nil && want.X+want.Geometry != "":
+		return err
+	case s.header.shapes != nil:
+		s.survey.Unrecognised = err
+		c = coordinates{geometry: geometry.word(), crs: s.header.shapes.crs}
+	default:
+		if c = s.guess(want, err); c.x == "" || c.y == "" {
 			return nil
 		}
-		c = coordinates{degrees: want.Axes == AxesDegrees}
-		c.x, c.y = want.Guess(s.header.names)
-		if c.x == "" || c.y == "" {
-			return nil
-		}
-		t.Guessed = true
 	}
-	t.XName, t.YName, t.Degrees, t.Recognised, t.PassedOver = c.x, c.y, c.degrees, c.recognised, c.passedOver
+	t := s.survey
+	t.XName, t.YName, t.GeometryName, t.CRS, t.Degrees, t.Recognised, t.PassedOver = c.x, c.y, c.geometry, c.crs, c.degrees, c.recognised, c.passedOver
+	switch {
+	case s.header.shapes != nil:
+		s.shapes = &shapeSurvey{}
+		return nil
+	case c.geometry != "":
+		at, err := s.header.find(c.geometry, geometry.String())
+		if err == nil {
+			s.shapes = s.columns[at].expectShapes()
+		}
+		return err
+	}
 	if s.x, err = s.header.find(c.x, coordinateX.String()); err != nil {
 		return err
 	}
@@ -153,20 +188,33 @@ func (s *surveyor) findCoordinates(want SurveyRequest) error {
 	return err
 }
 
+// guess asks for coordinate columns that Read does not find, for the given reason.
+func (s *surveyor) guess(want SurveyRequest, reason error) coordinates {
+	s.survey.Unrecognised = reason
+	c := coordinates{degrees: want.Axes == AxesDegrees}
+	if want.Guess != nil {
+		c.x, c.y = want.Guess(s.header.names)
+	}
+	s.survey.Guessed = c.x != "" && c.y != ""
+	return c
+}
+
 func (s *surveyor) readAll(from records) error {
 	for {
-		record, line, row, err := from.next()
+		rec, err := from.next()
 		if err == io.EOF {
 			break
 		}
 		if err != nil {
 			return err
 		}
-		if err := s.header.checkRecord(record, Error{File: s.header.source, Line: line, Row: row}); err != nil {
-			return err
+		if rec.site == nil {
+			if err := s.header.checkRecord(rec.fields, Error{File: s.header.source, Line: rec.line, Row: rec.row}); err != nil {
+				return err
+			}
 		}
 		s.survey.Rows++
-		s.readRow(record, line, row)
+		s.readRow(rec)
 	}
 	if s.survey.Rows == 0 {
 		return s.header.noRows()
@@ -174,14 +222,24 @@ func (s *surveyor) readAll(from records) error {
 	return nil
 }
 
-func (s *surveyor) readRow(record []string, line, row int) {
-	slot := s.slot(row)
-	for i, field := range record {
-		record[i] = strings.TrimSpace(field)
-		s.columns[i].take(record[i], line, row, slot)
+func (s *surveyor) readRow(rec record) {
+	fields := rec.fields
+	for _, c := range s.columns[len(fields):] { // those that no property fills
+		fields = append(fields, map[string]string{idName: rec.site.id, heightName: heightText(rec.site.z)}[c.out.Name])
 	}
-	s.place(row)
-	s.compare(record, row)
+	slot := s.slot(rec.row)
+	for i, field := range fields {
+		fields[i] = strings.TrimSpace(field)
+		s.columns[i].take(fields[i], rec.line, rec.row, slot)
+	}
+	switch {
+	case rec.site != nil:
+		s.shapes.take(rec.site, rec.line, rec.row)
+		fields = append(fields, rec.site.key())
+	case s.x >= 0:
+		s.places.take(s.columns[s.x].last, s.columns[s.y].last, rec.row)
+	}
+	s.compare(fields, rec.row)
 }
 
 // slot is where the row goes in the sample; -1 if it does not (Vitter 1985, ACM Trans. Math. Softw. 11:37-57, algorithm
@@ -194,32 +252,6 @@ func (s *surveyor) slot(row int) int {
 		return at
 	}
 	return -1
-}
-
-// place counts the row at its place.
-func (s *surveyor) place(row int) {
-	if s.x < 0 {
-		return
-	}
-	p := &s.survey.Places
-	x, y := s.columns[s.x].last, s.columns[s.y].last
-	if math.IsNaN(x) || math.IsNaN(y) {
-		if p.Without++; p.Without == 1 {
-			p.Row = row
-		}
-		return
-	}
-	at := [2]float64{x + 0, y + 0} // no negative 0
-	i, seen := s.places[at]
-	switch {
-	case seen:
-		p.Rows[i]++
-	case len(p.Rows) == mostPlaces:
-		p.Beyond++
-	default:
-		s.places[at] = len(p.Rows)
-		p.X, p.Y, p.Rows = append(p.X, at[0]), append(p.Y, at[1]), append(p.Rows, 1)
-	}
 }
 
 // compare looks for a row with the same values.
@@ -259,5 +291,33 @@ func (s *surveyor) finish() *Survey {
 	for _, c := range s.columns {
 		t.Columns = append(t.Columns, c.finish())
 	}
+	t.Places = s.places.out
+	s.finishShapes()
 	return t
+}
+
+// finishShapes tells where the rows are by their geometries: those known for that, or those of the one column that
+// looks like it where nothing else is known.
+func (s *surveyor) finishShapes() {
+	t := s.survey
+	if t.XName == "" && s.shapes == nil {
+		for i, c := range t.Columns {
+			switch {
+			case c.Kind != Geometries:
+			case s.shapes != nil: // two of them
+				s.shapes, t.GeometryName, t.Guessed = nil, "", false
+				return
+			default:
+				s.shapes, t.GeometryName, t.Guessed = s.columns[i].shapes, c.Name, true
+			}
+		}
+	}
+	if s.shapes == nil {
+		return
+	}
+	t.Shapes, t.Places = s.shapes.finish(), s.shapes.places.out
+	if !t.Features {
+		t.CRS = t.Shapes.CRS
+		t.Degrees = s.axes == AxesDegrees || s.axes == AxesByName && crs.IsGeographic(t.CRS)
+	}
 }

@@ -8,7 +8,7 @@ import (
 	"strconv"
 )
 
-// ColumnKind is what all values of a column are.
+// ColumnKind is what all values of a column are, or most of them if they are geometries.
 type ColumnKind string
 
 // The kinds of columns.
@@ -17,6 +17,7 @@ const (
 	Numbers      ColumnKind = "numbers"
 	TruthValues  ColumnKind = "truth values" // words such as yes and no; 0 and 1 are whole numbers
 	Dates        ColumnKind = "dates"
+	Geometries   ColumnKind = "geometry" // most of them are WKT or EWKB in hexadecimal
 	Text         ColumnKind = "text"
 	Empty        ColumnKind = "empty"
 )
@@ -43,6 +44,7 @@ type SurveyColumn struct {
 	Examples                         []string // the first three distinct values
 
 	NotNumbers NotNumbers
+	Shapes     *SurveyShapes // of Geometries; nil for other kinds
 
 	Number []float64 // of the sampled rows; NaN where there is no number
 	Code   []int32   // of the sampled rows, index into Levels; -1 where there is no value
@@ -77,6 +79,17 @@ type columnSurvey struct {
 	last    float64 // the number of the row at hand, or NaN
 	highest float64 // the number before
 	rises   bool
+
+	shapes  *shapeSurvey // nil as long as nothing looked like a geometry
+	written int          // values that are geometries, with positions or without
+	named   bool         // the column is said to be of geometries
+	first   firstValue
+}
+
+// firstValue is the first value of a column, and where it stands; a zero row for none.
+type firstValue struct {
+	line, row int
+	text      string
 }
 
 func newColumnSurvey(name string, format *Format, most int, random *rand.Rand) *columnSurvey {
@@ -84,10 +97,19 @@ func newColumnSurvey(name string, format *Format, most int, random *rand.Rand) *
 		codes: map[string]int32{}, random: random, highest: math.Inf(-1), rises: true}
 }
 
+// expectShapes makes the column one of geometries, whatever its values look like.
+func (c *columnSurvey) expectShapes() *shapeSurvey {
+	c.shapes, c.named = &shapeSurvey{}, true
+	return c.shapes
+}
+
 // take counts a trimmed value, and puts it into the sample at a position that is not below 0.
 func (c *columnSurvey) take(s string, line, row, slot int) {
 	code := int32(-1)
 	v, fault := c.format.number(s)
+	if c.shape(s, line, row) {
+		v, fault = notANumber, faultNumber
+	}
 	c.last = v
 	if fault == faultMissing {
 		c.out.Missing++
@@ -105,6 +127,26 @@ func (c *columnSurvey) take(s string, line, row, slot int) {
 	} else if slot >= 0 {
 		c.out.Number[slot], c.out.Code[slot] = v, code
 	}
+}
+
+// shape looks at a value as a geometry, and reports whether it is one. Before the first that may be one, nothing is kept.
+func (c *columnSurvey) shape(s string, line, row int) bool {
+	switch {
+	case c.shapes != nil:
+	case couldBeShape(s):
+		c.shapes = newShapeSurvey(c.out.Missing, c.out.Values, c.first, c.format)
+	default:
+		if c.first.row == 0 && !c.format.isMissing(s) {
+			c.first = firstValue{line, row, shorten(s)}
+		}
+		return false
+	}
+	at := parseSite(s, c.format)
+	c.shapes.take(&at, line, row)
+	if at.code != faultGeometry && !c.format.isMissing(s) {
+		c.written++
+	}
+	return at.geometry != nil
 }
 
 // number counts a finite number.
@@ -200,6 +242,9 @@ func (c *columnSurvey) finish() SurveyColumn {
 	if o.Kind == Dates {
 		o.Date = c.dates.form()
 	}
+	if o.Kind == Geometries {
+		o.Shapes = c.shapes.finish()
+	}
 	o.Ascending = o.Numbers > 1 && o.Numbers == o.Values && c.rises
 	o.Unique = o.Values > 0 && o.Missing == 0 && (o.Ascending || !o.More && o.Distinct == o.Values)
 	slices.Sort(c.drawn)
@@ -217,6 +262,9 @@ func (c *columnSurvey) finish() SurveyColumn {
 
 func (c *columnSurvey) kind() ColumnKind {
 	o := &c.out
+	if c.named || 2*c.written > o.Values {
+		return Geometries
+	}
 	switch o.Values {
 	case 0:
 		return Empty

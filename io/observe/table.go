@@ -3,6 +3,7 @@ package observe
 import (
 	"cmp"
 	"fmt"
+	"iter"
 	"slices"
 
 	"github.com/paulmach/orb"
@@ -12,17 +13,20 @@ import (
 // Aside have one entry a kept row.
 type Table struct {
 	Source   string         // the name the source was given, as in messages
-	Line     []int32        // line of the source on which the row starts; the header stands on line 1
-	Row      []int32        // number of the row below the header, from 1
+	Line     []int32        // line of the source on which the row starts; the header of a CSV table stands on line 1
+	Row      []int32        // number of the row below the header, or of the feature, from 1
 	Columns  []Column       // what the request asked for, each column once, in the order of Request
-	Geometry []orb.Geometry // where the row was observed: an orb.Point of easting and northing, or longitude and latitude
+	Geometry []orb.Geometry // where the row was observed, in easting and northing or longitude and latitude; nil with Request.NoPlaces
 
-	XName, YName string   // the columns the coordinates came from
+	XName, YName string   // the columns the coordinates came from; empty where rows have geometries
+	GeometryName string   // the column the geometries came from, "geometry" for those of features; empty for coordinates
+	Features     bool     // the geometries are those of features (GeoJSON)
+	CRS          string   // what the source says its coordinates are in, such as "EPSG:32633"; empty where it says nothing
 	Degrees      bool     // the coordinates are longitude and latitude in degrees
 	Recognised   bool     // the coordinate columns were found by their names, not named by the user
 	PassedOver   []string // recognised pairs that were present but not used, such as "x/y"
 
-	Separator rune   // what stands between the columns, named or found
+	Separator rune   // what stands between the columns, named or found; 0 for features
 	Encoding  string // of the text: "UTF-8", "UTF-16 LE", "UTF-16 BE" or "Windows-1252"
 
 	BelowLimit []BelowCount // columns with values below a detection limit that a rule took care of, in the order of the checks
@@ -75,11 +79,13 @@ func (t *Table) Column(name string) *Column {
 	return nil
 }
 
-// XY returns the coordinates of the kept rows, newly allocated: easting and northing, or longitude and latitude.
+// XY returns one place for each kept row, newly allocated: easting and northing, or longitude and latitude. It is a
+// point itself, the mean of several, the middle of lines by their length, and the centroid of polygons; NaN for a row
+// without a place.
 func (t *Table) XY() (x, y []float64) {
 	x, y = make([]float64, t.Len()), make([]float64, t.Len())
 	for i, g := range t.Geometry {
-		p := g.(orb.Point)
+		p := middle(g)
 		x[i], y[i] = p[0], p[1]
 	}
 	return x, y
@@ -87,17 +93,19 @@ func (t *Table) XY() (x, y []float64) {
 
 // CountAside returns how many rows were set aside for each reason and column: the most frequent first, ties by
 // reason and then by column.
-func (t *Table) CountAside() []AsideCount {
+func (t *Table) CountAside() []AsideCount { return countAside(slices.Values(t.Aside)) }
+
+func countAside(all iter.Seq[Aside]) []AsideCount {
 	type key struct{ code, column string }
 	at := map[key]int{}
 	var counts []AsideCount
-	for _, a := range t.Aside {
+	for a := range all {
 		k := key{a.Code, a.Column}
 		i, seen := at[k]
 		if !seen {
 			i = len(counts)
 			at[k] = i
-			counts = append(counts, AsideCount{Code: a.Code, Column: a.Column, Reason: a.Reason})
+			counts = append(counts, AsideCount{Code: a.Code, Column: a.Column, Reason: a.commonReason()})
 		}
 		counts[i].Rows++
 	}
@@ -105,6 +113,14 @@ func (t *Table) CountAside() []AsideCount {
 		return cmp.Or(-cmp.Compare(a.Rows, b.Rows), cmp.Compare(a.Reason, b.Reason), cmp.Compare(a.Column, b.Column))
 	})
 	return counts
+}
+
+// commonReason is the reason without what is of this row alone.
+func (a Aside) commonReason() string {
+	if a.Code == faultGeometry {
+		return reasonGeometry
+	}
+	return a.Reason
 }
 
 // sortLevels puts the levels of every text column in order and renumbers the codes to match.
@@ -128,9 +144,10 @@ func (t *Table) sortLevels() {
 }
 
 // Append adds the kept rows of another table that was read with the same request, such as those of a neighbouring
-// region. Levels are merged and sorted. Rows, Aside, BelowLimit and how the source is written stay those of t, and Line and Row of the added rows are those
-// of the source of other. It is an error, and t stays as it is, if only one of the two is in degrees or their columns
-// differ. Append does not change other and shares nothing with it.
+// region. Levels are merged and sorted. Rows, Aside, BelowLimit and how the source is written stay those of t, and Line
+// and Row of the added rows are those of the source of other. It is an error, and t stays as it is, if only one of the two
+// is in degrees, or if their reference systems or columns differ. Append does not change other and shares nothing with it
+// but geometries.
 func (t *Table) Append(other *Table) error {
 	if err := t.checkAlike(other); err != nil {
 		return err
@@ -153,6 +170,9 @@ func (t *Table) checkAlike(other *Table) error {
 	if t.Degrees != other.Degrees {
 		return refuse("the coordinates are in %s, those of the other table in %s", axesWord(other.Degrees), axesWord(t.Degrees))
 	}
+	if t.CRS != other.CRS {
+		return refuse("the coordinates are in %s, those of the other table in %s", systemWord(other.CRS), systemWord(t.CRS))
+	}
 	if len(t.Columns) != len(other.Columns) {
 		return refuse("%d columns were read, and %d of the other table", len(other.Columns), len(t.Columns))
 	}
@@ -166,6 +186,13 @@ func (t *Table) checkAlike(other *Table) error {
 		}
 	}
 	return nil
+}
+
+func systemWord(code string) string {
+	if code == "" {
+		return "a system that is not named"
+	}
+	return shorten(code)
 }
 
 func axesWord(degrees bool) string {

@@ -11,8 +11,8 @@ import (
 )
 
 // maxRecord bounds one record, and with it the memory that a quote left open can take: everything up to the next
-// quote belongs to one field.
-const maxRecord = 1 << 20
+// quote belongs to one field. The outline of a country in full detail takes some megabytes.
+const maxRecord = 8 << 20
 
 // maxColumns bounds the columns of one record: each takes some 200 bytes while the record is read, however empty it is.
 const maxColumns = 1 << 16
@@ -32,12 +32,8 @@ type text struct {
 	origin *origin
 }
 
-// openTextAs looks at the start of r and refuses what is not a text in columns.
-func openTextAs(r io.Reader, source string, format Format) (*text, error) {
-	decoded, from, err := openOrigin(r, source, format)
-	if err != nil {
-		return nil, err
-	}
+// openText looks at the start of a decoded text and finds how its columns are separated.
+func openText(decoded io.Reader, from *origin) (*text, error) {
 	buffered := bufio.NewReaderSize(newBounded(decoded, from), headSize)
 	head, err := buffered.Peek(headSize)
 	if err := from.look(head, err); err != nil {
@@ -136,7 +132,7 @@ func (b *bounded) tooLong() error {
 		e.What = fmt.Sprintf("the line has more than %d columns, the most that is read", maxColumns)
 	case b.quoted:
 		e.What = fmt.Sprintf("a quoted field is not closed within %d bytes", maxRecord)
-		e.Advice = adviceQuote
+		e.Advice = adviceQuote + ", and give outlines as long as that in GeoJSON"
 	}
 	return e
 }

@@ -2,6 +2,7 @@ package plan
 
 import (
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"sync"
@@ -162,7 +163,7 @@ func (b *Batch) Origin(region, file, dir string) (section, key string) {
 // naming finds the word that names a file.
 func (s Settings) naming(file, dir string) (key string, ok bool) {
 	for _, w := range words {
-		if w.File && w.filled(&s) && inFolder(dir, w.value(&s).(string)) == file {
+		if w.File && w.filled(&s) && slices.ContainsFunc(w.paths(&s), func(path string) bool { return inFolder(dir, path) == file }) {
 			return w.Key(), true
 		}
 	}

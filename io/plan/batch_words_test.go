@@ -94,9 +94,9 @@ func TestFormsOfWords(t *testing.T) {
 			want = asTruth
 		case "shape", "cell-size", "cells-across", "threshold", "per", "confidence", "seed", "workers":
 			want = asNumber
-		case "max-knots", "smoothness", "reference":
+		case "max-knots", "smoothness", "reference", "width", "detection", "exposure-cv":
 			want = asNumber | asText
-		case "missing", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
+		case "missing", "join", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
 			want = asList | asText
 		}
 		if w.takes != want {

@@ -1,6 +1,7 @@
 package plan
 
 import (
+	"slices"
 	"strings"
 	"unicode"
 )
@@ -22,7 +23,21 @@ func (s Settings) Resolve() (Settings, error) {
 	if out.Area != nil && out.AreaUnit == nil {
 		out.Choose("area-unit", unitInName(*out.Area), "the name of the area column ends in it")
 	}
+	if out.Length != nil {
+		out.measureStrips()
+	}
 	return out, nil
+}
+
+// measureStrips settles the units of strips.
+func (s *Settings) measureStrips() {
+	if s.LengthUnit == nil {
+		s.Choose("length-unit", lengthUnitInName(*s.Length), "the name of the length column ends in it")
+	}
+	if s.AreaUnit == nil {
+		unit := map[string]string{Metres: Hectares, Kilometres: SquareKilometres}[*s.LengthUnit]
+		s.Choose("area-unit", unit, "the strips' length is in "+*s.LengthUnit)
+	}
 }
 
 // links lists the links that suit a distribution, the usual one first. A mean that may be negative adds up as it is;
@@ -62,15 +77,19 @@ func (s Settings) link() string {
 // unitInName finds the unit of an area at the end of the name of its column, as in area_ha or "Area (km2)", or
 // returns "".
 func unitInName(column string) string {
+	return lastWord(column, SquareMetres, Hectares, SquareKilometres)
+}
+
+// lengthUnitInName does so for the unit of a length.
+func lengthUnitInName(column string) string { return lastWord(column, Metres, Kilometres) }
+
+// lastWord is the last word of a column's name if it is one of among, else "".
+func lastWord(column string, among ...string) string {
 	parts := strings.FieldsFunc(strings.ToLower(column), func(r rune) bool {
 		return !unicode.IsLetter(r) && !unicode.IsDigit(r)
 	})
-	if len(parts) == 0 {
+	if len(parts) == 0 || !slices.Contains(among, parts[len(parts)-1]) {
 		return ""
 	}
-	switch last := parts[len(parts)-1]; last {
-	case SquareMetres, Hectares, SquareKilometres:
-		return last
-	}
-	return ""
+	return parts[len(parts)-1]
 }

@@ -9,22 +9,34 @@ import (
 // Settings are the settings of one run. Every exported field is a pointer or a slice, nil where the word was not
 // said. The zero value says nothing. Settings are values: no method changes the receiver except Choose.
 type Settings struct {
-	Observations *string // path of the table of observations
-	Response     *string // column
-	X, Y         *string // columns with the coordinates
-	CRS          *string // what the coordinates are in
+	Observations *string  // path of the table of observations
+	Response     *string  // column
+	X, Y         *string  // columns with the coordinates
+	Geometry     *string  // column with a geometry as text
+	CRS          *string  // what the coordinates are in
+	Places       *string  // path of the file that has the places of the rows
+	Join         []string // paths of the files that have columns which the observations lack
+	Key          *Key
+	Absent       *string // AbsentZero or AbsentMissing
+	SumBy        *string // column
 	Separator    *string // Comma, Semicolon, Tab or Pipe
 	DecimalComma *bool
 	Missing      []string // marks beside the usual ones
 	BelowLimit   *string  // HalfLimit, AtLimit or AsideLimit
 
-	People   *string // column
-	Area     *string // column
-	AreaUnit *string // SquareMetres, Hectares or SquareKilometres
-	Effort   *string // column
-	Expected *string // column
-	Trials   *string // column
-	Weight   *string // column
+	People         *string // column
+	Area           *string // column
+	AreaUnit       *string // SquareMetres, Hectares or SquareKilometres
+	Length         *string // column: the length of a strip
+	LengthUnit     *string // Metres or Kilometres
+	Width          *Amount // of a strip, in metres
+	Detection      *Amount // share of what is there that is seen
+	Effort         *string // column
+	Expected       *string // column
+	ExposureCV     *Amount // coefficient of variation of a factor that rows share
+	ExposureStrata *string // column: the rows of a level share the factor
+	Trials         *string // column
+	Weight         *string // column
 
 	Distribution   *string // Gaussian, Poisson, NegativeBinomial, Binomial, BetaBinomial, Gamma or Tweedie
 	Link           *string // Identity, Log, Logit or ComplementaryLogLog
@@ -170,7 +182,7 @@ func (s Settings) Effective() []Entry {
 		}
 		v := w.value(&s)
 		if w.File {
-			v = filepath.Base(v.(string))
+			v = baseNames(v)
 		}
 		why := s.why[w.Name]
 		list = append(list, Entry{Key: w.Key(), Value: v, Chosen: why != "" && why != byDefault, Why: why})
@@ -215,7 +227,7 @@ func (s Settings) ChoosesVariation() bool {
 }
 
 // Denominator returns the kind of denominator that was named ("people", "area", "effort" or "expected") and its
-// column, or two empty strings.
+// column, or two empty strings. Strips that are told by their length and width are areas; the column is that of the length.
 func (s Settings) Denominator() (kind, column string) {
 	for _, d := range s.denominators() {
 		return d.kind, d.column
@@ -223,17 +235,44 @@ func (s Settings) Denominator() (kind, column string) {
 	return "", ""
 }
 
-type denominator struct{ kind, column string }
+// Exposure is the columns that the denominator is multiplied from, beside its own: the width of a strip and the share that
+// is detected, where they are columns.
+func (s Settings) Exposure() []string {
+	var list []string
+	for _, a := range []*Amount{s.Width, s.Detection} {
+		if a != nil && a.Column != "" {
+			list = append(list, a.Column)
+		}
+	}
+	return list
+}
+
+type denominator struct{ word, kind, column string }
 
 func (s Settings) denominators() []denominator {
 	var list []denominator
 	for _, d := range []struct {
-		kind   string
-		column *string
-	}{{"people", s.People}, {"area", s.Area}, {"effort", s.Effort}, {"expected", s.Expected}} {
+		word, kind string
+		column     *string
+	}{
+		{"people", "people", s.People}, {"area", "area", s.Area}, {"length", "area", s.Length},
+		{"effort", "effort", s.Effort}, {"expected", "expected", s.Expected},
+	} {
 		if d.column != nil {
-			list = append(list, denominator{d.kind, *d.column})
+			list = append(list, denominator{d.word, d.kind, *d.column})
 		}
+	}
+	return list
+}
+
+// baseNames takes the folders from a path, or from each of a list.
+func baseNames(v any) any {
+	list, several := v.([]string)
+	if !several {
+		return filepath.Base(v.(string))
+	}
+	for i, path := range list {
+		list[i] = filepath.Base(path)
 	}
 	return list
 }
@@ -243,10 +282,21 @@ func (s Settings) Files() []string {
 	var list []string
 	for _, w := range words {
 		if w.File && w.filled(&s) {
-			list = append(list, w.value(&s).(string))
+			list = append(list, w.paths(&s)...)
 		}
 	}
 	return list
+}
+
+// paths are the files that a word names.
+func (w Word) paths(s *Settings) []string {
+	switch v := w.value(s).(type) {
+	case string:
+		return []string{v}
+	case []string:
+		return v
+	}
+	return nil
 }
 
 // RelativeTo returns s with every relative path of an input file taken from dir.
@@ -255,13 +305,16 @@ func (s Settings) RelativeTo(dir string) Settings {
 		if !w.File || !w.filled(&s) {
 			continue
 		}
-		if path := w.value(&s).(string); !filepath.IsAbs(path) {
-			var moved Settings
-			// A path that was accepted once is accepted with a folder before it.
-			if err := w.Set(&moved, filepath.Join(dir, path)); err == nil {
-				w.copy(&s, &moved)
+		var moved Settings
+		for _, path := range w.paths(&s) {
+			if !filepath.IsAbs(path) {
+				path = filepath.Join(dir, path)
+			}
+			if err := w.Set(&moved, path); err != nil {
+				panic("plan: " + err.Error()) // a path that was accepted once is accepted with a folder before it
 			}
 		}
+		w.copy(&s, &moved)
 	}
 	return s
 }

@@ -12,8 +12,12 @@ func (s Settings) Validate() error {
 	for _, rule := range []func(Settings) error{
 		needsObservations,
 		columnsApart,
+		joinsSuit,
+		sumSuits,
 		oneDenominator,
 		areaHasUnit,
+		stripsSuit,
+		exposureSuits,
 		distributionSuits,
 		linkSuits,
 		shapeSuits,
@@ -46,6 +50,8 @@ func needsObservations(s Settings) error {
 		return refuse("x", "add --y COLUMN", "x is named without y")
 	case s.Y != nil && s.X == nil:
 		return refuse("y", "add --x COLUMN", "y is named without x")
+	case s.Geometry != nil && s.X != nil:
+		return refuse("geometry", "keep one of the two", "x and y are named as well; a row has one place")
 	}
 	return nil
 }
@@ -53,7 +59,7 @@ func needsObservations(s Settings) error {
 // columnsApart refuses one column in two roles of which only one can be true.
 func columnsApart(s Settings) error {
 	taken := map[string]string{}
-	for _, name := range []string{"response", "x", "y", "people", "area", "effort", "expected", "trials", "weight"} {
+	for _, name := range []string{"response", "x", "y", "geometry", "people", "area", "length", "effort", "expected", "trials", "weight"} {
 		w, _ := Lookup(name)
 		if !w.filled(&s) {
 			continue
@@ -70,19 +76,19 @@ func columnsApart(s Settings) error {
 func oneDenominator(s Settings) error {
 	named := s.denominators()
 	if len(named) > 1 {
-		return refuse(named[1].kind, "keep the one the counts are to be divided by",
-			"%s is named as well; a count has one denominator", named[0].kind)
+		return refuse(named[1].word, "keep the one the counts are to be divided by",
+			"%s is named as well; a count has one denominator", named[0].word)
 	}
 	if len(named) == 1 && s.Trials != nil {
-		return refuse("trials", "for positives among examined keep --trials; for a count keep --"+named[0].kind,
-			"%s is named as well; positives have trials, counts have a denominator", named[0].kind)
+		return refuse("trials", "for positives among examined keep --trials; for a count keep --"+named[0].word,
+			"%s is named as well; positives have trials, counts have a denominator", named[0].word)
 	}
 	return nil
 }
 
 func areaHasUnit(s Settings) error {
 	switch {
-	case s.Area == nil && s.Said("area-unit"):
+	case s.Area == nil && s.Length == nil && s.Said("area-unit"):
 		return refuse("area-unit", "name the column with the area with --area", "no area is named")
 	case s.Area != nil && s.AreaUnit == nil && unitInName(*s.Area) == "":
 		return refuse("area", "add --area-unit m2, ha or km2", "the unit of column %q is not given", *s.Area)

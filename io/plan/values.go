@@ -19,6 +19,12 @@ const (
 	Tab       = "tab"
 	Pipe      = "pipe"
 
+	Metres     = "m"
+	Kilometres = "km"
+
+	AbsentZero    = "zero"
+	AbsentMissing = "missing"
+
 	HalfLimit  = "half"
 	AtLimit    = "limit"
 	AsideLimit = "aside"
@@ -63,6 +69,30 @@ const (
 	AtMean      = "mean"
 	AtCommonest = "commonest"
 )
+
+// Key is the column of the observations that names the place of a row, and what the same is called in the files that are
+// joined by it.
+type Key struct{ Column, Property string }
+
+func (k Key) plain() any {
+	if k.Property == k.Column {
+		return k.Column
+	}
+	return k.Column + "=" + k.Property
+}
+
+// Amount is one number for all rows, or a column with one for each.
+type Amount struct {
+	Column string // empty for one number
+	Number float64
+}
+
+func (a Amount) plain() any {
+	if a.Column == "" {
+		return a.Number
+	}
+	return a.Column
+}
 
 // Smoothness says how the penalty of the surface is chosen.
 type Smoothness struct {
@@ -253,6 +283,36 @@ func parseKnots(value string) (Knots, error) {
 	}
 	n, err := parseWhole(4)(value)
 	return Knots{N: n}, err
+}
+
+func parseKey(value string) (Key, error) {
+	column, property, found := strings.Cut(value, "=")
+	column, property = strings.TrimSpace(column), strings.TrimSpace(property)
+	switch {
+	case column == "" || found && property == "":
+		return Key{}, advise("is not of the form COLUMN or COLUMN=PROPERTY", "for example district=name")
+	case !found:
+		property = column
+	}
+	return Key{column, property}, nil
+}
+
+// parseAmount takes a number that suits, or what is none for the name of a column.
+func parseAmount(most float64) func(string) (Amount, error) {
+	return func(value string) (Amount, error) {
+		text := strings.TrimSpace(value)
+		if text == "" {
+			return Amount{}, advise("nothing is given", "")
+		}
+		if _, err := strconv.ParseFloat(strings.Replace(text, ",", ".", 1), 64); err != nil {
+			return Amount{Column: text}, nil
+		}
+		v, err := parsePositive(text)
+		if err == nil && v > most {
+			err = advise("is more than "+spoken(most), "")
+		}
+		return Amount{Number: v}, err
+	}
 }
 
 func parseCurvePer(value string) (CurvePer, error) {

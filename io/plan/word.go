@@ -42,7 +42,9 @@ func formOf[T any]() form {
 		return asNumber
 	case bool:
 		return asTruth
-	case Knots, Smoothness, Reference:
+	case Key:
+		return asText
+	case Knots, Smoothness, Reference, Amount:
 		return asNumber | asText
 	}
 	return 0

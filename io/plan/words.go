@@ -1,6 +1,9 @@
 package plan
 
-import "slices"
+import (
+	"math"
+	"slices"
+)
 
 // The headings of the help, in order of first use below.
 const (
@@ -11,6 +14,9 @@ const (
 	groupReporting = "What to report"
 	groupRun       = "How to run"
 )
+
+// MostCV is the largest coefficient of variation of a factor of the exposure: beyond it nothing was known.
+const MostCV = 2
 
 // Words returns the list of words in the order in which they are shown and recorded.
 func Words() []Word { return slices.Clone(words) }
@@ -28,6 +34,9 @@ var words = []Word{
 	one(Word{Name: "y", Group: groupData, Arg: "COLUMN",
 		Help: "the column with the northing or latitude"},
 		func(s *Settings) **string { return &s.Y }, parseText),
+	one(Word{Name: "geometry", Group: groupData, Arg: "COLUMN",
+		Help: "the column with the place of a row as text, instead of x and y: WKT or EWKB in hexadecimal. GeoJSON brings its own"},
+		func(s *Settings) **string { return &s.Geometry }, parseText),
 	one(Word{Name: "crs", Group: groupData, Arg: "CODE",
 		Help: "what the coordinates are in: an EPSG code such as EPSG:32633 or EPSG:4326, or local for plain metres. " +
 			"Without it, columns named as longitude and latitude are taken for that, and others for local metres"},
@@ -45,6 +54,23 @@ var words = []Word{
 		Help: "what becomes of values below a detection limit, written <0.5: half of the limit or the limit itself stands for " +
 			"them, or their rows are set aside. Without it they are no numbers"},
 		func(s *Settings) **string { return &s.BelowLimit }, parseChoice(HalfLimit, AtLimit, AsideLimit)),
+	one(Word{Name: "places", Group: groupData, Arg: "FILE", File: true,
+		Help: "a file with the places of the rows, points, lines or polygons, which are found in it by their key"},
+		func(s *Settings) **string { return &s.Places }, parseText),
+	several(Word{Name: "join", Group: groupData, Arg: "FILE", File: true,
+		Help: "a table with columns that the observations lack, such as denominators or covariates, found in it by their key"},
+		func(s *Settings) *[]string { return &s.Join }, parseText),
+	one(Word{Name: "key", Group: groupData, Arg: "COLUMN[=PROPERTY]",
+		Help: "the column that names the place of a row, and what it is called in the files of --places and --join if that differs. " +
+			"Alone it names the places in places.csv"},
+		func(s *Settings) **Key { return &s.Key }, parseKey),
+	one(Word{Name: "absent", Group: groupData, Arg: "MEANING",
+		Help: "what it means that a place has no row: zero if nothing was found there, missing if nobody looked"},
+		func(s *Settings) **string { return &s.Absent }, parseChoice(AbsentZero, AbsentMissing)),
+	one(Word{Name: "sum-by", Group: groupData, Arg: "COLUMN",
+		Help: "make one row of all rows with the same value in this column: what was counted is added up, with the denominators " +
+			"and trials that stand beside it"},
+		func(s *Settings) **string { return &s.SumBy }, parseText),
 	one(Word{Name: "strict", Group: groupData,
 		Help: "refuse the input if any row is unusable, instead of setting the row aside"},
 		func(s *Settings) **bool { return &s.Strict }, parseTruth),
@@ -56,8 +82,28 @@ var words = []Word{
 		Help: "the response is a count on this much ground"},
 		func(s *Settings) **string { return &s.Area }, parseText),
 	one(Word{Name: "area-unit", Group: groupKind, Arg: "UNIT",
-		Help: "the unit of the area column: m2, ha or km2. Taken from the end of the column's name if that is one of them"},
+		Help: "the unit of the area column: m2, ha or km2. Taken from the end of the column's name if that is one of them. With " +
+			"--length it is the unit that densities are given in; ha for a length in m, km2 for one in km if not given"},
 		func(s *Settings) **string { return &s.AreaUnit }, parseChoice(SquareMetres, Hectares, SquareKilometres)),
+	one(Word{Name: "length", Group: groupKind, Arg: "COLUMN",
+		Help: "the response is a count on a strip of this length, which --width makes an area"},
+		func(s *Settings) **string { return &s.Length }, parseText),
+	one(Word{Name: "length-unit", Group: groupKind, Arg: "UNIT",
+		Help: "the unit of the length column: m or km. Taken from the end of the column's name if that is one of them"},
+		func(s *Settings) **string { return &s.LengthUnit }, parseChoice(Metres, Kilometres)),
+	one(Word{Name: "width", Group: groupKind, Arg: "NUMBER|COLUMN",
+		Help: "the whole width of the strips in metres, both sides of the line together: one number, or a column"},
+		func(s *Settings) **Amount { return &s.Width }, parseAmount(math.MaxFloat64)),
+	one(Word{Name: "detection", Group: groupKind, Arg: "NUMBER|COLUMN",
+		Help: "the share of what is there that is detected, above 0 and up to 1: one number, or a column. It multiplies the area searched"},
+		func(s *Settings) **Amount { return &s.Detection }, parseAmount(1)),
+	one(Word{Name: "exposure-cv", Group: groupKind, Arg: "NUMBER|COLUMN",
+		Help: "the coefficient of variation of a factor in the denominator that rows share, such as detection: 0.15 for all rows " +
+			"together, or a column, whose rows of one value share a factor. It widens every error, and does not average out"},
+		func(s *Settings) **Amount { return &s.ExposureCV }, parseAmount(MostCV)),
+	one(Word{Name: "exposure-strata", Group: groupKind, Arg: "COLUMN",
+		Help: "the strata of --exposure-cv: rows with the same value in this column share a factor"},
+		func(s *Settings) **string { return &s.ExposureStrata }, parseText),
 	one(Word{Name: "effort", Group: groupKind, Arg: "COLUMN",
 		Help: "the response is a count for this much effort: hours, trap nights, length walked"},
 		func(s *Settings) **string { return &s.Effort }, parseText),

@@ -48,8 +48,9 @@ type Document struct {
 	Coefficients []Coefficient `json:"coefficients"`
 	Effects      []Effect      `json:"effects"`
 	Estimates    Estimates     `json:"estimates"`
-	Tests        []Test        `json:"tests"`      // only where they were asked for
-	Candidates   []Candidate   `json:"candidates"` // only where alternatives were named
+	Tests        []Test        `json:"tests"`            // only where they were asked for
+	Candidates   []Candidate   `json:"candidates"`       // only where alternatives were named
+	Places       *Places       `json:"places,omitempty"` // where rows are told apart by a key, or are lines or areas
 	Zones        *Zones        `json:"zones"`
 	Checks       []Check       `json:"checks"`
 	Cautions     []string      `json:"cautions"`
@@ -66,12 +67,37 @@ type Input struct {
 	SHA256         string         `json:"sha256"`
 	Rows           int            `json:"rows"`
 	Used           int            `json:"used"`
-	SetAside       map[string]int `json:"set_aside"` // rows by reason
+	Fitted         int            `json:"fitted,omitempty"` // rows of the fit, where adding up or zeros for places without one made them others
+	SetAside       map[string]int `json:"set_aside"`        // rows by reason
 	DistinctPlaces int            `json:"distinct_places"`
 	MedianSpacing  Number         `json:"median_spacing_m"`
 	Coordinates    string         `json:"coordinates"`      // which columns, and how they were taken
 	Format         string         `json:"format,omitempty"` // how the table is written, where that is not with commas in UTF-8
 	BelowLimit     []BelowLimit   `json:"below_limit,omitempty"`
+	Summed         int            `json:"summed,omitempty"` // rows that were added up into another
+	Joined         []Joined       `json:"joined,omitempty"`
+}
+
+// Joined is a file that rows took their places or columns from.
+type Joined struct {
+	Name      string `json:"name"`
+	SHA256    string `json:"sha256"`
+	Key       string `json:"key"`       // its column of keys
+	Places    bool   `json:"places"`    // it gave the places
+	Rows      int    `json:"rows"`      // of the observations that found theirs
+	Unmatched int    `json:"unmatched"` // keys of the observations that it does not have
+	Unused    int    `json:"unused"`    // of its keys that no observation has
+	Added     int    `json:"added"`     // rows of 0 for places without one
+}
+
+// Places says what the places are that rows belong to.
+type Places struct {
+	Count  int    `json:"count"`
+	Areas  int    `json:"areas"`
+	Lines  int    `json:"lines"`
+	Points int    `json:"points"`
+	Unseen int    `json:"unseen"`           // places where nobody looked
+	Inside string `json:"inside,omitempty"` // how many points stand for an area or a line
 }
 
 // BelowLimit counts the values of a column that are below a detection limit.

@@ -25,6 +25,7 @@ const (
 func (d Document) Words(w io.Writer) error {
 	before := []line{
 		{"data", d.dataWords()},
+		{"joined", d.joinWords()},
 		{"places", d.placeWords()},
 		{"model", d.modelWords()},
 		{"surface", d.surfaceWords()},
@@ -162,6 +163,9 @@ func signed(n Number) string {
 
 func (d Document) dataWords() string {
 	s := fmt.Sprintf("%s: %d of %s used", d.Input.Name, d.Input.Used, count(d.Input.Rows, "row"))
+	if d.Input.Fitted != 0 {
+		s += fmt.Sprintf(", fitted as %d", d.Input.Fitted)
+	}
 	reasons := slices.SortedFunc(maps.Keys(d.Input.SetAside), func(a, b string) int {
 		return cmp.Or(cmp.Compare(d.Input.SetAside[b], d.Input.SetAside[a]), cmp.Compare(a, b))
 	})
@@ -184,8 +188,68 @@ func (d Document) dataWords() string {
 	return s + "; set aside: " + strings.Join(parts, ", ")
 }
 
+// joinWords says what became of the keys, both ways.
+func (d Document) joinWords() string {
+	var parts []string
+	for _, j := range d.Input.Joined {
+		s := fmt.Sprintf("%s found in %s", count(j.Rows, "row"), j.Name)
+		if j.Unmatched > 0 {
+			s += fmt.Sprintf(", %s not", count(j.Unmatched, "key"))
+		}
+		if j.Unused > 0 {
+			s += fmt.Sprintf(", %d of its keys without a row", j.Unused)
+		}
+		if j.Added > 0 {
+			s += fmt.Sprintf(" and taken for %d zeros", j.Added)
+		}
+		parts = append(parts, s)
+	}
+	if d.Input.Summed > 0 {
+		parts = append(parts, fmt.Sprintf("%s added up into others", count(d.Input.Summed, "row")))
+	}
+	return strings.Join(parts, "; ")
+}
+
+// kindWords says what the places are.
+func (p Places) kindWords() string {
+	var parts []string
+	for _, k := range []struct {
+		n    int
+		what string
+	}{{p.Areas, "area"}, {p.Lines, "line"}, {p.Points, "point"}} {
+		if k.n > 0 {
+			parts = append(parts, count(k.n, k.what))
+		}
+	}
+	s := strings.Join(parts, ", ")
+	if p.Inside != "" {
+		s += ", " + p.Inside
+	}
+	if p.Unseen > 0 {
+		s += fmt.Sprintf("; nobody looked at %d of them", p.Unseen)
+	}
+	return s
+}
+
+// stripWords says what makes the area searched, beside its own column.
+func stripWords(said map[string]string) (s string) {
+	if column, ok := said["length"]; ok {
+		s = fmt.Sprintf("; counts divided by area, %s in %s times a width of %s", column, said["length_unit"], said["width"])
+		if _, err := strconv.ParseFloat(said["width"], 64); err == nil {
+			s += " m"
+		}
+	}
+	if share, ok := said["detection"]; ok {
+		s += " times the share detected, " + share + ","
+	}
+	return s
+}
+
 func (d Document) placeWords() string {
 	s := count(d.Input.DistinctPlaces, "distinct place")
+	if d.Places != nil {
+		s = d.Places.kindWords()
+	}
 	if !math.IsNaN(float64(d.Input.MedianSpacing)) {
 		s += ", median spacing " + metres(d.Input.MedianSpacing)
 	}
@@ -213,6 +277,7 @@ func (d Document) modelWords() string {
 			s += fmt.Sprintf("; %s divided by %s, column %s", what, kind, column)
 		}
 	}
+	s += stripWords(said)
 	if unit := said["area_unit"]; unit != "" {
 		s += " in " + unit
 	}

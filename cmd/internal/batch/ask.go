@@ -23,7 +23,7 @@ func (r *runner) ask(ctx context.Context, i int) (pipeline.Region, plan.Settings
 	if r.pooled != nil {
 		r.pooled.settle(&s)
 	}
-	asked := pipeline.Region{Name: g.name, Rows: g.rows}
+	asked := pipeline.Region{Name: g.name, Rows: g.rows, SplitBy: r.plan.SplitBy}
 	if asked.Beyond, err = r.beyond(ctx, i); err != nil {
 		return asked, s, err
 	}

@@ -124,11 +124,10 @@ func (r *runner) breaks(ctx context.Context, fitted []Outcome) ([]draft.Breaks, 
 		}
 		parts[k] = map[picture]chart.Sample{}
 		for _, p := range d.Pictures() {
-			value := p.Value
-			if value == nil {
-				value = p.Dots.Value
+			if p.Classes != p.File {
+				continue // it takes the colours of another picture, and has no say in them
 			}
-			parts[k][picture{p.File, p.Kind, group{d.Response, d.Unit}}] = chart.NewSample(value, size)
+			parts[k][picture{p.File, p.Kind, group{d.Response, d.Unit}}] = chart.NewSample(p.Values(), size)
 		}
 		return nil
 	})
@@ -201,7 +200,7 @@ func (r *runner) drawRegion(ctx context.Context, o Outcome, list []draft.Breaks)
 	}
 	drawn := []string{mark}
 	for _, p := range d.Pictures() {
-		if edges, ok := edgesOf(list, p.File, g); ok {
+		if edges, ok := edgesOf(list, p.Classes, g); ok {
 			p.Breaks, p.Shared = edges, true
 		}
 		if err := pipeline.ReplaceFile(ctx, filepath.Join(dir, p.File), p.WritePNG); err != nil {

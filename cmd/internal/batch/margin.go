@@ -70,7 +70,7 @@ func (r *runner) placesOf(ctx context.Context, i int) (spots []spot, onGlobe int
 	if err != nil {
 		return nil, 0, err
 	}
-	lonLat, row, geographic, err := pipeline.Places(s, p)
+	lonLat, row, geographic, err := pipeline.Places(ctx, s, p)
 	if err != nil {
 		return nil, 0, err
 	}

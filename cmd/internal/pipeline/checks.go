@@ -235,12 +235,12 @@ func (r *run) cautions() []string {
 			"Smoothed rates describe places, not persons, and prove no cause; small numbers can identify people: follow your data protection rules before you publish.",
 			"Decisions on health belong to the responsible authority and to licensed practice.")
 	case kind == "area" || kind == "effort":
-		list = append(list,
-			"Counts are taken as complete: animals or plants that were missed are missing from the map and its totals.",
+		list = append(list, missed(s),
 			"Where people or protected species depend on it, follow local rules and have the survey design checked by a qualified person.")
 	default:
 		list = append(list, "Not for decisions on safety or health without the checks that local rules and licensed practice ask for.")
 	}
+	list = append(list, r.exposureCautions()...)
 	for _, b := range r.obs.table.BelowLimit {
 		if stands, ok := standsIn[b.Rule]; ok {
 			list = append(list, fmt.Sprintf("Of %s, %d values are below a detection limit; %s stands for them, which narrows the limits.", b.Column, b.Rows, stands))
@@ -259,4 +259,39 @@ func (r *run) cautions() []string {
 		list = append(list, "Intervals are for the smoothness at hand, as if it were known.")
 	}
 	return list
+}
+
+// missed says what becomes of what was not detected.
+func missed(s plan.Settings) string {
+	if s.Detection != nil {
+		return "Counts are corrected for the share that is detected, as it was given; whoever relies on the map should know where that share comes from."
+	}
+	return "Counts are taken as complete: animals or plants that were missed are missing from the map and its totals."
+}
+
+// exposureCautions tell what is taken for granted of what is behind the counts.
+func (r *run) exposureCautions() (list []string) {
+	s := r.settings
+	switch {
+	case r.obs.data.Factor != nil:
+		list = append(list, "Errors include that of "+factorWords(s)+", which its rows share: it is the same everywhere among them and does not average out.")
+	case s.Detection != nil:
+		list = append(list, "The share that is detected is taken as known; its own error is not in the limits (see --exposure-cv).")
+	}
+	if p := r.byPlace; p != nil && p.areas+p.lines > 0 {
+		list = append(list, "Inside an area or along a line what is behind a count is taken as spread evenly.")
+	}
+	return list
+}
+
+// factorWords names the factor of the exposure that is known with an error.
+func factorWords(s plan.Settings) string {
+	what := "the denominator"
+	if s.Detection != nil {
+		what = "the share that is detected"
+	}
+	if s.ExposureCV.Column != "" {
+		return what + " (coefficients of variation in " + s.ExposureCV.Column + ")"
+	}
+	return fmt.Sprintf("%s (coefficient of variation %g %%)", what, 100*s.ExposureCV.Number)
 }

@@ -34,6 +34,14 @@ func (r *run) describe() {
 	d.Tests = append([]summary.Test{}, r.tests...)
 	d.Candidates = r.describeCandidates()
 	d.Estimates = r.describeEstimates()
+	d.Input.Summed = o.summed
+	if used := o.own + o.summed - o.joined.Added; used != o.own {
+		d.Input.Used, d.Input.Fitted = used, o.own
+	}
+	d.Input.Joined = r.describeJoins()
+	if r.byPlace != nil {
+		d.Places = r.byPlace.describe()
+	}
 	if r.zones != nil {
 		d.Zones = r.zones.describe(r.reporting.Unit)
 	}

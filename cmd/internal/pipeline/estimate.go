@@ -114,15 +114,21 @@ type estimates struct {
 // estimate predicts at places and states the result in the reporting unit: limits are the link's image of
 // eta -+ quantile times its error, so they stay inside the response's range.
 func estimate(ctx context.Context, s *spatial.Surface, rep archive.Reporting, at spatial.Places, z []spatial.Covariate) (*estimates, error) {
-	n := at.Len()
-	columns := make([][]float64, 7)
+	eta, se := make([]float64, at.Len()), make([]float64, at.Len())
+	if err := s.PredictTo(ctx, eta, se, at, z); err != nil {
+		return nil, err
+	}
+	return state(s, rep, eta, se), nil
+}
+
+// state turns linear predictors and their errors into the reporting unit.
+func state(s *spatial.Surface, rep archive.Reporting, eta, se []float64) *estimates {
+	n := len(eta)
+	columns := make([][]float64, 5)
 	for k := range columns {
 		columns[k] = make([]float64, n)
 	}
-	e := &estimates{estimate: columns[0], standardError: columns[1], lower: columns[2], upper: columns[3], cv: columns[4], eta: columns[5], etaError: columns[6]}
-	if err := s.PredictTo(ctx, e.eta, e.etaError, at, z); err != nil {
-		return nil, err
-	}
+	e := &estimates{estimate: columns[0], standardError: columns[1], lower: columns[2], upper: columns[3], cv: columns[4], eta: eta, etaError: se}
 	q := s.Quantile(rep.Confidence)
 	for i, eta := range e.eta {
 		se := e.etaError[i]
@@ -142,7 +148,7 @@ func estimate(ctx context.Context, s *spatial.Surface, rep archive.Reporting, at
 			e.chance[i] = s.Chance(eta, e.etaError[i], limit)
 		}
 	}
-	return e, nil
+	return e
 }
 
 // relate sets the relative risk: the estimate and its limits over the reference level, which is taken as known.

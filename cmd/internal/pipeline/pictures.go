@@ -37,6 +37,16 @@ func (r *run) draft() draft.Draft {
 	if r.zones != nil {
 		d.Zones = r.zones.drawn()
 	}
+	if p := r.byPlace; p != nil {
+		d.ShapeOf = p.shapes()
+		if r.settings.Key != nil {
+			d.ShapeName = p.names()
+		}
+		d.ShapeEstimate, d.ShapeRelative = p.smoothed.estimate, p.smoothed.relative
+		if p.areas == len(p.places) {
+			d.PlaceX, d.PlaceY = nil, nil // the areas are drawn, and a mark in the middle of each would say less
+		}
+	}
 	return d
 }
 

@@ -25,6 +25,7 @@ type Region struct {
 	Name        string
 	Fingerprint string        // of input, settings and program; recorded
 	Rows        *observe.Part // nil: all of the settings' table of observations
+	SplitBy     string        // of Rows: the column that says which region a row is of
 	// Beyond holds rows of neighbouring regions, which help the fit and are not reported.
 	Beyond []observe.Part
 	// Waiting, if not nil, is given what only waits for the disk, and carries it out: others can compute meanwhile.
@@ -38,6 +39,7 @@ type run struct {
 	events   Events
 	version  string
 
+	joins      *joins // nil where rows have all that they need
 	obs        *observations
 	area       *studyArea
 	target     *target
@@ -49,6 +51,7 @@ type run struct {
 	variation  *spatial.Variation // nil where there was nothing to choose
 	reporting  reporting
 	estimates  *estimates
+	byPlace    *placeResults // nil where places are not told apart
 	zones      *zoneResults
 	sums       summary.Region // of a region of a batch
 	document   summary.Document
@@ -84,6 +87,7 @@ func runInto(ctx context.Context, r *run, dir string) (summary.Document, error) 
 			{"testing", r.test},
 			{"comparing", r.compare},
 			{"predicting", r.predict},
+			{"looking at places", r.assess},
 			{"adding up zones", r.addUp},
 			{"adding up the region", r.addUpRegion},
 		} {
@@ -111,14 +115,14 @@ func (r *run) predict(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
-	all := r.obs.data.Places // neighbours' rows too: where they are, the surface rests on data
+	all := r.obs.points() // neighbours' rows too: where they are, the surface rests on data
 	r.estimates.nearest = grids.Nearest(all.X, all.Y, r.target.places.X, r.target.places.Y)
 	return nil
 }
 
 // saved is the fitted surface as the archive keeps it.
 func (r *run) saved() archive.Saved {
-	x, y := distinctPlaces(r.obs.data.Places)
+	x, y := distinctPlaces(r.obs.points())
 	return archive.Saved{Surface: r.surface.State(), Program: r.version, Reporting: r.reporting.Reporting, PlaceX: x, PlaceY: y}
 }
 

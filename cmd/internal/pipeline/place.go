@@ -45,11 +45,11 @@ func (r *run) place(ctx context.Context) error {
 	if err := r.layArea(); err != nil {
 		return err
 	}
-	s, at := r.settings, r.obs.ownPlaces()
+	s := r.settings
 	if s.At != nil {
 		return r.placeAt(ctx, *s.At)
 	}
-	spec := grids.Spec{X: at.X, Y: at.Y, Within: r.area.within, Across: *s.CellsAcross}
+	spec := r.spec(*s.CellsAcross)
 	if s.CellSize != nil {
 		spec.Cell = *s.CellSize
 	}
@@ -77,17 +77,34 @@ func (r *run) layArea() (err error) {
 			return err
 		}
 	}
-	at := r.obs.ownPlaces()
-	area, err := grids.NewStudyArea(at.X, at.Y, r.area.within)
+	if r.area.within == nil {
+		r.area.within = r.obs.ownAreas()
+	}
+	spec := r.spec(knotsAcross)
+	area, err := grids.NewStudyArea(spec.X, spec.Y, spec.Within)
 	if err != nil {
 		return nil // the lattice will say so
 	}
 	r.area.outline = area.Outline
-	l, err := grids.NewLattice(r.obs.system, grids.Spec{X: at.X, Y: at.Y, Within: r.area.within, Across: knotsAcross})
+	if r.settings.Within == nil && r.area.within != nil {
+		r.area.outline = grids.OuterEdges(area.Outline)
+	}
+	l, err := grids.NewLattice(r.obs.system, spec)
 	if err == nil {
 		_, r.area.knotPlaces.X, r.area.knotPlaces.Y = l.Centres()
 	}
 	return nil
+}
+
+// spec asks for a lattice over the study area. Points along a line are close to one another, however far apart the lines
+// are: how far a map reaches beyond them goes by the places of the rows.
+func (r *run) spec(across int) grids.Spec {
+	at := r.obs.ownPoints()
+	spec := grids.Spec{X: at.X, Y: at.Y, Within: r.area.within, Across: across}
+	if r.obs.apart > 0 {
+		spec.Spacing = r.obs.spacing
+	}
+	return spec
 }
 
 // polygons reads polygons into the plane and returns them as one shape.
@@ -134,7 +151,7 @@ func (r *run) inDegrees(shapes *vector.Shapes) (bool, error) {
 	b := shapes.Bound()
 	small := b.Min[0] >= -360 && b.Max[0] <= 360 && b.Min[1] >= -90 && b.Max[1] <= 90
 	geographic := r.obs.system.Geographic()
-	said := plainCode(shapes.CRS)
+	said := vector.PlainCode(shapes.CRS)
 	switch {
 	case said != "" && crs.IsGeographic(said):
 		if !geographic {
@@ -156,16 +173,6 @@ func (r *run) inDegrees(shapes *vector.Shapes) (bool, error) {
 			"%s: coordinates up to (%.10g, %.10g) are not longitude and latitude, as those of the observations are", shapes.Source, b.Max[0], b.Max[1])
 	}
 	return false, nil
-}
-
-// plainCode turns the name of a coordinate system as GeoJSON files have it, urn:ogc:def:crs:EPSG::32633 or
-// urn:ogc:def:crs:OGC:1.3:CRS84 (GeoJSON of 2008, section 3.1), into authority and code. Other names come back as they are.
-func plainCode(name string) string {
-	parts := strings.Split(name, ":")
-	if len(parts) == 7 && strings.EqualFold(strings.Join(parts[:4], ":"), "urn:ogc:def:crs") {
-		return parts[4] + ":" + parts[6]
-	}
-	return name
 }
 
 func sameSystem(code string, system crs.System) bool {
@@ -256,23 +263,16 @@ func planeOf(t *observe.Table, system crs.System) (x, y []float64, err error) {
 }
 
 // Places returns where the rows of a part are, as longitude and latitude if their system is tied to the globe and in
-// metres if not, with the number of each row.
-func Places(s plan.Settings, p observe.Part) (at [][2]float64, row []int32, geographic bool, err error) {
-	want := observe.Request{Format: Format(s)}
-	if s.X != nil {
-		want.X, want.Y = *s.X, *s.Y
-	}
-	if want.Axes, err = Axes(s); err != nil {
-		return nil, nil, false, err
-	}
-	t, err := observe.ReadPart(p, want)
+// metres if not, with the number of each row. Of a line or an area it is the middle.
+func Places(ctx context.Context, s plan.Settings, p observe.Part) (at [][2]float64, row []int32, geographic bool, err error) {
+	t, err := tableOfPlaces(ctx, s, p)
 	if err != nil {
 		return nil, nil, false, err
 	}
 	x, y := t.XY()
 	var system crs.System = crs.Local{}
-	if !t.Degrees && s.CRS != nil {
-		if system, err = crs.Parse(*s.CRS); err != nil {
+	if code := codeOf(t, s); !t.Degrees && code != "" {
+		if system, err = crs.Parse(code); err != nil {
 			return nil, nil, false, err
 		}
 	}
@@ -284,4 +284,33 @@ func Places(s plan.Settings, p observe.Part) (at [][2]float64, row []int32, geog
 		}
 	}
 	return at, t.Row, t.Degrees || system.Geographic(), nil
+}
+
+// tableOfPlaces reads the places of a part and nothing else.
+func tableOfPlaces(ctx context.Context, s plan.Settings, p observe.Part) (*observe.Table, error) {
+	want := observe.Request{Format: Format(s)}
+	locate(&want, s)
+	var err error
+	if want.Axes, err = Axes(s); err != nil {
+		return nil, err
+	}
+	if s.Places == nil {
+		return observe.ReadPart(p, want)
+	}
+	s.Join, s.Absent = nil, new(plan.AbsentMissing)
+	joins, err := openJoins(ctx, s)
+	if err != nil {
+		return nil, err
+	}
+	want.Keep = []string{s.Key.Column}
+	from := partSource(p)
+	own, err := joins.shareOut(want, from, p.Columns(), s.Key.Column)
+	if err != nil {
+		return nil, err
+	}
+	t, err := from.read(ctx, own)
+	if err == nil {
+		_, err = joins.join(ctx, t, from, want, s.Key.Column)
+	}
+	return t, err
 }

@@ -5,7 +5,6 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"errors"
-	"fmt"
 	"io"
 	"math"
 	"os"
@@ -29,8 +28,15 @@ type observations struct {
 	system crs.System
 	said   string // how the coordinates were taken, in words
 	data   spatial.Data
+	joined observe.JoinReport
+	summed int // rows that were added up into others
 
-	placeX, placeY []float64 // distinct places of its own, sorted by x, then y
+	x, y    []float64 // a place for each row, in the plane: of a line or an area, its middle
+	places  []place   // the places of the rows; nil where every row is a point and none has a key
+	placeOf []int32   // of each row
+	apart   float64   // metres between the points that stand for an area or a line, at most; 0 where rows are points
+
+	placeX, placeY []float64 // distinct places of its own rows, sorted by x, then y
 	spacing        float64   // median distance from one to the nearest other
 }
 
@@ -41,27 +47,40 @@ func (r *run) read(ctx context.Context) error {
 		return err
 	}
 	o := &observations{}
-	if o.table, o.sha256, err = r.readRows(ctx, want); err != nil {
+	if r.joins, err = openJoins(ctx, r.settings); err != nil {
 		return err
 	}
-	if err := withinReach(o.table, *r.settings.Response, *r.settings.Distribution); err != nil {
+	if err := r.joins.forRegion(r.region); err != nil {
 		return err
 	}
-	o.own = o.table.Len()
-	if err := r.readBeyond(o, want); err != nil {
+	if err := r.readRows(ctx, o, want); err != nil {
+		return err
+	}
+	if err := r.readBeyond(ctx, o, want); err != nil {
 		return err
 	}
 	if err := o.project(r.settings); err != nil {
 		return err
 	}
+	if err := o.addUnseen(r.joins); err != nil {
+		return err
+	}
 	o.placeX, o.placeY = distinctPlaces(o.ownPlaces())
 	o.spacing = grids.MedianSpacing(o.placeX, o.placeY)
 	o.data.Response = o.table.Column(*r.settings.Response).Number
-	if _, column := r.settings.Denominator(); column != "" {
-		o.data.Exposure = o.table.Column(column).Number
+	if o.data.Exposure, err = exposure(o.table, r.settings); err != nil {
+		return err
+	}
+	if o.data.Factor, err = sharedFactor(o.table, r.settings); err != nil {
+		return err
 	}
 	if c := r.settings.Trials; c != nil {
 		o.data.Trials = o.table.Column(*c).Number
+		for i, m := range o.data.Trials { // of a joined table they are read as what they are held against, not as counts
+			if m != math.Trunc(m) {
+				return faultIn(o.table, i, *c, m, "is not a whole number, as a number examined is", "correct the value")
+			}
+		}
 	}
 	if c := r.settings.Weight; c != nil {
 		o.data.Weight = o.table.Column(*c).Number
@@ -72,31 +91,41 @@ func (r *run) read(ctx context.Context) error {
 }
 
 // readRows reads the region's own rows.
-func (r *run) readRows(ctx context.Context, want observe.Request) (*observe.Table, string, error) {
-	if r.region == nil || r.region.Rows == nil {
-		return readTable(ctx, *r.settings.Observations, want)
+func (r *run) readRows(ctx context.Context, o *observations, want observe.Request) error {
+	from := fileSource(*r.settings.Observations, want.Format, &o.sha256)
+	if r.region != nil && r.region.Rows != nil {
+		from, o.sha256 = partSource(*r.region.Rows), r.region.Rows.SHA256()
 	}
-	t, err := observe.ReadPart(*r.region.Rows, want)
-	return t, r.region.Rows.SHA256(), err
+	got, err := r.rowsOf(ctx, from, want)
+	if err != nil {
+		return err
+	}
+	o.table, o.own, o.joined, o.summed = got.table, got.table.Len(), got.joined, got.summed
+	return nil
 }
 
 // readBeyond adds the rows of neighbouring regions. What is wrong with them is told where they are reported.
-func (r *run) readBeyond(o *observations, want observe.Request) error {
-	if r.region == nil {
+func (r *run) readBeyond(ctx context.Context, o *observations, want observe.Request) error {
+	if r.region == nil || len(r.region.Beyond) == 0 {
 		return nil
 	}
 	want.Strict = false
+	neighbours := &run{settings: r.settings}
+	var err error
+	if neighbours.joins, err = openJoins(ctx, r.settings); err != nil {
+		return err
+	}
+	if j := neighbours.joins; j != nil {
+		j.absent = observe.AbsentMissing // where the neighbours have no row is theirs to say
+	}
 	for _, p := range r.region.Beyond {
-		t, err := observe.ReadPart(p, want)
-		if err == nil {
-			err = withinReach(t, *r.settings.Response, *r.settings.Distribution)
-		}
+		got, err := neighbours.rowsOf(ctx, partSource(p), want)
 		var unusable *observe.Error
 		if errors.As(err, &unusable) {
 			continue
 		}
 		if err == nil {
-			err = o.table.Append(t)
+			err = o.table.Append(got.table)
 		}
 		if err != nil {
 			return err
@@ -105,9 +134,72 @@ func (r *run) readBeyond(o *observations, want observe.Request) error {
 	return nil
 }
 
-// ownPlaces are the places of the rows that are reported.
-func (o *observations) ownPlaces() spatial.Places {
-	return spatial.Places{X: o.data.Places.X[:o.own], Y: o.data.Places.Y[:o.own]}
+// rowsRead are rows with all that other files give them.
+type rowsRead struct {
+	table  *observe.Table
+	joined observe.JoinReport
+	summed int
+}
+
+// rowsOf reads rows, adds up those that are to be one, and joins them to the other files.
+func (r *run) rowsOf(ctx context.Context, from source, want observe.Request) (got rowsRead, err error) {
+	own := want
+	if r.joins != nil {
+		have, err := from.columns(ctx)
+		if err != nil {
+			return got, err
+		}
+		if own, err = r.joins.shareOut(want, from, have, r.settings.Key.Column); err != nil {
+			return got, err
+		}
+	}
+	if got.table, err = from.read(ctx, own); err != nil {
+		return got, err
+	}
+	if got.summed, err = r.sumRows(ctx, got.table, from, own); err != nil {
+		return got, err
+	}
+	if r.joins != nil {
+		if got.joined, err = r.joins.join(ctx, got.table, from, want, r.settings.Key.Column); err != nil {
+			return got, err
+		}
+	}
+	return got, withinReach(got.table, *r.settings.Response, *r.settings.Distribution)
+}
+
+// sumRows makes one row of those that belong together, and returns how many went into others. Where what the sum is held
+// against comes from elsewhere, or is not there, no row of it may be missing.
+func (r *run) sumRows(ctx context.Context, t *observe.Table, from source, q observe.Request) (int, error) {
+	if r.settings.SumBy == nil {
+		return 0, nil
+	}
+	by := *r.settings.SumBy
+	o := observe.Summing{Add: []string{q.Response}, Strict: q.Strict, Whole: q.Trials == "" && q.Denominator == ""}
+	for _, c := range []string{q.Trials, q.Denominator} {
+		if c != "" {
+			o.Add = append(o.Add, c)
+		}
+	}
+	var err error
+	if o.Whole {
+		if o.Lost, err = lostKeys(ctx, t, from, by, q.Format); err != nil {
+			return 0, err
+		}
+	}
+	sums, err := t.SumBy(by, o)
+	return sums.From - sums.Into, err
+}
+
+// lostKeys are those of the rows that a table has set aside, which takes another look at where it comes from.
+func lostKeys(ctx context.Context, t *observe.Table, from source, key string, format observe.Format) (observe.Lost, error) {
+	if len(t.Aside) == 0 {
+		return observe.Lost{}, nil
+	}
+	all, err := from.read(ctx, observe.Request{NoPlaces: true, Keep: []string{key}, Format: format})
+	if err != nil {
+		return nil, err
+	}
+	return t.Lost(all, key), nil
 }
 
 // withinReach refuses a measurement that its distribution cannot have. To set such rows aside would raise the level.
@@ -145,12 +237,49 @@ func (r *run) request() (observe.Request, error) {
 	if s.Weight != nil {
 		want.Weight = *s.Weight
 	}
-	if s.X != nil {
-		want.X, want.Y = *s.X, *s.Y
+	locate(&want, s)
+	want.Factor = s.Exposure()
+	if cv := s.ExposureCV; cv != nil && cv.Column != "" {
+		want.Linear = add(want.Linear, cv.Column) // 0 is a coefficient of variation
+	}
+	if s.ExposureStrata != nil {
+		want.Category = add(want.Category, *s.ExposureStrata)
+	}
+	for _, key := range r.keys() {
+		want.Keep = add(want.Keep, key)
 	}
 	var err error
 	want.Axes, err = Axes(s)
 	return want, err
+}
+
+// keys are the columns that rows are told apart by.
+func (r *run) keys() (list []string) {
+	if r.settings.Key != nil {
+		list = append(list, r.settings.Key.Column)
+	}
+	if r.settings.SumBy != nil {
+		list = append(list, *r.settings.SumBy)
+	}
+	return list
+}
+
+// add appends a name unless it is in the list.
+func add(list []string, name string) []string {
+	if slices.Contains(list, name) {
+		return list
+	}
+	return append(slices.Clone(list), name)
+}
+
+// locate names the columns of the coordinates, where the settings do.
+func locate(q *observe.Request, s plan.Settings) {
+	if s.X != nil {
+		q.X, q.Y = *s.X, *s.Y
+	}
+	if s.Geometry != nil {
+		q.Geometry = *s.Geometry
+	}
 }
 
 // Format says how the tables are written, as far as the settings do.
@@ -204,7 +333,7 @@ func readTable(ctx context.Context, path string, want observe.Request) (*observe
 	defer f.Close()
 	sum := sha256.New()
 	from := &stoppable{ctx: ctx, from: f}
-	t, err := observe.ReadCSV(io.TeeReader(from, sum), filepath.Base(path), want)
+	t, err := observe.Read(io.TeeReader(from, sum), filepath.Base(path), want)
 	if err != nil {
 		return nil, "", err
 	}
@@ -230,64 +359,6 @@ func openFile(path string) (*os.File, error) {
 		return nil, refuse("name a file in it", "%s: that is a folder", path)
 	}
 	return f, nil
-}
-
-// project puts the rows into the plane: degrees into an equal-area plane around them, a plane as it is.
-func (o *observations) project(s plan.Settings) error {
-	x, y := o.table.XY()
-	columns := fmt.Sprintf("columns %s, %s", o.table.XName, o.table.YName)
-	if o.table.Degrees {
-		system, err := crs.AzimuthalAround(x[:o.own], y[:o.own])
-		if err != nil {
-			return refuse("", "%s: %w", o.table.Source, err)
-		}
-		o.system = system
-		for i := range x {
-			x[i], y[i] = system.Forward(x[i], y[i])
-		}
-		o.said = columns + " taken as longitude and latitude, in an equal-area plane around them"
-	} else {
-		o.system = crs.Local{}
-		o.said = columns + " taken as local metres"
-		if s.CRS != nil {
-			var err error
-			if o.system, err = crs.Parse(*s.CRS); err != nil {
-				return refuse("", "--crs: %w", err)
-			}
-			if o.system.Geographic() && inRangeOfDegrees(x, y) {
-				return refuse("leave out --crs for longitude and latitude, or name other columns with --x and --y",
-					"%s: %s run from %.6g to %.6g and from %.6g to %.6g, which looks like degrees and not like metres of %s",
-					o.table.Source, columns, slices.Min(x), slices.Max(x), slices.Min(y), slices.Max(y), o.system.Code())
-			}
-			o.said = columns + " taken as " + o.system.Code() + " in metres"
-		}
-	}
-	o.data.Places = spatial.Places{X: x, Y: y}
-	return o.onThePlane(x, y)
-}
-
-// inRangeOfDegrees reports whether all coordinates could be degrees. In a national or world-wide plane that would be one
-// spot of some hundred metres at its origin, where nobody is.
-func inRangeOfDegrees(x, y []float64) bool {
-	for i := range x {
-		if math.Abs(x[i]) > 360 || math.Abs(y[i]) > 90 {
-			return false
-		}
-	}
-	return true
-}
-
-// onThePlane refuses coordinates where the projection is not defined: they are in another system than was said.
-func (o *observations) onThePlane(x, y []float64) error {
-	for i := range x {
-		if scale := o.system.AreaScale(x[i], y[i]); math.IsNaN(x[i]) || math.IsNaN(scale) {
-			p := o.table.Geometry[i].Bound().Min
-			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]),
-				What:   fmt.Sprintf("the place (%g, %g) lies outside of %s", p[0], p[1], o.system.Code()),
-				Advice: "say what the coordinates are with --crs, or name their columns with --x and --y"}
-		}
-	}
-	return nil
 }
 
 // distinctPlaces returns the distinct places sorted by x, then y.
@@ -339,6 +410,9 @@ func CheckColumns(s plan.Settings, p observe.Part) error {
 	want, err := (&run{settings: s}).request()
 	if err != nil {
 		return err
+	}
+	if s.Places != nil || len(s.Join) > 0 { // which file has a column is found out when the region is read
+		want = observe.Request{Response: want.Response, Keep: want.Keep, Format: want.Format, NoPlaces: true, Kind: observe.Measure}
 	}
 	return p.Check(want)
 }

@@ -62,6 +62,9 @@ func (r *run) artefacts() []artefact {
 		if len(r.obs.table.Aside) > 0 {
 			list = append(list, artefact{"set-aside.csv", true, r.writeAside})
 		}
+		if r.byPlace != nil {
+			list = append(list, artefact{"places.csv", true, r.writePlaces})
+		}
 		if r.zones != nil {
 			list = append(list, artefact{"zones.csv", true, r.writeZones})
 		}
@@ -74,6 +77,9 @@ func (r *run) artefacts() []artefact {
 	}
 	if r.wants(plan.GeoJSON) && (len(r.target.cells) <= geojsonCells || r.settings.Said("write")) {
 		list = append(list, artefact{"surface.geojson", true, r.writeGeoJSON})
+		if r.byPlace != nil {
+			list = append(list, artefact{"places.geojson", true, r.writePlaceShapes})
+		}
 		if r.zones != nil {
 			list = append(list, artefact{"zones.geojson", true, r.writeZoneShapes})
 		}
@@ -146,18 +152,24 @@ func (r *run) writeZoneShapes(w io.Writer) error {
 func (r *run) writeResiduals(w io.Writer) error {
 	rows, t := r.surface.Rows(), r.obs.table
 	n := r.obs.own
-	row, x, y := make([]int64, n), make([]float64, n), make([]float64, n)
+	row := make([]int64, n)
+	x, y := t.XY()
 	for i := range row {
 		row[i] = int64(t.Row[i])
-		p := t.Geometry[i].Bound().Min
-		x[i], y[i] = p[0], p[1]
 	}
-	return tables.Write(w, n, []tables.Column{
-		{Name: "row", Whole: row}, {Name: "x", Number: x, Exact: true}, {Name: "y", Number: y, Exact: true},
-		{Name: "response", Number: r.obs.data.Response[:n]}, {Name: "fitted", Number: rows.Fitted[:n]},
-		{Name: "deviance_residual", Number: rows.Deviance[:n]}, {Name: "quantile_residual", Number: rows.Quantile[:n]},
-		{Name: "leverage", Number: rows.Leverage[:n]},
-	})
+	columns := []tables.Column{{Name: "row", Whole: row}}
+	if r.obs.places != nil {
+		place := make([]string, n)
+		for i := range place {
+			place[i] = r.obs.places[r.obs.placeOf[i]].name
+		}
+		columns = append(columns, tables.Column{Name: "place", Text: place})
+	}
+	return tables.Write(w, n, append(columns,
+		tables.Column{Name: "x", Number: x[:n], Exact: true}, tables.Column{Name: "y", Number: y[:n], Exact: true},
+		tables.Column{Name: "response", Number: r.obs.data.Response[:n]}, tables.Column{Name: "fitted", Number: rows.Fitted[:n]},
+		tables.Column{Name: "deviance_residual", Number: rows.Deviance[:n]}, tables.Column{Name: "quantile_residual", Number: rows.Quantile[:n]},
+		tables.Column{Name: "leverage", Number: rows.Leverage[:n]}))
 }
 
 func (r *run) writeAside(w io.Writer) error {

@@ -1,0 +1,19 @@
+package observe
+
+// JoinReport tells what a join came to, beside the rows set aside, which are in Table.Aside.
+type JoinReport struct {
+	Sides   []SideReport // in the order of Join.Sides
+	Absent  []string     // keys of the places that no row has, sorted
+	Added   int          // rows added for such places
+	LeftOut []string     // those of them that got no row, with AbsentZero, since another side has none for them; sorted
+}
+
+// SideReport tells how one side matched.
+type SideReport struct {
+	Source       string   // name of the table
+	Matched      int      // rows of the observations whose key it has
+	WithoutMatch []string // keys of the observations that it lacks, sorted
+	Unused       []string // its keys that no row of the observations has, sorted
+	WithoutKey   int      // its rows that have no key
+	Alike        []Alike  // keys it lacks that are written almost like one that it has and that matches, by Key
+}
