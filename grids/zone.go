@@ -91,3 +91,20 @@ func triangleMean(a, b, c orb.Point, f func(x, y float64) float64) float64 {
 	}
 	return mean
 }
+
+// LengthOf returns the true length of lines in metres, in the plane of sys: each piece divided by the root of the area
+// scale at its middle. It is 0 for what is no line.
+func LengthOf(g orb.Geometry, sys crs.System) (sum float64) {
+	switch g := g.(type) {
+	case orb.LineString:
+		for i := 1; i < len(g); i++ {
+			a, b := g[i-1], g[i]
+			sum += math.Hypot(b[0]-a[0], b[1]-a[1]) / math.Sqrt(sys.AreaScale((a[0]+b[0])/2, (a[1]+b[1])/2))
+		}
+	case orb.MultiLineString:
+		for _, l := range g {
+			sum += LengthOf(l, sys)
+		}
+	}
+	return sum
+}

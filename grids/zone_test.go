@@ -254,3 +254,23 @@ func TestFirstFromIsExact(t *testing.T) {
 		}
 	})
 }
+
+// TestLengthOf: on the central meridian of a UTM zone the plane is 0.9996 of the ground (EPSG Guidance Note 7-2).
+func TestLengthOf(t *testing.T) {
+	utm, err := crs.Parse("EPSG:32633")
+	if err != nil {
+		t.Fatal(err)
+	}
+	line := orb.LineString{{500000, 5000000}, {500000, 5000300}, {500400, 5000300}}
+	for _, c := range []struct {
+		g    orb.Geometry
+		sys  crs.System
+		want float64
+	}{
+		{line, crs.Local{}, 700}, {line, utm, 700 / 0.9996}, {orb.MultiLineString{line, line}, crs.Local{}, 1400}, {orb.Point{1, 1}, crs.Local{}, 0}, {nil, crs.Local{}, 0},
+	} {
+		if got := LengthOf(c.g, c.sys); math.Abs(got-c.want) > 1e-5 {
+			t.Errorf("length %.9g, want %.9g", got, c.want)
+		}
+	}
+}

@@ -14,6 +14,9 @@ func stripsSuit(s Settings) error {
 			"a length makes no area without a width")
 	case s.LengthUnit == nil && lengthUnitInName(*s.Length) == "":
 		return refuse("length", "add --length-unit m or km", "the unit of column %q is not given", *s.Length)
+	case s.LengthUnit != nil && s.Said("length-unit") && lengthUnitInName(*s.Length) != "" && lengthUnitInName(*s.Length) != *s.LengthUnit:
+		return refuse("length-unit", "leave it out, or rename the column", "the name of column %q says %s, not %s",
+			*s.Length, lengthUnitInName(*s.Length), *s.LengthUnit)
 	case s.Width.Column != "" && lengthUnitInName(s.Width.Column) == Kilometres:
 		return refuse("width", "give it in metres", "the name of column %q says kilometres, and a width is in metres", s.Width.Column)
 	}

@@ -92,6 +92,8 @@ func areaHasUnit(s Settings) error {
 		return refuse("area-unit", "name the column with the area with --area", "no area is named")
 	case s.Area != nil && s.AreaUnit == nil && unitInName(*s.Area) == "":
 		return refuse("area", "add --area-unit m2, ha or km2", "the unit of column %q is not given", *s.Area)
+	case s.Area != nil && s.AreaUnit != nil && s.Said("area-unit") && unitInName(*s.Area) != "" && unitInName(*s.Area) != *s.AreaUnit:
+		return refuse("area-unit", "leave it out, or rename the column", "the name of column %q says %s, not %s", *s.Area, unitInName(*s.Area), *s.AreaUnit)
 	}
 	return nil
 }

@@ -80,14 +80,15 @@ type Input struct {
 
 // Joined is a file that rows took their places or columns from.
 type Joined struct {
-	Name      string `json:"name"`
-	SHA256    string `json:"sha256"`
-	Key       string `json:"key"`       // its column of keys
-	Places    bool   `json:"places"`    // it gave the places
-	Rows      int    `json:"rows"`      // of the observations that found theirs
-	Unmatched int    `json:"unmatched"` // keys of the observations that it does not have
-	Unused    int    `json:"unused"`    // of its keys that no observation has
-	Added     int    `json:"added"`     // rows of 0 for places without one
+	Name       string `json:"name"`
+	SHA256     string `json:"sha256"`
+	Key        string `json:"key"`         // its column of keys
+	Places     bool   `json:"places"`      // it gave the places
+	Rows       int    `json:"rows"`        // of the observations that found theirs
+	Unmatched  int    `json:"unmatched"`   // keys of the observations that it does not have
+	Unused     int    `json:"unused"`      // of its keys that no observation has
+	Added      int    `json:"added"`       // rows of 0 for places without one
+	WithoutKey int    `json:"without_key"` // of its rows, which were passed over
 }
 
 // Places says what the places are that rows belong to.

@@ -166,6 +166,9 @@ func (d Document) dataWords() string {
 	if d.Input.Fitted != 0 {
 		s += fmt.Sprintf(", fitted as %d", d.Input.Fitted)
 	}
+	if d.Input.Format != "" {
+		s += " (" + d.Input.Format + ")"
+	}
 	reasons := slices.SortedFunc(maps.Keys(d.Input.SetAside), func(a, b string) int {
 		return cmp.Or(cmp.Compare(d.Input.SetAside[b], d.Input.SetAside[a]), cmp.Compare(a, b))
 	})
@@ -200,7 +203,10 @@ func (d Document) joinWords() string {
 			s += fmt.Sprintf(", %d of its keys without a row", j.Unused)
 		}
 		if j.Added > 0 {
-			s += fmt.Sprintf(" and taken for %d zeros", j.Added)
+			s += " and taken for " + count(j.Added, "zero")
+		}
+		if j.WithoutKey > 0 {
+			s += fmt.Sprintf(", %s of it without a key passed over", count(j.WithoutKey, "row"))
 		}
 		parts = append(parts, s)
 	}

@@ -29,6 +29,7 @@ func (r *run) checks() []summary.Check {
 		list = append(list, r.far())
 	}
 	list = append(list, r.aside())
+	list = append(list, r.inputChecks()...)
 	if len(r.surface.Effects()) > 0 {
 		list = append(list, overlap(r.surface.Effects()))
 	}

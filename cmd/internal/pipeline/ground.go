@@ -79,7 +79,9 @@ func (o *observations) choosePlane(s plan.Settings) error {
 			"%s: %s run from %.6g to %.6g and from %.6g to %.6g, which looks like degrees and not like metres of %s",
 			o.table.Source, whence, slices.Min(o.x), slices.Max(o.x), slices.Min(o.y), slices.Max(o.y), o.system.Code())
 	}
-	o.said = whence + " taken as " + o.system.Code() + " in metres"
+	if o.system.Geographic() {
+		o.said = whence + " taken as " + o.system.Code() + " in metres"
+	}
 	return nil
 }
 

@@ -99,9 +99,6 @@ func openJoins(ctx context.Context, s plan.Settings) (*joins, error) {
 		if d.columns, err = d.source.columns(ctx); err != nil {
 			return nil, err
 		}
-		if err := d.findKey(*s.Key); err != nil {
-			return nil, err
-		}
 	}
 	return j, nil
 }
@@ -151,12 +148,12 @@ func (d *side) findKey(k plan.Key) error {
 
 // shareOut says which file gives which column: the observations what they have, then the joined tables in their order,
 // then the file of places. What is left of the request is for the observations.
-func (j *joins) shareOut(want observe.Request, own source, have []string, key string) (observe.Request, error) {
-	if !slices.Contains(have, key) {
-		return want, absentColumn(own.name, key, "the key", have)
-	}
+func (j *joins) shareOut(want observe.Request, own source, have []string, key plan.Key) (observe.Request, error) {
 	for k := range j.sides {
 		d := &j.sides[k]
+		if err := d.findKey(key); err != nil {
+			return want, err
+		}
 		d.want = observe.Request{Format: want.Format, Strict: want.Strict, Keep: []string{d.key}, NoPlaces: !d.places}
 		if d.places {
 			d.want.X, d.want.Y, d.want.Geometry, d.want.Axes = want.X, want.Y, want.Geometry, want.Axes
@@ -292,7 +289,7 @@ func (r *run) describeJoins() []summary.Joined {
 	for k, d := range r.joins.sides {
 		report := r.obs.joined.Sides[k]
 		j := summary.Joined{Name: d.name, SHA256: d.sha256, Key: d.key, Places: d.places,
-			Rows: report.Matched, Unmatched: len(report.WithoutMatch), Unused: len(report.Unused)}
+			Rows: report.Matched, Unmatched: len(report.WithoutMatch), Unused: len(report.Unused), WithoutKey: report.WithoutKey}
 		if d.places {
 			j.Added = r.obs.joined.Added
 		}

@@ -61,12 +61,22 @@ func (r *run) place(ctx context.Context) error {
 		return nil
 	}
 	if err != nil {
-		return err
+		return r.obs.blameZero(err)
 	}
 	t := &target{lattice: l}
 	t.cells, t.places.X, t.places.Y = l.Centres()
 	r.target = t
 	return r.holdAll()
+}
+
+// blameZero adds to an error of the lattice that rows lie at 0, 0, which stretches the study area.
+func (o *observations) blameZero(err error) error {
+	rows := o.atZero()
+	if len(rows) == 0 {
+		return err
+	}
+	return refuse("take such rows out if their places are missing", "%s: %w; %s at exactly 0, 0, far from all others",
+		o.table.Source, err, rowsLie(rows, o.table.Row))
 }
 
 // layArea finds the study area, and the places in it where knots may be wanted.
@@ -304,7 +314,7 @@ func tableOfPlaces(ctx context.Context, s plan.Settings, p observe.Part) (*obser
 	}
 	want.Keep = []string{s.Key.Column}
 	from := partSource(p)
-	own, err := joins.shareOut(want, from, p.Columns(), s.Key.Column)
+	own, err := joins.shareOut(want, from, p.Columns(), *s.Key)
 	if err != nil {
 		return nil, err
 	}

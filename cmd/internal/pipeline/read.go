@@ -144,13 +144,21 @@ type rowsRead struct {
 // rowsOf reads rows, adds up those that are to be one, and joins them to the other files.
 func (r *run) rowsOf(ctx context.Context, from source, want observe.Request) (got rowsRead, err error) {
 	own := want
-	if r.joins != nil {
+	if r.joins != nil || len(r.keys()) > 0 {
 		have, err := from.columns(ctx)
 		if err != nil {
 			return got, err
 		}
-		if own, err = r.joins.shareOut(want, from, have, r.settings.Key.Column); err != nil {
-			return got, err
+		if by := r.settings.SumBy; by != nil && !slices.Contains(have, *by) {
+			return got, absentColumn(from.name, *by, "--sum-by", have)
+		}
+		if key := r.settings.Key; key != nil && !slices.Contains(have, key.Column) {
+			return got, absentColumn(from.name, key.Column, "the key", have)
+		}
+		if r.joins != nil {
+			if own, err = r.joins.shareOut(want, from, have, *r.settings.Key); err != nil {
+				return got, err
+			}
 		}
 	}
 	if got.table, err = from.read(ctx, own); err != nil {
