@@ -117,8 +117,8 @@ func (o *observations) findPlaces(s plan.Settings) error {
 			}
 			o.places = append(o.places, place{name: o.nameOf(i, s), shape: shape, first: i})
 		} else if first := o.places[k].first; !orb.Equal(o.table.Geometry[first], g) {
-			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: s.Key.Column, Value: name,
-				What:   fmt.Sprintf("%q lies elsewhere than in row %d", name, o.table.Row[first]),
+			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: s.Key.Column, Value: o.places[k].name,
+				What:   fmt.Sprintf("%q lies elsewhere than in row %d", o.places[k].name, o.table.Row[first]),
 				Advice: "give every place one location, or a key of its own; without --key places are told apart by where they are"}
 		}
 		if i < o.own {
@@ -129,12 +129,16 @@ func (o *observations) findPlaces(s plan.Settings) error {
 	return nil
 }
 
-// identity is what rows at one place have in common.
+// identity is what rows at one place have in common. A neighbouring region may use the same keys for places of its own.
 func (o *observations) identity(i int, s plan.Settings) string {
-	if s.Key != nil {
-		return o.nameOf(i, s)
+	whose := "own "
+	if i >= o.own {
+		whose = "neighbour "
 	}
-	return coordinatesOf(o.table.Geometry[i])
+	if s.Key != nil && o.table.Column(s.Key.Column).Code[i] >= 0 {
+		return whose + o.nameOf(i, s)
+	}
+	return whose + "at " + coordinatesOf(o.table.Geometry[i])
 }
 
 // nameOf is what the place of a row is called: its key, or the number of the row.

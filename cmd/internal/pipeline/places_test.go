@@ -270,3 +270,43 @@ func TestStrataOfAFactor(t *testing.T) {
 		}
 	}
 }
+
+// TestKeysOfPoints: a key names the places of rows that have coordinates of their own, and must be true of them.
+func TestKeysOfPoints(t *testing.T) {
+	table := "site,x,y,n,ha\n"
+	for i := range 20 {
+		table += fmt.Sprintf("S%d,%d,%d,%d,1\n", i/2, 100*(i/2%4), 100*(i/2/4), 2+i%5)
+	}
+	words := []string{"response=n", "area=ha", "key=site", "write=csv", "cells-across=8", "max-knots=8"}
+	dir := mapped(t, write(t, "obs.csv", table), words...)
+	s := readSheet(t, filepath.Join(dir, "places.csv"))
+	if len(s.rows) != 10 || s.numbers("rows")[0] != 2 || s.numbers("observed")[0] != 5 || s.numbers("denominator")[0] != 2 {
+		t.Errorf("%v", s.rows)
+	}
+	res := readSheet(t, filepath.Join(dir, "residuals.csv"))
+	if res.header[1] != "place" || res.text("place")[3] != "S1" {
+		t.Errorf("residuals.csv: %v, %v", res.header, res.rows[3])
+	}
+	_, err := Run(t.Context(), settings(t, write(t, "obs.csv", strings.Replace(table, "S1,100,0,4", "S1,150,0,4", 1)), words...), filepath.Join(t.TempDir(), "out"), silent{})
+	if want := `obs.csv: row 4 (line 5), column "site": "S1" lies elsewhere than in row 3`; err == nil || err.Error() != want {
+		t.Errorf("got %v, want %s", err, want)
+	}
+}
+
+// TestSystemsOfGeometries: an SRID counts, --crs may repeat it and not contradict it.
+func TestSystemsOfGeometries(t *testing.T) {
+	table := "geom,z\n"
+	for i := range 16 {
+		table += fmt.Sprintf("\"SRID=32633;POINT (%d %d)\",%d\n", 500000+1000*(i%4), 5000000+900*(i/4), i*i%11)
+	}
+	words := []string{"response=z", "geometry=geom", "write=csv", "cells-across=8", "max-knots=8"}
+	first := readSheet(t, filepath.Join(mapped(t, write(t, "obs.csv", table), words...), "surface.csv"))
+	again := readSheet(t, filepath.Join(mapped(t, write(t, "obs.csv", table), append(words, "crs=EPSG:32633")...), "surface.csv"))
+	if diff := cmp.Diff(first.rows, again.rows); diff != "" || first.text("lon")[0] == "" {
+		t.Errorf("with --crs: %s", diff)
+	}
+	_, err := Run(t.Context(), settings(t, write(t, "obs.csv", table), append(words, "crs=EPSG:32634")...), filepath.Join(t.TempDir(), "out"), silent{})
+	if want := "obs.csv: its geometries say that they are in EPSG:32633, and --crs says EPSG:32634"; err == nil || err.Error() != want {
+		t.Errorf("got %v, want %s", err, want)
+	}
+}
