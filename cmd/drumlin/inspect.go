@@ -24,8 +24,9 @@ func (p program) inspectCommand() command {
 		name:     "inspect",
 		synopsis: "OBS [--json | --plan] [flags]",
 		summary:  "say what a table holds, what looks wrong, and what map to ask for",
-		about: "Reads OBS, a CSV table, and says what is in its columns, where its places are, and what looks wrong: swapped " +
-			"axes, rows at 0,0, repeated rows, numbers that are written as text, marks for missing values. It lists the " +
+		about: "Reads OBS, a CSV table or GeoJSON, and says what is in its columns, where its places are, and what looks wrong: " +
+			"swapped axes, rows at 0,0, repeated rows, geometries that cannot be read, numbers that are written as text, marks " +
+			"for missing values. Places are coordinate columns or geometries: points, lines or areas. It lists the " +
 			"columns that could be the response with what each is likely out of, and ends with a command line to paste and " +
 			"what map would choose for it.\n\n" +
 			"What it says of meanings is likely, not certain: it goes by names and numbers alone. Nothing is written, and " +
@@ -58,7 +59,7 @@ func (r *inspectRequest) options() []option {
 		{name: "json", group: group, help: "write all that was found as JSON", take: func(string) error { r.json = true; return nil }},
 		{name: "plan", group: group, help: "write a plan to start a batch from, in which every word is explained",
 			take: func(string) error { r.plan = true; return nil }},
-	}, ofNamed(&r.settings, group, "x", "y", "crs", "separator", "decimal-comma", "missing")...)
+	}, ofNamed(&r.settings, group, "x", "y", "geometry", "crs", "separator", "decimal-comma", "missing")...)
 }
 
 // examine reads the table and looks at it.
@@ -70,6 +71,8 @@ func (r *inspectRequest) examine(ctx context.Context, c command, rest []string) 
 	switch s := r.settings; {
 	case r.json && r.plan:
 		return inspect.Report{}, misuse("make two runs", "--json and --plan each fill standard output")
+	case s.Geometry != nil && (s.X != nil || s.Y != nil):
+		return inspect.Report{}, misuse("name either --geometry or --x and --y", "--geometry is named beside coordinate columns; a row has one place")
 	case (s.X == nil) != (s.Y == nil):
 		return inspect.Report{}, misuse("name both --x and --y, or neither", "one coordinate column is named without the other")
 	}

@@ -179,11 +179,11 @@ func regionRank(name string) int {
 // apart reports whether the rows of each value lie close together, along one axis at least: less than half of the squared
 // distances from the middle remain within values.
 func (e *examiner) apart(c *observe.SurveyColumn) bool {
-	if e.report.Coordinates == nil {
-		return false
-	}
-	for _, name := range []string{e.survey.XName, e.survey.YName} {
-		at := e.survey.Column(name).Number
+	x, y := e.rowPlaces()
+	for _, at := range [][]float64{x, y} {
+		if at == nil {
+			return false
+		}
 		n, mean := make([]float64, c.Distinct), make([]float64, c.Distinct)
 		count, middle, within, total := 0.0, 0.0, 0.0, 0.0
 		for i, code := range c.Code {
@@ -205,4 +205,23 @@ func (e *examiner) apart(c *observe.SurveyColumn) bool {
 		}
 	}
 	return false
+}
+
+// rowPlaces are the coordinates of the rows that are compared, nil where they cannot be told. A survey does not keep which
+// row has which geometry: where each has a place of its own they stand in the order of the rows, and else columns that are
+// named as coordinates have to do.
+func (e *examiner) rowPlaces() (x, y []float64) {
+	s := e.survey
+	switch {
+	case e.report.Coordinates == nil:
+		return nil, nil
+	case s.XName != "":
+		return s.Column(s.XName).Number, s.Column(s.YName).Number
+	case len(s.Places.X) == s.Rows && s.Sampled == s.Rows:
+		return s.Places.X, s.Places.Y
+	}
+	for _, pair := range pairsOfNames(names(s)) {
+		return s.Column(pair[0]).Number, s.Column(pair[1]).Number
+	}
+	return nil, nil
 }

@@ -264,7 +264,7 @@ func TestFormatIsSaid(t *testing.T) {
 
 // TestReportIsWhole: the JSON can be read back, with the keys that are documented, and the words fit a screen.
 func TestReportIsWhole(t *testing.T) {
-	for _, name := range []string{"meuse.csv", "nc_sids.csv", "beet_webworms.csv", "burkina_faso_malaria.csv", "rongelap_radiation.csv"} {
+	for _, name := range []string{"meuse.csv", "nc_sids.csv", "beet_webworms.csv", "burkina_faso_malaria.csv", "rongelap_radiation.csv", "nc_sids_counties.geojson"} {
 		text, err := os.ReadFile(filepath.Join("../../../testdata", name))
 		if err != nil {
 			t.Fatal(err)
@@ -278,7 +278,7 @@ func TestReportIsWhole(t *testing.T) {
 		if err := json.Unmarshal([]byte(b.String()), &back); err != nil {
 			t.Fatal(err)
 		}
-		for _, key := range []string{"file", "rows", "separator", "encoding", "rows_compared", "columns", "coordinates", "findings", "regions", "candidates", "proposal", "undecided"} {
+		for _, key := range []string{"file", "rows", "separator", "encoding", "rows_compared", "columns", "features", "geometry", "coordinates", "findings", "regions", "candidates", "proposal", "undecided"} {
 			if _, there := back[key]; !there {
 				t.Errorf("%s: no %s", name, key)
 			}
@@ -325,24 +325,32 @@ func FuzzExamine(f *testing.F) {
 	f.Add("x,y,cases,pop\n1,2,3,40\n0,0,-999,5\n")
 	f.Add("lon,lat,v,\n1e300,-1e300,<5,a\n200,95,1e308,b\n")
 	f.Add("-x,-y,a'b,a1\n1,2,3,4\n5,6,7,8\n")
+	f.Add("-g,a=b,v\nPOINT (1 2),p,3\n\"POLYGON ((0 0, 1 0, 1 1, 0 0))\",q,4\nPOINT(,r,5\n")
+	f.Add("g,h\nSRID=4326;POINT (1 2),POINT (3 4)\nSRID=1;POINT EMPTY,NA\n")
+	f.Add(`{"type":"Point","coordinates":[1e9,2,3]}{"type":"Feature","id":1,"geometry":null,"properties":{"z":"<1","lon":2,"lat":1}}`)
 	f.Fuzz(func(t *testing.T, text string) {
 		survey, err := observe.ReadSurvey(strings.NewReader(text), "f", observe.SurveyRequest{Guess: GuessCoordinates})
 		if err != nil {
 			return
 		}
-		r := Examine(survey, plan.Settings{Observations: new("f.csv")})
-		var out, starter strings.Builder
-		if err := r.JSON(&out); err != nil {
-			t.Fatal(err)
-		}
-		if err := r.Words(&out); err != nil {
-			t.Fatal(err)
-		}
-		if err := plan.WriteStarter(&starter, r.Starter()); err != nil {
-			t.Fatal(err)
-		}
-		if _, err := plan.ReadBatch([]byte(starter.String()), "plan.toml"); err != nil {
-			t.Fatalf("%q: %v", text, err)
-		}
+		checkReport(t, Examine(survey, plan.Settings{Observations: new("f.csv")}))
 	})
+}
+
+// checkReport demands that a report can be written in every form, and that its plan is one.
+func checkReport(t *testing.T, r Report) {
+	t.Helper()
+	var out, starter strings.Builder
+	if err := r.JSON(&out); err != nil {
+		t.Fatal(err)
+	}
+	if err := r.Words(&out); err != nil {
+		t.Fatal(err)
+	}
+	if err := plan.WriteStarter(&starter, r.Starter()); err != nil {
+		t.Fatal(err)
+	}
+	if _, err := plan.ReadBatch([]byte(starter.String()), "plan.toml"); err != nil {
+		t.Fatalf("%s: %v", r.File, err)
+	}
 }

@@ -10,13 +10,14 @@ import (
 // practice, no source.
 var (
 	responseNames = []string{"case", "cases", "death", "deaths", "died", "ill", "sick", "infected", "positive", "positives", "pos",
-		"count", "counts", "counted", "observed", "sightings", "sighted", "detections", "individuals", "animals", "birds",
+		"count", "counts", "counted", "observed", "sightings", "sighted", "seen", "detections", "individuals", "animals", "birds",
 		"nests", "plants", "stems", "trees", "seedlings", "catch", "caught", "captures", "events", "larvae", "eggs", "number"}
 	covariateNames = []string{"elev", "elevation", "alt", "altitude", "height", "slope", "aspect", "depth", "dist", "distance",
 		"temp", "temperature", "rain", "rainfall", "precipitation", "year", "month", "day", "week", "age", "date", "east", "north",
 		"x", "y", "z", "lon", "lat", "row", "col", "column"}
 	identifierNames = []string{"id", "nr", "no", "code", "key", "gid", "fid", "oid", "fips", "index", "serial"}
 	regionNames     = []string{"region", "district", "province", "county", "zone", "block", "site", "stratum", "ward", "parish", "island", "catchment"}
+	placeNames      = append([]string{"name", "place", "label", "title", "transect", "line", "track", "plot", "tract", "village", "town", "municipality", "area"}, regionNames...)
 	lengthUnits     = map[string]string{"km": "kilometres", "mi": "miles", "miles": "miles", "ft": "feet", "feet": "feet"}
 
 	denominatorNames = []struct {
@@ -26,7 +27,7 @@ var (
 		{"trials", []string{"examined", "tested", "tests", "trials", "screened", "sampled", "checked"}},
 		{"people", []string{"people", "population", "pop", "residents", "inhabitants", "persons", "births", "atrisk", "personyears"}},
 		{"area", []string{"area", "ha", "m2", "km2", "hectares"}},
-		{"effort", []string{"effort", "hours", "hour", "minutes", "nights", "trapnights", "traps", "time", "duration", "exposure", "visits", "hauls", "sweeps"}},
+		{"effort", []string{"effort", "hours", "hour", "minutes", "nights", "trapnights", "traps", "time", "duration", "exposure", "visits", "hauls", "sweeps", "walked"}},
 		{"expected", []string{"expected"}},
 	}
 	areaUnits = []string{"m2", "ha", "km2"}

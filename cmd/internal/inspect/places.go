@@ -18,26 +18,64 @@ const fewPlaces = 10
 
 // places says where the rows are.
 func (e *examiner) places() {
+	switch s := e.survey; {
+	case s.Shapes != nil:
+		e.geometries()
+	case s.XName == "":
+		e.noPlaces()
+	default:
+		e.coordinates()
+	}
+	for i := range e.survey.Columns {
+		if c := &e.survey.Columns[i]; c.Kind == observe.Geometries {
+			e.role[c.Name] = coordinate
+		}
+	}
+}
+
+// noPlaces says that nothing tells where the rows are.
+func (e *examiner) noPlaces() {
+	advice := "; name them with --x and --y"
+	if list := e.geometryColumns(); len(list) > 0 {
+		advice = fmt.Sprintf("; %s have geometries: name one of them with --geometry", listed(list))
+	}
+	e.find(Look, "no-coordinates", plainly(e.survey.Unrecognised)+advice)
+}
+
+// coordinates says where the rows of a table with coordinate columns are.
+func (e *examiner) coordinates() {
 	s := e.survey
-	if s.XName == "" {
-		e.find(Look, "no-coordinates", plainly(s.Unrecognised)+"; name them with --x and --y")
-		return
-	}
-	x, y := s.Column(s.XName), s.Column(s.YName)
-	e.role[x.Name], e.role[y.Name] = coordinate, coordinate
+	x, y := axisOf(s.Column(s.XName)), axisOf(s.Column(s.YName))
+	e.role[x.name], e.role[y.name] = coordinate, coordinate
+	e.located = []string{x.name, y.name}
 	if len(s.Places.Rows) == 0 {
-		e.find(Look, "no-places", fmt.Sprintf("no row has a number both in %s and in %s; name other columns with --x and --y", x.Name, y.Name), x.Name, y.Name)
+		e.find(Look, "no-places", fmt.Sprintf("no row has a number both in %s and in %s; name other columns with --x and --y", x.name, y.name), e.located...)
 		return
 	}
-	c := &Coordinates{X: x.Name, Y: y.Name, Found: "named", Taken: "plane", Least: [2]float64{x.Least, y.Least}, Most: [2]float64{x.Most, y.Most},
-		Places: len(s.Places.Rows), MorePlaces: s.Places.Beyond > 0, Without: s.Places.Without, Sharing: sharing(s.Places)}
-	e.report.Coordinates = c
-	if s.Degrees {
+	c := e.placed(extent{x, y})
+	c.X, c.Y, c.Found = x.name, y.name, "named"
+	e.howFound(c)
+	e.system(extent{x, y}, c)
+	e.spread(x, y)
+	e.geometriesBeside(c)
+}
+
+// placed begins the report on places that are known.
+func (e *examiner) placed(all extent) *Coordinates {
+	p := e.survey.Places
+	c := &Coordinates{Taken: "plane", Least: [2]float64{all.x.least, all.y.least}, Most: [2]float64{all.x.most, all.y.most},
+		Places: len(p.Rows), MorePlaces: p.Beyond > 0, Without: p.Without, Sharing: sharing(p)}
+	if e.survey.Degrees {
 		c.Taken = "degrees"
 	}
-	e.howFound(c)
-	e.system(x, y, c)
-	c.Spacing = figure(spacing(s))
+	e.report.Coordinates = c
+	return c
+}
+
+// spread says how the places lie, by their coordinates along both axes.
+func (e *examiner) spread(x, y axis) {
+	c := e.report.Coordinates
+	c.Spacing = figure(spacing(e.survey))
 	e.layout(c)
 	e.heaps(c)
 	e.farOff(x)
@@ -71,11 +109,21 @@ func (e *examiner) howFound(c *Coordinates) {
 	default:
 		e.find(Clear, "coordinates", both+" are the coordinates, as named", c.X, c.Y)
 	}
-	for _, pair := range pairsOfNames(names(s)) {
+	e.otherCoordinates()
+}
+
+// otherCoordinates takes numbers that are named as coordinates for those of another system, or of the same places once
+// more, and returns their names.
+func (e *examiner) otherCoordinates() (list []string) {
+	for _, pair := range pairsOfNames(names(e.survey)) {
 		for _, name := range pair {
-			e.role[name] = coordinate // of another system, or of the same places once more
+			e.role[name] = coordinate
+			if !slices.Contains(list, name) {
+				list = append(list, name)
+			}
 		}
 	}
+	return list
 }
 
 func names(s *observe.Survey) (list []string) {
@@ -85,73 +133,6 @@ func names(s *observe.Survey) (list []string) {
 		}
 	}
 	return list
-}
-
-// within reports whether all numbers of a column lie in a range.
-func within(c *observe.SurveyColumn, least, most float64) bool {
-	return c.Least >= least && c.Most <= most
-}
-
-// The ranges in metres that coordinates of a UTM zone stay within, from memory.
-const leastEasting, mostEasting, mostNorthing = 1e5, 9e5, 1e7
-
-// system says what the coordinates seem to be.
-func (e *examiner) system(x, y *observe.SurveyColumn, c *Coordinates) {
-	both := []string{x.Name, y.Name}
-	ranges := fmt.Sprintf("%s from %s to %s, %s from %s to %s", x.Name, short(x.Least), short(x.Most), y.Name, short(y.Least), short(y.Most))
-	degrees := within(x, -360, 360) && within(y, -90, 90)
-	degreesSwapped := within(y, -360, 360) && within(x, -90, 90)
-	fractions := x.Whole < x.Numbers && y.Whole < y.Numbers
-	unit, otherUnit := unitOfLength(x.Name)
-	free := e.said.CRS == nil
-	switch {
-	case e.survey.Degrees && degrees:
-		c.Likely = "longitude and latitude in degrees"
-		e.find(Clear, "system", ranges+": degrees; the datum is not told, and WGS 84 is taken", both...)
-	case e.survey.Degrees && degreesSwapped:
-		c.Likely = "latitude and longitude in degrees, swapped"
-		e.swapped = free
-		e.find(Look, "swapped-axes", fmt.Sprintf("%s: latitudes end at 90, and %s goes beyond; the axes are likely swapped", ranges, y.Name), both...)
-	case e.survey.Degrees:
-		c.Likely = "no degrees"
-		e.find(Look, "no-degrees", ranges+": these are no degrees; say what they are with --crs, or name other columns with --x and --y", both...)
-	case !free:
-		c.Likely = *e.said.CRS
-		e.find(Clear, "system", ranges+": taken as "+*e.said.CRS+", as said", both...)
-	case otherUnit:
-		c.Likely = unit
-		e.find(Look, "unit", fmt.Sprintf("%s: %s by their names, and coordinates in a plane are taken for metres", ranges, unit), both...)
-	case degrees && fractions:
-		c.Likely = "degrees"
-		e.crs = "EPSG:4326"
-		e.find(Look, "system", ranges+": likely degrees, which are taken for metres unless --crs EPSG:4326 says what they are", both...)
-		e.undecided("whether the coordinates are degrees or metres")
-	case degreesSwapped && fractions:
-		c.Likely = "degrees, swapped"
-		e.crs, e.swapped = "EPSG:4326", true
-		e.find(Look, "swapped-axes", fmt.Sprintf("%s: these would fit degrees with the axes swapped; say --x %s --y %s --crs EPSG:4326 if they are", ranges, y.Name, x.Name), both...)
-		e.undecided("whether the coordinates are degrees or metres")
-	case within(x, leastEasting, mostEasting) && within(y, 0, mostNorthing):
-		c.Likely = "metres of a plane such as a UTM zone or a national grid"
-		e.find(Clear, "system", ranges+": likely metres of a UTM zone or a national grid; the numbers do not tell which, and without --crs they are local metres", both...)
-	case within(y, leastEasting, mostEasting) && within(x, mostEasting, mostNorthing):
-		c.Likely = "metres of a plane, swapped"
-		e.swapped = true
-		e.find(Look, "swapped-axes", ranges+": these would fit a UTM zone with the axes swapped", both...)
-	default:
-		c.Likely = "an unknown plane"
-		e.find(Clear, "system", ranges+": an unknown plane; without --crs they are local metres", both...)
-	}
-}
-
-// unitOfLength is the unit at the end of a name, where it is not metres.
-func unitOfLength(name string) (string, bool) {
-	list := parts(name)
-	if len(list) < 2 {
-		return "", false
-	}
-	unit, other := lengthUnits[list[len(list)-1]]
-	return unit, other
 }
 
 // sharing counts the rows at places where another row is too.
@@ -202,9 +183,9 @@ func (e *examiner) layout(c *Coordinates) {
 		level = Look
 		places += "; too few for a surface that can be told from noise"
 	}
-	e.find(level, "places", places, c.X, c.Y)
-	if c.Without > 0 {
-		e.find(Look, "missing-coordinates", fmt.Sprintf("%s no place; the first is row %d", rowsHave(c.Without), e.survey.Places.Row), c.X, c.Y)
+	e.find(level, "places", places, e.located...)
+	if c.Without > 0 && e.survey.Shapes == nil {
+		e.find(Look, "missing-coordinates", fmt.Sprintf("%s no place; the first is row %d", rowsHave(c.Without), e.survey.Places.Row), e.located...)
 	}
 }
 
@@ -230,26 +211,34 @@ func (e *examiner) heaps(c *Coordinates) {
 		apart := gapX > (right-left)/2 || gapY > (high-low)/2
 		if apart || c.Taken == "degrees" || p.Rows[origin] > 2 {
 			e.atZero = true
-			e.find(Look, "zero-place", fmt.Sprintf("%s at exactly 0, 0, which is likely a missing place", rowsStand(p.Rows[origin])), c.X, c.Y)
+			e.find(Look, "zero-place", fmt.Sprintf("%s at exactly 0, 0, which is likely a missing place", rowsStand(p.Rows[origin])), e.located...)
 		}
 	}
 	usual := counts[len(counts)/2]
 	if most != origin && p.Rows[most] >= 10 && p.Rows[most] > 10*usual {
-		e.find(Look, "heap", fmt.Sprintf("%s at the one place %s, %s, and %d at most places", rowsStand(p.Rows[most]), short(p.X[most]), short(p.Y[most]), usual), c.X, c.Y)
+		e.find(Look, "heap", fmt.Sprintf("%s at the one place %s, %s, and %d at most places", rowsStand(p.Rows[most]), short(p.X[most]), short(p.Y[most]), usual), e.located...)
 	}
 }
 
 // farOff looks for coordinates that lie many times the width of the others away.
-func (e *examiner) farOff(c *observe.SurveyColumn) {
-	width := c.High - c.Low
-	if c.Numbers < 20 || width <= 0 {
+func (e *examiner) farOff(a axis) {
+	width := a.high - a.low
+	if a.numbers < 20 || width <= 0 {
 		return
 	}
-	for _, v := range []float64{c.Least, c.Most} {
-		if math.Abs(v-c.Median) > 10*width && !(v == 0 && e.atZero) {
-			e.find(Look, "far-off", fmt.Sprintf("%s %s lies far from all others, of which nine in ten are between %s and %s", c.Name, short(v), short(c.Low), short(c.High)), c.Name)
+	for _, v := range []float64{a.least, a.most} {
+		if math.Abs(v-a.median) > 10*width && !(v == 0 && e.atZero) {
+			e.find(Look, "far-off", fmt.Sprintf("%s %s lies far from all others, of which nine in ten are between %s and %s", a.name, short(v), short(a.low), short(a.high)), e.columnsOf(a)...)
 		}
 	}
+}
+
+// columnsOf are the columns that an axis is read from.
+func (e *examiner) columnsOf(a axis) []string {
+	if e.survey.Shapes != nil {
+		return e.located
+	}
+	return []string{a.name}
 }
 
 // repeated says which rows repeat another whole.

@@ -24,8 +24,8 @@ func (e *examiner) propose() {
 		}
 	}
 	set("response", best.Response)
-	e.sayCoordinates(set)
-	p := &Proposal{Open: []string{}}
+	e.sayPlaces(set)
+	p := &Proposal{Open: append([]string{}, e.first...)}
 	if best.Word != "" {
 		set(best.Word, best.Column)
 		if best.Word == "people" {
@@ -57,7 +57,7 @@ func (e *examiner) propose() {
 		p.Settings[entry.Key] = entry.Value
 	}
 	p.Settings["observations"] = e.report.File
-	p.Choices = e.choices(s, len(p.Open) > 0)
+	p.Choices = e.choices(s)
 	e.report.Proposal = p
 }
 
@@ -69,14 +69,18 @@ func lastPart(name string) string {
 	return list[len(list)-1]
 }
 
-// sayCoordinates names the coordinates where map would not find them by itself.
-func (e *examiner) sayCoordinates(set func(word, value string)) {
-	c := e.report.Coordinates
+// sayPlaces names what tells the places where map would not find it by itself.
+func (e *examiner) sayPlaces(set func(word, value string)) {
+	c, s := e.report.Coordinates, e.survey
 	x, y := c.X, c.Y
 	if e.swapped {
 		x, y = y, x
 	}
-	if c.Found != "by name" || e.swapped {
+	switch {
+	case s.Features:
+	case s.Shapes != nil:
+		set("geometry", s.GeometryName)
+	case c.Found != "by name" || e.swapped:
 		set("x", x)
 		set("y", y)
 	}
@@ -85,6 +89,9 @@ func (e *examiner) sayCoordinates(set func(word, value string)) {
 		set("crs", e.crs)
 	case e.swapped && c.Taken == "degrees":
 		set("crs", "EPSG:4326")
+	}
+	if key := e.key(); key != "" {
+		set("key", key)
 	}
 }
 
@@ -147,8 +154,8 @@ func flags(name string, value any) []string {
 }
 
 // choices says what map would choose for these settings, and why.
-func (e *examiner) choices(s plan.Settings, open bool) []string {
-	if open {
+func (e *examiner) choices(s plan.Settings) []string {
+	if s.Area != nil && s.AreaUnit == nil && !slices.Contains(areaUnits, lastPart(*s.Area)) {
 		s.AreaUnit = new(plan.Hectares) // stands in for any: nothing else depends on it
 	}
 	resolved, err := s.Resolve()
@@ -171,6 +178,9 @@ func (e *examiner) choices(s plan.Settings, open bool) []string {
 		}
 		list = append(list, fmt.Sprintf("%s in place of %s, if the data scatter more than that allows", wider, *resolved.Distribution))
 	}
+	if e.spanning() {
+		list = append(list, e.spans(resolved))
+	}
 	return append(list, e.lattice(resolved), e.knots())
 }
 
@@ -178,7 +188,11 @@ func (e *examiner) choices(s plan.Settings, open bool) []string {
 func (e *examiner) lattice(s plan.Settings) string {
 	c := e.report.Coordinates
 	across := *s.CellsAcross
-	words := fmt.Sprintf("a lattice of %d cells along the longer side of the surroundings of the places", across)
+	over := "surroundings of the places"
+	if e.onlyAreas() {
+		over = "union of the areas"
+	}
+	words := fmt.Sprintf("a lattice of %d cells along the longer side of the %s", across, over)
 	side := max(c.Most[0]-c.Least[0], c.Most[1]-c.Least[1]) / float64(across)
 	if c.Taken == "plane" && e.crs == "" && side > 0 {
 		words += fmt.Sprintf(", so cells of about %s m", short(round(2, side)))
@@ -192,7 +206,7 @@ func (e *examiner) knots() string {
 	if c.Places < fewPlaces {
 		return "hardly a surface: there are too few places"
 	}
-	if c.Places <= 50 && !c.MorePlaces {
+	if c.Places <= 50 && !c.MorePlaces && !e.spanning() {
 		return fmt.Sprintf("a thin-plate surface with a knot at each of the %d places, its smoothness chosen by the data", c.Places)
 	}
 	return "a thin-plate surface with 50 knots, doubled while the fit still moves, its smoothness chosen by the data"

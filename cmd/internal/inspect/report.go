@@ -28,11 +28,13 @@ type Finding struct {
 type Report struct {
 	File        string       `json:"file"` // as it was named
 	Rows        int          `json:"rows"`
-	Separator   string       `json:"separator"` // "comma", "semicolon", "tab" or a quoted character
+	Features    bool         `json:"features"`  // it is GeoJSON, whose features are the rows and properties the columns
+	Separator   string       `json:"separator"` // "comma", "semicolon", "tab" or a quoted character; empty for features
 	Encoding    string       `json:"encoding"`
 	Sampled     int          `json:"rows_compared"` // rows behind comparisons of columns: all, or some drawn at random
 	Columns     []Column     `json:"columns"`
 	Coordinates *Coordinates `json:"coordinates"` // null where there are none
+	Geometry    *Geometry    `json:"geometry"`    // null where no geometries tell the places
 	Findings    []Finding    `json:"findings"`
 	Regions     []string     `json:"regions"`    // columns that could name the regions of a batch, the likeliest first
 	Candidates  []Candidate  `json:"candidates"` // for the response, the likeliest first
@@ -45,7 +47,7 @@ type Report struct {
 // Column is a column in the report. Figures are null in a column without numbers.
 type Column struct {
 	Name       string   `json:"name"`
-	Kind       string   `json:"kind"` // "whole numbers", "numbers", "truth values", "dates", "text" or "empty"
+	Kind       string   `json:"kind"` // "whole numbers", "numbers", "truth values", "dates", "geometry", "text" or "empty"
 	DateForm   string   `json:"date_form"`
 	Values     int      `json:"values"`
 	Missing    int      `json:"missing"`
@@ -64,9 +66,9 @@ type Column struct {
 
 // Coordinates are the places of the table.
 type Coordinates struct {
-	X          string     `json:"x"`
+	X          string     `json:"x"` // column; x and y are empty where rows have geometries
 	Y          string     `json:"y"`
-	Found      string     `json:"found"`    // "by name", "guessed" or "named"
+	Found      string     `json:"found"`    // "by name", "guessed", "named" or "features"
 	Taken      string     `json:"taken_as"` // "degrees" or "plane", as map would take them
 	Likely     string     `json:"likely"`   // what they seem to be, in words
 	Least      [2]float64 `json:"least"`    // x and y
@@ -76,6 +78,25 @@ type Coordinates struct {
 	Without    int        `json:"rows_without"`
 	Sharing    int        `json:"rows_sharing_a_place"`
 	Spacing    *float64   `json:"median_spacing"` // metres, or the unit of the plane; null where it cannot be told
+}
+
+// Geometry is what the geometries of the rows are.
+type Geometry struct {
+	Column      string         `json:"column"` // empty for those of features
+	Kinds       []GeometryKind `json:"kinds"`
+	Positions   int            `json:"positions"`
+	Heights     int            `json:"heights"` // points with a third coordinate
+	Missing     int            `json:"missing"`
+	Unreadable  int            `json:"unreadable"`
+	FirstBadRow int            `json:"first_unreadable_row"` // from 1; 0 where there is none
+	Reason      string         `json:"reason"`               // why it cannot be read
+	CRS         string         `json:"crs"`                  // as the file or the first SRID says; empty where nothing does
+}
+
+// GeometryKind says how many rows have a geometry of one kind.
+type GeometryKind struct {
+	Kind string `json:"kind"` // as in GeoJSON, such as "MultiPolygon"
+	Rows int    `json:"rows"`
 }
 
 // Candidate is a column that could be the response.
@@ -104,7 +125,7 @@ type Proposal struct {
 // the proposal as they are, such as X, Y and CRS.
 func Examine(s *observe.Survey, said plan.Settings) Report {
 	e := &examiner{survey: s, said: said, role: map[string]role{}}
-	e.report = Report{said: said, File: *said.Observations, Rows: s.Rows, Separator: s.Separator, Encoding: s.Encoding, Sampled: s.Sampled,
+	e.report = Report{said: said, File: *said.Observations, Rows: s.Rows, Features: s.Features, Separator: s.Separator, Encoding: s.Encoding, Sampled: s.Sampled,
 		Columns: describe(s), Findings: []Finding{}, Regions: []string{}, Candidates: []Candidate{}, Undecided: []string{}}
 	e.places()
 	e.repeated()
@@ -113,6 +134,7 @@ func Examine(s *observe.Survey, said plan.Settings) Report {
 	e.candidates()
 	e.rates()
 	e.unusable()
+	e.placesOnly()
 	e.propose()
 	return e.report
 }
@@ -124,7 +146,9 @@ type examiner struct {
 	role   map[string]role // of columns that are not what a map is of
 	report Report
 
+	located []string // columns that tell the places; none for features
 	crs     string   // to say of the coordinates beside what was said; empty for nothing
+	first   []string // what has to be put right before a map can be had
 	swapped bool     // the axes are proposed the other way round
 	commas  []string // columns that would be numbers with a decimal comma
 	atZero  bool     // rows at 0, 0 were found

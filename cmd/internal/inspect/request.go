@@ -12,6 +12,9 @@ func Request(said plan.Settings) (observe.SurveyRequest, error) {
 	if said.X != nil && said.Y != nil {
 		want.X, want.Y = *said.X, *said.Y
 	}
+	if said.Geometry != nil {
+		want.Geometry = *said.Geometry
+	}
 	want.Format = pipeline.Format(said)
 	var err error
 	want.Axes, err = pipeline.Axes(said)

@@ -33,14 +33,7 @@ func (r Report) JSON(w io.Writer) error {
 // Words writes the report for a person to read, in one screen unless there is much to look at.
 func (r Report) Words(w io.Writer) error {
 	var b strings.Builder
-	how := ""
-	if r.Separator != "comma" {
-		how += ", separated by " + r.Separator
-	}
-	if r.Encoding != "UTF-8" {
-		how += ", " + r.Encoding
-	}
-	fmt.Fprintf(&b, "%s: %s, %s%s\n\n", r.File, countOf(r.Rows, "row", "rows"), countOf(len(r.Columns), "column", "columns"), how)
+	fmt.Fprintf(&b, "%s: %s\n\n", r.File, r.size())
 	r.writeColumns(&b)
 	r.writeFindings(&b, "To look at", Look, mostLooks)
 	r.writeFindings(&b, "In order", Clear, mostClears)
@@ -48,6 +41,24 @@ func (r Report) Words(w io.Writer) error {
 	r.writeProposal(&b)
 	_, err := io.WriteString(w, harmless(b.String()))
 	return err
+}
+
+// size says how much there is, and how it is written.
+func (r Report) size() string {
+	how := ""
+	if r.Encoding != "UTF-8" {
+		how = ", " + r.Encoding
+	}
+	if r.Features {
+		if r.Geometry.CRS != "" {
+			how += ", reference system " + r.Geometry.CRS
+		}
+		return fmt.Sprintf("%s, %s, GeoJSON%s", countOf(r.Rows, "feature", "features"), countOf(len(r.Columns), "property", "properties"), how)
+	}
+	if r.Separator != "comma" {
+		how = ", separated by " + r.Separator + how
+	}
+	return fmt.Sprintf("%s, %s%s", countOf(r.Rows, "row", "rows"), countOf(len(r.Columns), "column", "columns"), how)
 }
 
 // harmless takes out control characters, by which a name in a table could steer a terminal.
