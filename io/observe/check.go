@@ -1,7 +1,9 @@
 package observe
 
 import (
+	"cmp"
 	"math"
+	"strings"
 )
 
 // part is what a column is asked for.
@@ -40,6 +42,25 @@ func (p part) subject() string {
 	return p.word()
 }
 
+// what names the part that a field plays, in messages about the header.
+func (f field) what() string {
+	if f.called != "" {
+		return "the " + f.called
+	}
+	return f.part.String()
+}
+
+// word names the part that a field plays, in codes.
+func (f field) word() string {
+	if f.called != "" {
+		return strings.ReplaceAll(f.called, " ", "-")
+	}
+	return f.part.word()
+}
+
+// subject names the part that a field plays, in reasons.
+func (f field) subject() string { return cmp.Or(f.called, f.part.subject()) }
+
 func (p part) isText() bool { return p == category || p == keep }
 
 const (
@@ -72,7 +93,7 @@ func (r *rows) firstFault(record []string, here Error) (Aside, bool) {
 			return fault(f, s, bad), true
 		}
 		r.value[i] = v
-		if code, reason := r.outOfRange(f.part, v); code != "" {
+		if code, reason := r.outOfRange(f, v); code != "" {
 			if code == "positives-above-trials" {
 				f = r.fields[0]
 				s = r.cell(record, f)
@@ -131,10 +152,10 @@ func (r *rows) belowLimit(i int, limit float64) (float64, string) {
 
 // fault describes a value that is missing or no number.
 func fault(f field, value, code string) Aside {
-	a := Aside{Column: f.name, Value: shorten(value), Code: code, Reason: f.part.subject()}
+	a := Aside{Column: f.name, Value: shorten(value), Code: code, Reason: f.subject()}
 	switch code {
 	case faultMissing:
-		a.Code += "-" + f.part.word()
+		a.Code += "-" + f.word()
 		a.Reason += " is missing"
 	case faultInfinite:
 		a.Reason += " is not finite"
@@ -148,8 +169,8 @@ func fault(f field, value, code string) Aside {
 
 // outOfRange returns the code and reason of a finite number that its part cannot use. The response has been read
 // when the trials are looked at.
-func (r *rows) outOfRange(p part, v float64) (code, reason string) {
-	whole := v == math.Trunc(v)
+func (r *rows) outOfRange(f field, v float64) (code, reason string) {
+	p, whole := f.part, v == math.Trunc(v)
 	switch {
 	case p == response && r.want.Kind != Measure && v < 0:
 		return "negative-count", "response is negative"
@@ -164,7 +185,7 @@ func (r *rows) outOfRange(p part, v float64) (code, reason string) {
 	case p == denominator && v <= 0:
 		return "denominator-not-positive", "denominator is not above 0"
 	case p == factor && v <= 0:
-		return "factor-not-positive", "factor of the denominator is not above 0"
+		return f.word() + "-not-positive", cmp.Or(f.called, "factor of the denominator") + " is not above 0"
 	case p == weight && v <= 0:
 		return "weight-not-positive", "weight is not above 0"
 	case p == coordinateX && r.table.Degrees && math.Abs(v) > longestLongitude:

@@ -3,6 +3,7 @@ package observe
 import (
 	"errors"
 	"fmt"
+	"strings"
 )
 
 // commas tells whether a number column is written with decimal commas where nobody said so.
@@ -33,7 +34,7 @@ func (r *rows) notNumber(i int, s, fault string, here Error) string {
 			"write the number without it"+r.orDecimalComma(s)))
 	case faultPoint:
 		r.hold(here.because(fmt.Sprintf("%q has a decimal point, where numbers are said to have a decimal comma", here.Value),
-			"write the numbers in one way, or leave out --decimal-comma"))
+			"write the numbers in one way, or leave out --decimal-comma, which holds for all tables"))
 	}
 	return faultNumber
 }
@@ -48,6 +49,8 @@ func (r *rows) orDecimalComma(s string) string {
 		}
 	case hasDecimalComma(s):
 		return ", or say with --decimal-comma that the comma is decimal"
+	case strings.Count(s, ",") == 1 && !strings.Contains(s[strings.IndexByte(s, ','):], "."):
+		return ", and say with --decimal-comma that the comma is decimal"
 	}
 	return ""
 }

@@ -24,6 +24,9 @@ type stream struct {
 
 func (s *stream) next() (record, error) {
 	fields, err := s.in.Read()
+	for err == nil && isEmpty(fields) {
+		fields, err = s.in.Read()
+	}
 	if err == io.EOF {
 		return record{}, err
 	}

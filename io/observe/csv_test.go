@@ -29,6 +29,13 @@ func hint(err error) string {
 }
 
 // Each refusal is pinned word for word, since these sentences are all the user gets. No source: the contract is ours.
+const (
+	adviceNames = `put a line with the names of the columns above the rows`
+	adviceTitle = `take out the lines above the names of the columns`
+	advicePairs = `name the coordinate columns with --x and --y, or a column of geometries with --geometry, or a file of places with --places; ` +
+		`known by their names are longitude/latitude, lon/lat, easting/northing and x/y; the columns are `
+)
+
 func TestReadCSVRefusals(t *testing.T) {
 	degrees := Request{Response: "z", Kind: Measure, Axes: AxesDegrees}
 	plane := Request{Response: "z", Kind: Measure, Axes: AxesPlane}
@@ -45,19 +52,38 @@ func TestReadCSVRefusals(t *testing.T) {
 		err, hint  string
 	}{
 		{"no bytes", "", measure, `wells.csv: the file is empty`, adviceWhole},
-		{"blank lines only", "\n\r\n\n", measure, `wells.csv: the file is empty`, adviceWhole},
+		{"blank lines only", "\n\r\n\n", measure, `wells.csv: the file holds only blank lines`, adviceWhole},
 		{"mark only", "\xef\xbb\xbf", measure, `wells.csv: the file is empty`, adviceWhole},
 		{"header only", "x,y,z\n", measure, `wells.csv: line 1: no rows stand below the header`, adviceWhole},
 		{"header without line end", "x,y,z", measure, `wells.csv: line 1: no rows stand below the header`, adviceWhole},
 		{"nul at the start", "x,y,z\n1,2,\x003\n", measure, `wells.csv: the file holds NUL bytes, so it is not text`, adviceText},
 		{"nul far down", "x,y,z\n" + strings.Repeat("1,2,3\n", 20000) + "1,2,\x00\n", measure,
 			`wells.csv: row 20001 (line 20002), column "z": "\x00" is not UTF-8 text`, adviceText},
-		{"spreadsheet", "PK\x03\x04\x14\x00", measure, `wells.csv: the file is a spreadsheet or a zip archive, not a CSV table`, adviceText},
+		{"spreadsheet", "PK\x03\x04\x14\x00", measure, `wells.csv: the file is a spreadsheet or a zip archive, not a CSV table`, adviceUnzip},
 		{"decimal commas", "x;y;z\n1,5;2,5;3\n", measure, `wells.csv: row 1 (line 2), column "x": "1,5" has a decimal comma, like most values of the column`,
 			`say so with --decimal-comma`},
-		{"old line ends", "x,y,z\r1,2,3\r", measure, `wells.csv: the lines end in carriage returns alone, which are not read`, adviceText},
-		{"no header", "1,2,3\n4,5,6\n", measure, `wells.csv: line 1: numbers stand where the names of the columns should be`,
-			`put the names of the columns on the first line`},
+		{"old line ends", "x,y,z\r1,2,3\r", measure, `wells.csv: the lines end in carriage returns alone, which are not read`,
+			`save the table with a line feed at the end of each line, alone or behind the carriage return`},
+		{"no header", "1,2,3\n4,5,6\n", measure, `wells.csv: line 1: numbers stand where the names of the columns should be, so the line of names is missing`, adviceNames},
+		{"no header, a value twice", "0,0,1.5\n4,5,6\n", measure, `wells.csv: line 1: numbers stand where the names of the columns should be, so the line of names is missing`, adviceNames},
+		{"no header, a unit", "\n0;1,5;3 mg\n4;5;6 mg\n", measure, `wells.csv: line 2: numbers stand where the names of the columns should be, so the line of names is missing`, adviceNames},
+		{"names with numbers in them", "x,y,pm10\n1,2,3\n", measure, `wells.csv: line 1: no column "z" for the response`, `did you mean "x"? the columns are x, y, pm10`},
+		{"blanks only", "\n  \n\t\n,,\n\x1a", measure, `wells.csv: the file holds only blank lines`, adviceWhole},
+		{"a separator and nothing else", "sep=;\n\n", measure, `wells.csv: nothing stands below the line that names the separator`, adviceWhole},
+
+		{"title", "Survey of the moor\n\nx,y,z\n1,2,3\n", measure, `wells.csv: line 1: it looks like a title, and the names of the columns seem to stand on line 3`, adviceTitle},
+		{"title and blank cells", "\nSurvey; 2031,,\nx,y,z\n1,2,3\n", measure, `wells.csv: line 2: it looks like a title, and the names of the columns seem to stand on line 3`, adviceTitle},
+		{"title above semicolons", "Survey of the moor\nx;y;z\n1;2;3\n", measure, `wells.csv: line 1: it looks like a title, and the names of the columns seem to stand on line 2`, adviceTitle},
+		{"comment", "# zinc, in mg/kg\n# by hand\nx,y,z\n1,2,3\n", measure, `wells.csv: line 1: it looks like a title, and the names of the columns seem to stand on line 3`, adviceTitle},
+		{"title below the separator", "sep=;\nSurvey of the moor\nx;y;z\n1;2;3\n", measure, `wells.csv: line 2: it looks like a title, and the names of the columns seem to stand on line 3`, adviceTitle},
+		{"no title above numbers", "zinc\n1,2,3\n", measure, `wells.csv: line 1: no coordinate columns are recognised`, advicePairs + `zinc`},
+
+		{"columns of fixed width", "   x    y    z\n   1    2    3\n", Request{Response: "z", Kind: Measure, NoPlaces: true}, `wells.csv: line 1: no column "z" for the response`,
+			`the header has no comma: columns of fixed width are not read, so put commas between them`},
+		{"a line of semicolons", "x,y,z\n1,2,3\n1;2;3\n", measure, `wells.csv: row 2 (line 3): 1 field where the header has 3`,
+			`the line has a semicolon where the others have a comma: separate all columns in one way`},
+		{"bytes behind the end", "x,y,z\n1,2,3\n\xf0\x81\x8d\n", measure, `wells.csv: row 2 (line 3): 1 field where the header has 3`,
+			`bytes that are no text stand on the line: the file may be damaged from there on, or something else is appended to it`},
 
 		{"absent, near", "x,y,zinc\n1,2,3\n", Request{Response: "zink", Kind: Measure},
 			`wells.csv: line 1: no column "zink" for the response`, `did you mean "zinc"? the columns are x, y, zinc`},
@@ -98,11 +124,14 @@ func TestReadCSVRefusals(t *testing.T) {
 		{"as many columns as there may be", "x,y,z\n1,2,3" + strings.Repeat(",", maxColumns-3), measure,
 			`wells.csv: row 1 (line 2): 65536 fields where the header has 3`, `check the line for a missing comma, or for one that belongs inside quotes`},
 		{"no coordinates", "a,lon,z\n1,2,3\n", measure, `wells.csv: line 1: no coordinate columns are recognised`,
-			`name the coordinate columns with --x and --y; known by their names are longitude/latitude, lon/lat, easting/northing and x/y; the columns are a, lon, z`},
+			advicePairs + `a, lon, z`},
 		{"names of two pairs", "lon,latitude,z\n1,2,3\n", measure, `wells.csv: line 1: no coordinate columns are recognised`,
-			`name the coordinate columns with --x and --y; known by their names are longitude/latitude, lon/lat, easting/northing and x/y; the columns are lon, latitude, z`},
-		{"response called y", "x,y\n1,2\n", Request{Response: "y", Kind: Measure}, `wells.csv: line 1: no coordinate columns are recognised`,
-			`name the coordinate columns with --x and --y; known by their names are longitude/latitude, lon/lat, easting/northing and x/y; the columns are x, y`},
+			advicePairs + `lon, latitude, z`},
+		{"response called y", "x,y\n1,2\n", Request{Response: "y", Kind: Measure}, `wells.csv: line 1: no coordinate columns are recognised: "y" is named as the response`, advicePairs + `x, y`},
+		{"trials called Lat", "lon,Lat,z\n1,2,3\n", Request{Response: "z", Kind: Positives, Trials: "Lat"},
+			`wells.csv: line 1: no coordinate columns are recognised: "Lat" is named as the number of trials`, advicePairs + `lon, Lat, z`},
+		{"a column of geometries", "z,shape\n1,\n1,POINT (1 2)\n", measure, `wells.csv: line 1: no coordinate columns are recognised`, `name the column of geometries with --geometry shape`},
+		{"a column of words in brackets", "z,note\n1,Village (old)\n", measure, `wells.csv: line 1: no coordinate columns are recognised`, advicePairs + `z, note`},
 		{"two pairs in degrees", "lon,lat,Longitude,Latitude,z\n1,2,3,4,5\n", measure,
 			`wells.csv: line 1: columns Longitude/Latitude and lon/lat could both be the coordinates`, adviceXY},
 		{"two pairs in a plane", "x,y,easting,northing,z\n1,2,3,4,5\n", measure,
@@ -124,11 +153,11 @@ func TestReadCSVRefusals(t *testing.T) {
 		{"mostly unusable", "x,y,z,d\n1,2,,1\n1,2,3,1\n1,2,oak,\n1,2,NA,\n1,2,4,4\n", Request{Response: "z", Kind: Measure, Linear: []string{"d"}},
 			`wells.csv: 3 of 5 rows cannot be used, more than half: column "z", response is missing (2); column "z", response is not a number (1); ` +
 				`for example row 1 (line 2), where response is missing`,
-			`check that the right columns are named, and that missing values are written as empty fields or NA`},
+			`check that the right column is named, or take the rows without a value out of the file`},
 		{"four reasons", "x,y,z\n,2,3\n1,,3\n1,2,\n1,2,-\n", measure,
 			`wells.csv: 4 of 4 rows cannot be used, more than half: column "x", coordinate is missing (1); column "y", coordinate is missing (1); ` +
 				`column "z", response is missing (1); 1 more reasons; for example row 1 (line 2), where coordinate is missing`,
-			`check that the right columns are named, and that missing values are written as empty fields or NA`},
+			`check that the right column is named, or take the rows without a value out of the file`},
 
 		{"kind without response", "", Request{Kind: Count}, `wells.csv: no column is named for the response`, `name it with --response`},
 		{"response without kind", "", Request{Response: "z"}, `wells.csv: column "z": a response is named, but places have none`, ``},
@@ -185,7 +214,7 @@ func TestReadCSVSetsAside(t *testing.T) {
 		column, value           string
 		code, reason            string
 	}{
-		{"empty response", countHeader, countRow, ",,,,,,", count, "n", "", "missing-response", "response is missing"},
+		{"empty response", countHeader, countRow, ",,,,,0,", count, "n", "", "missing-response", "response is missing"},
 		{"blank response", countHeader, countRow, "1,2, \t,4,5,6,clay", count, "n", "", "missing-response", "response is missing"},
 		{"NaN response", countHeader, countRow, "1,2,NaN,4,5,6,clay", count, "n", "NaN", "missing-response", "response is missing"},
 		{"null response", countHeader, countRow, "1,2,NULL,4,5,6,clay", count, "n", "NULL", "missing-response", "response is missing"},

@@ -4,6 +4,8 @@ import (
 	"bufio"
 	"bytes"
 	"encoding/binary"
+	"errors"
+	"fmt"
 	"unicode/utf16"
 	"unicode/utf8"
 
@@ -24,14 +26,25 @@ const utf8Mark = "\xef\xbb\xbf"
 // the column in which it stands to be told.
 type decoder struct {
 	from   *bufio.Reader // its errors last
-	name   string        // of the encoding; empty as long as all is ASCII
-	ready  []byte        // converted and not yet read
-	buffer [4096]byte    // under ready
+	source string
+	name   string     // of the encoding; empty as long as all is ASCII
+	ready  []byte     // converted and not yet read
+	buffer [4096]byte // under ready
+
+	line  int   // of the next byte, while the text is ASCII or Windows-1252
+	other other // the first byte that is no UTF-8
+	err   error // the text is in two encodings
+}
+
+// other is a byte that is no UTF-8.
+type other struct {
+	line int
+	byte byte
 }
 
 // decode returns the text of which head is the start, standing behind its byte order mark.
-func decode(from *bufio.Reader, head []byte) *decoder {
-	d := &decoder{from: from}
+func decode(from *bufio.Reader, head []byte, source string) *decoder {
+	d := &decoder{from: from, source: source, line: 1}
 	mark := 0
 	switch order := utf16Order(head); {
 	case bytes.HasPrefix(head, []byte(utf8Mark)):
@@ -88,7 +101,10 @@ func (d *decoder) encoding() string {
 // Read gives UTF-8.
 func (d *decoder) Read(p []byte) (int, error) {
 	for len(d.ready) == 0 {
-		in, err := d.from.Peek(utf8.UTFMax) // no character of any encoding is longer
+		if d.err != nil {
+			return 0, d.err
+		}
+		in, err := d.from.Peek(farSight) // no character of any encoding is longer
 		if len(in) == 0 {
 			return 0, err
 		}
@@ -109,14 +125,17 @@ func (d *decoder) convert(in []byte) int {
 	switch d.name {
 	case "":
 		if taken = beyondASCII(in); taken == 0 {
-			d.name = beyondIs(in)
+			d.name, d.other = beyondIs(in), other{d.line, in[0]}
 			return d.convert(in)
 		}
 		out = append(out, in[:taken]...)
+		d.line += bytes.Count(in[:taken], newline)
 	case utf8Text:
 		out = append(out, in...)
 	case windows1252:
-		out = appendWindows(out, in)
+		taken = d.beforeUTF8(in)
+		out = appendWindows(out, in[:taken])
+		d.line += bytes.Count(in[:taken], newline)
 	case utf16Little:
 		out, taken = appendUTF16(out, in, binary.LittleEndian)
 	case utf16Big:
@@ -136,13 +155,53 @@ func beyondASCII(in []byte) int {
 	return len(in)
 }
 
-// beyondIs tells the encoding by the first character beyond ASCII. Two or more such letters of Windows-1252 would
-// have to make up an odd sequence, such as "Ã" and "©", to be taken for one of UTF-8.
+// beyondIs tells the encoding by the first character beyond ASCII.
 func beyondIs(in []byte) string {
-	if r, size := utf8.DecodeRune(in); r == utf8.RuneError && size == 1 {
+	if _, size := utf8.DecodeRune(in); size == 1 {
 		return windows1252
 	}
 	return utf8Text
+}
+
+// errTwoEncodings is the cause of a refusal of text in two encodings.
+var errTwoEncodings = errors.New("text in two encodings")
+
+// beforeUTF8 returns how many bytes of text in Windows-1252 stand before the first character that was meant as UTF-8, or
+// before one that cannot be told yet. Such a character ends the text: in a table of which some rows were written in another
+// encoding, names would look alike and differ.
+func (d *decoder) beforeUTF8(in []byte) int {
+	for i, c := range in {
+		switch {
+		case c < utf8.RuneSelf:
+		case i > 0 && len(in)-i < farSight:
+			return i
+		case isUTF8(in[i:]):
+			r, _ := utf8.DecodeRune(in[i:])
+			d.err = &Error{File: d.source, Cause: errTwoEncodings, Advice: "save the whole file in one encoding, UTF-8 for preference",
+				What: fmt.Sprintf("the file is in two encodings: %q on line %d is UTF-8, and the byte %X on line %d is not",
+					string(r), d.line+bytes.Count(in[:i], newline), d.other.byte, d.other.line)}
+			return i
+		}
+	}
+	return len(in)
+}
+
+// farSight is how many bytes isUTF8 looks at.
+const farSight = 2 * utf8.UTFMax
+
+// isUTF8 reports whether text said to be in Windows-1252 starts with a character that was meant as UTF-8: one that
+// Windows-1252 has too, or one with another of UTF-8 behind it. Real text in Windows-1252 hardly ever has these: "Ã" would
+// have to stand before a sign such as "©". Other sequences that happen to be UTF-8 are met, as in "Straß”".
+func isUTF8(in []byte) bool {
+	r, size := utf8.DecodeRune(in)
+	if size == 1 {
+		return false
+	}
+	if _, has := charmap.Windows1252.EncodeRune(r); has {
+		return true
+	}
+	_, next := utf8.DecodeRune(in[size:])
+	return next > 1
 }
 
 // appendWindows appends text in Windows-1252. The five bytes that mean nothing there stay as they are.

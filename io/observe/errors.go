@@ -58,15 +58,6 @@ const (
 	adviceDegrees = adviceXY + ", or say what they are with --crs"
 )
 
-// absent says that the header has no such column, with the nearest name and the list of those there are.
-func absent(source string, line int, name, part string, names []string) error {
-	advice := columnList(names)
-	if near := nearest(name, names); near != "" {
-		advice = fmt.Sprintf("did you mean %q? %s", near, advice)
-	}
-	return &Error{File: source, Line: line, What: fmt.Sprintf("no column %q for %s", name, part), Advice: advice}
-}
-
 // columnList writes the names of the header for a message, stopping at about 200 characters.
 func columnList(names []string) string {
 	var b strings.Builder
@@ -135,6 +126,14 @@ func edits(a, b []rune) int {
 		before, last = last, row
 	}
 	return last[len(b)]
+}
+
+// several writes a number of things.
+func several(n int, thing string) string {
+	if n == 1 {
+		return "1 " + thing
+	}
+	return fmt.Sprintf("%d %ss", n, thing)
 }
 
 // shorten cuts a value after 60 characters, and copies it so that it does not hold on to the line it came from.

@@ -34,7 +34,13 @@ func featureError(err error) error {
 	if !ok {
 		return err
 	}
-	return &Error{File: e.File, Line: e.Line, Row: e.Feature, What: withPart(e), Advice: e.Advice, Cause: e.Cause}
+	advice := e.Advice
+	for _, word := range []string{"invalid character 'N'", "invalid character 'I'"} {
+		if strings.Contains(e.What, word) {
+			advice = "JSON has no NaN and no infinite numbers: write null where there is no value"
+		}
+	}
+	return &Error{File: e.File, Line: e.Line, Row: e.Feature, What: withPart(e), Advice: advice, Cause: e.Cause}
 }
 
 // withPart says what is wrong, and in which part of the geometry.
@@ -77,6 +83,7 @@ func siteOf(o *vector.Observations, i int) site {
 	p := site{geometry: o.Geometry[i], z: o.Z[i], id: o.ID(i)}
 	switch fault := o.Fault[i]; {
 	case fault == nil:
+		return p.checked()
 	case fault.Code == faultGeometry:
 		p.code, p.reason = faultGeometry, reasonGeometry+": "+strings.TrimPrefix(withPart(fault.At), "its geometry ")
 	default: // there is none, or none with a position

@@ -112,14 +112,21 @@ func (f *Format) separator(head []byte, source string) (rune, error) {
 	}
 	if f.DecimalComma && most == 0 && count[','] > 0 {
 		return 0, &Error{File: source, What: "the header has no separator but commas, and commas are said to be decimal",
-			Advice: "name the separator with --separator, or leave out --decimal-comma"}
+			Advice: "name the separator with --separator, or leave out --decimal-comma; both hold for all tables"}
 	}
 	return best, nil
 }
 
-// headerLine returns the first line that is not blank. A line end within quotes does not end it.
+// headerLine returns the first line on which something stands beside blanks and separators. A line end within quotes
+// does not end it.
 func headerLine(head []byte) []byte {
-	head = bytes.TrimLeft(head, " \r\n")
+	for {
+		line := firstLine(head)
+		if len(line) == 0 || len(bytes.Trim(line, " \t,;|\r\n\x1a")) > 0 {
+			break
+		}
+		head = head[len(line):]
+	}
 	quoted := false
 	for i, c := range head {
 		switch {

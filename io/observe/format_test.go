@@ -63,7 +63,7 @@ func checkFormats(t *testing.T, request Request, tests []formatCase) {
 
 func TestSeparators(t *testing.T) {
 	none := "wells.csv: line 1: no coordinate columns are recognised\n" +
-		"name the coordinate columns with --x and --y; known by their names are longitude/latitude, lon/lat, easting/northing and x/y; the columns are "
+		advicePairs
 	checkFormats(t, measure, []formatCase{
 		{"comma", "x,y,z\n1,2,3\n", Format{}, "comma [3]"},
 		{"semicolon", "x;y;z\n1;2;3\n", Format{}, "semicolon [3]"},
@@ -75,13 +75,21 @@ func TestSeparators(t *testing.T) {
 		{"blank lines above", "\r\n\nx;y;z\n1;2;3\n", Format{}, "semicolon [3]"},
 		{"most wins", "x;y;z;a,b\n1;2;3;4\n", Format{}, "semicolon [3]"},
 		{"a tie is a comma", "x,y;z\n1,2;3\n", Format{}, "wells.csv: line 1: no coordinate columns are recognised\n" + none[strings.Index(none, "name the"):] + `x, "y;z"`},
-		{"a tie without commas is one column", "z|a\tb\n1\n", Format{}, none + "\"z|a\\tb\""},
+		{"a tie without commas is one column", "z|a\tb\n1\n", Format{}, "wells.csv: line 1: no coordinate columns are recognised\n" +
+			"the header has no comma, but a tab: name that with --separator, or leave out --separator"},
 		{"named", "x,y,z;a;b;c\n1,2,3\n", Format{Separator: ','}, `wells.csv: line 1: no column "z" for the response` + "\n" + `did you mean "x"? the columns are x, y, "z;a;b;c"`},
+		{"named and absent", "x;y;z\n1;2;3\n", Format{Separator: ','}, "wells.csv: line 1: no coordinate columns are recognised\n" +
+			"the header has no comma, but a semicolon: name that with --separator, or leave out --separator"},
 		{"named wins", "x;y;z;a,b,c,d,e\n1;2;3;4\n", Format{Separator: ';'}, "semicolon [3]"},
 		{"named and odd", "x#y#z\n1#2#3\n", Format{Separator: '#'}, `"#" [3]`},
 		{"named and beyond ASCII", "x¦y¦z\n1¦\"2\"¦3\n", Format{Separator: '¦'}, `"¦" [3]`},
 		{"empty fields between tabs", "a\tx\ty\t\tz\n\t1\t2\t\t3\n\t 4\t5 \t\t 6\n\t7\t8\t\t\n", Format{}, `tab [3 6] | 3 z missing-response ""`},
-		{"only tabs on a line", "x\ty\tz\n1\t2\t3\n\t\t\n", Format{}, `tab [3] | 2 z missing-response ""`},
+		{"only tabs on a line", "x\ty\tz\n1\t2\t3\n\t\t\n", Format{}, "tab [3]"},
+		{"told above the header", "sep=;\nx;y;z\n1;2;3\n", Format{}, "semicolon [3]"},
+		{"told above the header, and odd", "\nSEP=#\r\n\nx#y#z\n1#2#3\n", Format{}, `"#" [3]`},
+		{"told above the header, and named", "sep=,\nx;y;z\n1;2;3\n", Format{Separator: ';'}, "semicolon [3]"},
+		{"a column called sep=", "sep=a,x,y,z\n9,1,2,3\n", Format{}, "comma [3]"},
+		{"empty rows", "\n,,\nx,y,z\n , ,\n,\n1,2,3\n\"\",\" \",\n4,5,\n\x1a", Format{}, `comma [3] | 2 z missing-response ""`},
 		{"quotes between tabs", "x\ty\tz\n1\t\"2\"\t\"3\"\n", Format{}, "tab [3]"},
 		{"spaces and quotes between semicolons", "x; y; \"z\"\n1; \"2\"; 3\n", Format{}, "semicolon [3]"},
 		{"field too few", "x;y;z\n1;2\n", Format{}, "wells.csv: row 1 (line 2): 2 fields where the header has 3\n" +
@@ -117,7 +125,7 @@ func TestDecimalCommas(t *testing.T) {
 		{"more commas than semicolons", "x;y;z;\"a\";b,c,d,e,f\n1;2;3,5;4;5\n", comma, "semicolon [3.5]"},
 		{"tabs", "x\ty\tz\n1\t2\t3,5\n", comma, "tab [3.5]"},
 		{"commas alone", "x,y,z\n1,2,3\n", comma, "wells.csv: the header has no separator but commas, and commas are said to be decimal\n" +
-			"name the separator with --separator, or leave out --decimal-comma"},
+			"name the separator with --separator, or leave out --decimal-comma; both hold for all tables"},
 		{"two commas", "x;y;z\n1;2;3\n1;2;1,2,3\n", comma, `semicolon [3] | 2 z not-a-number "1,2,3"`},
 		{"words", "x;y;z\n1;2;3,5\n1;2;n.d.\n", comma, `semicolon [3.5] | 2 z not-a-number "n.d."`},
 		{"infinite", "x;y;z\n1;2;3,5\n1;2;1e999\n", comma, `semicolon [3.5] | 2 z not-finite "1e999"`},
@@ -126,13 +134,13 @@ func TestDecimalCommas(t *testing.T) {
 		{"millions, told", "x;y;z\n1;2;3,5\n1;2;1.234.567\n", comma, grouped(zRow2, "1.234.567", "")},
 		{"blank thousands, told", "x;y;z\n1;2;3,5\n1;2;12 345,5\n", comma, grouped(zRow2, "12 345,5", "")},
 		{"point, told", "x;y;z\n1;2;3,5\n1;2;3.14\n", comma, "wells.csv: " + zRow2 + ": \"3.14\" has a decimal point, " +
-			"where numbers are said to have a decimal comma\nwrite the numbers in one way, or leave out --decimal-comma"},
+			"where numbers are said to have a decimal comma\nwrite the numbers in one way, or leave out --decimal-comma, which holds for all tables"},
 
 		{"thousands", "x,y,z\n1,2,\"1,234.5\"\n", Format{}, grouped(zRow1, "1,234.5", "")},
 		{"whole thousands", "x,y,z\n1,2,\"1,234\"\n1,2,\"5,678\"\n", Format{}, grouped(zRow1, "1,234", orComma)},
 		{"negative thousands", "x,y,z\n1,2,3\n1,2,\"-21,234\"\n", Format{}, grouped(zRow2, "-21,234", orComma)},
 		{"millions", "x,y,z\n1,2,\"1,234,567\"\n", Format{}, grouped(zRow1, "1,234,567", "")},
-		{"thousands of the other kind", "x;y;z\n1;2;3\n1;2;1.234,5\n", Format{}, grouped(zRow2, "1.234,5", "")},
+		{"thousands of the other kind", "x;y;z\n1;2;3\n1;2;1.234,5\n", Format{}, grouped(zRow2, "1.234,5", ", and say with --decimal-comma that the comma is decimal")},
 		{"blanks", "x,y,z\n1,2,3\n1,2,1\u202f234\n", Format{}, grouped(zRow2, "1\u202f234", "")},
 		{"apostrophes", "x,y,z\n1,2,3\n1,2,1'234.5\n", Format{}, grouped(zRow2, "1'234.5", "")},
 		{"thousands in a row that fails before", "x,y,z\n1,2,3\n\"1,234\",2,NA\n", Format{}, `comma [3] | 2 z missing-response "NA"`},

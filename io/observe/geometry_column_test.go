@@ -70,6 +70,8 @@ func TestGeometryColumnAside(t *testing.T) {
 			"POINT (" + strings.Repeat("1", 53) + "..."},
 		{"one position", "LINESTRING (1 2 -2e9 0)", "1", "bad-geometry", "geometry cannot be read: character 23: the line that ends here has 1 position, and a line needs 2 or more",
 			"LINESTRING (1 2 -2e9 0)"},
+		{"bow-tie", "\"POLYGON ((0 0, 2 2, 2 0, 0 2, 0 0))\"", "1", "bad-geometry", "geometry cannot be read: the polygon crosses itself near (1.000, 1.000)",
+			"POLYGON ((0 0, 2 2, 2 0, 0 2, 0 0))"},
 		{"too far off", "POINT (2e9 0)", "1", "coordinates-out-of-range", "coordinate is beyond -1e9 to 1e9 metres", "POINT (2e9 0)"},
 		{"no response before it", "nowhere", "", "missing-response", "response is missing", ""},
 	} {
@@ -107,6 +109,10 @@ func TestGeometryColumnRefusals(t *testing.T) {
 			`wells.csv: row 2 (line 3), column "g": 91.5 is not a latitude (-90 to 90)`, adviceGeometries},
 		{"latitude as said", "1\tPOINT (48 91.5)\n", AxesDegrees, `wells.csv: row 1 (line 2), column "g": 91.5 is not a latitude (-90 to 90)`, adviceGeometries},
 		{"longitude", "1\tPOINT (480 1.5)\n", AxesDegrees, `wells.csv: row 1 (line 2), column "g": 480 is not a longitude (-360 to 360)`, adviceGeometries},
+		{"curves", "1\tCIRCULARSTRING (0 0, 1 1, 2 0)\n", AxesByName,
+			`wells.csv: 1 of 1 rows cannot be used, more than half: column "g", geometry cannot be read (1); ` +
+				`for example row 1 (line 2), where geometry cannot be read: character 1: a CIRCULARSTRING is not read: "CIRCULARSTRING (0 0, 1 1, 2 0)"`,
+			`read are points, lines and polygons, and several of one of these: straighten curves, and take collections apart`},
 		{"the wrong column", "1\t7\n2\t8\n3\t\n", AxesByName,
 			`wells.csv: 3 of 3 rows cannot be used, more than half: column "g", geometry cannot be read (2); column "g", geometry is missing (1); ` +
 				`for example row 1 (line 2), where geometry cannot be read: character 1: the number of hexadecimal digits is odd, so the text is cut short: "7"`, adviceColumn},

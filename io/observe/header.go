@@ -1,13 +1,12 @@
 package observe
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"math"
 	"slices"
 	"strings"
-
-	"drumlin/grids/crs"
 )
 
 // header is the line of names and where the request found its columns in it.
@@ -29,19 +28,34 @@ type shapes struct {
 
 // readHeader reads the names.
 func readHeader(in *text, source string) (header, error) {
-	record, err := in.Read()
-	if err == io.EOF {
-		return header{}, emptyFile(source)
+	announced := in.origin.announced
+	for {
+		record, err := in.Read()
+		switch {
+		case err == io.EOF:
+			return header{}, in.origin.noHeader()
+		case err != nil:
+			return header{}, readError(source, err)
+		case isEmpty(record):
+		case announced:
+			announced = false
+		default:
+			line, _ := in.FieldPos(0)
+			return newHeader(record, line, in.origin)
+		}
 	}
-	if err != nil {
-		return header{}, readError(source, err)
-	}
-	line, _ := in.FieldPos(0)
-	return newHeader(record, line, in.origin)
 }
 
-func emptyFile(source string) error {
-	return &Error{File: source, What: "the file is empty", Advice: adviceWhole}
+// noHeader says that a text has no line of names.
+func (o *origin) noHeader() error {
+	e := &Error{File: o.source, What: "the file is empty", Advice: adviceWhole}
+	switch {
+	case o.announced:
+		e.What = "nothing stands below the line that names the separator"
+	case o.blank:
+		e.What = "the file holds only blank lines"
+	}
+	return e
 }
 
 // noRows says that nothing stands below the header.
@@ -54,8 +68,11 @@ func (h header) noRows() error {
 func newHeader(record []string, line int, from *origin) (header, error) {
 	source := from.source
 	h := header{source: source, line: line, names: make([]string, len(record)), origin: from}
+	if areNumbers(record) {
+		return header{}, &Error{File: source, Line: line, What: "numbers stand where the names of the columns should be, so the line of names is missing",
+			Advice: "put a line with the names of the columns above the rows"}
+	}
 	first := map[string]int{}
-	numbers := 0
 	for i, field := range record {
 		name := strings.TrimSpace(field)
 		if !clean(name) {
@@ -66,23 +83,31 @@ func newHeader(record []string, line int, from *origin) (header, error) {
 				What: fmt.Sprintf("the name appears twice, as columns %d and %d", at+1, i+1)}
 		}
 		first[name] = i
-		if _, fault := parseNumber(name); fault == "" || hasDecimalComma(name) {
-			numbers++
-		}
 		h.names[i] = strings.Clone(name)
 	}
-	if numbers == len(h.names) {
-		return header{}, &Error{File: source, Line: line, What: "numbers stand where the names of the columns should be",
-			Advice: "put the names of the columns on the first line"}
-	}
 	return h, nil
+}
+
+// areNumbers reports whether a record is numbers alone, some of them with a unit perhaps, and not names.
+func areNumbers(record []string) bool {
+	plain := false
+	for _, s := range record {
+		if s = strings.TrimSpace(s); s == "" {
+			continue
+		}
+		if !looksLikeNumber(s) {
+			return false
+		}
+		_, fault := parseDecimal(s)
+		plain = plain || fault == "" || hasDecimalComma(s)
+	}
+	return plain
 }
 
 // checkRecord refuses records of the wrong length and fields that are not text, whether or not they are asked for.
 func (h header) checkRecord(record []string, here Error) error {
 	if len(record) != len(h.names) {
-		return here.because(fmt.Sprintf("%d fields where the header has %d", len(record), len(h.names)),
-			fmt.Sprintf("check the line for a missing %s, or for one that belongs inside quotes", separatorWord(h.origin.separator)))
+		return here.because(fmt.Sprintf("%s where the header has %d", several(len(record), "field"), len(h.names)), h.adviceLength(record))
 	}
 	if here.Line > math.MaxInt32 {
 		return here.because("the file has more lines than can be counted", "")
@@ -93,6 +118,23 @@ func (h header) checkRecord(record []string, here Error) error {
 		}
 	}
 	return nil
+}
+
+// adviceLength says what to do about a record of the wrong length.
+func (h header) adviceLength(record []string) string {
+	separator := separatorWord(h.origin.separator)
+	if slices.ContainsFunc(record, func(s string) bool { return !clean(s) }) {
+		return "bytes that are no text stand on the line: the file may be damaged from there on, or something else is appended to it"
+	}
+	if len(record) == 1 {
+		count := outsideQuotes([]byte(record[0]))
+		for _, c := range found {
+			if c != h.origin.separator && count[c] == len(h.names)-1 && count[c] > 0 {
+				return fmt.Sprintf("the line has a %s where the others have a %s: separate all columns in one way", separatorWord(c), separator)
+			}
+		}
+	}
+	return fmt.Sprintf("check the line for a missing %s, or for one that belongs inside quotes", separator)
 }
 
 // notClean refuses a field that is not text.
@@ -137,7 +179,7 @@ func (h header) find(name, part string) (int, error) {
 	case h.heights && name == heightName:
 		return atHeight, nil
 	}
-	return 0, absent(h.source, h.line, name, part, h.columns())
+	return 0, h.absent(name, part)
 }
 
 // among returns those of names that are columns.
@@ -150,147 +192,40 @@ func (h header) among(names []string) (there []string) {
 	return there
 }
 
-// pair is two names by which coordinate columns are known.
-type pair struct {
-	x, y    string
-	degrees bool
+// adviceUnseparated says what to do about a header that is one name, but looks like several; "" for any other.
+func (h header) adviceUnseparated() string {
+	if len(h.names) != 1 || h.origin.features {
+		return ""
+	}
+	count := outsideQuotes([]byte(h.names[0]))
+	for _, c := range found {
+		if count[c] > 0 {
+			return fmt.Sprintf("the header has no %s, but a %s: name that with --separator, or leave out --separator", separatorWord(h.origin.separator), separatorWord(c))
+		}
+	}
+	if len(strings.Fields(h.names[0])) > 1 {
+		return fmt.Sprintf("the header has no %s: columns of fixed width are not read, so put commas between them", separatorWord(h.origin.separator))
+	}
+	return ""
 }
 
-// pairs are looked for in this order, in any mixture of capitals, and both names must be there.
-var pairs = []pair{
-	{"longitude", "latitude", true}, {"lon", "lat", true},
-	{"easting", "northing", false}, {"x", "y", false},
-}
-
-func (p pair) String() string { return p.x + "/" + p.y }
-
-// coordinates says which columns hold the coordinates and what they are.
-type coordinates struct {
-	x, y       string
-	geometry   string // the column of geometries, or "geometry" of features
-	crs        string // what the source says that its geometries are in
-	degrees    bool
-	recognised bool
-	passedOver []string
-}
-
-// places says where the rows are.
-func (h header) places(want Request) (coordinates, error) {
+// columnList lists the columns for a message.
+func (h header) columnList() string {
+	names := h.columns()
 	switch {
-	case h.shapes != nil:
-		return h.ofFeatures(want)
-	case want.NoPlaces:
-		return coordinates{}, nil
-	case want.Geometry != "":
-		return coordinates{geometry: want.Geometry, degrees: want.Axes == AxesDegrees}, nil
+	case len(names) > 0:
+		return columnList(names)
+	case h.origin.features:
+		return "the features have no properties"
 	}
-	return h.coordinates(want)
+	return "there are no columns"
 }
 
-// ofFeatures decides what the coordinates of features are.
-func (h header) ofFeatures(want Request) (coordinates, error) {
-	const own = "the file is GeoJSON, whose features have geometries of their own, but "
-	crsOf := h.shapes.crs
-	switch {
-	case want.X != "":
-		return coordinates{}, &Error{File: h.source, What: own + "coordinate columns are named", Advice: "leave out --x and --y"}
-	case want.Geometry != "":
-		return coordinates{}, &Error{File: h.source, What: own + "a column of geometries is named", Advice: "leave out --geometry"}
-	case want.NoPlaces:
-		return coordinates{}, nil
-	case want.Axes == AxesByName && crsOf != "" && !crs.IsGeographic(crsOf):
-		return coordinates{}, &Error{File: h.source, Advice: "say with --crs what the coordinates are in",
-			What: fmt.Sprintf("the file says that its coordinates are in %q, and GeoJSON is in longitude and latitude (RFC 7946)", shorten(crsOf))}
+// absent says that there is no such column, with the nearest name and the list of those there are.
+func (h header) absent(name, part string) error {
+	advice := cmp.Or(h.adviceUnseparated(), h.columnList())
+	if near := nearest(name, h.columns()); near != "" {
+		advice = fmt.Sprintf("did you mean %q? %s", near, advice)
 	}
-	return coordinates{geometry: geometry.word(), crs: crsOf, degrees: want.Axes != AxesPlane}, nil
-}
-
-// coordinates takes the columns the user named, or recognises them. A file with longitude and latitude beside an
-// easting and northing is read by its longitude and latitude, since these say where on the globe they are and the
-// others do not; two pairs of the same sort are ambiguous and refused.
-func (h header) coordinates(want Request) (coordinates, error) {
-	if want.X != "" {
-		return coordinates{x: want.X, y: want.Y, degrees: degreesByName(want)}, nil
-	}
-	found, err := h.recognise(want)
-	if err != nil {
-		return coordinates{}, err
-	}
-	var usable, others []pair
-	for _, p := range found {
-		switch {
-		case want.Axes == AxesPlane && p.degrees, want.Axes == AxesDegrees && !p.degrees && strings.ToLower(p.x) != "x":
-			others = append(others, p)
-		case len(usable) > 0 && usable[0].degrees && !p.degrees:
-			others = append(others, p)
-		default:
-			usable = append(usable, p)
-		}
-	}
-	if len(usable) != 1 {
-		return coordinates{}, h.noSinglePair(want, usable, others)
-	}
-	c := coordinates{x: usable[0].x, y: usable[0].y, recognised: true}
-	c.degrees = want.Axes == AxesDegrees || want.Axes == AxesByName && usable[0].degrees
-	for _, p := range others {
-		c.passedOver = append(c.passedOver, p.String())
-	}
-	return c, nil
-}
-
-// degreesByName decides what columns named by the user are.
-func degreesByName(want Request) bool {
-	if want.Axes != AxesByName {
-		return want.Axes == AxesDegrees
-	}
-	x, y := strings.ToLower(want.X), strings.ToLower(want.Y)
-	return (x == "lon" || x == "longitude") && (y == "lat" || y == "latitude")
-}
-
-// recognise returns the pairs the header has, spelled as there. Columns that play another main part do not count: in
-// a table of x, y and a response y there is no pair.
-func (h header) recognise(want Request) ([]pair, error) {
-	taken := map[string]bool{want.Response: true, want.Trials: true, want.Denominator: true, want.Weight: true}
-	spelled := map[string][]string{}
-	for _, name := range h.names {
-		if !taken[name] {
-			low := strings.ToLower(name)
-			spelled[low] = append(spelled[low], name)
-		}
-	}
-	var found []pair
-	for _, p := range pairs {
-		xs, ys := spelled[p.x], spelled[p.y]
-		if len(xs) == 0 || len(ys) == 0 {
-			continue
-		}
-		for _, same := range [][]string{xs, ys} {
-			if len(same) > 1 {
-				return nil, &Error{File: h.source, Line: h.line, Advice: adviceXY,
-					What: fmt.Sprintf("columns %q and %q could both be a coordinate", same[0], same[1])}
-			}
-		}
-		found = append(found, pair{xs[0], ys[0], p.degrees})
-	}
-	return found, nil
-}
-
-// noSinglePair says why recognition came to nothing.
-func (h header) noSinglePair(want Request, usable, others []pair) error {
-	e := &Error{File: h.source, Line: h.line, Advice: adviceXY}
-	switch {
-	case len(usable) > 1:
-		e.What = fmt.Sprintf("columns %s and %s could both be the coordinates", usable[0], usable[1])
-	case len(others) > 0 && want.Axes == AxesPlane:
-		e.What = fmt.Sprintf("columns %s are longitude and latitude by their names, but the coordinates are said to be in a plane", others[0])
-		e.Advice = adviceDegrees
-	case len(others) > 0:
-		e.What = fmt.Sprintf("columns %s are in a plane by their names, but the coordinates are said to be longitude and latitude", others[0])
-		e.Advice = adviceDegrees
-	default:
-		e.What = "no coordinate columns are recognised"
-		e.Advice = fmt.Sprintf("%s; known by their names are %s, %s, %s and %s; %s",
-			adviceXY, pairs[0], pairs[1], pairs[2], pairs[3], columnList(h.names))
-	}
-	return e
+	return &Error{File: h.source, Line: h.line, What: fmt.Sprintf("no column %q for %s", name, part), Advice: advice}
 }

@@ -51,14 +51,15 @@ const (
 //
 // With AbsentZero each place without a row gets one, below the others and in the order of the places: Line and Row are
 // 0, the columns of sides are those of its key, the response is 0. That is sound for counts, positives and amounts;
-// of other measures 0 is a value like any, and it is the caller who must refuse it. A place that a side knows nothing of
-// is left out as if missing, and told. Table.Rows stays the number of rows in the source.
+// of other measures 0 is a value like any, and it is the caller who must refuse it. Table.Rows stays the number of rows in
+// the source.
 //
 // An *Error is returned, and t stays as it is, if a key stands twice in a side; if keys without a match differ from
 // keys of a side only in how they are written, which is never mended; if more than half of the rows would be set aside,
-// or any if strict; if places have no row and nobody has said what that means; and, with AbsentZero, if a column of the
-// observations other than Key, Response and Keep has no value for such places, or if rows were set aside before and
-// Lost does not tell of which places: what is missing there would turn into 0.
+// or any if strict; if places have no row and nobody has said what that means; and, with AbsentZero and such places, if
+// another side has no row for one of them, if a column of the observations other than Key, Response and Keep has no value
+// for them, or if a row was set aside of which nobody knows the place, now or before: what is missing there would turn
+// into 0.
 //
 // Join panics if a table lacks a column that it is said to have, if a column is taken that t or another side gives, and
 // if two sides give the places.
@@ -95,6 +96,8 @@ type joining struct {
 	code   []int32  // number of the key, by joined rows
 	aside  []Aside
 	report JoinReport
+
+	asideCode []int32 // number of the key, by rows set aside; -1 without one
 }
 
 // newJoining looks every key up in every side.
@@ -167,7 +170,7 @@ func (w *joining) dealRows() {
 			continue
 		}
 		a.Line, a.Row = t.Line[r], t.Row[r]
-		w.aside = append(w.aside, a)
+		w.aside, w.asideCode = append(w.aside, a), append(w.asideCode, code)
 	}
 }
 

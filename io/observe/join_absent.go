@@ -1,6 +1,7 @@
 package observe
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 )
@@ -37,12 +38,10 @@ func (w *joining) absent() (keys []string) {
 
 // refuseAbsent asks what it means that places have no row.
 func (w *joining) refuseAbsent() error {
-	n, places, have := len(w.report.Absent), "places", "have"
-	if n == 1 {
-		places, have = "place", "has"
-	}
+	n := len(w.report.Absent)
+	places, have := placesHave(n)
 	row := "row"
-	if w.lostUnknown() > 0 {
+	if w.Lost == nil && len(w.table.Aside) > 0 {
 		row = "usable row"
 	}
 	return &Error{
@@ -51,52 +50,100 @@ func (w *joining) refuseAbsent() error {
 	}
 }
 
-// lostUnknown counts the rows that were set aside before the join and may be of any place.
-func (w *joining) lostUnknown() (n int) {
-	if w.Lost != nil {
-		return 0
-	}
-	for _, a := range w.table.Aside {
-		if a.Code != "missing-key" {
-			n++
+// strays are the rows set aside of which nobody knows the place, in the order of the source: those without a key, those
+// whose key is no place's, and those set aside before of which Lost does not tell.
+func (w *joining) strays() []Aside {
+	strays := w.straysBefore()
+	for i, a := range w.aside {
+		if code := w.asideCode[i]; code < 0 || !w.isPlace(w.levels[code]) {
+			strays = append(strays, a)
 		}
 	}
-	return n
+	slices.SortFunc(strays, func(a, b Aside) int { return cmp.Compare(a.Row, b.Row) })
+	return strays
 }
 
-// addAbsent adds a row with response 0 for each place that every side knows of.
+// straysBefore are the strays that were set aside before the join; of those with one key, the first.
+func (w *joining) straysBefore() (strays []Aside) {
+	if w.Lost == nil {
+		return slices.Clone(w.table.Aside)
+	}
+	for key, a := range w.Lost {
+		if !w.isPlace(key) {
+			strays = append(strays, a)
+		}
+	}
+	return strays
+}
+
+// isPlace reports whether a key is that of a place, which may be one that cannot be used.
+func (w *joining) isPlace(key string) bool {
+	_, there := w.places.at[key]
+	_, lost := w.places.Lost[key]
+	return there || lost
+}
+
+// addAbsent adds a row with response 0 for each place without one.
 func (w *joining) addAbsent(absent []string) error {
-	if n := w.lostUnknown(); n > 0 {
-		a := w.table.Aside[slices.IndexFunc(w.table.Aside, func(a Aside) bool { return a.Code != "missing-key" })]
-		return &Error{File: w.table.Source, Line: int(a.Line), Row: int(a.Row), Column: a.Column, Value: a.Value,
-			What:   a.alone(n) + "; with --absent zero what is missing at its place would turn into 0",
-			Advice: "correct such rows or take them out of the file, or say --absent missing"}
+	if err := w.refuseUnknown(absent); err != nil {
+		return err
+	}
+	if err := w.refuseStrays(absent); err != nil {
+		return err
+	}
+	if err := w.refuseGaps(absent[0]); err != nil {
+		return err
 	}
 	for _, key := range absent {
-		if !w.known(key) {
-			w.report.LeftOut = append(w.report.LeftOut, key)
-			continue
-		}
-		if err := w.refuseGaps(key); err != nil {
-			return err
-		}
 		w.row, w.code = append(w.row, -1), append(w.code, int32(len(w.levels)))
 		w.levels = append(w.levels, key)
 		for _, m := range w.sides {
 			m.row = append(m.row, m.at[key])
 		}
-		w.report.Added++
 	}
-	slices.Sort(w.report.LeftOut)
+	w.report.Added = len(absent)
 	return nil
 }
 
-// known reports whether every side has a key.
-func (w *joining) known(key string) bool {
-	return !slices.ContainsFunc(w.sides, func(m *match) bool {
-		_, there := m.at[key]
-		return !there
-	})
+// refuseUnknown refuses places that another side does not have: of how many people nothing was found, nobody knows.
+func (w *joining) refuseUnknown(absent []string) error {
+	for _, m := range w.sides {
+		var unknown []string
+		row := "row"
+		for _, key := range absent {
+			if _, there := m.at[key]; !there {
+				unknown = append(unknown, key)
+			}
+			if _, lost := m.Lost[key]; lost {
+				row = "usable row"
+			}
+		}
+		if len(unknown) == 0 {
+			continue
+		}
+		slices.Sort(unknown)
+		places, have := placesHave(len(unknown))
+		return &Error{
+			What: fmt.Sprintf("%d %s of %s %s no %s in %s, so nothing found there means nothing: %s",
+				len(unknown), places, w.places.Table.Source, have, row, m.Table.Source, fewQuoted(unknown, 5)),
+			Advice: fmt.Sprintf("add them to %s, or say --absent missing", m.Table.Source)}
+	}
+	return nil
+}
+
+// refuseStrays refuses rows whose place would be taken for one without a row.
+func (w *joining) refuseStrays(absent []string) error {
+	strays := w.strays()
+	if len(strays) == 0 {
+		return nil
+	}
+	a := strays[0]
+	advice := "correct such rows or take them out of the file, or say --absent missing"
+	if near := nearest(a.Value, absent); near != "" && a.Value != "" && a.Column == w.Key {
+		advice = fmt.Sprintf("did you mean %q? %s", near, advice)
+	}
+	return &Error{File: w.table.Source, Line: int(a.Line), Row: int(a.Row), Column: a.Column, Value: a.Value, Advice: advice,
+		What: a.alone(len(strays)) + "; with --absent zero what is missing at its place would turn into 0"}
 }
 
 // refuseGaps refuses columns of the observations that added rows would have no value for.
@@ -110,4 +157,12 @@ func (w *joining) refuseGaps(key string) error {
 		}
 	}
 	return nil
+}
+
+// placesHave are the words for some places that have something.
+func placesHave(n int) (places, have string) {
+	if n == 1 {
+		return "place", "has"
+	}
+	return "places", "have"
 }

@@ -2,10 +2,9 @@ package observe
 
 // JoinReport tells what a join came to, beside the rows set aside, which are in Table.Aside.
 type JoinReport struct {
-	Sides   []SideReport // in the order of Join.Sides
-	Absent  []string     // keys of the places that no row has, sorted
-	Added   int          // rows added for such places
-	LeftOut []string     // those of them that got no row, with AbsentZero, since another side has none for them; sorted
+	Sides  []SideReport // in the order of Join.Sides
+	Absent []string     // keys of the places that no row has, sorted
+	Added  int          // rows added for such places
 }
 
 // SideReport tells how one side matched.

@@ -163,17 +163,19 @@ func TestJoin(t *testing.T) {
 		{"absent, zero, with columns", "cases# district/5 B", Join{Sides: []Side{abcPeople, abc}, Absent: AbsentZero},
 			"row cases district people/1 5 B 20 @2/0 0 A 10 @1/0 0 C 30 @3", "",
 			"population.csv 1 unused [A C]; districts.geojson 1 unused [A C]; absent [A C]; added 2"},
-		{"absent, zero, unknown to a side", "cases# district/5 B", Join{Sides: []Side{abc, people("district people#/A 1/B 2", "people")}, Absent: AbsentZero},
-			"row cases district people/1 5 B 2 @2/0 0 A 1 @1", "",
-			"districts.geojson 1 unused [A C]; population.csv 1 unused [A]; absent [A C]; added 1; left out [C]"},
-		{"absent, zero, all unknown to a side, and so no gaps", "cases# depth# district/5 1 B", Join{Sides: []Side{places("@ NAME/1 A/2 B"), people("district/B")}, Absent: AbsentZero},
-			"row cases depth district/1 5 1 B @2", "", "districts.geojson 1 unused [A]; absent [A]; left out [A]"},
-		{"absent, zero, several unknown to a side", "cases# district/5 B", Join{Sides: []Side{places("@ NAME/1 C/2 B/3 A"), people("district/B")}, Absent: AbsentZero},
-			"row cases district/1 5 B @2", "", "districts.geojson 1 unused [A C]; absent [A C]; left out [A C]"},
 		{"absent, zero, kept text", "cases# district note/5 B x", Join{Sides: []Side{abc}, Absent: AbsentZero, Keep: []string{"note"}},
 			"row cases district note/1 5 B x @2/0 0 A - @1/0 0 C - @3", "", "districts.geojson 1 unused [A C]; absent [A C]; added 2"},
 		{"absent, zero, none absent", "cases# depth# district/5 1 B/5 1 A/5 1 C", Join{Sides: []Side{abc}, Absent: AbsentZero},
 			"row cases depth district/1 5 1 B @2/2 5 1 A @1/3 5 1 C @3", "", ""},
+		{"absent, zero, none added beside a row without a key", "cases# district/5 B/6 -/7 A/8 C/9 Q", Join{Sides: []Side{abc}, Absent: AbsentZero},
+			"row cases district/1 5 B @2/3 7 A @1/4 8 C @3", "2 missing-key district \"\": key is missing\n5 no-place district \"Q\": districts.geojson has no such place",
+			"districts.geojson 3 without [Q]"},
+		{"absent, missing beside a row without a key", "cases# district/5 B/6 -/5 B", Join{Sides: []Side{abc}, Absent: AbsentMissing},
+			"row cases district/1 5 B @2/3 5 B @2", `2 missing-key district "": key is missing`, "districts.geojson 2 unused [A C]; absent [A C]"},
+		{"absent, zero, beside a row of a place that cannot be used", "cases# district/5 B/6 D/5 B",
+			Join{Sides: []Side{{Table: abc.Table, Key: "NAME", Places: true, Lost: Lost{"D": {Reason: "geometry is missing"}}}}, Absent: AbsentZero},
+			"row cases district/1 5 B @2/3 5 B @2/0 0 A @1/0 0 C @3", `2 unusable-match district "D": its row in districts.geojson cannot be used: geometry is missing`,
+			"districts.geojson 2 without [D] unused [A C]; absent [A C]; added 2"},
 		{"a place whose row is set aside has a row", "cases# district/5 B/9 A/4 C", Join{Sides: []Side{abc, people("district t#/A 8/B 5/C 7", "t")}, Trials: "t", Absent: AbsentZero},
 			"row cases district t/1 5 B 5 @2/3 4 C 7 @3", `2 positives-above-trials cases "9": response is above the number of trials`, ""},
 		{"absent, a row was set aside before", "cases# district/5 B", Join{Sides: []Side{abc}, Absent: AbsentZero, Lost: Lost{"A": {Reason: "response is missing"}}},
@@ -255,9 +257,6 @@ func reported(r JoinReport) string {
 	if r.Added > 0 {
 		list = append(list, fmt.Sprintf("added %d", r.Added))
 	}
-	if len(r.LeftOut) > 0 {
-		list = append(list, fmt.Sprintf("left out %s", r.LeftOut))
-	}
 	return strings.Join(list, "; ")
 }
 
@@ -265,6 +264,7 @@ const (
 	adviceAlike  = "make them alike in one of the two files: keys match where they are the same to the letter"
 	adviceAbsent = "say with --absent zero that nothing was found there, or with --absent missing that nobody looked"
 	adviceGap    = "give the column in a file with a row for every place, with --join, or say --absent missing"
+	adviceStray  = "correct such rows or take them out of the file, or say --absent missing"
 	adviceStrict = "correct the row, or leave out --strict to set such rows aside"
 )
 
@@ -331,6 +331,28 @@ func TestJoinRefusals(t *testing.T) {
 			`cases.csv: column "soil": has no value for places without a row, such as "A"`, adviceGap},
 		{"absent, zero, trials", "cases# examined# district/5 9 B", Join{Sides: []Side{abc}, Absent: AbsentZero, Trials: "examined"},
 			`cases.csv: column "examined": has no value for places without a row, such as "A"`, adviceGap},
+
+		{"absent, zero, unknown to a side", "cases# district/5 B", Join{Sides: []Side{abc, people("district people#/A 1/B 2", "people")}, Absent: AbsentZero},
+			`1 place of districts.geojson has no row in population.csv, so nothing found there means nothing: "C"`, "add them to population.csv, or say --absent missing"},
+		{"absent, zero, seven unknown to a side", "cases# district/5 B",
+			Join{Sides: []Side{places("@ NAME/1 H/2 G/3 B/4 F/5 E/6 D/7 C/8 A"), people("district/B")}, Absent: AbsentZero},
+			`7 places of districts.geojson have no row in population.csv, so nothing found there means nothing: "A", "C", "D", "E", "F" and 2 more`,
+			"add them to population.csv, or say --absent missing"},
+		{"absent, zero, unusable in a side", "cases# district/5 B", Join{Absent: AbsentZero,
+			Sides: []Side{abc, {Table: sheet("p.csv", "district/A/B"), Key: "district", Lost: Lost{"C": {Reason: "people is not above 0"}}}}},
+			`1 place of districts.geojson has no usable row in p.csv, so nothing found there means nothing: "C"`, "add them to p.csv, or say --absent missing"},
+		{"absent, zero, a row without a key", "cases# district/5 B/6 A/7 -/8 B", Join{Sides: []Side{abc}, Absent: AbsentZero},
+			`cases.csv: row 3 (line 4), column "district": key is missing, so the row is set aside; with --absent zero what is missing at its place would turn into 0`, adviceStray},
+		{"absent, zero, rows of no place", "cases# district/5 B/6 Ashby/7 Ashbee/8 -/8 B/8 B/8 B", Join{Sides: []Side{places("@ NAME/1 Ashby/2 B/3 Ashbe")}, Absent: AbsentZero},
+			`cases.csv: row 3 (line 4), column "district": districts.geojson has no such place: "Ashbee", so the row is set aside, one of 2; ` +
+				`with --absent zero what is missing at its place would turn into 0`, `did you mean "Ashbe"? ` + adviceStray},
+		{"absent, zero, a row of no place by another side", "cases# district/5 B/6 Q/7 B", Join{Sides: []Side{people("district/A/B/C"), abc}, Absent: AbsentZero},
+			`cases.csv: row 2 (line 3), column "district": population.csv has no row with this key: "Q", so the row is set aside; ` +
+				`with --absent zero what is missing at its place would turn into 0`, `did you mean "A"? ` + adviceStray},
+		{"absent, zero, a row lost before that has no key", "cases# district/5 B", Join{Sides: []Side{abc}, Absent: AbsentZero,
+			Lost: Lost{"": {Line: 4, Row: 3, Column: "cases", Reason: "response is missing"}, "A": {Line: 5, Row: 4}, "Q": {Line: 9, Row: 8}}},
+			`cases.csv: row 3 (line 4), column "cases": response is missing, so the row is set aside, one of 2; with --absent zero what is missing at its place would turn into 0`,
+			adviceStray},
 	}
 	for _, test := range tests {
 		t.Run(test.name, func(t *testing.T) {
@@ -379,9 +401,9 @@ func TestJoinRowsSetAsideBefore(t *testing.T) {
 	if _, err := summed.SumBy("district", Summing{Add: []string{"cases"}}); err != nil {
 		t.Fatal(err)
 	}
-	if report, err := summed.Join(join); err != nil || report.Added != 2 { // a row without key is no place's
-		t.Fatalf("error %v, report %v", err, report)
-	}
+	_, err = summed.Join(join)
+	checkRefusal(t, err, `cases.csv: row 3 (line 4), column "district": key is missing, so the row is set aside; `+
+		`with --absent zero what is missing at its place would turn into 0`, adviceStray)
 
 	all := sheet("cases.csv", "district/B/B/B/C")
 	table := cases()
@@ -539,18 +561,21 @@ func TestJoinIsNestedLoops(t *testing.T) {
 			kept++
 			want += fmt.Sprintf("/%d %d %s %d @%d", i+1, i+1, key, q+4, p+1)
 		}
-		added, lacking := 0, 0
+		added, lacking, unknown := 0, 0, false
 		for p, key := range at {
 			if slices.Contains(rows, key) {
 				continue
 			}
 			lacking++
-			if q := slices.Index(with, key); q >= 0 && absent == AbsentZero {
+			q := slices.Index(with, key)
+			unknown = unknown || q < 0
+			if q >= 0 && absent == AbsentZero {
 				added++
 				want += fmt.Sprintf("/0 0 %s %d @%d", key, q+4, p+1)
 			}
 		}
-		refused := aside > len(rows)/2 || lacking > 0 && absent == AbsentRefused
+		stray := slices.ContainsFunc(rows, func(key string) bool { return !slices.Contains(at, key) })
+		refused := aside > len(rows)/2 || lacking > 0 && (absent == AbsentRefused || absent == AbsentZero && (unknown || stray))
 
 		report, err := table.Join(Join{Key: "district", Response: "cases", Trials: "t", Absent: absent, Sides: []Side{places(a), people(b, "t")}})
 		if refused != (err != nil) {
@@ -605,7 +630,7 @@ func TestLost(t *testing.T) {
 	lost(table, 3, "cases", "-1", "negative-count", "response is negative")
 	lost(table, 4, "cases", "x", "not-a-number", "response is not a number")
 	got := table.Lost(sheet("cases.csv", "district/B/C/C/-"), "district")
-	if diff := cmp.Diff(Lost{"C": table.Aside[0]}, got); diff != "" {
+	if diff := cmp.Diff(Lost{"C": table.Aside[0], "": table.Aside[2]}, got); diff != "" {
 		t.Errorf("(-want +got):\n%s", diff)
 	}
 	if got := sheet("cases.csv", "cases#/5").Lost(nil, "district"); got == nil || len(got) != 0 {

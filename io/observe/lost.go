@@ -9,12 +9,12 @@ import (
 )
 
 // Lost tells of rows that were set aside when a table was read, by the key they have in some column: for each key the
-// first of its rows. A Table alone does not know these keys.
+// first of its rows, and under "" the first without a key. A Table alone does not know these keys.
 type Lost map[string]Aside
 
 // Lost finds the keys of the rows that t has set aside. The other table is read from the same source with nothing
-// but the key kept, so that it has every row; rows without a key are no key's. The result is never nil. Lost panics if
-// the other table has no text column of the name.
+// but the key kept, so that it has every row. The result is never nil. Lost panics if the other table has no text column
+// of the name.
 func (t *Table) Lost(all *Table, key string) Lost {
 	lost := Lost{}
 	if len(t.Aside) == 0 {
@@ -27,11 +27,15 @@ func (t *Table) Lost(all *Table, key string) Lost {
 	}
 	for _, a := range t.Aside {
 		c, there := code[a.Row]
-		if !there || c < 0 {
+		if !there {
 			continue
 		}
-		if _, seen := lost[column.Level[c]]; !seen {
-			lost[column.Level[c]] = a
+		key := ""
+		if c >= 0 {
+			key = column.Level[c]
+		}
+		if _, seen := lost[key]; !seen {
+			lost[key] = a
 		}
 	}
 	return lost

@@ -2,7 +2,6 @@ package observe
 
 import (
 	"bufio"
-	"bytes"
 	"io"
 	"strings"
 )
@@ -13,6 +12,9 @@ type origin struct {
 	format    Format
 	separator rune
 	features  bool     // it is GeoJSON, not a table in columns
+	blank     bool     // there is something in it, if only ends of lines
+	announced bool     // the first line of a table names the separator and nothing else
+	first     []row    // the first records of a table, the header before them
 	text      *decoder // knows the encoding as far as it has been read
 }
 
@@ -46,14 +48,14 @@ func openOrigin(r io.Reader, source string, format Format) (io.Reader, *origin, 
 	if err != nil && err != io.EOF && len(head) == 0 {
 		return nil, nil, readError(source, err)
 	}
-	if what, advice := notText(head); what != "" {
+	if what, advice := notTable(head); what != "" {
 		return nil, nil, &Error{File: source, What: what, Advice: advice}
 	}
 	o := &origin{source: source, format: format, features: startsFeatures(head)}
 	if o.features {
 		o.format.Separator, o.format.DecimalComma = 0, false
 	}
-	text := decode(from, head)
+	text := decode(from, head, source)
 	o.text = text
 	return text, o, nil
 }
@@ -76,40 +78,4 @@ func (l *lasting) Read(p []byte) (int, error) {
 	n, err := l.from.Read(p)
 	l.err = err
 	return n, err
-}
-
-const gzipMark = "\x1f\x8b"
-
-// notText names a file that is something other than text, by its first bytes.
-func notText(head []byte) (what, advice string) {
-	if len(head) == 0 {
-		return "the file is empty", adviceWhole
-	}
-	for _, known := range []struct{ mark, what string }{
-		{"PK\x03\x04", "a spreadsheet or a zip archive, not a CSV table"},
-		{"\xd0\xcf\x11\xe0", "a spreadsheet or another office document, not a CSV table"},
-		{"SQLite format 3\x00", "a database, not a CSV table"},
-		{"PAR1\x15", "a Parquet table, not a CSV table"},
-		{"%PDF-", "a PDF document, not a CSV table"},
-		{"<!DOCTYPE", "a web page or another marked-up document, not a CSV table"},
-		{"<?xml", "a web page or another marked-up document, not a CSV table"},
-		{"<html", "a web page or another marked-up document, not a CSV table"},
-		{"\xff\xfe\x00\x00", "UTF-32 text, which is not read"},
-		{"\x00\x00\xfe\xff", "UTF-32 text, which is not read"},
-	} {
-		if bytes.HasPrefix(head, []byte(known.mark)) {
-			return "the file is " + known.what, adviceText
-		}
-	}
-	for _, known := range []struct{ mark, name string }{
-		{gzipMark, "gzip twice"}, {"BZh91AY&SY", "bzip2"}, {"\xfd7zXZ\x00", "xz"}, {"\x28\xb5\x2f\xfd", "zstd"}, {"7z\xbc\xaf\x27\x1c", "7z"},
-	} {
-		if bytes.HasPrefix(head, []byte(known.mark)) {
-			return "the file is compressed with " + known.name, "unpack it, or compress it with gzip"
-		}
-	}
-	if utf16Order(head) == nil && bytes.IndexByte(head, 0) >= 0 {
-		return "the file holds NUL bytes, so it is not text", adviceText
-	}
-	return "", ""
 }

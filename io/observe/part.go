@@ -64,8 +64,9 @@ func (p Part) row(i int) int {
 
 // SHA256 returns a checksum in hexadecimal. It does not depend on where the rows stand or on the rows of other parts.
 // Of a CSV table it is that of a file that holds the header and the rows of the part as they stand in the table, in
-// UTF-8 without a byte order mark and blank lines and with a line feed at the end of each record. Of features it is that
-// of their reference system, identifiers, properties and geometries, however they are written.
+// UTF-8 without a byte order mark, empty lines and a line that names the separator, and with a line feed at the end of
+// each record. Of features it is that of their reference system, identifiers, properties and geometries, however they
+// are written.
 func (p Part) SHA256() string {
 	sum := sha256.New()
 	text := p.shared.text.appendHead(nil)

@@ -261,7 +261,7 @@ func TestPartErrors(t *testing.T) {
 			`correct the row, or leave out --strict to set such rows aside`},
 		{"mostly aside", parts["South"], measure, `all.csv: 2 of 3 rows cannot be used, more than half: column "z", response is missing (2); ` +
 			`for example row 3 (line 6), where response is missing: "NA"`,
-			`check that the right columns are named, and that missing values are written as empty fields or NA`},
+			`check that the right column is named, or take the rows without a value out of the file`},
 		{"column", parts["North"], Request{Response: "zz", Kind: Measure}, `all.csv: line 1: no column "zz" for the response`,
 			`did you mean "z"? the columns are district, lon, lat, z`},
 		{"coordinates", parts["North"], plane, `all.csv: line 1: columns lon/lat are longitude and latitude by their names, but the coordinates are said to be in a plane`,

@@ -1,19 +1,18 @@
 package observe
 
-import (
-	"bytes"
-	"io"
-)
+import "io"
 
 // Read reads a table of observations: GeoJSON where the text starts with a brace or a record separator, otherwise CSV.
 // The source is the name of the file in messages. The text is UTF-8, UTF-16 (told by its byte order mark, or by the
-// zeros in every other byte) or Windows-1252 (told by the first character beyond ASCII, which is no UTF-8). A byte
-// order mark is dropped. The file may be compressed with gzip.
+// zeros in every other byte) or Windows-1252 (told by the first character beyond ASCII, which is no UTF-8, and refused if
+// others are). A byte order mark is dropped. The file may be compressed with gzip.
 //
 // CSV has one line of names, with quotes as in RFC 4180. The columns are separated as Request.Format says or the header
 // shows; numbers are decimal with a point unless the format has a comma; empty fields and NA, NaN and null in any
 // capitals are missing. Places come from two columns of coordinates or from one of geometries, see Request. Lines and
-// rows are those of the text, and it is never held as a whole.
+// rows are those of the text, and it is never held as a whole. A first line such as "sep=;" names the separator. Lines
+// of which all fields are blank, and a line with the end-of-file mark of old systems (byte 1A), are no rows and passed
+// over as blank lines are. A title above the names is refused.
 //
 // GeoJSON (RFC 7946) is one FeatureCollection, Feature or geometry, or several of them one after the other, with or
 // without record separators (RFC 8142). Its properties are the columns, and its features the rows, with the geometries
@@ -21,7 +20,8 @@ import (
 // longitude and latitude unless Axes says that they are in a plane.
 //
 // Where rows have geometries, a column called "z" that the table does not have is the third coordinate of its points,
-// missing elsewhere. A column "id" that is no property is the identifier of features.
+// missing elsewhere. A geometry with a flaw is one that cannot be read: a polygon that crosses itself or has no area, a
+// line without length. A column "id" that is no property is the identifier of features.
 //
 // Rows that cannot be used are set aside, see Request for the order of the checks. An *Error is returned for a table
 // that cannot be used as a whole: one that is not such a file, has no such column or two of a name, rows of the wrong
@@ -67,15 +67,3 @@ func Columns(r io.Reader, source string, format Format) ([]string, error) {
 	h, err := readHeader(in, source)
 	return h.names, err
 }
-
-// startsFeatures reports whether a text, of which head is the start in any encoding, is GeoJSON and no table.
-func startsFeatures(head []byte) bool {
-	for _, mark := range []string{utf8Mark, "\xff\xfe", "\xfe\xff"} {
-		head = bytes.TrimPrefix(head, []byte(mark))
-	}
-	head = bytes.TrimLeft(head, " \t\r\n\x00") // the zeros are those of UTF-16
-	return len(head) > 0 && (head[0] == '{' || head[0] == recordSeparator)
-}
-
-// recordSeparator stands before each text of a sequence (RFC 8142 section 2, after RFC 7464).
-const recordSeparator = 0x1e

@@ -79,7 +79,13 @@ func TestGeoJSONAside(t *testing.T) {
 		{"open ring", feature(`{"type":"Polygon","coordinates":[[[0,0],[1,0],[1,1],[0,1]]]}`, `{"n":1}`), Aside{Column: "geometry", Code: "bad-geometry",
 			Reason: "geometry cannot be read: ring 1: is not closed: it starts at [0 0] and ends at [0 1]"}},
 		{"one number", feature(at("5"), `{"n":1}`), Aside{Column: "geometry", Code: "bad-geometry",
-			Reason: "geometry cannot be read: has 1 numbers, and a position needs 2"}},
+			Reason: "geometry cannot be read: has 1 number, and a position needs 2"}},
+		{"bow-tie", feature(`{"type":"Polygon","coordinates":[[[0,0],[2,2],[2,0],[0,2],[0,0]]]}`, `{"n":1}`), Aside{Column: "geometry", Code: "bad-geometry",
+			Reason: "geometry cannot be read: the polygon crosses itself near (1.000, 1.000)"}},
+		{"no area", feature(`{"type":"Polygon","coordinates":[[[0,0],[1,1],[2,2],[0,0]]]}`, `{"n":1}`), Aside{Column: "geometry", Code: "bad-geometry",
+			Reason: "geometry cannot be read: the polygon has no area"}},
+		{"no length", feature(`{"type":"LineString","coordinates":[[3,4],[3,4]]}`, `{"n":1}`), Aside{Column: "geometry", Code: "bad-geometry",
+			Reason: "geometry cannot be read: the line has no length"}},
 		{"no response, no place", feature("null", `{"n":null}`), Aside{Column: "n", Code: "missing-response", Reason: "response is missing"}},
 		{"an object for a number", feature(at("1,2"), `{"n":{"a": [1, 2]}}`), Aside{Column: "n", Value: `{"a":[1,2]}`, Code: "not-a-number", Reason: "response is not a number"}},
 		{"truth for a number", feature(at("1,2"), `{"n":true}`), Aside{Column: "n", Value: "true", Code: "not-a-number", Reason: "response is not a number"}},
@@ -115,6 +121,20 @@ func TestGeoJSONRefusals(t *testing.T) {
 		err, hint  string
 	}{
 		{"absent", good, measured("m"), `f.geojson: no column "m" for the response`, `did you mean "n"? the columns are n, Größe, z`},
+		{"no properties", `{"type":"MultiPoint","coordinates":[[1,2],[3,4]]}`, measured("n"), `f.geojson: no column "n" for the response`, `the features have no properties`},
+		{"NaN", strings.Replace(good, `"n":1`, `"n":NaN`, 1), measured("n"), `f.geojson: row 1 (line 2): not JSON: invalid character 'N' looking for beginning of value`,
+			`JSON has no NaN and no infinite numbers: write null where there is no value`},
+		{"infinite", strings.Replace(good, `"n":1`, `"n":-Infinity`, 1), measured("n"), `f.geojson: row 1 (line 2): not JSON: invalid character 'I' in numeric literal`,
+			`JSON has no NaN and no infinite numbers: write null where there is no value`},
+		{"no geometries", feature("null", `{"n":1}`), measured("n"), `f.geojson: 1 of 1 rows cannot be used, more than half: column "geometry", geometry is missing (1); ` +
+			`for example row 1 (line 1), where geometry is missing`, `write the geometries of the features into the file, or name a file of places with --places`},
+		{"bow-ties", feature(`{"type":"Polygon","coordinates":[[[0,0],[2,2],[2,0],[0,2],[0,0]]]}`, `{"n":1}`), measured("n"),
+			`f.geojson: 1 of 1 rows cannot be used, more than half: column "geometry", geometry cannot be read (1); ` +
+				`for example row 1 (line 1), where geometry cannot be read: the polygon crosses itself near (1.000, 1.000)`,
+			`repair such polygons: a ring must not cross itself (OGC 06-103r4, section 6.1.11)`},
+		{"a line without length", feature(`{"type":"LineString","coordinates":[[3,4],[3,4]]}`, `{"n":1}`), measured("n"),
+			`f.geojson: 1 of 1 rows cannot be used, more than half: column "geometry", geometry cannot be read (1); ` +
+				`for example row 1 (line 1), where geometry cannot be read: the line has no length`, `give places that are points as points, and correct the others`},
 		{"absent, no heights", collection(feature(at("1,2"), `{"n":1}`)), with(func(q *Request) { q.Linear = []string{"z"} }),
 			`f.geojson: no column "z" for a linear covariate`, `did you mean "n"? the columns are n`},
 		{"x and y", good, with(func(q *Request) { q.X, q.Y = "n", "z" }), `f.geojson: column "n": cannot be both the response and the x coordinate`, ``},
@@ -133,7 +153,7 @@ func TestGeoJSONRefusals(t *testing.T) {
 			`f.geojson: row 1 (line 2), column "geometry": 91 is not a latitude (-90 to 90)`, adviceGeometries},
 		{"mostly aside", collection(feature(at("1"), `{"n":1}`), feature(`{"type":"Point","coordinates":[[1]]}`, `{"n":1}`), feature(at("1,2"), `{"n":1}`)), measured("n"),
 			`f.geojson: 2 of 3 rows cannot be used, more than half: column "geometry", geometry cannot be read (2); for example row 1 (line 2), ` +
-				`where geometry cannot be read: has 1 numbers, and a position needs 2`, adviceOutlines},
+				`where geometry cannot be read: has 1 number, and a position needs 2`, adviceOutlines},
 		{"strict", collection(feature("null", `{"n":1}`), feature(at("1,2"), `{"n":1}`)), with(func(q *Request) { q.Strict = true }),
 			`f.geojson: row 1 (line 2), column "geometry": geometry is missing`, `correct the row, or leave out --strict to set such rows aside`},
 		{"cut short", good[:len(good)-4], measured("n"), `f.geojson: row 1 (line 2): the file ends before what starts here does`, adviceWhole},

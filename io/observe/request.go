@@ -32,22 +32,23 @@ const (
 //
 // The features of GeoJSON have geometries of their own: a request that names columns for places is refused for them.
 type Request struct {
-	Response    string   // column of the response; empty with Kind None
-	Kind        Kind     // what the response is
-	Trials      string   // number examined, whole and above 0: with Positives, and only then
-	Denominator string   // people, area, effort or expected: finite and above 0
-	Factor      []string // what the denominator is multiplied by: finite and above 0
-	Weight      string   // finite and above 0
-	X, Y        string   // coordinate columns; both empty to recognise them by their names
-	Geometry    string   // column of geometries in WKT or hexadecimal EWKB, in place of X and Y
-	NoPlaces    bool     // rows have no places of their own: none are looked for
-	Axes        Axes     // what the coordinates are
-	Linear      []string // covariates that are finite numbers
-	Category    []string // covariates that are text, not missing
-	Optional    []string // categories that the table need not have: where it has the column, it is one of Category
-	Keep        []string // text to carry along; may be missing, is never a reason to set a row aside
-	Strict      bool     // refuse the first row that cannot be used instead of setting it aside
-	Format      Format   // how the table is written; ReadPart goes by the format that WholeAs was given
+	Response    string            // column of the response; empty with Kind None
+	Kind        Kind              // what the response is
+	Trials      string            // number examined, whole and above 0: with Positives, and only then
+	Denominator string            // people, area, effort or expected: finite and above 0
+	Factor      []string          // what the denominator is multiplied by: finite and above 0
+	Weight      string            // finite and above 0
+	X, Y        string            // coordinate columns; both empty to recognise them by their names
+	Geometry    string            // column of geometries in WKT or hexadecimal EWKB, in place of X and Y
+	NoPlaces    bool              // rows have no places of their own: none are looked for
+	Axes        Axes              // what the coordinates are
+	Linear      []string          // covariates that are finite numbers
+	Category    []string          // covariates that are text, not missing
+	Optional    []string          // categories that the table need not have: where it has the column, it is one of Category
+	Keep        []string          // text to carry along; may be missing, is never a reason to set a row aside
+	Called      map[string]string // what columns of Factor and Keep are in messages, such as "width" or "key"; may lack any
+	Strict      bool              // refuse the first row that cannot be used instead of setting it aside
+	Format      Format            // how the table is written; ReadPart goes by the format that WholeAs was given
 }
 
 // Validate reports the first thing about a request that no table could satisfy. Read calls it.

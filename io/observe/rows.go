@@ -1,6 +1,7 @@
 package observe
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"slices"
@@ -80,6 +81,7 @@ type filling struct {
 // field is one part that one column of the file plays.
 type field struct {
 	part   part
+	called string // what the part is called, by Request.Called
 	name   string
 	at     int  // position in the file, or one of atHeight, atID and atFeature
 	column int  // position in Table.Columns; -1 for coordinates and geometries
@@ -134,11 +136,14 @@ func named(name string) []string {
 
 // add appends a field, and a column for it unless there is one of the name.
 func (r *rows) add(p part, name string) error {
-	at, err := r.position(p, name)
-	if err != nil {
+	f := field{part: p, name: name, column: -1}
+	if p == factor || p == keep {
+		f.called = r.want.Called[name]
+	}
+	var err error
+	if f.at, err = r.position(f); err != nil {
 		return err
 	}
-	f := field{part: p, name: name, at: at, column: -1}
 	switch p {
 	case coordinateX:
 		r.x = len(r.fields)
@@ -162,13 +167,18 @@ func (r *rows) add(p part, name string) error {
 }
 
 // position returns where the values of a field stand.
-func (r *rows) position(p part, name string) (int, error) {
+func (r *rows) position(f field) (int, error) {
 	h := r.header
-	if p == geometry && h.shapes != nil {
+	if f.part == geometry && h.shapes != nil {
 		return atFeature, nil
 	}
-	h.heights = h.heights && p != geometry
-	return h.find(name, p.String())
+	h.heights = h.heights && f.part != geometry
+	at, err := h.find(f.name, f.what())
+	if e, is := err.(*Error); is && f.part == factor && isDigits(f.name[:min(1, len(f.name))]) {
+		e.What = fmt.Sprintf("%q, for %s, is neither a number nor a column", shorten(f.name), f.what())
+		e.Advice = "write the number alone, without a unit or a sign; " + e.Advice
+	}
+	return at, err
 }
 
 // readAll reads the records to the end and refuses a table that is mostly unusable.
@@ -309,7 +319,7 @@ func (r *rows) finish() {
 // refuse turns a row to be set aside into an error.
 func (r *rows) refuse(a Aside) error {
 	return &Error{File: r.header.source, Line: int(a.Line), Row: int(a.Row), Column: a.Column, Value: a.Value,
-		What: a.sentence(), Advice: "correct the row, or leave out --strict to set such rows aside"}
+		What: a.sentence(), Advice: cmp.Or(r.adviceForCell(a), "correct the row") + ", or leave out --strict to set such rows aside"}
 }
 
 // sentence is the reason and the value.
@@ -348,19 +358,37 @@ func (r *rows) firstAside(code, column string) Aside {
 	return Aside{}
 }
 
+const adviceBelow = "say with --below-limit half or limit what stands for values below a detection limit"
+
 // adviceFor says what to do about rows that are mostly unusable for one reason.
 func (r *rows) adviceFor(a Aside) string {
-	below := func(f field) bool { return f.name == a.Column && f.mayBeBelow(r.want.Kind) }
-	if a.Code == faultLimit || a.Code == faultNumber && strings.HasPrefix(a.Value, "<") && slices.ContainsFunc(r.fields, below) {
-		return "say with --below-limit half or limit what stands for values below a detection limit"
+	if advice := r.adviceForCell(a); advice != "" {
+		return advice
 	}
 	switch {
+	case a.Code == faultLimit:
+		return adviceBelow
 	case a.Code == "fractional-count":
 		return "amounts that are not whole numbers are no counts: use --distribution tweedie for them"
-	case a.Code == faultGeometry && r.header.shapes != nil:
-		return adviceOutlines
 	case a.Code == faultGeometry:
-		return adviceColumn
+		return adviceForGeometry(a.Reason, r.header.shapes != nil)
+	case a.Code == faultNoGeometry && r.header.shapes != nil:
+		return "write the geometries of the features into the file, or name a file of places with --places"
+	}
+	if strings.HasPrefix(a.Code, faultMissing+"-") {
+		return "check that the right column is named, or take the rows without a value out of the file"
 	}
 	return "check that the right columns are named, and that missing values are written as empty fields or NA"
+}
+
+// adviceForCell says what to do about the value that a row is set aside for; "" where the value does not tell.
+func (r *rows) adviceForCell(a Aside) string {
+	below := func(f field) bool { return f.name == a.Column && f.mayBeBelow(r.want.Kind) }
+	switch {
+	case a.Code == faultNumber && strings.HasPrefix(a.Value, "<") && slices.ContainsFunc(r.fields, below):
+		return adviceBelow
+	case a.Code == faultNumber && !r.header.origin.features:
+		return adviceForCell(a.Value, r.format)
+	}
+	return ""
 }

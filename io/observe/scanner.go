@@ -12,18 +12,19 @@ import (
 
 // scanner finds the rows of a file, block by block.
 type scanner struct {
-	shared *Shared
-	held   *heldCSV
-	line   int    // the line of the file at which the scanner stands
-	spans  []span // the rows of the block at hand
-	parser *parser
+	shared    *Shared
+	held      *heldCSV
+	line      int    // the line of the file at which the scanner stands
+	announced bool   // a line that names the separator is to come
+	spans     []span // the rows of the block at hand
+	parser    *parser
 }
 
 func newScanner(from *origin) *scanner {
 	shared := &Shared{header: header{source: from.source, origin: from}}
 	held := &heldCSV{header: &shared.header}
 	shared.text = held
-	return &scanner{shared: shared, held: held, line: 1, parser: newParser(from.separator)}
+	return &scanner{shared: shared, held: held, line: 1, announced: from.announced, parser: newParser(from.separator)}
 }
 
 // block takes the next block and what comes after it, as blocks.next gives them.
@@ -52,6 +53,12 @@ func (s *scanner) record(block []byte, at int, after error) (int, error) {
 	if isBlank(line) {
 		return len(line), nil
 	}
+	if mayBeEmpty(line, s.parser.separator) {
+		fields, size, err := s.parse(text, after)
+		if err != nil || isEmpty(fields) {
+			return size, err
+		}
+	}
 	if s.shared.header.names == nil {
 		return s.readHeader(text, after)
 	}
@@ -77,11 +84,22 @@ func isBlank(line []byte) bool {
 	return false
 }
 
+// mayBeEmpty reports whether a record that starts with a line may be empty: most have a letter or a digit.
+func mayBeEmpty(line, separator []byte) bool {
+	return bytes.IndexFunc(line, func(c rune) bool {
+		return c < utf8.RuneSelf && c > ' ' && c != '"' && !bytes.ContainsRune(separator, c)
+	}) < 0
+}
+
 // readHeader takes the names from the record with which text starts, and returns its size.
 func (s *scanner) readHeader(text []byte, after error) (int, error) {
 	fields, size, err := s.parse(text, after)
 	if err != nil {
 		return 0, err
+	}
+	if s.announced {
+		s.announced = false
+		return size, nil
 	}
 	s.held.head = content(text[:size])
 	s.shared.header, err = newHeader(fields, s.line, s.shared.header.origin)
@@ -132,7 +150,7 @@ func (s *scanner) finish(after error) (*Shared, error) {
 	case after != io.EOF:
 		return nil, readError(s.shared.header.source, after)
 	case s.shared.header.names == nil:
-		return nil, emptyFile(s.shared.header.source)
+		return nil, s.shared.header.origin.noHeader()
 	case s.shared.rows == 0:
 		return nil, s.shared.header.noRows()
 	}

@@ -45,6 +45,9 @@ func readPlainly(r io.Reader) (p plainRead) {
 		case err != nil:
 			return plainRead{err: readError("wells.csv", err)}
 		}
+		if all := strings.TrimSpace(strings.Join(record, " ")); all == "" || all == "\x1a" && len(record) == 1 {
+			continue
+		}
 		line, _ := in.FieldPos(0)
 		here := Error{File: "wells.csv", Line: line, Row: len(p.lines) + 1}
 		if err := h.checkRecord(record, here); err != nil {
@@ -118,6 +121,8 @@ func TestWholeFindsTheRows(t *testing.T) {
 		{"mark", "\xef\xbb\xbfx,y\n1,2\n"},
 		{"blank lines above, between and below", "\n\r\nx,y\n\n1,2\n\n\r\n3,4\n\n\n"},
 		{"a line of blanks in one column", "x\n1\n  \n2\n"},
+		{"empty rows", " , \nx,y\n,\n1,2\n\" \",\n,,,\n\u2003,\u0085\n3,\n\x1a\n"},
+		{"a separator is told", "\nsep=;\nx;y\n1;2\n"},
 		{"a line of blanks at the end", "x\n1\n  "},
 		{"quotes", "x,y\n\"1\",2\n3,\"4\"\n\"5\", \"6\"\n"},
 		{"quoted header", "\"x\n1\",\"y\"\n1,2\n3,4\n"},

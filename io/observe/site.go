@@ -34,6 +34,21 @@ const (
 	adviceColumn     = "check that the right column is named: it holds WKT such as POINT (12.5 41.9), or EWKB in hexadecimal"
 )
 
+// adviceForGeometry says what to do about a geometry that cannot be read for a reason.
+func adviceForGeometry(reason string, features bool) string {
+	switch {
+	case strings.HasSuffix(reason, "is not read"):
+		return "read are points, lines and polygons, and several of one of these: straighten curves, and take collections apart"
+	case strings.Contains(reason, crossesItself):
+		return "repair such polygons: a ring must not cross itself (OGC 06-103r4, section 6.1.11)"
+	case strings.HasSuffix(reason, noArea), strings.HasSuffix(reason, noLength):
+		return "give places that are points as points, and correct the others"
+	case features:
+		return adviceOutlines
+	}
+	return adviceColumn
+}
+
 // locate finds out where the row at hand was observed, and refuses a table with a place that cannot be.
 func (r *rows) locate(rec record, here Error) error {
 	switch {
@@ -68,7 +83,16 @@ func parseSite(s string, format *Format) site {
 		none.code, none.reason = faultNoGeometry, "geometry is missing"
 		return none
 	}
-	return site{geometry: p.Geometry, z: p.Z, srid: p.SRID}
+	return site{geometry: p.Geometry, z: p.Z, srid: p.SRID}.checked()
+}
+
+// checked takes a geometry away that has a flaw.
+func (s site) checked() site {
+	if flaw := flawOf(s.geometry); flaw != "" {
+		s.geometry, s.z = nil, math.NaN()
+		s.code, s.reason = faultGeometry, reasonGeometry+": "+flaw
+	}
+	return s
 }
 
 // noteSRID takes the reference system of the geometry at hand, which must be that of all others.

@@ -14,7 +14,7 @@ type Unnamed struct {
 // are reported; if none has a value, there are no parts. An *Error is returned for a column that is absent.
 func (s *Shared) Split(column string) ([]Part, Unnamed, error) {
 	if column == "" {
-		return nil, Unnamed{}, &Error{File: s.header.source, Line: s.header.line, Advice: columnList(s.header.columns()),
+		return nil, Unnamed{}, &Error{File: s.header.source, Line: s.header.line, Advice: s.header.columnList(),
 			What: "no column is named for the names of the regions"}
 	}
 	at, err := s.header.find(column, "the names of the regions")

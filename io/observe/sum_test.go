@@ -168,10 +168,10 @@ func TestSumByThenJoin(t *testing.T) {
 		t.Fatal(err)
 	}
 	joined := *table
-	if _, err := joined.Join(Join{Key: "district", Response: "cases", Sides: []Side{places("@ NAME/1 A/2 B/3 C")}, Absent: AbsentZero}); err != nil {
+	if _, err := joined.Join(Join{Key: "district", Response: "cases", Sides: []Side{places("@ NAME/1 A/2 B/3 C")}, Absent: AbsentMissing}); err != nil {
 		t.Fatal(err)
 	}
-	if got, want := words(&joined), "row cases district/1 28 A @1/8 8 B @2/0 0 C @3"; got != want {
+	if got, want := words(&joined), "row cases district/1 28 A @1/8 8 B @2"; got != want {
 		t.Errorf("got %s, want %s", got, want)
 	}
 	_, err := table.Join(Join{Key: "district", Sides: []Side{people("district/A")}})

@@ -18,7 +18,7 @@ func TestSurveyFeatures(t *testing.T) {
 		feature(`{"type":"LineString","coordinates":[[0,0]]}`, `{"when":null}`), feature(at("1,2,3"), `{"n":1,"when":"2024-02-29"}`), feature(at("1,2"), `{"n":1,"when":"2024-02-29"}`),
 	}, "\n"), SurveyRequest{})
 	want := &SurveyShapes{Kinds: []ShapeCount{{"Point", 3}, {"Polygon", 1}}, Least: [2]float64{0, 0}, Most: [2]float64{2, 2}, Positions: 8, Heights: 2, Missing: 1, Bad: 1,
-		Line: 4, Row: 4, Reason: "geometry cannot be read: has 1 positions, and a line needs 2 or more"}
+		Line: 4, Row: 4, Reason: "geometry cannot be read: has 1 position, and a line needs 2 or more"}
 	if diff := cmp.Diff(want, s.Shapes); diff != "" {
 		t.Errorf("(-want +got):\n%s", diff)
 	}

@@ -229,7 +229,7 @@ func TestSurveyRefusals(t *testing.T) {
 	for _, tt := range []struct{ name, text, want string }{
 		{"empty", "", "obs.csv: the file is empty"},
 		{"no rows", "a,b\n", "obs.csv: line 1: no rows stand below the header"},
-		{"ragged", "a,b\n1,2\n1\n", "obs.csv: row 2 (line 3): 1 fields where the header has 2"},
+		{"ragged", "a,b\n1,2\n1\n", "obs.csv: row 2 (line 3): 1 field where the header has 2"},
 		{"twice", "a,a\n1,2\n", `obs.csv: line 1, column "a": the name appears twice, as columns 1 and 2`},
 		{"quote", "a,b\n1,\"2\n", "obs.csv: line 2: a quoted field is not closed properly"},
 	} {

@@ -2,6 +2,7 @@ package observe
 
 import (
 	"bufio"
+	"bytes"
 	"encoding/csv"
 	"errors"
 	"fmt"
@@ -42,16 +43,37 @@ func openText(decoded io.Reader, from *origin) (*text, error) {
 	return &text{newCSV(buffered, from.separator), from}, nil
 }
 
-// look finds the separator by the first headSize bytes of the text, or by those that came before err.
+// look finds out how a table is written by the first headSize bytes of the text, or by those that came before err.
 func (o *origin) look(head []byte, err error) error {
 	if err != nil && err != io.EOF && len(head) == 0 {
 		return readError(o.source, err)
 	}
 	if outsideQuotes(headerLine(head))['\r'] > 0 {
-		return &Error{File: o.source, What: "the lines end in carriage returns alone, which are not read", Advice: adviceText}
+		return &Error{File: o.source, What: "the lines end in carriage returns alone, which are not read",
+			Advice: "save the table with a line feed at the end of each line, alone or behind the carriage return"}
 	}
-	o.separator, err = o.format.separator(head, o.source)
-	return err
+	o.blank = len(head) > 0
+	if o.separator, o.announced = announced(head); o.announced && o.format.Separator != 0 {
+		o.separator = o.format.Separator
+	}
+	if !o.announced {
+		if o.separator, err = o.format.separator(head, o.source); err != nil {
+			return err
+		}
+	}
+	o.first = o.start(head, o.separator)
+	return o.titleAbove(head)
+}
+
+// announced returns the separator that the first line of a file names, as in "sep=;", and reports whether it does (common
+// practice of spreadsheets, no source).
+func announced(head []byte) (rune, bool) {
+	name, mark, is := bytes.Cut(headerLine(head), []byte("="))
+	c, size := utf8.DecodeRune(mark)
+	if !is || !bytes.EqualFold(name, []byte("sep")) || size != len(mark) || !canSeparate(c) {
+		return 0, false
+	}
+	return c, true
 }
 
 // newCSV returns a reader of records by the rules of the package: those of every table, however it is read.

@@ -84,7 +84,7 @@ func checkPolygon(p orb.Polygon, within string) *Fault {
 // ringFault says what is wrong with a ring by itself; its results are "" if nothing is.
 func ringFault(r orb.Ring) (code, what string) {
 	if len(r) < 4 {
-		return faultBad, fmt.Sprintf("has %d positions, and a ring needs 4 or more", len(r))
+		return faultBad, fmt.Sprintf("has %s, and a ring needs 4 or more", several(len(r), "position"))
 	}
 	for _, p := range r {
 		if v := p[0] - p[0] + p[1] - p[1]; v != 0 {

@@ -87,7 +87,7 @@ func (c *coordinates) ring() (r orb.Ring) {
 	switch {
 	case c.refused != nil:
 	case len(r) < 4:
-		c.refuse("has %d positions, and a ring needs 4 or more", len(r))
+		c.refuse("has %s, and a ring needs 4 or more", several(len(r), "position"))
 	case r[0] != r[len(r)-1]:
 		c.refuse("is not closed: it starts at %v and ends at %v", r[0], r[len(r)-1])
 	}
@@ -104,7 +104,7 @@ func (c *coordinates) position() (p orb.Point) {
 		n++
 	})
 	if c.refused == nil && n < 2 {
-		c.refuse("has %d numbers, and a position needs 2", n)
+		c.refuse("has %s, and a position needs 2", several(n, "number"))
 	}
 	return p
 }

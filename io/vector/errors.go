@@ -37,3 +37,11 @@ func (e *Error) Hint() string { return e.Advice }
 
 // Unwrap returns the error of the reader underneath, if that was the cause.
 func (e *Error) Unwrap() error { return e.Cause }
+
+// several writes a number of things.
+func several(n int, thing string) string {
+	if n == 1 {
+		return "1 " + thing
+	}
+	return fmt.Sprintf("%d %ss", n, thing)
+}

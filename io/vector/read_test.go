@@ -78,7 +78,7 @@ func TestReadPolygonsRefusals(t *testing.T) {
 		{"three positions", polygon(`[[[0,0],[1,0],[1,1],[0,0]],[[0,0],[1,1],[0,0]]]`), `zones.geojson: feature 1, ring 2: has 3 positions, and a ring needs 4 or more`, adviceFormat},
 		{"open", polygon(`[[[0,0],[1,0],[1,1],[0.5,0]]]`), `zones.geojson: feature 1, ring 1: is not closed: it starts at [0 0] and ends at [0.5 0]`, adviceFormat},
 		{"one number", `{"type":"MultiPolygon","coordinates":[[[[0,0],[1],[1,1],[0,0]]]]}`,
-			`zones.geojson: feature 1, polygon 1, ring 1, position 2: has 1 numbers, and a position needs 2`, adviceFormat},
+			`zones.geojson: feature 1, polygon 1, ring 1, position 2: has 1 number, and a position needs 2`, adviceFormat},
 		{"text for a number", polygon(`[[[0,0],[1,"0"],[1,1],[0,0]]]`), `zones.geojson: feature 1, ring 1, position 2: holds something that is not a number`, adviceFormat},
 		{"nested too deep", polygon(`[[[[0,0],[1,0],[1,1],[0,0]]]]`), `zones.geojson: feature 1, ring 1, position 1: holds something that is not a number`, adviceFormat},
 		{"nested too little", `{"type":"MultiPolygon","coordinates":[[[0,0],[1,0],[1,1],[0,0]]]}`,

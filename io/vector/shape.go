@@ -90,7 +90,7 @@ func (c *coordinates) positions() (all []orb.Point) {
 func (c *coordinates) line() orb.LineString {
 	l := orb.LineString(c.positions())
 	if c.refused == nil && len(l) < 2 {
-		c.refuse("has %d positions, and a line needs 2 or more", len(l))
+		c.refuse("has %s, and a line needs 2 or more", several(len(l), "position"))
 	}
 	return l
 }

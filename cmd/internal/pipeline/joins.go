@@ -154,7 +154,7 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 		if err := d.findKey(key); err != nil {
 			return want, err
 		}
-		d.want = observe.Request{Format: want.Format, Strict: want.Strict, Keep: []string{d.key}, NoPlaces: !d.places}
+		d.want = observe.Request{Format: want.Format, Strict: want.Strict, Keep: []string{d.key}, NoPlaces: !d.places, Called: map[string]string{d.key: "key"}}
 		if d.places {
 			d.want.X, d.want.Y, d.want.Geometry, d.want.Axes = want.X, want.Y, want.Geometry, want.Axes
 			want.X, want.Y, want.Geometry, want.NoPlaces = "", "", "", true
@@ -175,17 +175,20 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 		}
 		return false, absentColumn(strings.Join(names, ", "), name, part, all)
 	}
-	factor := func(name string) func(q *observe.Request) {
-		return func(q *observe.Request) { q.Factor = append(q.Factor, name) }
+	factor := func(name, called string) func(q *observe.Request) {
+		return func(q *observe.Request) {
+			q.Factor = append(q.Factor, name)
+			q.Called[name] = called
+		}
 	}
 	for _, one := range []struct {
 		name *string
 		part string
-	}{{&want.Trials, "the number of trials"}, {&want.Denominator, "the denominator"}, {&want.Weight, "the weight"}} {
+	}{{&want.Trials, "number of trials"}, {&want.Denominator, "denominator"}, {&want.Weight, "weight"}} {
 		if *one.name == "" {
 			continue
 		}
-		mine, err := give(*one.name, one.part, factor(*one.name))
+		mine, err := give(*one.name, "the "+one.part, factor(*one.name, one.part))
 		if err != nil {
 			return want, err
 		}
@@ -201,7 +204,7 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 		part  string
 		to    func(name string) func(q *observe.Request)
 	}{
-		{&want.Factor, "a factor of the denominator", factor},
+		{&want.Factor, "a factor of the denominator", func(name string) func(q *observe.Request) { return factor(name, want.Called[name]) }},
 		{&want.Linear, "a covariate", func(name string) func(q *observe.Request) {
 			return func(q *observe.Request) { q.Linear = append(q.Linear, name) }
 		}},
@@ -211,7 +214,11 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 	} {
 		var own []string
 		for _, name := range *list.names {
-			mine, err := give(name, list.part, list.to(name))
+			part := list.part
+			if called := want.Called[name]; called != "" && list.names == &want.Factor {
+				part = "the " + called
+			}
+			mine, err := give(name, part, list.to(name))
 			if err != nil {
 				return want, err
 			}
@@ -226,11 +233,19 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 
 // absentColumn refuses a column that no file has.
 func absentColumn(files, name, part string, among []string) error {
-	advice := "the columns are " + strings.Join(firstFew(among), ", ")
+	advice := "the columns are " + strings.Join(firstFew(distinct(among)), ", ")
 	if near, ok := plan.Nearest(name, among); ok {
 		advice = "did you mean " + quoted(near) + "?"
 	}
 	return refuse(advice, "%s: there is no column %q for %s", files, name, part)
+}
+
+// distinct leaves out names that several files have.
+func distinct(names []string) (list []string) {
+	for _, name := range names {
+		list = add(list, name)
+	}
+	return list
 }
 
 // join gives the rows of a table what they take from the other files, which are read once.
@@ -271,13 +286,10 @@ func (d *side) readOnce(ctx context.Context) (err error) {
 
 // unseen are the keys of the places that are without a row because nobody looked there.
 func (j *joins) unseen(report observe.JoinReport) []string {
-	if j.others {
+	if j.others || j.absent != observe.AbsentMissing {
 		return nil
 	}
-	if j.absent == observe.AbsentMissing {
-		return report.Absent
-	}
-	return report.LeftOut
+	return report.Absent
 }
 
 // describeJoins says what became of the keys in each of the files.

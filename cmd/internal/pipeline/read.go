@@ -256,9 +256,30 @@ func (r *run) request() (observe.Request, error) {
 	for _, key := range r.keys() {
 		want.Keep = add(want.Keep, key)
 	}
+	want.Called = called(s)
 	var err error
 	want.Axes, err = Axes(s)
 	return want, err
+}
+
+// called says what columns are in messages.
+func called(s plan.Settings) map[string]string {
+	names := map[string]string{}
+	for _, one := range []struct {
+		amount *plan.Amount
+		name   string
+	}{{s.Width, "width"}, {s.Detection, "share detected"}} {
+		if one.amount != nil && one.amount.Column != "" {
+			names[one.amount.Column] = one.name
+		}
+	}
+	if s.SumBy != nil {
+		names[*s.SumBy] = "key to sum by"
+	}
+	if s.Key != nil {
+		names[s.Key.Column] = "key"
+	}
+	return names
 }
 
 // keys are the columns that rows are told apart by.
@@ -420,7 +441,7 @@ func CheckColumns(s plan.Settings, p observe.Part) error {
 		return err
 	}
 	if s.Places != nil || len(s.Join) > 0 { // which file has a column is found out when the region is read
-		want = observe.Request{Response: want.Response, Keep: want.Keep, Format: want.Format, NoPlaces: true, Kind: observe.Measure}
+		want = observe.Request{Response: want.Response, Keep: want.Keep, Called: want.Called, Format: want.Format, NoPlaces: true, Kind: observe.Measure}
 	}
 	return p.Check(want)
 }
