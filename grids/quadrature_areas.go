@@ -135,13 +135,25 @@ func (g *cut) parts(cell float64) ([]portion, error) {
 			return nil, errFine
 		}
 	}
-	met := g.met
-	slices.SortStableFunc(met, func(a, b portion) int {
-		return cmp.Or(cmp.Compare(a.row, b.row), cmp.Compare(b.column, a.column))
-	})
 	// Twice what is dropped at the end, so that the area scale does not drop more.
 	least := 2 * leastShare * g.ground / (g.w * g.h)
 	var found []portion
+	err := sweep(g.met, least, func(p portion) error {
+		if len(found) > 4*mostPoints {
+			return errFine
+		}
+		found = append(found, p)
+		return nil
+	})
+	return found, err
+}
+
+// sweep calls emit with what of an area lies in each cell, by row and from east to west, given what its outline does in
+// the cells that it passes, which are put in order. Portions of least and below are left out.
+func sweep(met []portion, least float64, emit func(portion) error) error {
+	slices.SortStableFunc(met, func(a, b portion) int {
+		return cmp.Or(cmp.Compare(a.row, b.row), cmp.Compare(b.column, a.column))
+	})
 	var east portion // all that the outline does to the east, in this row
 	for i := 0; i < len(met); {
 		if i == 0 || met[i].row != east.row {
@@ -149,21 +161,22 @@ func (g *cut) parts(cell float64) ([]portion, error) {
 		}
 		// Cells that no outline passes lie wholly to one side of it.
 		for ; east.column > met[i].column && east.rise > least; east.column-- {
-			if len(found) > 4*mostPoints {
-				return nil, errFine
+			if err := emit(portion{row: east.row, column: east.column, area: east.rise, mx: east.rise / 2, my: east.mrise}); err != nil {
+				return err
 			}
-			found = append(found, portion{row: east.row, column: east.column, area: east.rise, mx: east.rise / 2, my: east.mrise})
 		}
 		here := portion{row: met[i].row, column: met[i].column, area: east.rise, mx: east.rise / 2, my: east.mrise}
 		for ; i < len(met) && met[i].row == here.row && met[i].column == here.column; i++ {
 			here.take(met[i])
 		}
 		if here.area > least {
-			found = append(found, here)
+			if err := emit(here); err != nil {
+				return err
+			}
 		}
 		east.rise, east.mrise, east.column = east.rise+here.rise, east.mrise+here.mrise, here.column-1
 	}
-	return found, nil
+	return nil
 }
 
 // take adds what another piece of the outline does in the same cell.

@@ -103,6 +103,24 @@ func (r *run) hold(h plan.Hold) error {
 	return nil
 }
 
+// heldAt repeats the values that covariates are held at for n places.
+func heldAt(held []spatial.Covariate, n int) []spatial.Covariate {
+	var list []spatial.Covariate
+	for _, c := range held {
+		if c.Number != nil {
+			c.Number = repeat(c.Number[0], n)
+		} else {
+			code := c.Code[0]
+			c.Code = make([]int32, n)
+			for i := range c.Code {
+				c.Code[i] = code
+			}
+		}
+		list = append(list, c)
+	}
+	return list
+}
+
 func heldNumber(c spatial.Covariate, h plan.Hold) (float64, error) {
 	if h.Value == plan.AtMean {
 		mean := 0.0

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 
+	"drumlin/grids"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -22,14 +23,9 @@ func (r *run) addUpRegion(ctx context.Context) error {
 	if !r.target.own() {
 		z := &zoneResults{unit: plan.SquareMetres}
 		r.decideTotals(z)
-		var all spatial.Share
-		ground := 0.0
-		for k, c := range r.target.cells {
-			a := r.target.lattice.CellAreaAt(c) / squareMetres[z.unit]
-			ground += a
-			all.Index, all.Weight = append(all.Index, int32(k)), append(all.Weight, a)
-		}
-		sums, err := r.surface.Sums(ctx, r.target.places, r.target.covariates, []spatial.Share{all}, 0, *r.settings.Seed)
+		cells := r.summed()
+		all, ground := r.wholeMap(cells, squareMetres[z.unit])
+		sums, err := r.surface.Sums(ctx, cells.places, cells.covariates, []spatial.Share{all}, 0, *r.settings.Seed)
 		if err != nil {
 			return err
 		}
@@ -45,6 +41,25 @@ func (r *run) addUpRegion(ctx context.Context) error {
 	}
 	r.sums = g
 	return nil
+}
+
+// wholeMap is the study area: what of each cell lies in its polygons, once where they overlap, and the whole of every cell
+// of the map where there are none; with its area, both in units of so many square metres.
+func (r *run) wholeMap(cells summable, unit float64) (all spatial.Share, ground float64) {
+	l := r.target.lattice
+	list, area := r.target.cells, []float64(nil)
+	if r.area.within != nil {
+		list, area = grids.SharesIn(l, r.area.within)
+	}
+	for k, c := range list {
+		a := l.CellAreaAt(c)
+		if area != nil {
+			a = math.Min(a, area[k])
+		}
+		ground += a / unit
+		all.Index, all.Weight = append(all.Index, cells.of[c]), append(all.Weight, a/unit)
+	}
+	return all, ground
 }
 
 // limitsFrom returns the limits of a mean or a sum of means from its standard error: log-normal for a log link (Burnham et al. 1987,

@@ -83,26 +83,24 @@ func (r *run) decideTotals(z *zoneResults) {
 	}
 }
 
-// sumZones fills the columns. A zone's total is the sum of its cells' estimates times their areas, so that zones without
-// common cells add up exactly.
+// sumZones fills the columns. A zone's total is the sum of its cells' estimates, each times the area that the cell and the
+// zone have in common, so that zones that share no ground add up exactly.
 func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 	l := r.target.lattice
-	at := make([]int32, l.Cells()) // cell to place
-	for k, c := range r.target.cells {
-		at[c] = int32(k)
-	}
+	sums := r.summed()
 	var sets []spatial.Share
 	for _, zone := range z.zones {
-		cells := grids.CellsIn(l, zone)
 		var set spatial.Share
 		ground := 0.0
-		for _, c := range cells {
-			a := l.CellAreaAt(c)
-			ground += a
-			set.Index, set.Weight = append(set.Index, at[c]), append(set.Weight, a/squareMetres[z.unit])
+		cells, area := grids.SharesIn(l, zone.Shape)
+		for k, c := range cells {
+			if place, mapped := sums.of[c]; mapped {
+				ground += area[k]
+				set.Index, set.Weight = append(set.Index, place), append(set.Weight, area[k]/squareMetres[z.unit])
+			}
 		}
 		sets = append(sets, set)
-		z.cells = append(z.cells, int64(len(cells)))
+		z.cells = append(z.cells, int64(len(set.Index)))
 		z.area = append(z.area, ground/squareMetres[z.unit])
 		z.covered = append(z.covered, math.Min(1, ground/grids.AreaOf(zone, l.CRS)))
 	}
@@ -110,14 +108,45 @@ func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 		return refuse("check that the zones are in the coordinates of the observations or in longitude and latitude, ask for smaller cells, or widen the map with --within",
 			"%s: no cell of the map lies in any of the zones", z.source)
 	}
-	sums, err := r.surface.Sums(ctx, r.target.places, r.target.covariates, sets, zoneDraws, *r.settings.Seed)
+	list, err := r.surface.Sums(ctx, sums.places, sums.covariates, sets, zoneDraws, *r.settings.Seed)
 	if err != nil {
 		return err
 	}
-	for k, sum := range sums {
+	for k, sum := range list {
 		z.add(r, k, sum)
 	}
 	return nil
+}
+
+// summable are the cells that are added up: those of the map and, where polygons bound the study area, those beside it
+// that reach into it, so that sums are right to the edge.
+type summable struct {
+	places     spatial.Places
+	covariates []spatial.Covariate
+	of         map[int]int32 // place of each cell
+}
+
+// summed lists the cells that are added up.
+func (r *run) summed() summable {
+	t := r.target
+	s := summable{places: t.places, covariates: t.covariates, of: make(map[int]int32, len(t.cells))}
+	for k, c := range t.cells {
+		s.of[c] = int32(k)
+	}
+	if r.area.within == nil {
+		return s
+	}
+	s.places = spatial.Places{X: slices.Clone(t.places.X), Y: slices.Clone(t.places.Y)}
+	cells, _ := grids.SharesIn(t.lattice, r.area.within)
+	for _, c := range cells {
+		if _, mapped := s.of[c]; !mapped {
+			s.of[c] = int32(s.places.Len())
+			x, y := t.lattice.Centre(c)
+			s.places.X, s.places.Y = append(s.places.X, x), append(s.places.Y, y)
+		}
+	}
+	s.covariates = heldAt(t.covariates, s.places.Len())
+	return s
 }
 
 // add states one zone's sum.

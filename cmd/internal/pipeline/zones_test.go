@@ -219,3 +219,32 @@ func TestZonesSayTheirCoordinates(t *testing.T) {
 		}
 	}
 }
+
+// TestTotalsAreRightToTheEdge: with one level everywhere a total is that level times the polygon's own area, whatever its
+// shape and however coarse the cells; parts that share no ground add up to the whole.
+func TestTotalsAreRightToTheEdge(t *testing.T) {
+	const triangle = `[[103.7,88.1],[871.3,142.9],[402.2,735.4],[103.7,88.1]]`
+	// cut from the first vertex to the middle of the opposite side
+	const south, north = `[[103.7,88.1],[871.3,142.9],[636.75,439.15],[103.7,88.1]]`, `[[103.7,88.1],[636.75,439.15],[402.2,735.4],[103.7,88.1]]`
+	polygon := func(name, ring string) string {
+		return fmt.Sprintf(`{"type":"Feature","properties":{"name":%q},"geometry":{"type":"Polygon","coordinates":[%s]}}`, name, ring)
+	}
+	zones := `{"type":"FeatureCollection","features":[` + polygon("all", triangle) + "," + polygon("south", south) + "," + polygon("north", north) + "]}"
+	within := write(t, "within.geojson", polygon("ground", triangle))
+	// half of |(b - a) x (c - a)|, in m2
+	area := ((871.3-103.7)*(735.4-88.1) - (402.2-103.7)*(142.9-88.1)) / 2
+	for _, unit := range []struct {
+		name   string
+		metres float64
+	}{{"ha", 1e4}, {"km2", 1e6}} {
+		table := strings.Replace(plain.table(3), "plot_ha", "plot", 1)
+		zoned, cells, _ := zoneTable(t, write(t, "obs.csv", table), zones, "response=n", "area=plot", "area-unit="+unit.name,
+			"surface=none", "within="+within, "cells-across=13", "distribution=poisson")
+		level := cells.numbers("estimate")[0]
+		total := zoned.numbers("total")
+		near(t, unit.name+": total", total[0], level*area/unit.metres, 1e-9)
+		near(t, unit.name+": halves", total[1]+total[2], total[0], 1e-10)
+		near(t, unit.name+": area", zoned.numbers("area")[0], area/unit.metres, 1e-9)
+		near(t, unit.name+": covered", zoned.numbers("share_covered")[0], 1, 1e-9)
+	}
+}
