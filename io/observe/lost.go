@@ -3,6 +3,7 @@ package observe
 import (
 	"cmp"
 	"fmt"
+	"iter"
 	"slices"
 	"strconv"
 	"strings"
@@ -95,12 +96,14 @@ func (t *Table) checkAside(rows []Aside, strict bool, advice string) error {
 	if len(lost) <= all/2 {
 		return nil
 	}
-	return t.mostlyAside(lost, all, advice)
+	e, _ := mostlyAside(t.Source, slices.Values(lost), len(lost), all)
+	e.Advice = advice
+	return e
 }
 
-// mostlyAside says why so many rows are unusable: up to three reasons, and the first row as an example.
-func (t *Table) mostlyAside(lost []Aside, all int, advice string) error {
-	counts := (&Table{Aside: lost}).CountAside()
+// mostlyAside says why n of all rows are unusable: up to three reasons, and the first row as an example, which it returns.
+func mostlyAside(source string, asides iter.Seq[Aside], n, all int) (*Error, Aside) {
+	counts := countAside(asides)
 	var reasons []string
 	for i, c := range counts {
 		if i == 3 {
@@ -109,11 +112,16 @@ func (t *Table) mostlyAside(lost []Aside, all int, advice string) error {
 		}
 		reasons = append(reasons, fmt.Sprintf("column %q, %s (%d)", c.Column, c.Reason, c.Rows))
 	}
-	i := slices.IndexFunc(lost, func(a Aside) bool { return a.Code == counts[0].Code && a.Column == counts[0].Column })
-	a := lost[i]
-	return &Error{File: t.Source, Value: a.Value, Advice: advice,
+	var first Aside
+	for a := range asides {
+		if a.Code == counts[0].Code && a.Column == counts[0].Column && a.commonReason() == counts[0].Reason {
+			first = a
+			break
+		}
+	}
+	return &Error{File: source, Value: first.Value,
 		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; for example %s, where %s",
-			len(lost), all, strings.Join(reasons, "; "), rowWord(a.Row, a.Line), a.sentence())}
+			n, all, strings.Join(reasons, "; "), rowWord(first.Row, first.Line), first.sentence())}, first
 }
 
 // rowWord names a row within a sentence, as Error does in front of one.

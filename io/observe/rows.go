@@ -330,32 +330,11 @@ func (a Aside) sentence() string {
 	return fmt.Sprintf("%s: %q", a.Reason, a.Value)
 }
 
-// mostlyAside says why so many rows are unusable: up to three reasons, and the first row as an example.
+// mostlyAside says why so many rows are unusable.
 func (r *rows) mostlyAside() error {
-	counts := countAside(r.asides.all())
-	var reasons []string
-	for i, c := range counts {
-		if i == 3 {
-			reasons = append(reasons, fmt.Sprintf("%d more reasons", len(counts)-i))
-			break
-		}
-		reasons = append(reasons, fmt.Sprintf("column %q, %s (%d)", c.Column, c.Reason, c.Rows))
-	}
-	a := r.firstAside(counts[0].Code, counts[0].Column)
-	return &Error{File: r.header.source, Value: a.Value,
-		What: fmt.Sprintf("%d of %d rows cannot be used, more than half: %s; for example row %d (line %d), where %s",
-			r.asides.len(), r.table.Rows, strings.Join(reasons, "; "), a.Row, a.Line, a.sentence()),
-		Advice: r.adviceFor(a)}
-}
-
-// firstAside returns the first row that was set aside for a reason.
-func (r *rows) firstAside(code, column string) Aside {
-	for a := range r.asides.all() {
-		if a.Code == code && a.Column == column {
-			return a
-		}
-	}
-	return Aside{}
+	e, a := mostlyAside(r.header.source, r.asides.all(), r.asides.len(), r.table.Rows)
+	e.Advice = r.adviceFor(a)
+	return e
 }
 
 const adviceBelow = "say with --below-limit half or limit what stands for values below a detection limit"

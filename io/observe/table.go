@@ -96,16 +96,16 @@ func (t *Table) XY() (x, y []float64) {
 func (t *Table) CountAside() []AsideCount { return countAside(slices.Values(t.Aside)) }
 
 func countAside(all iter.Seq[Aside]) []AsideCount {
-	type key struct{ code, column string }
+	type key struct{ code, column, reason string }
 	at := map[key]int{}
 	var counts []AsideCount
 	for a := range all {
-		k := key{a.Code, a.Column}
+		k := key{a.Code, a.Column, a.commonReason()}
 		i, seen := at[k]
 		if !seen {
 			i = len(counts)
 			at[k] = i
-			counts = append(counts, AsideCount{Code: a.Code, Column: a.Column, Reason: a.commonReason()})
+			counts = append(counts, AsideCount{Code: a.Code, Column: a.Column, Reason: k.reason})
 		}
 		counts[i].Rows++
 	}

@@ -73,7 +73,7 @@ type Settings struct {
 	Reference  *Reference
 	Title      *string
 
-	Write   []string // CSV, GeoJSON, Pictures, Saved
+	Write   []string // CSV, GeoJSON, TIF, Pictures, Saved
 	Strict  *bool
 	Seed    *uint64
 	Workers *int
@@ -101,7 +101,7 @@ func Defaults() Settings {
 		CellsAcross:           new(100),
 		Per:                   new(1.0),
 		Confidence:            new(0.95),
-		Write:                 []string{CSV, GeoJSON, Pictures, Saved},
+		Write:                 []string{CSV, GeoJSON, TIF, Pictures, Saved},
 		Strict:                new(false),
 		Seed:                  new(uint64(1)),
 		Workers:               new(runtime.GOMAXPROCS(0)),

@@ -57,6 +57,7 @@ const (
 
 	CSV      = "csv"
 	GeoJSON  = "geojson"
+	TIF      = "tif"
 	Pictures = "pictures"
 	Saved    = "saved"
 

@@ -226,8 +226,8 @@ var words = []Word{
 		Help: "the title of the maps"},
 		func(s *Settings) **string { return &s.Title }, parseText),
 	choices(Word{Name: "write", Group: groupReporting, Arg: "LIST",
-		Help: "what to write beside summary.json, separated by commas: csv, geojson, pictures, saved"},
-		func(s *Settings) *[]string { return &s.Write }, []string{CSV, GeoJSON, Pictures, Saved}),
+		Help: "what to write beside summary.json, separated by commas: csv, geojson, tif, pictures, saved"},
+		func(s *Settings) *[]string { return &s.Write }, []string{CSV, GeoJSON, TIF, Pictures, Saved}),
 
 	one(Word{Name: "seed", Group: groupRun, Arg: "N",
 		Help: "where the random draws start; the same seed gives the same numbers"},

@@ -120,7 +120,7 @@ func TestChoicesAreNamed(t *testing.T) {
 		"max-knots":              {"auto"},
 		"surface":                {"thin-plate", "none"},
 		"smoothness":             {"reml", "gcv"},
-		"write":                  {"csv", "geojson", "pictures", "saved"},
+		"write":                  {"csv", "geojson", "tif", "pictures", "saved"},
 		"hold":                   {"d=mean", "d=commonest"},
 		"reference":              {"overall"},
 	} {
@@ -249,7 +249,7 @@ func TestValuesRefused(t *testing.T) {
 		{"reference", "0", `reference: "0" is neither overall nor a number above 0`, ""},
 		{"distribution", "guassian", `distribution: "guassian" is not one of gaussian, gamma, tweedie, poisson, negative-binomial, binomial, beta-binomial`, "did you mean gaussian?"},
 		{"link", "", `link: is not one of identity, log, logit, complementary-log-log`, ""},
-		{"write", "csv,png", `write: "png" is not one of csv, geojson, pictures, saved`, ""},
+		{"write", "csv,png", `write: "png" is not one of csv, geojson, tif, pictures, saved`, ""},
 		{"hold", "depth", `hold: "depth" is not of the form NAME=VALUE`, "for example depth=3.5, depth=mean or soil=commonest"},
 		{"hold", "=3", `hold: "=3" is not of the form NAME=VALUE`, "for example depth=3.5, depth=mean or soil=commonest"},
 		{"also", "surfase=none", `also: "surfase" is no word in which a model can differ`, "did you mean surface?"},

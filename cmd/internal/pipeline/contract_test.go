@@ -11,6 +11,8 @@ import (
 	"strings"
 	"testing"
 
+	"drumlin/io/geotiff"
+
 	"github.com/google/go-cmp/cmp"
 )
 
@@ -337,6 +339,7 @@ func TestWriteChooses(t *testing.T) {
 	for list, want := range map[string][]string{
 		"csv":              {"residuals.csv", "summary.json", "surface.csv", "zones.csv"},
 		"saved":            {"saved.surface", "summary.json"},
+		"tif":              {"summary.json", "surface.tif"},
 		"geojson":          {"summary.json", "surface.geojson", "zones.geojson"},
 		"pictures":         {"chance.png", "map.png", "summary.json", "uncertainty.png"},
 		"saved,csv":        {"residuals.csv", "saved.surface", "summary.json", "surface.csv", "zones.csv"},
@@ -391,6 +394,51 @@ func TestUnitSquareAsWellAsKilometres(t *testing.T) {
 			// lambda is in metres: it goes with the square of the length (design.md, section 4)
 			near(t, "lambda", readSummary(t, b).number(t, "fit", "lambda", "surface", "value"),
 				scale*scale*readSummary(t, a).number(t, "fit", "lambda", "surface", "value"), 1e-4)
+		}
+	}
+}
+
+// TestSurfaceRaster: surface.tif has the figures of surface.csv at the same places, and nothing elsewhere.
+func TestSurfaceRaster(t *testing.T) {
+	f := plain
+	f.xName, f.yName, f.scale, f.x0, f.y0 = "easting", "northing", 1, 500000, 5000000
+	dir := mapped(t, write(t, "obs.csv", f.table(2)), "response=n", "area=plot_ha", "threshold=4", "crs=EPSG:32633", "cells-across=37", "write=csv,tif", "max-knots=20")
+	file, err := os.Open(filepath.Join(dir, "surface.tif"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer file.Close()
+	info, err := file.Stat()
+	if err != nil {
+		t.Fatal(err)
+	}
+	r, err := geotiff.Open(file, info.Size(), "surface.tif")
+	if err != nil {
+		t.Fatal(err)
+	}
+	s := readSheet(t, filepath.Join(dir, "surface.csv"))
+	x, y := s.numbers("x"), s.numbers("y")
+	if r.EPSG != 32633 || len(r.Bands) != 7 {
+		t.Errorf("EPSG:%d, bands %+v", r.EPSG, r.Bands)
+	}
+	for b, band := range r.Bands {
+		want := s.numbers(band.Name)
+		all := make([]float64, r.Width*r.Height)
+		if err := r.Window(all, b, 0, 0, r.Width, r.Height); err != nil {
+			t.Fatal(err)
+		}
+		filled := 0
+		for _, v := range all {
+			if !math.IsNaN(v) {
+				filled++
+			}
+		}
+		if filled != len(want) {
+			t.Errorf("%s: %d cells have values, want %d", band.Name, filled, len(want))
+		}
+		for k := range want {
+			i, j := int((x[k]-r.X0)/r.CellX), int((r.Y0-y[k])/r.CellY)
+			near(t, band.Name, all[j*r.Width+i], want[k], 1e-6)
 		}
 	}
 }

@@ -160,75 +160,75 @@ func (j *joins) shareOut(want observe.Request, own source, have []string, key pl
 			want.X, want.Y, want.Geometry, want.NoPlaces = "", "", "", true
 		}
 	}
-	give := func(name, part string, to func(q *observe.Request)) (mine bool, err error) {
-		if slices.Contains(have, name) {
-			return true, nil
-		}
-		names := []string{own.name}
-		all := slices.Clone(have)
-		for k := range j.sides {
-			if d := &j.sides[k]; slices.Contains(d.columns, name) {
-				to(&d.want)
-				return false, nil
-			}
-			names, all = append(names, j.sides[k].name), append(all, j.sides[k].columns...)
-		}
-		return false, absentColumn(strings.Join(names, ", "), name, part, all)
-	}
-	factor := func(name, called string) func(q *observe.Request) {
-		return func(q *observe.Request) {
-			q.Factor = append(q.Factor, name)
-			q.Called[name] = called
-		}
-	}
-	for _, one := range []struct {
-		name *string
-		part string
-	}{{&want.Trials, "number of trials"}, {&want.Denominator, "denominator"}, {&want.Weight, "weight"}} {
-		if *one.name == "" {
-			continue
-		}
-		mine, err := give(*one.name, "the "+one.part, factor(*one.name, one.part))
-		if err != nil {
-			return want, err
-		}
-		if !mine {
-			*one.name = ""
-		}
-	}
+	s := sharing{joins: j, own: own.name, have: have}
+	s.one(&want.Trials, "number of trials")
+	s.one(&want.Denominator, "denominator")
+	s.one(&want.Weight, "weight")
+	s.list(&want.Factor, func(name string) string { return want.Called[name] }, func(d *side, name string) { d.askFactor(name, want.Called[name]) })
+	s.list(&want.Linear, func(string) string { return "covariate" }, func(d *side, name string) { d.want.Linear = append(d.want.Linear, name) })
+	s.list(&want.Category, func(string) string { return "category" }, func(d *side, name string) { d.want.Category = append(d.want.Category, name) })
 	if want.Kind == observe.Positives && want.Trials == "" {
 		want.Kind = observe.Count // the join holds it against the trials
 	}
-	for _, list := range []struct {
-		names *[]string
-		part  string
-		to    func(name string) func(q *observe.Request)
-	}{
-		{&want.Factor, "a factor of the denominator", func(name string) func(q *observe.Request) { return factor(name, want.Called[name]) }},
-		{&want.Linear, "a covariate", func(name string) func(q *observe.Request) {
-			return func(q *observe.Request) { q.Linear = append(q.Linear, name) }
-		}},
-		{&want.Category, "a category", func(name string) func(q *observe.Request) {
-			return func(q *observe.Request) { q.Category = append(q.Category, name) }
-		}},
-	} {
-		var own []string
-		for _, name := range *list.names {
-			part := list.part
-			if called := want.Called[name]; called != "" && list.names == &want.Factor {
-				part = "the " + called
-			}
-			mine, err := give(name, part, list.to(name))
-			if err != nil {
-				return want, err
-			}
-			if mine {
-				own = append(own, name)
-			}
-		}
-		*list.names = own
+	return want, s.err
+}
+
+// askFactor has a side give a column of numbers above 0.
+func (d *side) askFactor(name, called string) {
+	d.want.Factor = append(d.want.Factor, name)
+	d.want.Called[name] = called
+}
+
+// sharing deals columns out to the files that have them. The first that no file has is its error.
+type sharing struct {
+	*joins
+	own  string   // name of the observations
+	have []string // their columns
+	err  error
+}
+
+// one leaves a column to the observations or has a side give it, and clears its name then.
+func (s *sharing) one(name *string, called string) {
+	if *name == "" || s.err != nil {
+		return
 	}
-	return want, nil
+	if d := s.sideOf(*name, called); d != nil {
+		d.askFactor(*name, called)
+		*name = ""
+	}
+}
+
+// list does so for several columns, each of which is called something in messages.
+func (s *sharing) list(names *[]string, called func(name string) string, ask func(d *side, name string)) {
+	var own []string
+	for _, name := range *names {
+		if s.err != nil {
+			return
+		}
+		if d := s.sideOf(name, called(name)); d != nil {
+			ask(d, name)
+		} else {
+			own = append(own, name)
+		}
+	}
+	*names = own
+}
+
+// sideOf finds who has a column: nil for the observations.
+func (s *sharing) sideOf(name, called string) *side {
+	if slices.Contains(s.have, name) {
+		return nil
+	}
+	files, all := []string{s.own}, slices.Clone(s.have)
+	for k := range s.sides {
+		d := &s.sides[k]
+		if slices.Contains(d.columns, name) {
+			return d
+		}
+		files, all = append(files, d.name), append(all, d.columns...)
+	}
+	s.err = absentColumn(strings.Join(files, ", "), name, "the "+called, all)
+	return nil
 }
 
 // absentColumn refuses a column that no file has.

@@ -30,7 +30,7 @@ type artefact struct {
 
 // write fills the folder; summary.json, which lists the others, comes last.
 func (r *run) write(ctx context.Context, folder string) error {
-	list := r.artefacts()
+	list := r.artefacts(ctx)
 	for k, a := range list {
 		if err := ctx.Err(); err != nil {
 			return err
@@ -53,7 +53,7 @@ func (r *run) write(ctx context.Context, folder string) error {
 }
 
 // artefacts lists what was asked for.
-func (r *run) artefacts() []artefact {
+func (r *run) artefacts(ctx context.Context) []artefact {
 	var list []artefact
 	if r.wants(plan.CSV) {
 		list = append(list,
@@ -83,6 +83,9 @@ func (r *run) artefacts() []artefact {
 		if r.zones != nil {
 			list = append(list, artefact{"zones.geojson", true, r.writeZoneShapes})
 		}
+	}
+	if r.wants(plan.TIF) && !r.target.own() {
+		list = append(list, artefact{"surface.tif", true, func(w io.Writer) error { return r.writeRaster(ctx, w) }})
 	}
 	if r.wants(plan.Saved) {
 		list = append(list, artefact{"saved.surface", true, func(w io.Writer) error { return archive.Write(w, r.saved()) }})
