@@ -7,7 +7,7 @@ package crs
 
 // System is a plane coordinate system. Implementations are small values, safe for concurrent use.
 type System interface {
-	// Code names the system: "local", "EPSG:32633", or a spelled-out azimuthal equal-area plane.
+	// Code names the system: "local", "EPSG:32633", or a plane in words; Parse takes it back.
 	Code() string
 	// Geographic reports whether the plane is tied to the globe; Forward and Inverse of one that is not return NaN.
 	Geographic() bool

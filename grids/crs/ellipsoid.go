@@ -9,13 +9,11 @@ type ellipsoid struct {
 	qp    float64 // q at the pole; the authalic radius is a sqrt(qp/2)
 }
 
-var wgs84 = newEllipsoid(6378137, 298.257223563)
-
-func newEllipsoid(a, inverseFlattening float64) *ellipsoid {
+func newEllipsoid(a, inverseFlattening float64) ellipsoid {
 	f := 1 / inverseFlattening
 	e2 := f * (2 - f)
 	e := math.Sqrt(e2)
-	return &ellipsoid{a: a, f: f, e: e, e2: e2, qp: 1 + (1-e2)*math.Atanh(e)/e}
+	return ellipsoid{a: a, f: f, e: e, e2: e2, qp: 1 + (1-e2)*math.Atanh(e)/e}
 }
 
 // authalic turns the sine and cosine of a geographic latitude into those of the authalic latitude (EPSG Guidance Note
@@ -50,6 +48,18 @@ func (el *ellipsoid) fromAuthalic(sinβ, cosβ float64) float64 {
 	return math.Max(-math.Pi/2, math.Min(math.Pi/2, φ))
 }
 
+// parallel is the radius of the circle of latitude, in units of the equatorial radius.
+func (el *ellipsoid) parallel(sinφ, cosφ float64) float64 {
+	return cosφ / math.Sqrt(1-el.e2*sinφ*sinφ)
+}
+
+// curvature gives the radii of curvature in metres: along the meridian and across it.
+func (el *ellipsoid) curvature(sinφ float64) (meridian, across float64) {
+	w := 1 - el.e2*sinφ*sinφ
+	across = el.a / math.Sqrt(w)
+	return across * (1 - el.e2) / w, across
+}
+
 // sincosDegrees is exact at multiples of 90 degrees and keeps small angles from them.
 func sincosDegrees(d float64) (sin, cos float64) {
 	quarter := math.Round(d / 90)
@@ -77,3 +87,8 @@ func wrap(lon float64) float64 {
 }
 
 func degrees(radians float64) float64 { return radians * (180 / math.Pi) }
+
+func radians(degrees float64) float64 { return degrees * (math.Pi / 180) }
+
+// nowhere is what Forward and Inverse return where there is nothing.
+func nowhere() (float64, float64) { return math.NaN(), math.NaN() }

@@ -9,27 +9,32 @@ import (
 // series is good to 0.2 mm there; at 80 degrees it would be 100 m off on the equator.
 const mercatorReach = 65
 
-// mercator is the transverse Mercator projection by Krueger's series to the sixth order in the third flattening, in the
+// transverseMercator is the transverse Mercator projection by Krueger's series to the sixth order in the third flattening, in the
 // form of C. F. F. Karney (2011), Transverse Mercator with an accuracy of a few nanometers, J. Geodesy 85:475-485
 // (equations 7 to 36; EPSG Guidance Note 7-2, method 9807). Coefficients of the series are written out from the paper.
-type mercator struct {
-	code   string
-	series *krueger
-	lon0   float64 // central meridian, degrees
-	k0     float64 // scale on it
-	fe, fn float64 // easting and northing where it crosses the equator
+type transverseMercator struct {
+	series krueger
+	k0     float64 // scale on the central meridian
+	south  float64 // metres on it from the equator to the origin
 }
 
-var _ System = mercator{}
+var _ projection = transverseMercator{}
 
 // krueger holds the series of one ellipsoid.
 type krueger struct {
-	el          *ellipsoid
+	el          ellipsoid
 	radius      float64    // of the circle as long as the meridian
 	alpha, beta [6]float64 // to the plane and back, multiples 2, 4, ... 12 of the angle
 }
 
-var wgs84Krueger = newKrueger(wgs84)
+// newTransverseMercator takes the latitude of the origin in degrees and the scale on the central meridian.
+func newTransverseMercator(el ellipsoid, lat0, scale float64) transverseMercator {
+	m := transverseMercator{series: newKrueger(el), k0: scale}
+	if lat0 != 0 {
+		_, m.south = m.forward(0, lat0)
+	}
+	return m
+}
 
 // NewUTM returns a zone of the universal transverse Mercator system on WGS 84, EPSG:32601 to EPSG:32660 in the north
 // and EPSG:32701 to EPSG:32760 in the south. The plane may be used outside its zone: coordinates are good to a
@@ -39,23 +44,23 @@ func NewUTM(zone int, south bool) (System, error) {
 	if zone < 1 || zone > 60 {
 		return nil, fmt.Errorf("UTM zone %d does not exist: zones are 1 to 60", zone)
 	}
-	m := mercator{
-		code:   fmt.Sprintf("EPSG:%d", 32600+zone),
-		series: wgs84Krueger,
-		lon0:   float64(6*zone - 183),
-		k0:     0.9996,
-		fe:     500000,
-	}
+	code, north := 32600+zone, 0.0
 	if south {
-		m.code, m.fn = fmt.Sprintf("EPSG:%d", 32700+zone), 10000000
+		code, north = 32700+zone, 10000000
 	}
-	return m, nil
+	return plane{
+		code:       fmt.Sprintf("EPSG:%d", code),
+		projection: newTransverseMercator(wgs84, 0, 0.9996),
+		lon0:       float64(6*zone - 183),
+		east:       500000,
+		north:      north,
+	}, nil
 }
 
-func newKrueger(el *ellipsoid) *krueger {
+func newKrueger(el ellipsoid) krueger {
 	n := el.f / (2 - el.f)
 	n2 := n * n
-	return &krueger{
+	return krueger{
 		el:     el,
 		radius: el.a / (1 + n) * (1 + n2*(1./4+n2*(1./64+n2/256))),
 		alpha: [6]float64{
@@ -89,32 +94,21 @@ func polynomial(n float64, first int, c ...float64) float64 {
 	return sum
 }
 
-func (m mercator) Code() string { return m.code }
-
-func (m mercator) Geographic() bool { return true }
-
-func (m mercator) Forward(lon, lat float64) (x, y float64) {
-	λ := wrap(lon - m.lon0)
-	if !onGlobe(lon, lat) || math.Abs(λ) > mercatorReach {
-		return math.NaN(), math.NaN()
+func (m transverseMercator) forward(λ, φ float64) (x, y float64) {
+	if !(math.Abs(λ) <= mercatorReach) {
+		return nowhere()
 	}
-	ξ, η := m.series.toSphere(λ, lat)
+	ξ, η := m.series.toSphere(λ, φ)
 	dξ, dη := m.series.shift(&m.series.alpha, ξ, η)
 	r := m.k0 * m.series.radius
-	return m.fe + r*(η+dη), m.fn + r*(ξ+dξ)
+	return r * (η + dη), r*(ξ+dξ) - m.south
 }
 
-func (m mercator) Inverse(x, y float64) (lon, lat float64) {
-	λ, φ := m.inverse(x, y)
-	return wrap(m.lon0 + λ), φ
-}
-
-// inverse gives degrees east of the central meridian and latitude.
-func (m mercator) inverse(x, y float64) (λ, φ float64) {
+func (m transverseMercator) inverse(x, y float64) (λ, φ float64) {
 	r := m.k0 * m.series.radius
-	ξ, η := (y-m.fn)/r, (x-m.fe)/r
+	ξ, η := (y+m.south)/r, x/r
 	if !(math.Abs(ξ) < 2 && math.Abs(η) < 4) { // far off the plane; NaN too
-		return math.NaN(), math.NaN()
+		return nowhere()
 	}
 	dξ, dη := m.series.shift(&m.series.beta, ξ, η)
 	ξ, η = ξ-dξ, η-dη
@@ -123,7 +117,7 @@ func (m mercator) inverse(x, y float64) (λ, φ float64) {
 	λ = degrees(math.Atan2(sinhη, cosξ))
 	if math.Abs(λ) > mercatorReach+1e-9 { // the pole and what lies behind it included, but for the pole itself
 		if math.Hypot(sinhη, cosξ) > 1e-13 {
-			return math.NaN(), math.NaN()
+			return nowhere()
 		}
 		λ = 0
 	}
@@ -131,13 +125,13 @@ func (m mercator) inverse(x, y float64) (λ, φ float64) {
 	return λ, degrees(math.Atan(τ))
 }
 
-// AreaScale is the square of the point scale factor (Karney 2011, equations 23 to 25): the projection is conformal.
-func (m mercator) AreaScale(x, y float64) float64 {
+// areaScale is the square of the point scale factor (Karney 2011, equations 23 to 25): the projection is conformal.
+func (m transverseMercator) areaScale(x, y float64) float64 {
 	λ, φ := m.inverse(x, y)
 	if math.IsNaN(φ) {
 		return math.NaN()
 	}
-	el := m.series.el
+	el := &m.series.el
 	ξ, η := m.series.toSphere(λ, φ)
 	p, q := 1.0, 0.0
 	for j, a := range m.series.alpha {
@@ -171,31 +165,4 @@ func (s *krueger) shift(c *[6]float64, ξ, η float64) (dξ, dη float64) {
 		dη += a * cos * math.Sinh(w*η)
 	}
 	return dξ, dη
-}
-
-// conformal is the tangent of the conformal latitude from that of the geographic one.
-func (el *ellipsoid) conformal(τ float64) float64 {
-	h := math.Hypot(1, τ)
-	σ := math.Sinh(el.e * math.Atanh(el.e*τ/h))
-	return τ*math.Hypot(1, σ) - σ*h
-}
-
-// fromConformal is the inverse of conformal, by Newton's iteration (Karney 2011, equations 19 to 21).
-func (el *ellipsoid) fromConformal(τc float64) float64 {
-	τ := τc / (1 - el.e2)
-	for range 8 {
-		at := el.conformal(τ)
-		step := (τc - at) * (1 + (1-el.e2)*τ*τ) / ((1 - el.e2) * math.Hypot(1, τ) * math.Hypot(1, at))
-		τ += step
-		if math.Abs(step) <= 1e-15*math.Abs(τ) {
-			break
-		}
-	}
-	return τ
-}
-
-// tangent of an angle in degrees, finite at the poles.
-func tangent(d float64) float64 {
-	sin, cos := sincosDegrees(d)
-	return sin / math.Max(cos, 1e-17)
 }

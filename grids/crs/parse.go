@@ -7,79 +7,86 @@ import (
 	"strings"
 )
 
-// CodeError is the error of a code that names no plane this package knows.
+// CodeError is the error of a code or a text that names no plane this package knows.
 type CodeError struct {
-	Code   string // as it was given
-	Reason string // what is wrong with it
+	Code   string        // as it was given
+	Reason string        // what is wrong with it
+	hint   func() string // what to do, if there is something more particular than the general advice
 }
 
 // Error quotes the code and gives the reason.
 func (e *CodeError) Error() string { return fmt.Sprintf("coordinate system %q: %s", e.Code, e.Reason) }
 
-// Hint lists the codes that work.
+// Hint says what to do instead.
 func (e *CodeError) Hint() string {
-	if IsGeographic(e.Code) {
+	switch {
+	case IsGeographic(e.Code):
 		return "longitude and latitude need no code: they are laid on an equal-area plane around the data"
+	case e.hint != nil:
+		return e.hint()
 	}
-	return "known are local (metres of your own) and EPSG:32601 to EPSG:32660 and EPSG:32701 to EPSG:32760 " +
-		"(UTM north and south, WGS 84); otherwise give the coordinates as longitude and latitude"
+	return "give local (metres of your own), an EPSG code of those that drumlin inspect --crs-list lists, such as EPSG:32633, or the plane's " +
+		"parameters, as in \"" + exampleWords + "\"; otherwise give the coordinates as longitude and latitude"
 }
 
-// Parse returns the system that code names: "local", "EPSG:326xx" or "EPSG:327xx" for UTM, or the spelled-out "laea
-// lon=8.5 lat=47.25"; case and blanks are forgiven. Whatever the Code method of a System returns, Parse takes, and the
-// result is equal to that System. Any other code is a *CodeError, and so is one that says the coordinates are longitude
-// and latitude (see IsGeographic), because these are not a plane.
+// Parse returns the system that code names: "local", an EPSG code of those in Codes, the spelled-out "laea lon=8.5
+// lat=47.25", or a plane in words:
+//
+//	transverse-mercator; lon0=15; lat0=0; scale=0.9996; east=500000; north=0; ellipsoid=GRS80
+//
+// Such a text begins with the projection; then come, in any order, what it needs: lon0 and, by projection, lat0, scale,
+// parallel, parallel1 and parallel2, azimuth, bearing, axis; east and north, the false origin (0 if left out); ellipsoid,
+// a name or semi-major axis and inverse flattening (WGS84); and shift, the seven numbers dx,dy,dz,rx,ry,rz,ds of a
+// position vector to WGS 84, or three, or frame-shift, those of a coordinate frame (left out: longitude and latitude are
+// those of WGS 84). Angles are in degrees, lengths in metres, turns in seconds of arc, ds in parts per million.
+//
+// Case and blanks are forgiven. Whatever the Code method of a System returns, Parse takes, and the result is equal to
+// that System. Anything else is a *CodeError, and so is a code that says the coordinates are longitude and latitude (see
+// IsGeographic), because these are not a plane.
 func Parse(code string) (System, error) {
 	switch word := squeeze(code); {
 	case word == "local":
 		return Local{}, nil
 	case IsGeographic(code):
-		return nil, &CodeError{code, "longitude and latitude are not a plane"}
+		return nil, &CodeError{Code: code, Reason: "longitude and latitude are not a plane"}
 	case strings.HasPrefix(word, "epsg:"):
 		return parseEPSG(code, strings.TrimPrefix(word, "epsg:"))
 	case strings.HasPrefix(word, "laea"):
 		return parseAzimuthal(code)
 	case word == "":
-		return nil, &CodeError{code, "no code"}
+		return nil, &CodeError{Code: code, Reason: "no code"}
+	case !strings.ContainsAny(code, ";=") && nearestWord(word, methodWords()) == "":
+		return nil, &CodeError{Code: code, Reason: "not known"}
 	}
-	return nil, &CodeError{code, "not known"}
+	p, err := parseParameters(code)
+	if err != nil {
+		return nil, &CodeError{Code: code, Reason: err.Error()}
+	}
+	return p, nil
 }
 
 // IsGeographic reports whether code says that coordinates are longitude and latitude on WGS 84 in degrees: EPSG:4326,
-// OGC:CRS84, "longitude/latitude" or "lon/lat". Case and blanks are forgiven. Order is always longitude first here,
-// whatever an authority says.
+// OGC:CRS84, "longitude/latitude" or "lon/lat", or on a datum that is taken for it, such as EPSG:4258 (ETRS89) and
+// EPSG:4269 (NAD83). Case and blanks are forgiven. Order is always longitude first here, whatever an authority says.
 func IsGeographic(code string) bool {
-	switch squeeze(code) {
-	case "epsg:4326", "ogc:crs84", "longitude/latitude", "lon/lat":
+	word := squeeze(code)
+	switch word {
+	case "ogc:crs84", "longitude/latitude", "lon/lat":
 		return true
 	}
-	return false
+	return isDegrees(word)
 }
 
 func squeeze(code string) string { return strings.ToLower(strings.Join(strings.Fields(code), "")) }
 
-func parseEPSG(code, number string) (System, error) {
-	n, err := strconv.Atoi(number)
-	if err != nil || n < 0 || number[0] == '+' {
-		return nil, &CodeError{code, "an EPSG code is a number"}
-	}
-	switch zone := n % 100; {
-	case n/100 == 326 && zone >= 1 && zone <= 60:
-		return NewUTM(zone, false)
-	case n/100 == 327 && zone >= 1 && zone <= 60:
-		return NewUTM(zone, true)
-	}
-	return nil, &CodeError{code, "not known"}
-}
-
 func parseAzimuthal(code string) (System, error) {
 	word := strings.Fields(strings.ToLower(code))
 	if len(word) != 3 || word[0] != "laea" {
-		return nil, &CodeError{code, "an azimuthal plane is written like laea lon=8.5 lat=47.25"}
+		return nil, &CodeError{Code: code, Reason: "an azimuthal plane is written like laea lon=8.5 lat=47.25"}
 	}
 	lon, lat := degreesAfter("lon=", word[1]), degreesAfter("lat=", word[2])
 	if !onGlobe(lon, lat) {
-		return nil, &CodeError{code, "its centre is not a place on the globe"}
+		return nil, &CodeError{Code: code, Reason: "its centre is not a place on the globe"}
 	}
 	return NewAzimuthalEqualArea(lon, lat)
 }

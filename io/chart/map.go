@@ -43,8 +43,8 @@ type Map struct {
 	Kind Kind
 
 	// Lattice places the cells of Value. Where Value is nil only its CRS is read. A nil CRS is taken as local metres.
-	// The CRS also decides the ticks: a plane of an "EPSG:" code and one not tied to the globe get plane coordinates,
-	// any other one (a plane laid around data in longitude and latitude) gets degrees.
+	// The CRS also decides the ticks: a plane laid around data in longitude and latitude (crs.AzimuthalAround) gets degrees,
+	// any other one plane coordinates.
 	Lattice grids.Lattice
 	// Value is the number in each cell of Lattice. NaN, infinities and magnitudes of 1e300 and over are left blank,
 	// as are cells outside the mask. Nil when the map is made of Dots or of Shapes.

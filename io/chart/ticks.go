@@ -32,9 +32,9 @@ const (
 )
 
 // inDegrees is true for planes laid around data that came as longitude and latitude: there the reader knows degrees, and
-// plane coordinates mean nothing to him. A plane with an EPSG code has a printed grid of its own.
+// plane coordinates mean nothing to him. A plane that was named, by a code or in words, has a grid of its own.
 func inDegrees(s crs.System) bool {
-	return s != nil && s.Geographic() && !strings.HasPrefix(s.Code(), "EPSG:")
+	return s != nil && s.Geographic() && strings.HasPrefix(s.Code(), "laea ")
 }
 
 // ticks returns the ticks of a frame and a sentence that says what their numbers are.
