@@ -145,7 +145,7 @@ func TestTwoAtOnce(t *testing.T) {
 	}
 	names, _ := filepath.Glob(filepath.Join(dir, "maps", "*"))
 	inside, _ := filepath.Glob(filepath.Join(dir, "maps", "out", "*"))
-	if len(names) != 1 || len(inside) != 8 {
+	if len(names) != 1 || len(inside) != 10 {
 		t.Errorf("there are %v with %v", names, inside)
 	}
 }

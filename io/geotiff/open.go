@@ -30,6 +30,10 @@ func Open(r io.ReaderAt, size int64, source string) (*Raster, error) {
 // headBytes are enough to tell what a file is.
 const headBytes = 64
 
+// Recognise reports whether a file that starts with head is a raster by its first bytes, so that Open reads it or says what
+// keeps it from doing so. The first 64 bytes are enough; fewer are taken for the start of the file as well.
+func Recognise(head []byte) bool { return isTIFF(head) || isText(head) }
+
 func (f *file) open() (*Raster, error) {
 	d, overviews, err := f.pictures()
 	if err != nil {

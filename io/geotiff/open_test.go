@@ -352,3 +352,14 @@ func FuzzOpen(f *testing.F) {
 		}
 	})
 }
+
+func TestRecognise(t *testing.T) {
+	for head, want := range map[string]bool{
+		"II*\x00\x08\x00\x00\x00": true, "MM\x00*": true, "II+\x00": true, "MM\x00+": true, "\uFEFF NCOLS 4\n": true, "xllcorner 5": true,
+		"": false, "II": false, "II*": false, "x,y,zinc\n": false, "ncols,nrows\n": false, `{"type": "FeatureCollection"`: false, "\x1f\x8b\x08\x00": false,
+	} {
+		if got := geotiff.Recognise([]byte(head)); got != want {
+			t.Errorf("%q: %v, want %v", head, got, want)
+		}
+	}
+}

@@ -94,7 +94,7 @@ func TestFormsOfWords(t *testing.T) {
 			want = asTruth
 		case "shape", "cell-size", "cells-across", "threshold", "per", "confidence", "seed", "workers":
 			want = asNumber
-		case "max-knots", "smoothness", "reference", "width", "detection", "exposure-cv":
+		case "max-knots", "smoothness", "reference", "width", "detection", "exposure-cv", "isolines-at":
 			want = asNumber | asText
 		case "missing", "join", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
 			want = asList | asText

@@ -4,6 +4,7 @@ import (
 	"maps"
 	"path/filepath"
 	"runtime"
+	"slices"
 )
 
 // Settings are the settings of one run. Every exported field is a pointer or a slice, nil where the word was not
@@ -73,12 +74,14 @@ type Settings struct {
 	Reference  *Reference
 	Title      *string
 
-	Write   []string // CSV, GeoJSON, TIF, Pictures, Saved
-	Strict  *bool
-	Seed    *uint64
-	Workers *int
-	Force   *bool
-	Quiet   *bool
+	Isolines   *string  // Lines or Bands
+	IsolinesAt *Levels  // in the reporting unit
+	Write      []string // CSV, GeoJSON, TIF, Pictures, Saved
+	Strict     *bool
+	Seed       *uint64
+	Workers    *int
+	Force      *bool
+	Quiet      *bool
 
 	// why holds the reason of each value that nobody said, by word. It is never changed in place, so that copies of
 	// the settings do not share it.
@@ -101,6 +104,7 @@ func Defaults() Settings {
 		CellsAcross:           new(100),
 		Per:                   new(1.0),
 		Confidence:            new(0.95),
+		Isolines:              new(Lines),
 		Write:                 []string{CSV, GeoJSON, TIF, Pictures, Saved},
 		Strict:                new(false),
 		Seed:                  new(uint64(1)),
@@ -203,6 +207,8 @@ func (s Settings) moot(name string) bool {
 		d, _ := s.distribution()
 		chosen := !s.Said("distribution") && (d == NegativeBinomial || d == BetaBinomial)
 		return !chosen && !s.ChoosesVariation()
+	case "isolines":
+		return s.At != nil || !slices.Contains(s.Write, GeoJSON)
 	case "per":
 		d, _ := s.distribution()
 		return d == Gaussian

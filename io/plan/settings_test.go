@@ -112,7 +112,7 @@ func TestChoosePanics(t *testing.T) {
 func TestDefaults(t *testing.T) {
 	want := map[string]string{
 		"surface": "thin-plate", "max-knots": "auto", "extra-variation": "auto", "smoothness-uncertainty": "auto", "smoothness": "reml", "cells-across": "100", "per": "1",
-		"confidence": "0.95", "write": "csv,geojson,tif,pictures,saved", "seed": "1",
+		"confidence": "0.95", "isolines": "lines", "write": "csv,geojson,tif,pictures,saved", "seed": "1",
 	}
 	for _, w := range Words() {
 		if got := w.Default(); got != want[w.Name] {

@@ -61,6 +61,9 @@ const (
 	Pictures = "pictures"
 	Saved    = "saved"
 
+	Lines = "lines"
+	Bands = "bands"
+
 	ByREML   = "reml"
 	ByGCV    = "gcv"
 	ByNumber = "number" // of Smoothness.By only; what is said is the number itself
@@ -93,6 +96,17 @@ func (a Amount) plain() any {
 		return a.Number
 	}
 	return a.Column
+}
+
+// Levels are numbers that rise.
+type Levels []float64
+
+func (l Levels) plain() any {
+	parts := make([]string, len(l))
+	for i, v := range l {
+		parts[i] = spoken(v)
+	}
+	return strings.Join(parts, ",")
 }
 
 // Smoothness says how the penalty of the surface is chosen.
@@ -314,6 +328,26 @@ func parseAmount(most float64) func(string) (Amount, error) {
 		}
 		return Amount{Number: v}, err
 	}
+}
+
+// mostLevels bounds the levels of isolines: more would be a grey of their own.
+const mostLevels = 200
+
+func parseLevels(value string) (Levels, error) {
+	var list Levels
+	for part := range strings.SplitSeq(value, ",") {
+		v, err := parseNumber(part)
+		switch {
+		case err != nil:
+			return nil, blame(part, err)
+		case len(list) > 0 && v <= list[len(list)-1]:
+			return nil, advise("does not rise from each number to the next", "")
+		case len(list) == mostLevels:
+			return nil, advise(fmt.Sprintf("has more than %d levels", mostLevels), "")
+		}
+		list = append(list, v)
+	}
+	return list, nil
 }
 
 func parseCurvePer(value string) (CurvePer, error) {

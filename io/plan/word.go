@@ -44,7 +44,7 @@ func formOf[T any]() form {
 		return asTruth
 	case Key:
 		return asText
-	case Knots, Smoothness, Reference, Amount:
+	case Knots, Smoothness, Reference, Amount, Levels:
 		return asNumber | asText
 	}
 	return 0

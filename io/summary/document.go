@@ -74,8 +74,15 @@ type Input struct {
 	Coordinates    string         `json:"coordinates"`      // which columns, and how they were taken
 	Format         string         `json:"format,omitempty"` // how the table is written, where that is not with commas in UTF-8
 	BelowLimit     []BelowLimit   `json:"below_limit,omitempty"`
+	Raster         *Raster        `json:"raster,omitempty"` // where rows are cells
 	Summed         int            `json:"summed,omitempty"` // rows that were added up into another
 	Joined         []Joined       `json:"joined,omitempty"`
+}
+
+// Raster says which cells of a raster are rows: one in Step in both directions of those that have a value.
+type Raster struct {
+	Cells int `json:"cells"`
+	Step  int `json:"step"`
 }
 
 // Joined is a file that rows took their places or columns from.

@@ -166,7 +166,13 @@ func (d Document) dataWords() string {
 	if d.Input.Fitted != 0 {
 		s += fmt.Sprintf(", fitted as %d", d.Input.Fitted)
 	}
-	if d.Input.Format != "" {
+	if r := d.Input.Raster; r != nil {
+		s += fmt.Sprintf(" (a raster of %s with a value", count(r.Cells, "cell"))
+		if r.Step > 1 {
+			s += fmt.Sprintf(", one in %d in both directions taken", r.Step)
+		}
+		s += ")"
+	} else if d.Input.Format != "" {
 		s += " (" + d.Input.Format + ")"
 	}
 	reasons := slices.SortedFunc(maps.Keys(d.Input.SetAside), func(a, b string) int {

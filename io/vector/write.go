@@ -82,18 +82,37 @@ func WritePlaces(w io.Writer, sys crs.System, names []string, shapes []orb.Geome
 		return err
 	}
 	for row, shape := range shapes {
-		if shape != nil && shape.Bound().IsEmpty() {
-			shape = nil
-		}
-		written, err := out.turned(shape)
-		if err != nil {
+		if err := out.shape(row, names[row], shape); err != nil {
 			return fmt.Errorf("place %q: %w", names[row], err)
-		}
-		if err := out.put(row, names[row], written); err != nil {
-			return err
 		}
 	}
 	return out.close()
+}
+
+// WriteShapes writes shapes that have no names, with the columns as their properties. All else is as in WritePlaces.
+func WriteShapes(w io.Writer, sys crs.System, shapes []orb.Geometry, columns []Column) error {
+	out, err := newWriter(w, sys, len(shapes), columns)
+	if err != nil {
+		return err
+	}
+	for row, shape := range shapes {
+		if err := out.shape(row, "", shape); err != nil {
+			return fmt.Errorf("shape %d: %w", row+1, err)
+		}
+	}
+	return out.close()
+}
+
+// shape writes a feature of any kind.
+func (out *writer) shape(row int, name string, shape orb.Geometry) error {
+	if shape != nil && shape.Bound().IsEmpty() {
+		shape = nil
+	}
+	written, err := out.turned(shape)
+	if err != nil {
+		return err
+	}
+	return out.put(row, name, written)
 }
 
 // writer writes a FeatureCollection, one feature a line.

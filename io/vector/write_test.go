@@ -557,3 +557,20 @@ func BenchmarkWriteCells(b *testing.B) {
 		})
 	}
 }
+
+// TestWriteShapes: features without names, lines as lines and polygons wound as RFC 7946 has it.
+func TestWriteShapes(t *testing.T) {
+	var b bytes.Buffer
+	err := WriteShapes(&b, crs.Local{}, []orb.Geometry{
+		orb.MultiLineString{{{0, 0}, {1, 2}}}, orb.MultiPolygon{{{{0, 0}, {0, 1}, {1, 1}, {0, 0}}}},
+	}, []Column{{Name: "level", Value: []float64{1.5, math.NaN()}}, {Name: "unit", Text: []string{"mg", "mg"}}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, want := range []string{`{"level":1.5,"unit":"mg"},"geometry":{"type":"MultiLineString","coordinates":[[[0,0],[1,2]]]}`,
+		`{"level":null,"unit":"mg"},"geometry":{"type":"MultiPolygon","coordinates":[[[[0,0],[1,1],[0,1],[0,0]]]]}`} {
+		if !strings.Contains(b.String(), want) {
+			t.Errorf("%s\nlacks %s", b.String(), want)
+		}
+	}
+}

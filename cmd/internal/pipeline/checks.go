@@ -242,6 +242,9 @@ func (r *run) cautions() []string {
 		list = append(list, "Not for decisions on safety or health without the checks that local rules and licensed practice ask for.")
 	}
 	list = append(list, r.exposureCautions()...)
+	if words := r.obs.thinned.words(); words != "" {
+		list = append(list, words)
+	}
 	for _, b := range r.obs.table.BelowLimit {
 		if stands, ok := standsIn[b.Rule]; ok {
 			list = append(list, fmt.Sprintf("Of %s, %d values are below a detection limit; %s stands for them, which narrows the limits.", b.Column, b.Rows, stands))

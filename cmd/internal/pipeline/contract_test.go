@@ -340,10 +340,10 @@ func TestWriteChooses(t *testing.T) {
 		"csv":              {"residuals.csv", "summary.json", "surface.csv", "zones.csv"},
 		"saved":            {"saved.surface", "summary.json"},
 		"tif":              {"summary.json", "surface.tif"},
-		"geojson":          {"summary.json", "surface.geojson", "zones.geojson"},
+		"geojson":          {"isolines.geojson", "summary.json", "surface.geojson", "zones.geojson"},
 		"pictures":         {"chance.png", "map.png", "summary.json", "uncertainty.png"},
 		"saved,csv":        {"residuals.csv", "saved.surface", "summary.json", "surface.csv", "zones.csv"},
-		"geojson,pictures": {"chance.png", "map.png", "summary.json", "surface.geojson", "uncertainty.png", "zones.geojson"},
+		"geojson,pictures": {"chance.png", "isolines.geojson", "map.png", "summary.json", "surface.geojson", "uncertainty.png", "zones.geojson"},
 	} {
 		dir := mapped(t, obs, "response=zinc", "threshold=30", "zones="+zones, "cells-across=10", "write="+list)
 		entries, err := os.ReadDir(dir)

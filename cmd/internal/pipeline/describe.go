@@ -35,6 +35,9 @@ func (r *run) describe() {
 	d.Candidates = r.describeCandidates()
 	d.Estimates = r.describeEstimates()
 	d.Input.Summed = o.summed
+	if o.thinned.step > 0 {
+		d.Input.Raster = &summary.Raster{Cells: o.thinned.cells, Step: o.thinned.step}
+	}
 	if used := o.own + o.summed - o.joined.Added; used != o.own {
 		d.Input.Used, d.Input.Fitted = used, o.own
 	}

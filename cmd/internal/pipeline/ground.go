@@ -46,6 +46,8 @@ func (o *observations) project(s plan.Settings) error {
 func (o *observations) choosePlane(s plan.Settings) error {
 	whence := fmt.Sprintf("columns %s, %s", o.table.XName, o.table.YName)
 	switch {
+	case o.thinned.step > 0:
+		whence = "centres of cells"
 	case o.table.Features:
 		whence = "coordinates of the features"
 	case o.table.GeometryName != "":

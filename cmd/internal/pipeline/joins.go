@@ -47,6 +47,18 @@ func partSource(p observe.Part) source {
 
 // columnsOf reads the names of a file's columns.
 func columnsOf(ctx context.Context, path string, format observe.Format) ([]string, error) {
+	raster, err := isRaster(path)
+	if err != nil {
+		return nil, err
+	}
+	if raster {
+		r, file, err := openRaster(path)
+		if err != nil {
+			return nil, err
+		}
+		defer file.Close()
+		return rasterColumns(r), nil
+	}
 	f, err := openFile(path)
 	if err != nil {
 		return nil, err

@@ -22,14 +22,15 @@ import (
 
 // observations are the rows that can be used, in the plane.
 type observations struct {
-	table  *observe.Table
-	own    int // the first rows, which are reported; those after them are of neighbouring regions
-	sha256 string
-	system crs.System
-	said   string // how the coordinates were taken, in words
-	data   spatial.Data
-	joined observe.JoinReport
-	summed int // rows that were added up into others
+	table   *observe.Table
+	own     int // the first rows, which are reported; those after them are of neighbouring regions
+	sha256  string
+	system  crs.System
+	said    string // how the coordinates were taken, in words
+	data    spatial.Data
+	joined  observe.JoinReport
+	summed  int      // rows that were added up into others
+	thinned thinning // of a raster
 
 	x, y    []float64 // a place for each row, in the plane: of a line or an area, its middle
 	places  []place   // the places of the rows; nil where every row is a point and none has a key
@@ -93,6 +94,11 @@ func (r *run) read(ctx context.Context) error {
 // readRows reads the region's own rows.
 func (r *run) readRows(ctx context.Context, o *observations, want observe.Request) error {
 	from := fileSource(*r.settings.Observations, want.Format, &o.sha256)
+	if raster, err := r.isRaster(); err != nil {
+		return err
+	} else if raster {
+		from = rasterSource(*r.settings.Observations, &o.sha256, &o.thinned)
+	}
 	if r.region != nil && r.region.Rows != nil {
 		from, o.sha256 = partSource(*r.region.Rows), r.region.Rows.SHA256()
 	}
@@ -102,6 +108,14 @@ func (r *run) readRows(ctx context.Context, o *observations, want observe.Reques
 	}
 	o.table, o.own, o.joined, o.summed = got.table, got.table.Len(), got.joined, got.summed
 	return nil
+}
+
+// isRaster reports whether the observations are the cells of a raster.
+func (r *run) isRaster() (bool, error) {
+	if r.region != nil && r.region.Rows != nil {
+		return false, nil
+	}
+	return isRaster(*r.settings.Observations)
 }
 
 // readBeyond adds the rows of neighbouring regions. What is wrong with them is told where they are reported.

@@ -84,6 +84,9 @@ func (r *run) artefacts(ctx context.Context) []artefact {
 			list = append(list, artefact{"zones.geojson", true, r.writeZoneShapes})
 		}
 	}
+	if r.wants(plan.GeoJSON) && !r.target.own() && len(r.target.cells) <= geojsonCells && len(r.levels()) > 0 {
+		list = append(list, artefact{"isolines.geojson", true, r.writeIsolines})
+	}
 	if r.wants(plan.TIF) && !r.target.own() {
 		list = append(list, artefact{"surface.tif", true, func(w io.Writer) error { return r.writeRaster(ctx, w) }})
 	}
