@@ -10,6 +10,11 @@ func (t *Table) Only(column, text string) {
 			rows = append(rows, int32(i))
 		}
 	}
+	t.keep(rows)
+}
+
+// keep drops all other rows.
+func (t *Table) keep(rows []int32) {
 	t.Line, t.Row = pickSlice(t.Line, rows), pickSlice(t.Row, rows)
 	if len(t.Geometry) > 0 {
 		t.Geometry = pickSlice(t.Geometry, rows)
@@ -17,4 +22,22 @@ func (t *Table) Only(column, text string) {
 	for i := range t.Columns {
 		t.Columns[i] = t.Columns[i].pick(rows)
 	}
+}
+
+// SetAside takes rows out of the table, for the reason that what they lack could not be found elsewhere.
+func (t *Table) SetAside(rows []int, column, code, reason string) {
+	drop := make(map[int]bool, len(rows))
+	var gone []Aside
+	for _, i := range rows {
+		drop[i] = true
+		gone = append(gone, Aside{Line: t.Line[i], Row: t.Row[i], Column: column, Code: code, Reason: reason})
+	}
+	var kept []int32
+	for i := range t.Row {
+		if !drop[i] {
+			kept = append(kept, int32(i))
+		}
+	}
+	t.Aside = t.addAside(gone)
+	t.keep(kept)
 }

@@ -154,9 +154,9 @@ func TestRegionRefuses(t *testing.T) {
 		{"defaults under a region", source + "[defaults]\nresponse = 'a'\nthreshold = -1\n[region.\"A 1\"]\npeople = 'n'", "A 1",
 			`line 5, column 1: threshold: the mean is above 0 everywhere, so it exceeds -1 with certainty, in region "A 1"`, "give a level above 0, in the unit of the map"},
 		{"not said", source + "[defaults]\nresponse = 'a'\n[region.A]\nlinear = 'depth'", "A", "line 5, column 1: hold: the map has no values of depth",
-			"add hold depth=mean, or name a table of places that has them with at"},
+			"add hold depth=mean, or name rasters that have them with layer, or a table of places with at"},
 		{"not said by defaults", source + "[defaults]\nresponse = 'a'\nlinear = ['depth']", "A", "line 3, column 1: hold: the map has no values of depth",
-			"add hold depth=mean, or name a table of places that has them with at"},
+			"add hold depth=mean, or name rasters that have them with layer, or a table of places with at"},
 		{"alternative", source + "[defaults]\nresponse = 'a'\nalso = 'max-knots=few'", "A",
 			`line 5, column 1: also: "max-knots=few" has a part that cannot be: max_knots: "few" is neither auto nor a whole number`, "leave out max_knots to let the fit decide"},
 	}

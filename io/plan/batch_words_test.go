@@ -96,7 +96,7 @@ func TestFormsOfWords(t *testing.T) {
 			want = asNumber
 		case "max-knots", "smoothness", "reference", "width", "detection", "exposure-cv", "isolines-at":
 			want = asNumber | asText
-		case "missing", "join", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
+		case "missing", "join", "layer", "linear", "curve", "curve-per", "category", "group", "also", "hold", "write":
 			want = asList | asText
 		}
 		if w.takes != want {

@@ -5,6 +5,7 @@ import (
 	"path/filepath"
 	"runtime"
 	"slices"
+	"strings"
 )
 
 // Settings are the settings of one run. Every exported field is a pointer or a slice, nil where the word was not
@@ -65,6 +66,7 @@ type Settings struct {
 	Within      *string // path
 	Zones       *string // path
 	ZoneName    *string // property of the zones
+	Layer       []Layer
 	Hold        []Hold
 
 	Threshold  *float64 // reporting unit
@@ -186,7 +188,7 @@ func (s Settings) Effective() []Entry {
 		}
 		v := w.value(&s)
 		if w.File {
-			v = baseNames(v)
+			v = w.baseNames(v)
 		}
 		why := s.why[w.Name]
 		list = append(list, Entry{Key: w.Key(), Value: v, Chosen: why != "" && why != byDefault, Why: why})
@@ -272,15 +274,26 @@ func (s Settings) denominators() []denominator {
 }
 
 // baseNames takes the folders from a path, or from each of a list.
-func baseNames(v any) any {
+func (w Word) baseNames(v any) any {
 	list, several := v.([]string)
 	if !several {
 		return filepath.Base(v.(string))
 	}
-	for i, path := range list {
-		list[i] = filepath.Base(path)
+	for i, value := range list {
+		label, path := w.split(value)
+		list[i] = label + filepath.Base(path)
 	}
 	return list
+}
+
+// split parts a value into what stands before the path, and the path.
+func (w Word) split(value string) (label, path string) {
+	if w.Labelled {
+		if at := strings.IndexByte(value, '='); at >= 0 {
+			return value[:at+1], value[at+1:]
+		}
+	}
+	return "", value
 }
 
 // Files returns the paths of the input files, in the order of Words.
@@ -296,6 +309,16 @@ func (s Settings) Files() []string {
 
 // paths are the files that a word names.
 func (w Word) paths(s *Settings) []string {
+	var list []string
+	for _, value := range w.values(s) {
+		_, path := w.split(value)
+		list = append(list, path)
+	}
+	return list
+}
+
+// values are what was said of a word about files.
+func (w Word) values(s *Settings) []string {
 	switch v := w.value(s).(type) {
 	case string:
 		return []string{v}
@@ -312,11 +335,12 @@ func (s Settings) RelativeTo(dir string) Settings {
 			continue
 		}
 		var moved Settings
-		for _, path := range w.paths(&s) {
+		for _, value := range w.values(&s) {
+			label, path := w.split(value)
 			if !filepath.IsAbs(path) {
 				path = filepath.Join(dir, path)
 			}
-			if err := w.Set(&moved, path); err != nil {
+			if err := w.Set(&moved, label+path); err != nil {
 				panic("plan: " + err.Error()) // a path that was accepted once is accepted with a folder before it
 			}
 		}

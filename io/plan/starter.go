@@ -19,7 +19,7 @@ type Starter struct {
 // starterExamples are values of words that have no default and whose Arg is no value itself.
 var starterExamples = map[string]string{
 	"separator": Semicolon, "below-limit": HalfLimit, "area-unit": Hectares, "distribution": Poisson, "link": Log, "shape": "1.5", "surface-smoothness": OwnSmoothness,
-	"also": "surface=none", "isolines-at": "10,20,50", "key": "district", "absent": AbsentMissing, "length-unit": Metres, "width": "50", "detection": "0.8", "exposure-cv": "0.15", "cell-size": "100", "threshold": "100", "reference": Overall,
+	"also": "surface=none", "layer": "height=height.tif", "isolines-at": "10,20,50", "key": "district", "absent": AbsentMissing, "length-unit": Metres, "width": "50", "detection": "0.8", "exposure-cv": "0.15", "cell-size": "100", "threshold": "100", "reference": Overall,
 }
 
 // WriteStarter writes a plan in TOML that has every word as a key, with its help and its default. The words that are said

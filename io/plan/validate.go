@@ -347,6 +347,12 @@ func holdsSuit(s Settings) error {
 		}
 		held[h.Name] = true
 	}
+	if err := s.layersSuit(roles, names, held); err != nil {
+		return err
+	}
+	for _, l := range s.Layer {
+		held[l.Name] = true
+	}
 	if s.At != nil {
 		return nil
 	}
@@ -358,8 +364,31 @@ func holdsSuit(s Settings) error {
 		}
 	}
 	if len(missing) > 0 {
-		return refuse("hold", "add "+strings.Join(add, " ")+", or name a table of places that has them with --at",
+		return refuse("hold", "add "+strings.Join(add, " ")+", or name rasters that have them with --layer, or a table of places with --at",
 			"the map has no values of %s", strings.Join(missing, ", "))
+	}
+	return nil
+}
+
+// layersSuit refuses a layer of what is no covariate, or is held, or has another one.
+func (s Settings) layersSuit(roles map[string]string, names []string, held map[string]bool) error {
+	seen := map[string]bool{}
+	for _, l := range s.Layer {
+		switch role := roles[l.Name]; {
+		case role == "":
+			hint := "name it with --linear, --curve or --category, or leave out --layer"
+			if near, ok := Nearest(l.Name, names); ok {
+				hint = "did you mean " + near + "?"
+			}
+			return refuse("layer", hint, "%s is not a covariate of the model", l.Name)
+		case role == "group":
+			return refuse("layer", "leave it out", "%s is a group, and the map shows the average one", l.Name)
+		case held[l.Name]:
+			return refuse("layer", "keep one of the two", "%s is held at one value", l.Name)
+		case seen[l.Name]:
+			return refuse("layer", "", "%s has two layers", l.Name)
+		}
+		seen[l.Name] = true
 	}
 	return nil
 }

@@ -153,6 +153,14 @@ func (r Reference) plain() any {
 	return r.Level
 }
 
+// Layer is a raster that gives a covariate where it is not known otherwise.
+type Layer struct {
+	Name string // of the covariate
+	Path string
+}
+
+func (l Layer) plain() any { return l.Name + "=" + l.Path }
+
 // Hold fixes a covariate at one value all over the map.
 type Hold struct {
 	Name  string // of the covariate
@@ -367,6 +375,14 @@ func parseReference(value string) (Reference, error) {
 		return Reference{}, advise("is neither overall nor a number above 0", "")
 	}
 	return Reference{Level: v}, nil
+}
+
+func parseLayer(value string) (Layer, error) {
+	name, path, found := strings.Cut(value, "=")
+	if !found || strings.TrimSpace(name) == "" || strings.TrimSpace(path) == "" {
+		return Layer{}, advise("is not of the form NAME=FILE", "for example height=height.tif")
+	}
+	return Layer{Name: strings.TrimSpace(name), Path: strings.TrimSpace(path)}, nil
 }
 
 func parseHold(value string) (Hold, error) {

@@ -11,7 +11,9 @@ type Word struct {
 
 	Repeat  bool // may be said several times, each adding to a list
 	RunOnly bool // bears on how a run is carried out and not on what comes of it
-	File    bool // the value is the path of an input file
+	File    bool // the value is the path of an input file, or NAME=FILE where it is Labelled
+
+	Labelled bool // with File: the value has a name before the path
 
 	// Set puts value into the settings, adding to the list of a Repeat word and replacing otherwise. An empty value
 	// of a word without Arg means true. The error is an *Error.

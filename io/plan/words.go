@@ -196,6 +196,9 @@ var words = []Word{
 	one(Word{Name: "at", Group: groupWhere, Arg: "FILE", File: true,
 		Help: "predict at the places in this table, in its order, instead of on a regular lattice"},
 		func(s *Settings) **string { return &s.At }, parseText),
+	several(Word{Name: "layer", Group: groupWhere, Arg: "NAME=FILE", File: true, Labelled: true,
+		Help: "a raster, GeoTIFF or ASCII grid, that gives a covariate in every cell, and to observations whose table lacks it"},
+		func(s *Settings) *[]Layer { return &s.Layer }, parseLayer),
 	several(Word{Name: "hold", Group: groupWhere, Arg: "NAME=VALUE",
 		Help: "keep a covariate at one value all over the map: a number or a level, mean, or commonest. The map is then " +
 			"adjusted to it and gives no totals"},

@@ -21,7 +21,7 @@ var sample = map[string]string{
 	"hold": "depth, in cm=-3.5", "threshold": "-3", "per": "100000", "unit-label": "stems per ha",
 	"confidence": "0.9", "reference": "overall", "title": "Stems", "seed": "42", "workers": "3",
 	"write": "csv,saved", "strict": "true", "separator": "pipe", "decimal-comma": "true", "missing": "-99", "below-limit": "half", "geometry": "geom", "places": "p.geojson", "join": "people.csv", "key": "district=name",
-	"isolines": "bands", "isolines-at": "1,2.5,10", "absent": "zero", "sum-by": "district", "length": "walked", "length-unit": "km", "width": "40", "detection": "seen", "exposure-cv": "0.15", "exposure-strata": "stratum", "force": "true", "quiet": "true",
+	"layer": "depth=depth.tif", "isolines": "bands", "isolines-at": "1,2.5,10", "absent": "zero", "sum-by": "district", "length": "walked", "length-unit": "km", "width": "40", "detection": "seen", "exposure-cv": "0.15", "exposure-strata": "stratum", "force": "true", "quiet": "true",
 }
 
 // snake turns the name of a field into a key: MaxKnots to max_knots, CRS to crs.

@@ -203,7 +203,8 @@ type Lattice struct {
 	Cell   Number `json:"cell_m"`
 	Across int    `json:"columns"`
 	Up     int    `json:"rows"`
-	Count  int    `json:"count"` // cells of the study area, or places
+	Count  int    `json:"count"`            // cells of the study area, or places
+	Masked int    `json:"masked,omitempty"` // cells left out since a layer has no value there
 	Area   Number `json:"area_m2"`
 }
 

@@ -242,6 +242,9 @@ func (r *run) cautions() []string {
 		list = append(list, "Not for decisions on safety or health without the checks that local rules and licensed practice ask for.")
 	}
 	list = append(list, r.exposureCautions()...)
+	if n := r.target.masked; n > 0 {
+		list = append(list, fmt.Sprintf("%d cells of the study area are left out: a layer has no value there, or a class that was not observed.", n))
+	}
 	if words := r.obs.thinned.words(); words != "" {
 		list = append(list, words)
 	}

@@ -16,6 +16,9 @@ import (
 // inputChecks look at the observations themselves, for what is likely a mistake and yet can be fitted.
 func (r *run) inputChecks() []summary.Check {
 	list := []summary.Check{r.coordinatesCheck(), r.repeatedCheck()}
+	if r.estimates.outside != nil {
+		list = append(list, r.rangeCheck())
+	}
 	if r.settings.Length != nil && r.obs.areal() {
 		list = append(list, r.lengthCheck())
 	}
@@ -131,6 +134,21 @@ func (o *observations) repeated() (rows []int, first int) {
 		}
 	}
 	return rows, first
+}
+
+// rangeCheck says how much of the map has covariates that no observation had, alone or together.
+func (r *run) rangeCheck() summary.Check {
+	n := 0.0
+	for _, v := range r.estimates.outside {
+		n += v
+	}
+	share := n / float64(len(r.estimates.outside))
+	c := summary.Check{Name: "range", Level: level(share, 0.05, 0.5), Figure: summary.Number(share), Sentence: "covariates of the map are within what was observed"}
+	if n > 0 {
+		c.Sentence = fmt.Sprintf("%s %% of the map has covariates, alone or together, that no observation had (column outside): there the map rests on the model alone",
+			summary.Short(summary.Number(100*share)))
+	}
+	return c
 }
 
 // mostStretch is how many times longer or shorter a strip may be than it was drawn before it is remarked on (common

@@ -1,6 +1,7 @@
 package pipeline
 
 import (
+	"context"
 	"fmt"
 	"slices"
 	"strconv"
@@ -25,7 +26,7 @@ func (r *run) holdAll() error {
 	held := r.heldNames()
 	var lacking []string
 	for _, c := range r.obs.data.Covariates {
-		if held[c.Name] || !r.mapNeeds(c.Name) {
+		if held[c.Name] || layered(r.settings, c.Name) || !r.mapNeeds(c.Name) {
 			continue
 		}
 		value := plan.AtMean
@@ -167,8 +168,12 @@ func repeat(v float64, n int) []float64 {
 }
 
 // covariatesAt takes covariates from the places' own columns, or from --hold.
-func (r *run) covariatesAt(t *observe.Table) error {
+func (r *run) covariatesAt(ctx context.Context, t *observe.Table) error {
 	held := r.heldNames()
+	sampled, whole, err := r.sampleCells(ctx, r.target.places.X, r.target.places.Y)
+	if err != nil {
+		return err
+	}
 	r.target.held, r.target.heldNumber = map[string]string{}, map[string]float64{}
 	for _, c := range r.obs.data.Covariates {
 		if held[c.Name] {
@@ -179,6 +184,15 @@ func (r *run) covariatesAt(t *observe.Table) error {
 			if own != nil && slices.Contains(r.settings.Group, c.Name) { // a level that is new has the average level and its variance
 				r.target.covariates = append(r.target.covariates, spatial.Covariate{Name: c.Name, Code: own.Code, Level: own.Level})
 			}
+			continue
+		}
+		if own == nil {
+			if i := slices.Index(whole, false); i >= 0 {
+				return &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), What: "a layer has no value there, or one that was not observed",
+					Advice: "take the place out, or give its covariates as columns"}
+			}
+			k := slices.IndexFunc(sampled, func(s spatial.Covariate) bool { return s.Name == c.Name })
+			r.target.covariates, r.target.layers = append(r.target.covariates, sampled[k]), append(r.target.layers, sampled[k])
 			continue
 		}
 		if c.Number != nil {

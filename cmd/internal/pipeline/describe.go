@@ -72,7 +72,7 @@ func (r *run) describeTarget() summary.Lattice {
 		return summary.Lattice{Kind: "places", CRS: r.obs.system.Code(), Count: t.places.Len(), Cell: summary.Number(math.NaN()), Area: summary.Number(math.NaN())}
 	}
 	return summary.Lattice{Kind: "cells", CRS: r.obs.system.Code(), Cell: summary.Number(t.lattice.Cell), Across: t.lattice.NX, Up: t.lattice.NY,
-		Count: len(t.cells), Area: summary.Number(t.lattice.Area())}
+		Count: len(t.cells), Masked: t.masked, Area: summary.Number(t.lattice.Area())}
 }
 
 func (r *run) describeFit(d *summary.Document) {

@@ -109,6 +109,7 @@ type estimates struct {
 	relative, relativeLower, relativeUpper    []float64 // to the reference; nil without one
 	eta, etaError                             []float64
 	nearest                                   []float64
+	outside                                   []float64 // 1 where covariates lie outside of what was observed, else 0; nil without numeric layers
 }
 
 // estimate predicts at places and states the result in the reporting unit: limits are the link's image of
@@ -176,6 +177,9 @@ func (e *estimates) columns() []tables.Column {
 	if e.relative != nil {
 		list = append(list, tables.Column{Name: "relative_risk", Number: e.relative},
 			tables.Column{Name: "relative_risk_lower", Number: e.relativeLower}, tables.Column{Name: "relative_risk_upper", Number: e.relativeUpper})
+	}
+	if e.outside != nil {
+		list = append(list, tables.Column{Name: "outside", Number: e.outside})
 	}
 	return list
 }

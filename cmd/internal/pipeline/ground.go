@@ -18,6 +18,7 @@ import (
 // project puts the rows into the plane: degrees into an equal-area plane around them, a plane as it is. Rows that are
 // lines or areas become sets of points.
 func (o *observations) project(s plan.Settings) error {
+	o.places, o.placeOf, o.data.Places = nil, nil, spatial.Places{}
 	o.x, o.y = o.table.XY()
 	if err := o.choosePlane(s); err != nil {
 		return err

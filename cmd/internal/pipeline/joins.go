@@ -134,6 +134,16 @@ func (j *joins) forRegion(g *Region) error {
 	return nil
 }
 
+// columns are those of all the files.
+func (j *joins) columns() (list []string) {
+	if j != nil {
+		for _, d := range j.sides {
+			list = append(list, d.columns...)
+		}
+	}
+	return list
+}
+
 // placesSide is the file of places; nil where there is none.
 func (j *joins) placesSide() *side {
 	if j == nil || !j.sides[len(j.sides)-1].places {

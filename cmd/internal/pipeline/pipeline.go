@@ -115,6 +115,7 @@ func (r *run) predict(ctx context.Context) error {
 	if err != nil {
 		return err
 	}
+	r.estimates.outside = r.beyondData()
 	all := r.obs.points() // neighbours' rows too: where they are, the surface rests on data
 	r.estimates.nearest = grids.Nearest(all.X, all.Y, r.target.places.X, r.target.places.Y)
 	return nil

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"path/filepath"
+	"slices"
 	"strings"
 
 	"drumlin/grids"
@@ -30,7 +31,9 @@ type target struct {
 	cells      []int         // of the lattice, ascending
 	places     spatial.Places
 	covariates []spatial.Covariate
-	held       map[string]string // covariates fixed at one value, as told
+	layers     []spatial.Covariate // those of them that layers give
+	masked     int                 // cells of the study area without a value in some layer
+	held       map[string]string   // covariates fixed at one value, as told
 	heldNumber map[string]float64
 }
 
@@ -65,6 +68,10 @@ func (r *run) place(ctx context.Context) error {
 	}
 	t := &target{lattice: l}
 	t.cells, t.places.X, t.places.Y = l.Centres()
+	if err := r.layCells(ctx, t); err != nil {
+		return err
+	}
+	t.covariates = slices.Clone(t.layers)
 	r.target = t
 	return r.holdAll()
 }
@@ -199,6 +206,15 @@ func (r *run) placeAt(ctx context.Context, path string) error {
 		want.X, want.Y = *s.X, *s.Y
 	}
 	held := r.heldNames()
+	have, err := columnsOf(ctx, path, want.Format)
+	if err != nil {
+		return err
+	}
+	for _, l := range s.Layer {
+		if !slices.Contains(have, l.Name) {
+			held[l.Name] = true // not of the table: a layer gives it
+		}
+	}
 	want.Optional = s.Group
 	for _, name := range s.Numbers() {
 		if !held[name] {
@@ -219,7 +235,7 @@ func (r *run) placeAt(ctx context.Context, path string) error {
 		return err
 	}
 	r.target = &target{lattice: grids.Lattice{CRS: r.obs.system}, places: spatial.Places{X: x, Y: y}}
-	return r.covariatesAt(table)
+	return r.covariatesAt(ctx, table)
 }
 
 // placesRequest asks a table for places in the kind of coordinates that the observations had. Every one of them is to

@@ -60,8 +60,13 @@ func (r *run) read(ctx context.Context) error {
 	if err := r.readBeyond(ctx, o, want); err != nil {
 		return err
 	}
-	if err := o.project(r.settings); err != nil {
-		return err
+	for again := true; again; { // without the rows that a layer lacks a value for
+		if err := o.project(r.settings); err != nil {
+			return err
+		}
+		if again, err = r.sampleRows(ctx, o); err != nil {
+			return err
+		}
 	}
 	if err := o.addUnseen(r.joins); err != nil {
 		return err
@@ -158,11 +163,12 @@ type rowsRead struct {
 // rowsOf reads rows, adds up those that are to be one, and joins them to the other files.
 func (r *run) rowsOf(ctx context.Context, from source, want observe.Request) (got rowsRead, err error) {
 	own := want
-	if r.joins != nil || len(r.keys()) > 0 {
+	if r.joins != nil || len(r.keys()) > 0 || len(r.settings.Layer) > 0 {
 		have, err := from.columns(ctx)
 		if err != nil {
 			return got, err
 		}
+		own = withoutLayers(r.settings, own, slices.Concat(have, r.joins.columns()))
 		if by := r.settings.SumBy; by != nil && !slices.Contains(have, *by) {
 			return got, absentColumn(from.name, *by, "--sum-by", have)
 		}
@@ -170,7 +176,7 @@ func (r *run) rowsOf(ctx context.Context, from source, want observe.Request) (go
 			return got, absentColumn(from.name, key.Column, "the key", have)
 		}
 		if r.joins != nil {
-			if own, err = r.joins.shareOut(want, from, have, *r.settings.Key); err != nil {
+			if own, err = r.joins.shareOut(own, from, have, *r.settings.Key); err != nil {
 				return got, err
 			}
 		}

@@ -23,7 +23,10 @@ func (r *run) addUpRegion(ctx context.Context) error {
 	if !r.target.own() {
 		z := &zoneResults{unit: plan.SquareMetres}
 		r.decideTotals(z)
-		cells := r.summed()
+		cells, err := r.summed(ctx)
+		if err != nil {
+			return err
+		}
 		all, ground := r.wholeMap(cells, squareMetres[z.unit])
 		sums, err := r.surface.Sums(ctx, cells.places, cells.covariates, []spatial.Share{all}, 0, *r.settings.Seed)
 		if err != nil {
@@ -52,12 +55,16 @@ func (r *run) wholeMap(cells summable, unit float64) (all spatial.Share, ground 
 		list, area = grids.SharesIn(l, r.area.within)
 	}
 	for k, c := range list {
+		place, mapped := cells.of[c]
+		if !mapped {
+			continue // a layer has no value there
+		}
 		a := l.CellAreaAt(c)
 		if area != nil {
 			a = math.Min(a, area[k])
 		}
 		ground += a / unit
-		all.Index, all.Weight = append(all.Index, cells.of[c]), append(all.Weight, a/unit)
+		all.Index, all.Weight = append(all.Index, place), append(all.Weight, a/unit)
 	}
 	return all, ground
 }

@@ -87,7 +87,10 @@ func (r *run) decideTotals(z *zoneResults) {
 // zone have in common, so that zones that share no ground add up exactly.
 func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 	l := r.target.lattice
-	sums := r.summed()
+	sums, err := r.summed(ctx)
+	if err != nil {
+		return err
+	}
 	var sets []spatial.Share
 	for _, zone := range z.zones {
 		var set spatial.Share
@@ -127,26 +130,37 @@ type summable struct {
 }
 
 // summed lists the cells that are added up.
-func (r *run) summed() summable {
+func (r *run) summed(ctx context.Context) (summable, error) {
 	t := r.target
 	s := summable{places: t.places, covariates: t.covariates, of: make(map[int]int32, len(t.cells))}
 	for k, c := range t.cells {
 		s.of[c] = int32(k)
 	}
 	if r.area.within == nil {
-		return s
+		return s, nil
 	}
-	s.places = spatial.Places{X: slices.Clone(t.places.X), Y: slices.Clone(t.places.Y)}
+	var beside []int
+	var x, y []float64
 	cells, _ := grids.SharesIn(t.lattice, r.area.within)
 	for _, c := range cells {
 		if _, mapped := s.of[c]; !mapped {
-			s.of[c] = int32(s.places.Len())
-			x, y := t.lattice.Centre(c)
-			s.places.X, s.places.Y = append(s.places.X, x), append(s.places.Y, y)
+			cx, cy := t.lattice.Centre(c)
+			beside, x, y = append(beside, c), append(x, cx), append(y, cy)
 		}
 	}
-	s.covariates = heldAt(t.covariates, s.places.Len())
-	return s
+	layers, whole, err := r.sampleCells(ctx, x, y)
+	if err != nil {
+		return s, err
+	}
+	s.places = spatial.Places{X: slices.Clone(t.places.X), Y: slices.Clone(t.places.Y)}
+	for k, c := range beside {
+		if whole[k] {
+			s.of[c] = int32(s.places.Len())
+			s.places.X, s.places.Y = append(s.places.X, x[k]), append(s.places.Y, y[k])
+		}
+	}
+	s.covariates = append(join(t.layers, keepAt(layers, whole)), heldAt(t.covariates[len(t.layers):], s.places.Len())...)
+	return s, nil
 }
 
 // add states one zone's sum.
