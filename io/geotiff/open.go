@@ -22,9 +22,9 @@ func Open(r io.ReaderAt, size int64, source string) (*Raster, error) {
 	case isText(head):
 		return OpenText(io.NewSectionReader(r, 0, size), source)
 	case size == 0:
-		return nil, f.refuse("", "is empty")
+		return nil, f.refuse("check that it was written completely", "the file is empty")
 	}
-	return nil, f.refuse("give a GeoTIFF, or a text that starts with ncols and nrows", "is neither a GeoTIFF nor an ASCII grid raster")
+	return nil, f.refuse("give a GeoTIFF, or a text that starts with ncols and nrows", "the file is neither a GeoTIFF nor an ASCII grid raster")
 }
 
 // headBytes are enough to tell what a file is.

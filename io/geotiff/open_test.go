@@ -166,7 +166,7 @@ func TestKeys(t *testing.T) {
 // TestNotRasters: what is no raster at all.
 func TestNotRasters(t *testing.T) {
 	for text, want := range map[string]string{
-		"":                                "is empty",
+		"":                                "the file is empty",
 		"x,y,z\n1,2,3\n":                  "neither a GeoTIFF nor an ASCII grid raster",
 		"II*":                             "neither a GeoTIFF",
 		"II*\x00":                         "the header would lie at bytes 0 to 8",

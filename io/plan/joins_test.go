@@ -110,6 +110,15 @@ func TestAmounts(t *testing.T) {
 	}
 }
 
+// TestPerCentIsTold: a share above its bound is likely in per cent.
+func TestPerCentIsTold(t *testing.T) {
+	w, _ := Lookup("exposure-cv")
+	err := w.Set(&Settings{}, "15")
+	if e, ok := err.(*Error); !ok || e.Error() != `exposure-cv: "15" is more than 2` || e.Hint() != "for 15 per cent write 0.15" {
+		t.Errorf("%v", err)
+	}
+}
+
 // TestPathsOfLists: every file of a list is moved to a folder and told by its base name.
 func TestPathsOfLists(t *testing.T) {
 	s := saidWords(t, "join", "a/people.csv", "join", "/b/more.csv", "key", "k").RelativeTo("/plan")

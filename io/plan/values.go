@@ -332,7 +332,11 @@ func parseAmount(most float64) func(string) (Amount, error) {
 		}
 		v, err := parsePositive(text)
 		if err == nil && v > most {
-			err = advise("is more than "+spoken(most), "")
+			hint := ""
+			if v <= 100 {
+				hint = "for " + spoken(v) + " per cent write " + spoken(v/100)
+			}
+			err = advise("is more than "+spoken(most), hint)
 		}
 		return Amount{Number: v}, err
 	}

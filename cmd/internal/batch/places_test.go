@@ -108,3 +108,48 @@ func TestMarginOfPlaces(t *testing.T) {
 		}
 	}
 }
+
+// TestLayersOfRegions: one raster serves all regions, and is part of what a region follows from.
+func TestLayersOfRegions(t *testing.T) {
+	raster := func(step float64) string {
+		var b strings.Builder
+		b.WriteString("ncols 30\nnrows 10\nxllcorner -500\nyllcorner -500\ncellsize 300\n")
+		for j := range 10 {
+			for i := range 30 {
+				fmt.Fprintf(&b, "%v ", step*float64(i)+float64(j*j%7))
+			}
+			b.WriteByte('\n')
+		}
+		return b.String()
+	}
+	var both strings.Builder
+	both.WriteString("vale,x,y,stems,plot_ha\n")
+	for k, name := range []string{"ash", "birch"} {
+		for _, line := range strings.Split(strings.TrimSuffix(vale(uint64(k+1), 50, 2500*float64(k)), "\n"), "\n")[1:] {
+			both.WriteString(name + "," + line + "\n")
+		}
+	}
+	path := planted(t, `
+[regions]
+file = "all.csv"
+split_by = "vale"
+[defaults]
+response = "stems"
+area = "plot_ha"
+linear = "height"
+layer = "height=height.asc"
+max_knots = 20
+cells_across = 15
+write = "csv"
+`, map[string]string{"all.csv": both.String(), "height.asc": raster(0.3)})
+	out := filepath.Join(t.TempDir(), "out")
+	if got := states(ran(t, path, out, Options{Workers: 2})); got != "ash look, birch look" && got != "ash done, birch done" {
+		t.Fatal(got)
+	}
+	again := ran(t, path, out, Options{Workers: 1})
+	rewrite(t, filepath.Join(filepath.Dir(path), "height.asc"), raster(0.5))
+	changed := ran(t, path, out, Options{Workers: 1})
+	if again.Tally.Unchanged != 2 || changed.Tally.Unchanged != 0 {
+		t.Errorf("%d and %d regions unchanged", again.Tally.Unchanged, changed.Tally.Unchanged)
+	}
+}

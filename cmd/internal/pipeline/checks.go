@@ -35,6 +35,9 @@ func (r *run) checks() []summary.Check {
 	}
 	if r.zones != nil {
 		list = append(list, r.zones.covering())
+		if c := r.zones.skewed(); c.Level != summary.Clear {
+			list = append(list, c)
+		}
 	}
 	return list
 }
@@ -219,6 +222,26 @@ func (z *zoneResults) covering() summary.Check {
 		c.Sentence += fmt.Sprintf(" and covers less than %g %% of %d of the %d zones", 100*leastCovered, short, len(z.zones))
 	}
 	c.Sentence += ": figures are for the part that is covered; widen the map with --within, and where zones are small ask for smaller cells"
+	return c
+}
+
+// mostExcess is the share by which the mean of the draws of a zone may be above its total.
+const mostExcess = 0.1
+
+// skewed warns of a zone whose level is so uncertain that its mean over all that could be lies well above what is likeliest.
+func (z *zoneResults) skewed() summary.Check {
+	worst := 0
+	for k, v := range z.excess {
+		if v > z.excess[worst] {
+			worst = k
+		}
+	}
+	c := summary.Check{Name: "zone draws", Figure: summary.Number(z.excess[worst]), Level: summary.Clear, Sentence: "totals and means are in the middle of what they could be"}
+	if z.excess[worst] > mostExcess {
+		c.Level = summary.Look
+		c.Sentence = fmt.Sprintf("the figure of zone %s is so uncertain that the mean of what it could be is %s %% above it: hand on its limits, not the figure alone",
+			z.zones[worst].Name, summary.Short(summary.Number(100*z.excess[worst])))
+	}
 	return c
 }
 

@@ -463,7 +463,7 @@ func CheckColumns(s plan.Settings, p observe.Part) error {
 	if s.Places != nil || len(s.Join) > 0 { // which file has a column is found out when the region is read
 		want = observe.Request{Response: want.Response, Keep: want.Keep, Called: want.Called, Format: want.Format, NoPlaces: true, Kind: observe.Measure}
 	}
-	return p.Check(want)
+	return p.Check(withoutLayers(s, want, p.Columns()))
 }
 
 // ReadFile reads a small file of at most that many bytes.

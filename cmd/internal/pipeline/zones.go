@@ -30,6 +30,7 @@ type zoneResults struct {
 	cells                                        []int64
 	total, totalError, totalCV, totalLo, totalHi []float64
 	mean, meanError, meanLo, meanHi, chance      []float64
+	excess                                       []float64 // by how much the mean of the draws is above the sum, as a share
 }
 
 // squareMetres says how many square metres an area unit has.
@@ -171,6 +172,7 @@ func (z *zoneResults) add(r *run, k int, sum spatial.Sum) {
 		sum = spatial.Sum{Value: none, Delta: none}
 	}
 	sd, spread := sum.DrawSD(), r.limits(sum)
+	z.excess = append(z.excess, excess(sum))
 	if z.cells[k] == 0 {
 		sd = none
 	}
@@ -194,6 +196,18 @@ func (z *zoneResults) add(r *run, k int, sum spatial.Sum) {
 		above = none
 	}
 	z.chance = append(z.chance, above/float64(len(sum.Draws)))
+}
+
+// excess is how far the mean of the draws of a sum lies above the sum itself, as a share of it; 0 without draws.
+func excess(sum spatial.Sum) float64 {
+	if len(sum.Draws) == 0 || !(sum.Value > 0) {
+		return 0
+	}
+	mean := 0.0
+	for _, d := range sum.Draws {
+		mean += d / float64(len(sum.Draws))
+	}
+	return mean/sum.Value - 1
 }
 
 // limits returns the interval of a sum: log-normal for a log link (Burnham et al. 1987, Wildlife Monographs 99), the

@@ -248,3 +248,23 @@ func TestTotalsAreRightToTheEdge(t *testing.T) {
 		near(t, unit.name+": covered", zoned.numbers("share_covered")[0], 1, 1e-9)
 	}
 }
+
+// TestUncertainZonesAreRemarkedOn: few rows far from a zone leave its level wide open, and the mean of a log-normal lies
+// above its median by half the variance.
+func TestUncertainZonesAreRemarkedOn(t *testing.T) {
+	table := "x,y,n,ha\n"
+	for i := range 12 {
+		table += fmt.Sprintf("%d,%d,%d,1\n", 100+20*(i%4), 100+20*(i/4), i%3)
+	}
+	within := write(t, "within.geojson", rectangles([]string{"ground"}, [4]float64{0, 0, 1000, 800}))
+	zones := rectangles([]string{"near", "far"}, [4]float64{90, 90, 170, 150}, [4]float64{800, 600, 1000, 800})
+	_, _, dir := zoneTable(t, write(t, "obs.csv", table), zones, "response=n", "area=ha", "within="+within, "cells-across=25", "distribution=poisson")
+	got := fmt.Sprint(readSummary(t, dir)["checks"])
+	if !strings.Contains(got, "zone draws") || !strings.Contains(got, "the figure of zone far is so uncertain") {
+		t.Errorf("checks: %s", got)
+	}
+	_, _, dir = zoneTable(t, write(t, "obs.csv", plain.table(5)), rectangles([]string{"all"}, [4]float64{100, 100, 900, 700}), "response=n", "area=plot_ha", "cells-across=20")
+	if got := fmt.Sprint(readSummary(t, dir)["checks"]); strings.Contains(got, "zone draws") {
+		t.Errorf("checks: %s", got)
+	}
+}
