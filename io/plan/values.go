@@ -333,7 +333,7 @@ func parseAmount(most float64) func(string) (Amount, error) {
 		v, err := parsePositive(text)
 		if err == nil && v > most {
 			hint := ""
-			if v <= 100 {
+			if v >= 5 && v <= 100 { // what is little more than the bound is rather a slip than a percentage
 				hint = "for " + spoken(v) + " per cent write " + spoken(v/100)
 			}
 			err = advise("is more than "+spoken(most), hint)
