@@ -92,3 +92,18 @@ func inside(x, y float64, shape orb.MultiPolygon) bool {
 }
 
 func near(got, want, relative float64) bool { return math.Abs(got-want) <= relative*math.Abs(want) }
+
+// CellsIn returns the cells of l's study area whose centres lie in z, ascending. Holes are left out whichever way their
+// rings turn; a cell in two polygons of the zone comes once. A centre on the edge between two zones belongs to exactly
+// one of them. A polygon with a vertex that is not finite holds no cell.
+func CellsIn(l Lattice, z Zone) []int {
+	var cells []int
+	for _, s := range l.spans(z.Shape) {
+		for k := s.row*l.NX + s.i0; k < s.row*l.NX+s.i1; k++ {
+			if l.In(k) {
+				cells = append(cells, k)
+			}
+		}
+	}
+	return cells
+}

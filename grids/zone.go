@@ -28,21 +28,6 @@ func (z Zone) Validate() error {
 	return nil
 }
 
-// CellsIn returns the cells of l's study area whose centres lie in z, ascending. Holes are left out whichever way their
-// rings turn; a cell in two polygons of the zone comes once. A centre on the edge between two zones belongs to exactly
-// one of them. A polygon with a vertex that is not finite holds no cell.
-func CellsIn(l Lattice, z Zone) []int {
-	var cells []int
-	for _, s := range l.spans(z.Shape) {
-		for k := s.row*l.NX + s.i0; k < s.row*l.NX+s.i1; k++ {
-			if l.In(k) {
-				cells = append(cells, k)
-			}
-		}
-	}
-	return cells
-}
-
 // AreaOf returns the true ground area of z in square metres, z being in the plane of sys: the polygons' areas less their
 // holes', each divided by the area scale, integrated over the polygon. Polygons that overlap count twice. It is NaN if a
 // vertex is not finite or lies where the plane has no area scale.

@@ -5,6 +5,8 @@ import (
 	"math"
 	"strconv"
 
+	"drumlin/io/vector"
+
 	"github.com/paulmach/orb"
 	"github.com/paulmach/orb/planar"
 )
@@ -57,6 +59,15 @@ func flawOfPolygons(polygons []orb.Polygon) string {
 		return noArea
 	}
 	return ""
+}
+
+// sameLine is the distance, in parts of the extent of a ring, up to which a position lies on an edge. Outlines that were
+// rounded or thinned cross themselves by less than that in many places, which moves no area.
+const sameLine = 1e-6
+
+// crossing returns a point at which a ring crosses itself, and whether there is one.
+func crossing(ring orb.Ring) (orb.Point, bool) {
+	return vector.Crossing(ring, sameLine*diagonal(ring.Bound()))
 }
 
 // hasArea reports whether the area of a polygon is more than what the rounding of its positions comes to.

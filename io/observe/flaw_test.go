@@ -88,6 +88,11 @@ func TestCrossingIsEveryPair(t *testing.T) {
 	}
 }
 
+// side is twice the area of a triangle: above 0 where r lies to the left of the way from p to q.
+func side(p, q, r orb.Point) float64 {
+	return (q[0]-p[0])*(r[1]-p[1]) - (q[1]-p[1])*(r[0]-p[0])
+}
+
 // The work on a long outline is bounded, whatever it looks like: a coast, a comb, a spiral.
 func TestCrossingOfLongRings(t *testing.T) {
 	const n = 100_000

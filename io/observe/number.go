@@ -35,16 +35,8 @@ func missing(s string) bool {
 
 var notANumber = math.NaN()
 
-// parseNumber reads a trimmed field as a finite decimal number, with or without an exponent. The fault is "" for a
-// number. Hexadecimal, digits grouped by underscores or commas, and a decimal comma are not numbers here.
-func parseNumber(s string) (float64, string) {
-	if missing(s) {
-		return notANumber, faultMissing
-	}
-	return parseDecimal(s)
-}
-
-// parseDecimal is parseNumber for a field that is not missing.
+// parseDecimal reads a trimmed field that is not missing as a finite decimal number, with or without an exponent. The fault
+// is "" for a number. Hexadecimal, digits grouped by underscores or commas, and a decimal comma are not numbers here.
 func parseDecimal(s string) (float64, string) {
 	if strings.ContainsAny(s, "xX_") {
 		return notANumber, faultNumber

@@ -73,7 +73,7 @@ func TestCheckAreaBruteForce(t *testing.T) {
 		want := false
 		for i := 1; i < len(ring); i++ {
 			for k := 1; k < i; k++ {
-				want = want || cross(edge{ring[i-1], ring[i], 0}, edge{ring[k-1], ring[k], 0})
+				want = want || (&outlines{}).cross(edge{ring[i-1], ring[i], 0}, edge{ring[k-1], ring[k], 0})
 			}
 		}
 		err := CheckArea(orb.Polygon{ring})

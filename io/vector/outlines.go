@@ -25,8 +25,9 @@ type outlines struct {
 	edges []edge
 	outer int // edges of the outer ring, which come first
 	box   []orb.Bound
-	work  int // comparisons made
-	most  int // comparisons that may be made
+	work  int     // comparisons made
+	most  int     // comparisons that may be made
+	slack float64 // distance from an edge up to which a place lies on it
 
 	crossed       bool
 	first, second int // the edges that cross
@@ -50,7 +51,9 @@ func newOutlines(p orb.Polygon) *outlines {
 	}
 	t.most = workPerEdge * (len(t.edges) + 100)
 	t.box = make([]orb.Bound, nodes)
-	t.fill(0, 0, len(t.edges))
+	if len(t.edges) > 0 {
+		t.fill(0, 0, len(t.edges))
+	}
 	return t
 }
 
@@ -120,25 +123,36 @@ func (t *outlines) crossEdge(i, from, to int) {
 		if t.done() {
 			return
 		}
-		if cross(t.edges[i], t.edges[k]) {
+		if t.cross(t.edges[i], t.edges[k]) {
 			t.crossed, t.first, t.second = true, i, k
 			return
 		}
 	}
 }
 
-// cross reports whether two edges cross in a place inside both. Edges that touch, and those so close to touching that
-// rounding decides, do not.
-func cross(e, f edge) bool {
-	return side(e.a, e.b, f.a)*side(e.a, e.b, f.b) < 0 && side(f.a, f.b, e.a)*side(f.a, f.b, e.b) < 0
+// cross reports whether two edges cross in a place inside both. Edges that touch, and those closer to touching than the
+// slack or than rounding can tell, do not.
+func (t *outlines) cross(e, f edge) bool {
+	for i := range e.a { // most edges that are compared lie apart
+		if max(e.a[i], e.b[i]) < min(f.a[i], f.b[i]) || max(f.a[i], f.b[i]) < min(e.a[i], e.b[i]) {
+			return false
+		}
+	}
+	on := t.slack * math.Hypot(e.b[0]-e.a[0], e.b[1]-e.a[1])
+	if side(e.a, e.b, f.a, on)*side(e.a, e.b, f.b, on) >= 0 {
+		return false
+	}
+	on = t.slack * math.Hypot(f.b[0]-f.a[0], f.b[1]-f.a[1])
+	return side(f.a, f.b, e.a, on)*side(f.a, f.b, e.b, on) < 0
 }
 
-// side returns 1 if c lies to the left of the line from a to b, -1 if to the right, and 0 if it lies on it or rounding
-// leaves it open: the error bound of the determinant is that of Shewchuk 1997, Discrete Comput. Geom. 18:305-363.
-func side(a, b, c orb.Point) int {
+// side returns 1 if c lies to the left of the line from a to b, -1 if to the right, and 0 if the triangle of the three is
+// no larger than half of on, or rounding leaves it open: the error bound of the determinant is that of Shewchuk 1997, Discrete
+// Comput. Geom. 18:305-363.
+func side(a, b, c orb.Point, on float64) int {
 	left, right := (a[0]-c[0])*(b[1]-c[1]), (a[1]-c[1])*(b[0]-c[0])
 	const unit = 1.0 / (1 << 53)
-	bound := (3 + 16*unit) * unit * (math.Abs(left) + math.Abs(right))
+	bound := math.Max(on, (3+16*unit)*unit*(math.Abs(left)+math.Abs(right)))
 	switch d := left - right; {
 	case d > bound:
 		return 1
@@ -154,6 +168,25 @@ func meeting(e, f edge) orb.Point {
 	ux, uy := f.b[0]-f.a[0], f.b[1]-f.a[1]
 	s := ((f.a[0]-e.a[0])*uy - (f.a[1]-e.a[1])*ux) / (dx*uy - dy*ux)
 	return orb.Point{e.a[0] + s*dx, e.a[1] + s*dy}
+}
+
+// mostComparisons bounds the work on a ring whose crossings are looked for with slack.
+const mostComparisons = 1 << 24
+
+// Crossing returns a place at which a closed ring crosses itself, and whether there is one: a ring is simple (OGC 06-103r4,
+// section 6.1.11). To touch itself is let pass, and so is to cross by no more than slack, a distance. Outlines as found on
+// maps take a few comparisons for each edge; one so tangled that it takes far more passes.
+func Crossing(r orb.Ring, slack float64) (at orb.Point, crosses bool) {
+	t := newOutlines(orb.Polygon{r})
+	if len(t.edges) == 0 {
+		return orb.Point{}, false
+	}
+	t.slack, t.most = slack, mostComparisons
+	t.crossSelf(0, 0, len(t.edges))
+	if !t.crossed {
+		return orb.Point{}, false
+	}
+	return meeting(t.edges[t.first], t.edges[t.second]), true
 }
 
 // isOutside reports whether a ring that does not cross the outer one lies outside of it. Midpoints of up to 8 of its

@@ -108,11 +108,7 @@ func (out *writer) shape(row int, name string, shape orb.Geometry) error {
 	if shape != nil && shape.Bound().IsEmpty() {
 		shape = nil
 	}
-	written, err := out.turned(shape)
-	if err != nil {
-		return err
-	}
-	return out.put(row, name, written)
+	return out.feature(row, name, shape)
 }
 
 // writer writes a FeatureCollection, one feature a line.
