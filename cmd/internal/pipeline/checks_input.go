@@ -9,8 +9,6 @@ import (
 	"drumlin/grids"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
-
-	"github.com/paulmach/orb"
 )
 
 // inputChecks look at the observations themselves, for what is likely a mistake and yet can be fitted.
@@ -50,23 +48,19 @@ func rowsLie(rows []int, number []int32) string {
 // atZero returns the rows at exactly 0, 0 in their own coordinates, if 0, 0 lies apart from where the others are.
 func (o *observations) atZero() (rows []int) {
 	x, y := o.table.XY()
-	var others orb.MultiPoint
+	left, right, low, high := math.Inf(1), math.Inf(-1), math.Inf(1), math.Inf(-1)
 	for i := range o.own {
 		if x[i] == 0 && y[i] == 0 {
 			rows = append(rows, i)
-		} else {
-			others = append(others, orb.Point{x[i], y[i]})
+			continue
 		}
+		left, right, low, high = min(left, x[i]), max(right, x[i]), min(low, y[i]), max(high, y[i])
 	}
-	if len(rows) == 0 || len(others) == 0 {
+	gapX, gapY := max(left, -right), max(low, -high) // above 0 where 0 lies outside of the others
+	if len(rows) == o.own || !(gapX > (right-left)/2 || gapY > (high-low)/2) {
 		return nil
 	}
-	b := others.Bound()
-	gapX, gapY := max(b.Min[0], -b.Max[0]), max(b.Min[1], -b.Max[1]) // above 0 where 0 lies outside of the others
-	if gapX > (b.Max[0]-b.Min[0])/2 || gapY > (b.Max[1]-b.Min[1])/2 {
-		return rows
-	}
-	return nil
+	return rows
 }
 
 // maybeDegrees reports whether coordinates that nothing was said of could be longitude and latitude: they lie in their
@@ -108,6 +102,9 @@ func (r *run) repeatedCheck() summary.Check {
 // repeated returns the rows that are like an earlier one in place and in every column that was read, and the row that
 // the first of them is like.
 func (o *observations) repeated() (rows []int, first int) {
+	if len(o.placeX) == o.own { // as many places as rows
+		return nil, 0
+	}
 	x, y := o.table.XY()
 	seen := map[string]int{}
 	var key []byte

@@ -104,6 +104,27 @@ func (r *run) hold(h plan.Hold) error {
 	return nil
 }
 
+// pick takes the values of covariates at some places, which may come more than once.
+func pick(list []spatial.Covariate, places []int) []spatial.Covariate {
+	var picked []spatial.Covariate
+	for _, c := range list {
+		p := spatial.Covariate{Name: c.Name, Level: c.Level}
+		if c.Number != nil {
+			p.Number = make([]float64, len(places))
+			for k, i := range places {
+				p.Number[k] = c.Number[i]
+			}
+		} else {
+			p.Code = make([]int32, len(places))
+			for k, i := range places {
+				p.Code[k] = c.Code[i]
+			}
+		}
+		picked = append(picked, p)
+	}
+	return picked
+}
+
 // heldAt repeats the values that covariates are held at for n places.
 func heldAt(held []spatial.Covariate, n int) []spatial.Covariate {
 	var list []spatial.Covariate
@@ -187,9 +208,10 @@ func (r *run) covariatesAt(ctx context.Context, t *observe.Table) error {
 			continue
 		}
 		if own == nil {
-			if i := slices.Index(whole, false); i >= 0 {
-				return &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), What: "a layer has no value there, or one that was not observed",
-					Advice: "take the place out, or give its covariates as columns"}
+			if len(whole) < t.Len() {
+				fault := atRow(t, firstMissing(whole))
+				fault.What, fault.Advice = "a layer has no value there, or one that was not observed", "take the place out, or give its covariates as columns"
+				return fault
 			}
 			k := slices.IndexFunc(sampled, func(s spatial.Covariate) bool { return s.Name == c.Name })
 			r.target.covariates, r.target.layers = append(r.target.covariates, sampled[k]), append(r.target.layers, sampled[k])

@@ -55,14 +55,7 @@ func (r *run) overall() float64 {
 	var y, e float64
 	for i, v := range r.obs.data.Response[:r.obs.own] {
 		y += v
-		switch {
-		case r.obs.data.Exposure != nil:
-			e += r.obs.data.Exposure[i]
-		case r.obs.data.Trials != nil:
-			e += r.obs.data.Trials[i]
-		default:
-			e++
-		}
+		e += r.behind(i)
 	}
 	return y / e
 }

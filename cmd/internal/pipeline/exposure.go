@@ -48,11 +48,17 @@ func amount(t *observe.Table, a plan.Amount) []float64 {
 	return repeat(a.Number, t.Len())
 }
 
+// atRow is a fault of a row, whose place in the file it has.
+func atRow(t *observe.Table, i int) *observe.Error {
+	return &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i])}
+}
+
 // faultIn blames a row's value in a column.
 func faultIn(t *observe.Table, i int, column string, v float64, what, advice string) error {
-	value := strconv.FormatFloat(v, 'g', -1, 64)
-	return &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), Column: column, Value: value,
-		What: value + " " + what, Advice: advice}
+	fault := atRow(t, i)
+	fault.Column, fault.Value, fault.Advice = column, strconv.FormatFloat(v, 'g', -1, 64), advice
+	fault.What = fault.Value + " " + what
+	return fault
 }
 
 // sharedFactor is the factor of the exposure that rows share and that is known with an error; nil where none is named.

@@ -13,6 +13,7 @@ import (
 	"drumlin/spatial"
 
 	"github.com/paulmach/orb"
+	"github.com/paulmach/orb/encoding/wkb"
 )
 
 // project puts the rows into the plane: degrees into an equal-area plane around them, a plane as it is. Rows that are
@@ -120,9 +121,11 @@ func (o *observations) findPlaces(s plan.Settings) error {
 			}
 			o.places = append(o.places, place{name: o.nameOf(i, s), shape: shape, first: i})
 		} else if first := o.places[k].first; !orb.Equal(o.table.Geometry[first], g) {
-			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: s.Key.Column, Value: o.places[k].name,
-				What:   fmt.Sprintf("%q lies elsewhere than in row %d", o.places[k].name, o.table.Row[first]),
-				Advice: "give every place one location, or a key of its own; without --key places are told apart by where they are"}
+			fault := atRow(o.table, i)
+			fault.Column, fault.Value = s.Key.Column, o.places[k].name
+			fault.What = fmt.Sprintf("%q lies elsewhere than in row %d", o.places[k].name, o.table.Row[first])
+			fault.Advice = "give every place one location, or a key of its own; without --key places are told apart by where they are"
+			return fault
 		}
 		if i < o.own {
 			o.places[k].rows = append(o.places[k].rows, i)
@@ -141,7 +144,7 @@ func (o *observations) identity(i int, s plan.Settings) string {
 	if s.Key != nil && o.table.Column(s.Key.Column).Code[i] >= 0 {
 		return whose + o.nameOf(i, s)
 	}
-	return whose + "at " + coordinatesOf(o.table.Geometry[i])
+	return whose + "at " + string(wkb.MustMarshal(o.table.Geometry[i]))
 }
 
 // nameOf is what the place of a row is called: its key, or the number of the row.
@@ -170,8 +173,8 @@ func inPlane(t *observe.Table, i int, system crs.System) (orb.Geometry, error) {
 
 // faultAt blames the geometry of a row.
 func faultAt(t *observe.Table, i int, err error) error {
-	fault := &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), What: err.Error(), Cause: err,
-		Advice: "correct the geometry, or take the row out"}
+	fault := atRow(t, i)
+	fault.What, fault.Cause, fault.Advice = err.Error(), err, "correct the geometry, or take the row out"
 	var hinted interface{ Hint() string }
 	if errors.As(err, &hinted) {
 		fault.Advice = hinted.Hint()
@@ -282,53 +285,6 @@ func (o *observations) ownAreas() orb.MultiPolygon {
 	return all
 }
 
-// coordinatesOf is a text that two geometries share if they are the same.
-func coordinatesOf(g orb.Geometry) string {
-	if p, ok := g.(orb.Point); ok {
-		return string(appendPoint(nil, p))
-	}
-	text := []byte(g.GeoJSONType())
-	var lines func(list []orb.Point)
-	lines = func(list []orb.Point) {
-		for _, p := range list {
-			text = appendPoint(text, p)
-		}
-		text = append(text, ';')
-	}
-	switch g := g.(type) {
-	case orb.MultiPoint:
-		lines(g)
-	case orb.LineString:
-		lines(g)
-	case orb.MultiLineString:
-		for _, l := range g {
-			lines(l)
-		}
-	case orb.Polygon:
-		for _, r := range g {
-			lines(r)
-		}
-	case orb.MultiPolygon:
-		for _, p := range g {
-			for _, r := range p {
-				lines(r)
-			}
-			text = append(text, '|')
-		}
-	}
-	return string(text)
-}
-
-func appendPoint(text []byte, p orb.Point) []byte {
-	for _, v := range p {
-		b := math.Float64bits(v)
-		for k := 0; k < 64; k += 8 {
-			text = append(text, byte(b>>k))
-		}
-	}
-	return text
-}
-
 // inRangeOfDegrees reports whether all coordinates could be degrees. In a national or world-wide plane that would be one
 // spot of some hundred metres at its origin, where nobody is.
 func inRangeOfDegrees(x, y []float64) bool {
@@ -345,9 +301,10 @@ func (o *observations) onThePlane(x, y []float64) error {
 	for i := range x {
 		if scale := o.system.AreaScale(x[i], y[i]); math.IsNaN(x[i]) || math.IsNaN(scale) {
 			p := o.table.Geometry[i].Bound().Min
-			return &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]),
-				What:   fmt.Sprintf("the place (%g, %g) lies outside of %s", p[0], p[1], o.system.Code()),
-				Advice: "say what the coordinates are with --crs, or name their columns with --x and --y"}
+			fault := atRow(o.table, i)
+			fault.What = fmt.Sprintf("the place (%g, %g) lies outside of %s", p[0], p[1], o.system.Code())
+			fault.Advice = "say what the coordinates are with --crs, or name their columns with --x and --y"
+			return fault
 		}
 	}
 	return nil

@@ -20,7 +20,8 @@ import (
 // layer is a raster that gives a covariate.
 type layer struct {
 	name     string
-	category bool // values are classes: the nearest cell counts, and nothing in between
+	source   string // name of the file
+	category bool   // values are classes: the nearest cell counts, and nothing in between
 	raster   *geotiff.Raster
 	file     *os.File
 	band     int
@@ -52,9 +53,9 @@ func openLayer(l plan.Layer, s plan.Settings, o *observations) (layer, error) {
 	if err != nil {
 		return layer{}, err
 	}
-	one := layer{name: l.Name, category: slices.Contains(s.Categories(), l.Name), raster: raster, file: file}
+	one := layer{name: l.Name, source: filepath.Base(l.Path), category: slices.Contains(s.Categories(), l.Name), raster: raster, file: file}
 	if one.band, err = one.bandFor(); err == nil {
-		one.onto, err = ontoRaster(raster, o, filepath.Base(l.Path))
+		one.onto, err = ontoRaster(raster, o, one.source)
 	}
 	if err != nil {
 		file.Close()
@@ -71,7 +72,7 @@ func (l layer) bandFor() (int, error) {
 	if len(l.raster.Bands) == 1 {
 		return 0, nil
 	}
-	return 0, absentColumn(filepath.Base(l.file.Name()), l.name, "the layer", rasterColumns(l.raster)[2:])
+	return 0, absentColumn(l.source, l.name, "the layer", rasterColumns(l.raster)[2:])
 }
 
 // ontoRaster leads from the plane of the observations to the coordinates of a raster. One that does not say what its
@@ -127,7 +128,7 @@ func (l layer) sample(ctx context.Context, x, y []float64) ([]float64, error) {
 	}
 	wide, high := east-west+1, south-north+1
 	if wide*high > mostWindow {
-		return nil, refuse("cut it to the study area, or make its cells larger", "%s: %d x %d cells of the layer lie in the study area, more than can be held", filepath.Base(l.file.Name()), wide, high)
+		return nil, refuse("cut it to the study area, or make its cells larger", "%s: %d x %d cells of the layer lie in the study area, more than can be held", l.source, wide, high)
 	}
 	if err := ctx.Err(); err != nil {
 		return nil, err
@@ -196,23 +197,18 @@ func (r *run) sampleRows(ctx context.Context, o *observations) (aside bool, err 
 				lacking = append(lacking, i)
 			}
 		}
-		if 2*len(lacking) > len(value) {
+		switch {
+		case 2*len(lacking) > len(value):
 			return false, refuse("check that the layer covers the observations and has their coordinate system",
-				"%s: the layer has no value at %d of %d observations", filepath.Base(l.file.Name()), len(lacking), len(value))
-		}
-		if len(lacking) > 0 && *r.settings.Strict {
-			i := lacking[0]
-			return false, &observe.Error{File: o.table.Source, Line: int(o.table.Line[i]), Row: int(o.table.Row[i]), Column: l.name,
-				What: "the layer has no value there", Advice: "take the row out, or leave out --strict to set such rows aside"}
-		}
-		if len(lacking) > 0 {
-			own := 0
-			for _, i := range lacking {
-				if i < o.own {
-					own++
-				}
-			}
+				"%s: the layer has no value at %d of %d observations", l.source, len(lacking), len(value))
+		case len(lacking) > 0 && *r.settings.Strict:
+			fault := atRow(o.table, lacking[0])
+			fault.Column, fault.What = l.name, "the layer has no value there"
+			fault.Advice = "take the row out, or leave out --strict to set such rows aside"
+			return false, fault
+		case len(lacking) > 0:
 			o.table.SetAside(lacking, l.name, "missing-layer", "the layer has no value there")
+			own, _ := slices.BinarySearch(lacking, o.own)
 			o.own -= own
 			return true, nil
 		}
@@ -258,27 +254,27 @@ func (l layer) columnOf(value []float64) observe.Column {
 	return observe.Column{Name: l.name, Code: codesOf(value, level), Level: level}
 }
 
-// codesOf finds the level of each number, -1 where it is none of them.
+// codesOf finds each number among sorted levels, -1 where it is none of them.
 func codesOf(value []float64, level []string) []int32 {
 	code := make([]int32, len(value))
 	for i, v := range value {
-		code[i] = int32(slices.Index(level, strconv.FormatFloat(v, 'g', -1, 64)))
+		code[i] = -1
+		if k, found := slices.BinarySearch(level, strconv.FormatFloat(v, 'g', -1, 64)); found {
+			code[i] = int32(k)
+		}
 	}
 	return code
 }
 
-// sampleCells returns the layers' covariates at places of the plane, and which of these have all of them, of a level that
-// was observed.
-func (r *run) sampleCells(ctx context.Context, x, y []float64) (list []spatial.Covariate, whole []bool, err error) {
-	whole = make([]bool, len(x))
-	for k := range whole {
-		whole[k] = true
-	}
+// sampleCells returns the layers' covariates at places of the plane, and the places that have all of them, of a level that
+// was observed, ascending.
+func (r *run) sampleCells(ctx context.Context, x, y []float64) (list []spatial.Covariate, whole []int, err error) {
 	layers, err := openLayers(r.settings, r.obs)
 	if err != nil {
 		return nil, nil, err
 	}
 	defer closeLayers(layers)
+	lacks := make([]bool, len(x))
 	for _, l := range layers {
 		value, err := l.sample(ctx, x, y)
 		if err != nil {
@@ -288,35 +284,28 @@ func (r *run) sampleCells(ctx context.Context, x, y []float64) (list []spatial.C
 		if l.category {
 			c = spatial.Covariate{Name: l.name, Level: r.obs.table.Column(l.name).Level}
 			c.Code = codesOf(value, c.Level)
-			for k, code := range c.Code {
-				whole[k] = whole[k] && code >= 0
-			}
 		}
 		for k, v := range value {
-			whole[k] = whole[k] && !math.IsNaN(v) && !math.IsInf(v, 0)
+			lacks[k] = lacks[k] || math.IsNaN(v) || math.IsInf(v, 0) || l.category && c.Code[k] < 0
 		}
 		list = append(list, c)
+	}
+	for k, lack := range lacks {
+		if !lack {
+			whole = append(whole, k)
+		}
 	}
 	return list, whole, nil
 }
 
-// keepAt keeps the values of covariates at some places.
-func keepAt(list []spatial.Covariate, keep []bool) []spatial.Covariate {
-	var kept []spatial.Covariate
-	for _, c := range list {
-		k := spatial.Covariate{Name: c.Name, Level: c.Level}
-		for i, there := range keep {
-			switch {
-			case !there:
-			case c.Number != nil:
-				k.Number = append(k.Number, c.Number[i])
-			default:
-				k.Code = append(k.Code, c.Code[i])
-			}
+// firstMissing is the first number from 0 up that is not in an ascending list.
+func firstMissing(list []int) int {
+	for k, v := range list {
+		if k != v {
+			return k
 		}
-		kept = append(kept, k)
 	}
-	return kept
+	return len(list)
 }
 
 // join puts the values of covariates at further places behind those at the first.
@@ -350,20 +339,19 @@ func (r *run) layCells(ctx context.Context, t *target) error {
 	if err != nil {
 		return err
 	}
-	t.layers = keepAt(list, whole)
-	kept := target{}
-	for k, c := range t.cells {
-		if !whole[k] {
-			t.lattice.Mask[c] = false
-			t.masked++
-			continue
-		}
-		kept.cells = append(kept.cells, c)
-		kept.places.X, kept.places.Y = append(kept.places.X, t.places.X[k]), append(kept.places.Y, t.places.Y[k])
-	}
-	if len(kept.cells) == 0 {
+	if len(whole) == 0 {
 		return refuse("check that the layers cover the study area and have its coordinate system, and that their classes are those of the observations",
 			"no cell of the map has a value in every layer")
+	}
+	t.layers, t.masked = pick(list, whole), len(t.cells)-len(whole)
+	kept := target{}
+	for _, k := range whole {
+		kept.cells = append(kept.cells, t.cells[k])
+		kept.places.X, kept.places.Y = append(kept.places.X, t.places.X[k]), append(kept.places.Y, t.places.Y[k])
+	}
+	clear(t.lattice.Mask)
+	for _, c := range kept.cells {
+		t.lattice.Mask[c] = true
 	}
 	t.cells, t.places = kept.cells, kept.places
 	return nil

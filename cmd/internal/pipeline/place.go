@@ -39,6 +39,15 @@ type target struct {
 
 func (t *target) own() bool { return t.cells == nil }
 
+// placeOf tells which place each cell of the lattice is, counted from 1; 0 for a cell that is not of the map.
+func (t *target) placeOf() []int32 {
+	of := make([]int32, t.lattice.Cells())
+	for k, c := range t.cells {
+		of[c] = int32(k) + 1
+	}
+	return of
+}
+
 // knotsAcross is the fineness, in cells along the longer side, at which the study area is searched for gaps. It is apart
 // from the map's lattice so that errors do not depend on the map's resolution.
 const knotsAcross = 60
@@ -206,13 +215,15 @@ func (r *run) placeAt(ctx context.Context, path string) error {
 		want.X, want.Y = *s.X, *s.Y
 	}
 	held := r.heldNames()
-	have, err := columnsOf(ctx, path, want.Format)
-	if err != nil {
-		return err
-	}
-	for _, l := range s.Layer {
-		if !slices.Contains(have, l.Name) {
-			held[l.Name] = true // not of the table: a layer gives it
+	if len(s.Layer) > 0 {
+		have, err := columnsOf(ctx, path, want.Format)
+		if err != nil {
+			return err
+		}
+		for _, l := range s.Layer {
+			if !slices.Contains(have, l.Name) {
+				held[l.Name] = true // not of the table: a layer gives it
+			}
 		}
 	}
 	want.Optional = s.Group

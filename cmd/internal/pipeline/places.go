@@ -27,7 +27,7 @@ type placeResults struct {
 	crude, crudeLower, crudeUpper []float64 // limits are nil where they are not exact
 	smoothed                      *estimates
 	unseen                        int // places where nobody looked
-	points, fewest, most          int // that stand for areas and lines, in all and for one
+	fewest, most                  int // points that stand for an area or a line
 	areas, lines, spots           int // places of each kind
 }
 
@@ -75,7 +75,6 @@ func (p *placeResults) count(o *observations) {
 				p.fewest = n
 			}
 			p.most = max(p.most, n)
-			p.points += n
 		}
 	}
 }
@@ -136,53 +135,46 @@ func (r *run) behind(i int) float64 {
 }
 
 // levelsOf returns the linear predictor of the mean over each place and its standard error, by the delta method: the mean
-// over its rows, each counting with what is behind it, and over the points of a row.
+// over its rows, each counting with what is behind it, and over the points of a row. They are NaN for a place without rows
+// where the map needs covariates.
 func (r *run) levelsOf(ctx context.Context, places []place) (eta, se []float64, err error) {
 	var seen, unseen gathered
-	index := make([]int, len(places)) // of the sums: seen from 0 up, unseen from -1 down
 	for k, one := range places {
 		if len(one.rows) > 0 {
-			index[k] = len(seen.sets)
-			r.gather(&seen, one)
-			continue
-		}
-		index[k] = -1 - len(unseen.sets)
-		if err := r.gatherUnseen(&unseen, one); err != nil {
-			return nil, nil, err
-		}
-	}
-	of, err := r.surface.Sums(ctx, seen.at, r.covariatesOf(seen.row), seen.sets, 0, 0)
-	if err != nil {
-		return nil, nil, err
-	}
-	var ofUnseen []spatial.Sum
-	if len(unseen.sets) > 0 && !r.needsCovariates() {
-		if ofUnseen, err = r.surface.Sums(ctx, unseen.at, nil, unseen.sets, 0, 0); err != nil {
-			return nil, nil, err
+			r.gather(&seen, k, one)
+		} else if !r.needsCovariates() {
+			if err := r.gatherUnseen(&unseen, k, one); err != nil {
+				return nil, nil, err
+			}
 		}
 	}
 	eta, se = repeat(notKnown, len(places)), repeat(notKnown, len(places))
-	for k, at := range index {
-		var sum spatial.Sum
-		switch {
-		case at >= 0:
-			sum = of[at]
-		case ofUnseen != nil:
-			sum = ofUnseen[-1-at]
-		default:
+	for _, of := range []struct {
+		gathered
+		covariates []spatial.Covariate
+	}{{seen, pick(r.obs.data.Covariates, seen.row)}, {unseen, nil}} {
+		if len(of.sets) == 0 {
 			continue
 		}
-		eta[k] = r.surface.Linear(sum.Value)
-		se[k] = sum.Delta / math.Abs(r.surface.MeanSlope(eta[k]))
+		sums, err := r.surface.Sums(ctx, of.at, of.covariates, of.sets, 0, 0)
+		if err != nil {
+			return nil, nil, err
+		}
+		for n, sum := range sums {
+			k := of.place[n]
+			eta[k] = r.surface.Linear(sum.Value)
+			se[k] = sum.Delta / math.Abs(r.surface.MeanSlope(eta[k]))
+		}
 	}
 	return eta, se, nil
 }
 
 // gathered are points with the sets of them that are averaged.
 type gathered struct {
-	at   spatial.Places
-	row  []int // of each point
-	sets []spatial.Share
+	at    spatial.Places
+	row   []int // of each point
+	sets  []spatial.Share
+	place []int // of each set
 }
 
 func (g *gathered) add(set *spatial.Share, x, y, weight float64, row int) {
@@ -190,8 +182,13 @@ func (g *gathered) add(set *spatial.Share, x, y, weight float64, row int) {
 	g.at.X, g.at.Y, g.row = append(g.at.X, x), append(g.at.Y, y), append(g.row, row)
 }
 
+// close ends the set of a place.
+func (g *gathered) close(set spatial.Share, place int) {
+	g.sets, g.place = append(g.sets, set), append(g.place, place)
+}
+
 // gather adds the points of a place with rows.
-func (r *run) gather(g *gathered, one place) {
+func (r *run) gather(g *gathered, k int, one place) {
 	var set spatial.Share
 	all := 0.0
 	for _, i := range one.rows {
@@ -208,47 +205,26 @@ func (r *run) gather(g *gathered, one place) {
 			g.add(&set, at.X[q], at.Y[q], share*at.Share[q], i)
 		}
 	}
-	g.sets = append(g.sets, set)
+	g.close(set, k)
 }
 
 // gatherUnseen adds the points of a place where nobody looked.
-func (r *run) gatherUnseen(g *gathered, one place) error {
+func (r *run) gatherUnseen(g *gathered, k int, one place) error {
 	q, err := grids.QuadratureOf(one.shape, r.obs.system, r.obs.apart)
 	if err != nil {
 		return refuse("correct the geometry", "%s: %q: %w", r.joins.placesSide().name, one.name, err)
 	}
 	var set spatial.Share
-	for k := range q.X {
-		g.add(&set, q.X[k], q.Y[k], q.Share[k], -1)
+	for i := range q.X {
+		g.add(&set, q.X[i], q.Y[i], q.Share[i], -1)
 	}
-	g.sets = append(g.sets, set)
+	g.close(set, k)
 	return nil
 }
 
 // needsCovariates reports whether the map's own model has covariates that a place without rows does not have.
 func (r *run) needsCovariates() bool {
 	return slices.ContainsFunc(r.obs.data.Covariates, func(c spatial.Covariate) bool { return r.mapNeeds(c.Name) })
-}
-
-// covariatesOf gives each point the covariates of its row.
-func (r *run) covariatesOf(row []int) []spatial.Covariate {
-	var list []spatial.Covariate
-	for _, c := range r.obs.data.Covariates {
-		own := spatial.Covariate{Name: c.Name, Level: c.Level}
-		if c.Number != nil {
-			own.Number = make([]float64, len(row))
-			for k, i := range row {
-				own.Number[k] = c.Number[i]
-			}
-		} else {
-			own.Code = make([]int32, len(row))
-			for k, i := range row {
-				own.Code[k] = c.Code[i]
-			}
-		}
-		list = append(list, own)
-	}
-	return list
 }
 
 // columns returns places.csv after the place's name.

@@ -25,10 +25,7 @@ func (r *run) writeRaster(ctx context.Context, w io.Writer) error {
 		}
 	}
 	l := r.target.lattice
-	at := make([]int32, l.Cells()) // place of a cell, from 1
-	for k, c := range r.target.cells {
-		at[c] = int32(k) + 1
-	}
+	at := r.target.placeOf()
 	return geotiff.Write(ctx, w, geotiff.GridOf(l, names), func(band, y int, dst []float32) error {
 		for x := range dst {
 			dst[x] = float32(math.NaN())

@@ -3,6 +3,7 @@ package pipeline
 import (
 	"bytes"
 	"context"
+	"encoding/csv"
 	"fmt"
 	"io"
 	"math"
@@ -19,10 +20,7 @@ import (
 const mostRasterRows = 10_000
 
 // thinning says which cells of a raster are rows: every step-th in both directions.
-type thinning struct {
-	step, cells int
-	side        float64 // between cells that are rows, in the unit of the raster
-}
+type thinning struct{ step, cells int }
 
 // rasterSource is a raster whose cells are observations. Its checksum is told to sum, and what was left out to thin.
 func rasterSource(path string, sum *string, thin *thinning) source {
@@ -39,8 +37,12 @@ func rasterSource(path string, sum *string, thin *thinning) source {
 	}
 }
 
-// isRaster reports whether a file is a raster, by how it begins.
+// isRaster reports whether a file is a raster, by how it begins. What comes through a pipe is none: it can be read once, and
+// a raster is read here and there.
 func isRaster(path string) (bool, error) {
+	if info, err := os.Stat(path); err == nil && !info.Mode().IsRegular() {
+		return false, nil
+	}
 	f, err := openFile(path)
 	if err != nil {
 		return false, err
@@ -125,13 +127,9 @@ func cellsAsText(ctx context.Context, r *geotiff.Raster, band int) ([]byte, thin
 	}
 	step := max(1, int(math.Ceil(math.Sqrt(float64(cells)/mostRasterRows))))
 	var b bytes.Buffer
-	for k, name := range rasterColumns(r) {
-		if k > 0 {
-			b.WriteByte(',')
-		}
-		b.WriteString(strconv.Quote(name))
-	}
-	b.WriteByte('\n')
+	out := csv.NewWriter(&b)
+	out.Write(rasterColumns(r)) // into memory: it cannot fail
+	record := make([]string, 2+len(r.Bands))
 	rows := make([][]float64, len(r.Bands))
 	for k := range rows {
 		rows[k] = make([]float64, r.Width)
@@ -150,27 +148,23 @@ func cellsAsText(ctx context.Context, r *geotiff.Raster, band int) ([]byte, thin
 				continue
 			}
 			cx, cy := r.Centre(x, y)
-			writeNumbers(&b, cx, cy)
+			record[0], record[1] = written(cx), written(cy)
 			for k := range rows {
-				b.WriteByte(',')
-				writeNumbers(&b, rows[k][x])
+				record[2+k] = written(rows[k][x])
 			}
-			b.WriteByte('\n')
+			out.Write(record)
 		}
 	}
-	return b.Bytes(), thinning{step: step, cells: cells, side: float64(step) * math.Max(r.CellX, r.CellY)}, nil
+	out.Flush()
+	return b.Bytes(), thinning{step: step, cells: cells}, nil
 }
 
-// writeNumbers writes numbers to all their digits, nothing for one that is not there.
-func writeNumbers(b *bytes.Buffer, list ...float64) {
-	for k, v := range list {
-		if k > 0 {
-			b.WriteByte(',')
-		}
-		if !math.IsNaN(v) {
-			b.WriteString(strconv.FormatFloat(v, 'g', -1, 64))
-		}
+// written is a number to all its digits, or nothing for one that is not there.
+func written(v float64) string {
+	if math.IsNaN(v) {
+		return ""
 	}
+	return strconv.FormatFloat(v, 'g', -1, 64)
 }
 
 // countCells counts the cells that have a value.
@@ -194,7 +188,7 @@ func countCells(ctx context.Context, r *geotiff.Raster, band int) (n int, err er
 	return n, nil
 }
 
-// thinned says in words which cells of a raster are rows.
+// words say which cells of a raster are rows.
 func (t thinning) words() string {
 	if t.step <= 1 {
 		return ""

@@ -98,14 +98,9 @@ func (r *run) read(ctx context.Context) error {
 
 // readRows reads the region's own rows.
 func (r *run) readRows(ctx context.Context, o *observations, want observe.Request) error {
-	from := fileSource(*r.settings.Observations, want.Format, &o.sha256)
-	if raster, err := r.isRaster(); err != nil {
+	from, err := r.source(o, want.Format)
+	if err != nil {
 		return err
-	} else if raster {
-		from = rasterSource(*r.settings.Observations, &o.sha256, &o.thinned)
-	}
-	if r.region != nil && r.region.Rows != nil {
-		from, o.sha256 = partSource(*r.region.Rows), r.region.Rows.SHA256()
 	}
 	got, err := r.rowsOf(ctx, from, want)
 	if err != nil {
@@ -115,12 +110,18 @@ func (r *run) readRows(ctx context.Context, o *observations, want observe.Reques
 	return nil
 }
 
-// isRaster reports whether the observations are the cells of a raster.
-func (r *run) isRaster() (bool, error) {
+// source is where the region's own rows are read from. Its checksum is told when they are, and how a raster was thinned.
+func (r *run) source(o *observations, format observe.Format) (source, error) {
 	if r.region != nil && r.region.Rows != nil {
-		return false, nil
+		o.sha256 = r.region.Rows.SHA256()
+		return partSource(*r.region.Rows), nil
 	}
-	return isRaster(*r.settings.Observations)
+	path := *r.settings.Observations
+	raster, err := isRaster(path)
+	if raster {
+		return rasterSource(path, &o.sha256, &o.thinned), nil
+	}
+	return fileSource(path, format, &o.sha256), err
 }
 
 // readBeyond adds the rows of neighbouring regions. What is wrong with them is told where they are reported.
@@ -232,17 +233,19 @@ func lostKeys(ctx context.Context, t *observe.Table, from source, key string, fo
 
 // withinReach refuses a measurement that its distribution cannot have. To set such rows aside would raise the level.
 func withinReach(t *observe.Table, response, distribution string) error {
+	if distribution != plan.Gamma && distribution != plan.Tweedie {
+		return nil
+	}
 	for i, y := range t.Column(response).Number {
-		fault := &observe.Error{File: t.Source, Line: int(t.Line[i]), Row: int(t.Row[i]), Column: response,
-			Value: strconv.FormatFloat(y, 'g', -1, 64)}
-		switch {
-		case distribution == plan.Gamma && y == 0:
-			fault.What, fault.Advice = "a gamma distribution has no 0", "use --distribution tweedie, in which amounts can be 0"
-		case (distribution == plan.Gamma || distribution == plan.Tweedie) && y < 0:
+		if y > 0 || y == 0 && distribution == plan.Tweedie {
+			continue
+		}
+		fault := atRow(t, i)
+		fault.Column, fault.Value = response, strconv.FormatFloat(y, 'g', -1, 64)
+		fault.What, fault.Advice = "a gamma distribution has no 0", "use --distribution tweedie, in which amounts can be 0"
+		if y < 0 {
 			fault.What = "a " + distribution + " distribution has no negative values: " + strconv.Quote(fault.Value)
 			fault.Advice = "correct the row, or use --distribution gaussian"
-		default:
-			continue
 		}
 		return fault
 	}

@@ -4,7 +4,6 @@ import (
 	"context"
 	"math"
 
-	"drumlin/grids"
 	"drumlin/io/plan"
 	"drumlin/io/summary"
 	"drumlin/spatial"
@@ -49,22 +48,20 @@ func (r *run) addUpRegion(ctx context.Context) error {
 // wholeMap is the study area: what of each cell lies in its polygons, once where they overlap, and the whole of every cell
 // of the map where there are none; with its area, both in units of so many square metres.
 func (r *run) wholeMap(cells summable, unit float64) (all spatial.Share, ground float64) {
-	l := r.target.lattice
-	list, area := r.target.cells, []float64(nil)
-	if r.area.within != nil {
-		list, area = grids.SharesIn(l, r.area.within)
+	list := r.target.cells
+	if cells.within != nil {
+		list = cells.within
 	}
 	for k, c := range list {
-		place, mapped := cells.of[c]
-		if !mapped {
+		if cells.of[c] == 0 {
 			continue // a layer has no value there
 		}
-		a := l.CellAreaAt(c)
-		if area != nil {
-			a = math.Min(a, area[k])
+		a := r.target.lattice.CellAreaAt(c)
+		if cells.within != nil {
+			a = math.Min(a, cells.area[k])
 		}
 		ground += a / unit
-		all.Index, all.Weight = append(all.Index, place), append(all.Weight, a/unit)
+		all.Index, all.Weight = append(all.Index, cells.of[c]-1), append(all.Weight, a/unit)
 	}
 	return all, ground
 }

@@ -98,9 +98,9 @@ func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 		ground := 0.0
 		cells, area := grids.SharesIn(l, zone.Shape)
 		for k, c := range cells {
-			if place, mapped := sums.of[c]; mapped {
+			if place := sums.of[c]; place > 0 {
 				ground += area[k]
-				set.Index, set.Weight = append(set.Index, place), append(set.Weight, area[k]/squareMetres[z.unit])
+				set.Index, set.Weight = append(set.Index, place-1), append(set.Weight, area[k]/squareMetres[z.unit])
 			}
 		}
 		sets = append(sets, set)
@@ -127,24 +127,23 @@ func (r *run) sumZones(ctx context.Context, z *zoneResults) error {
 type summable struct {
 	places     spatial.Places
 	covariates []spatial.Covariate
-	of         map[int]int32 // place of each cell
+	of         []int32   // place of each cell of the lattice, counted from 1; 0 for a cell that is not added up
+	within     []int     // cells that the study area's polygons cover in part or whole; nil without polygons
+	area       []float64 // of the study area in each of them, in square metres
 }
 
 // summed lists the cells that are added up.
 func (r *run) summed(ctx context.Context) (summable, error) {
 	t := r.target
-	s := summable{places: t.places, covariates: t.covariates, of: make(map[int]int32, len(t.cells))}
-	for k, c := range t.cells {
-		s.of[c] = int32(k)
-	}
+	s := summable{places: t.places, covariates: t.covariates, of: t.placeOf()}
 	if r.area.within == nil {
 		return s, nil
 	}
+	s.within, s.area = grids.SharesIn(t.lattice, r.area.within)
 	var beside []int
 	var x, y []float64
-	cells, _ := grids.SharesIn(t.lattice, r.area.within)
-	for _, c := range cells {
-		if _, mapped := s.of[c]; !mapped {
+	for _, c := range s.within {
+		if s.of[c] == 0 {
 			cx, cy := t.lattice.Centre(c)
 			beside, x, y = append(beside, c), append(x, cx), append(y, cy)
 		}
@@ -154,13 +153,11 @@ func (r *run) summed(ctx context.Context) (summable, error) {
 		return s, err
 	}
 	s.places = spatial.Places{X: slices.Clone(t.places.X), Y: slices.Clone(t.places.Y)}
-	for k, c := range beside {
-		if whole[k] {
-			s.of[c] = int32(s.places.Len())
-			s.places.X, s.places.Y = append(s.places.X, x[k]), append(s.places.Y, y[k])
-		}
+	for _, k := range whole {
+		s.places.X, s.places.Y = append(s.places.X, x[k]), append(s.places.Y, y[k])
+		s.of[beside[k]] = int32(s.places.Len())
 	}
-	s.covariates = append(join(t.layers, keepAt(layers, whole)), heldAt(t.covariates[len(t.layers):], s.places.Len())...)
+	s.covariates = append(join(t.layers, pick(layers, whole)), heldAt(t.covariates[len(t.layers):], s.places.Len())...)
 	return s, nil
 }
 
