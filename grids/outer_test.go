@@ -32,6 +32,10 @@ func length(shape orb.MultiPolygon) (sum float64) {
 
 // TestOuterEdges: what neighbours share goes, and the area that is enclosed stays.
 func TestOuterEdges(t *testing.T) {
+	tenth := 0.1 // not a constant, whose sums would be exact
+	if 10.2+tenth == 10+3*tenth {
+		t.Fatal("the two sums are the same number")
+	}
 	ring := orb.Polygon{box(0, 0, 3, 3)[0], {{1, 1}, {1, 2}, {2, 2}, {2, 1}, {1, 1}}}
 	for _, c := range []struct {
 		name         string
@@ -46,6 +50,8 @@ func TestOuterEdges(t *testing.T) {
 		{"a hole that is filled", orb.MultiPolygon{ring, box(1, 1, 2, 2)}, 1, 12, 9},
 		{"a hole that is not", orb.MultiPolygon{ring}, 2, 16, 8},
 		{"the same twice", orb.MultiPolygon{box(0, 0, 1, 1), box(0, 0, 1, 1)}, 2, 8, 2},
+		{"side by side up to rounding", orb.MultiPolygon{box(10, 0, 10.2+tenth, 1), box(10+3*tenth, 0, 11, 1)}, 1, 4, 1},
+		{"with a gap", orb.MultiPolygon{box(0, 0, 1, 1), box(1.00001, 0, 2.00001, 1)}, 2, 8, 2},
 		{"nothing", nil, 0, 0, 0},
 	} {
 		got := OuterEdges(c.shape)

@@ -43,11 +43,18 @@ func (r *run) draft() draft.Draft {
 			d.ShapeName = p.names()
 		}
 		d.ShapeEstimate, d.ShapeRelative = p.smoothed.estimate, p.smoothed.relative
-		if p.areas == len(p.places) {
-			d.PlaceX, d.PlaceY = nil, nil // the areas are drawn, and a mark in the middle of each would say less
-		}
+	}
+	if !r.marked() {
+		d.PlaceX, d.PlaceY = nil, nil
 	}
 	return d
+}
+
+// marked reports whether observations get a mark on the map: not areas, whose borders say more than a mark in the middle,
+// and not the cells of a raster, which are everywhere.
+func (r *run) marked() bool {
+	areas := r.byPlace != nil && r.byPlace.areas == len(r.byPlace.places)
+	return !areas && r.obs.thinned.step == 0
 }
 
 // subtitle says what the map is adjusted to.

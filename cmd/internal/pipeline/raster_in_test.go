@@ -140,3 +140,17 @@ func TestIsolinesFile(t *testing.T) {
 		t.Errorf("bands %+v", bands)
 	}
 }
+
+// TestMarks: observations are marked on a map but for areas, whose borders are drawn, and cells, which are everywhere.
+func TestMarks(t *testing.T) {
+	areas, mixed := &placeResults{places: make([]place, 2), areas: 2}, &placeResults{places: make([]place, 2), areas: 1}
+	for _, c := range []struct {
+		step int
+		by   *placeResults
+		want bool
+	}{{0, nil, true}, {1, nil, false}, {3, nil, false}, {0, areas, false}, {0, mixed, true}} {
+		if got := (&run{obs: &observations{thinned: thinning{step: c.step}}, byPlace: c.by}).marked(); got != c.want {
+			t.Errorf("step %d, %+v: %v", c.step, c.by, got)
+		}
+	}
+}
